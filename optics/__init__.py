@@ -1,0 +1,3 @@
+"""Light outcoupling of thin-film light-emitting devices."""
+
+__version__ = "0.1.0"

@@ -1,0 +1,1 @@
+"""Storey 2: small frozen objects that describe what the user has: materials, stack, emitters."""

@@ -1,0 +1,1 @@
+"""Storey 5: results for eyes and for other programs."""

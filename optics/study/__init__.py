@@ -1,0 +1,1 @@
+"""Storey 4: many outcomes of one device."""
