@@ -41,7 +41,7 @@ class TableUse:
     sha256: str
 
 
-class Undefined(ValueError):
+class UndefinedError(ValueError):
     """A law has no physical value at some wavelengths.
 
     Parameters
@@ -60,7 +60,7 @@ class Undefined(ValueError):
 
 
 class Law(Protocol):
-    """Permittivity against wavelength; picklable, raises `Undefined` instead of a NaN."""
+    """Permittivity against wavelength; picklable, raises `UndefinedError` instead of a NaN."""
 
     def __call__(self, wavelength_nm: FloatArray, /) -> tuple[ComplexArray, ComplexArray]:
         """Ordinary (in the film plane) and extraordinary (along its normal) permittivity."""
@@ -123,14 +123,14 @@ class Material:
             # Division by zero or overflow in a law is caught below, by value, not by warning.
             with np.errstate(all="ignore"):
                 ordinary, extraordinary = self.law(np.clip(wanted, *self.range_nm))
-        except Undefined as undefined:
+        except UndefinedError as undefined:
             raise self._undefined_error(wanted, undefined) from None
         bad = ~(np.isfinite(ordinary) & np.isfinite(extraordinary))
         bad |= (ordinary.imag < 0.0) | (extraordinary.imag < 0.0)
         bad |= (ordinary == 0.0) | (extraordinary == 0.0)
         if np.any(bad):
-            undefined = Undefined(bad, "no passive permittivity", "finite, nonzero, Im ε ≥ 0")
-            raise self._undefined_error(wanted, undefined)
+            nothing = UndefinedError(bad, "no passive permittivity", "finite, nonzero, Im ε ≥ 0")
+            raise self._undefined_error(wanted, nothing)
         return ordinary, extraordinary
 
     def _range_error(self, wanted: FloatArray) -> RangeError:
@@ -145,7 +145,7 @@ class Material:
         )
         return RangeError([fault], self.name, self.range_nm, span)
 
-    def _undefined_error(self, wanted: FloatArray, undefined: Undefined) -> RangeError:
+    def _undefined_error(self, wanted: FloatArray, undefined: UndefinedError) -> RangeError:
         refused = wanted[undefined.where]
         span = (float(refused.min()), float(refused.max()))
         fault = Fault(
