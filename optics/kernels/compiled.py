@@ -1,0 +1,89 @@
+"""The one place that decides how kernels are compiled and where the result is kept.
+
+The compiler's file cache does not notice a change in a callee that lives in another file, so the
+cache folder carries a stamp over all kernel sources and the compiler's version: a stale kernel
+can never be loaded. It lies in the user's cache folder, because an installed package may be
+read-only.
+"""
+
+import hashlib
+import os
+import sys
+import tempfile
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any, TypeVar
+
+import llvmlite
+import numba
+
+_F = TypeVar("_F", bound=Callable[..., Any])
+
+
+def _stamp() -> str:
+    """Digest of all kernel sources and of the versions that turn them into machine code."""
+    digest = hashlib.sha256()
+    for name in (numba.__version__, llvmlite.__version__, sys.version):
+        digest.update(name.encode())
+    for source in sorted(Path(__file__).parent.glob("*.py")):
+        digest.update(source.name.encode())
+        digest.update(source.read_bytes())
+    return digest.hexdigest()[:16]
+
+
+def _user_cache() -> Path:
+    """Return the user's cache folder by the conventions of the operating system."""
+    if sys.platform == "win32":
+        return Path(os.environ.get("LOCALAPPDATA", Path.home() / "AppData" / "Local"))
+    if sys.platform == "darwin":
+        return Path.home() / "Library" / "Caches"
+    return Path(os.environ.get("XDG_CACHE_HOME", Path.home() / ".cache"))
+
+
+def _writable(folder: Path) -> bool:
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+        with tempfile.TemporaryFile(dir=folder):
+            return True
+    except OSError:
+        return False
+
+
+def _cache_folder() -> Path:
+    stamp = _stamp()
+    chosen = _user_cache() / "outcouple" / f"kernels-{stamp}"
+    if _writable(chosen):
+        return chosen
+    chosen = Path(tempfile.gettempdir()) / f"outcouple-kernels-{os.getuid()}-{stamp}"
+    chosen.mkdir(parents=True, exist_ok=True)
+    return chosen
+
+
+CACHE_FOLDER = _cache_folder()
+numba.config.CACHE_DIR = str(CACHE_FOLDER)
+
+
+def cache_is_warm() -> bool:
+    """Tell whether compiled kernels of this very source already lie in the cache."""
+    if numba.config.DISABLE_JIT:
+        return True
+    return (CACHE_FOLDER / "complete").exists()
+
+
+def mark_cache_warm() -> None:
+    """Note that every kernel of the main job has been compiled into the cache."""
+    (CACHE_FOLDER / "complete").touch()
+
+
+# No division check: it would stop the loops from vectorizing, and every divisor is guarded.
+# No fastmath: it gains nothing here and breaks the tests for NaN.
+def kernel(function: _F) -> _F:
+    """Compile a top-level kernel: cached on disk, releasing the interpreter lock."""
+    compiled: _F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+    return compiled
+
+
+def inline(function: _F) -> _F:
+    """Compile a small helper that is merged into the kernels that call it."""
+    compiled: _F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+    return compiled

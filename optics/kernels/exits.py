@@ -1,0 +1,120 @@
+"""What becomes of light that reaches the outer media: slab faces, bounces, first arrivals.
+
+Slabs are thick and incoherent, so intensities add: light goes back and forth between the slab
+faces and the film stack, a geometric series, solved for both sides together.
+"""
+
+import math
+
+from optics.kernels.compiled import inline
+from optics.kernels.halfstack import S, abs2
+
+# What stands outside the films on one side.
+OPEN, PLANAR, MATCHED, ABSORBING = 0, 1, 2, 3
+
+# Columns of everything that is integrated on the real axis.
+TOTAL, AIR_BOTTOM, AIR_TOP, SUBSTRATE, COVER, ABSORBED, MATCHED_BOTTOM, MATCHED_TOP = range(8)
+COLUMNS = 8
+
+# Where 1 - R falls below this, rounding of R shows; then T + A says the same, exactly.
+_TINY_LOSS = 1e-8
+
+
+@inline
+def face_reflectance(pol, u, n_slab, n_out):
+    """Fresnel reflectance of a slab's outer face for in-plane wavevector u; 1 beyond its line."""
+    if u >= n_out:
+        return 1.0
+    y1 = math.sqrt(n_slab * n_slab - u * u)
+    y2 = math.sqrt(n_out * n_out - u * u)
+    if pol != S:
+        y1 /= n_slab * n_slab
+        y2 /= n_out * n_out
+    r = (y1 - y2) / (y1 + y2)
+    return r * r
+
+
+@inline
+def exit_line(kind, n_outer, n_out):
+    """In-plane wavevector below which light can leave on this side; 0 if it never can."""
+    if kind == ABSORBING:
+        return 0.0
+    return n_outer if kind == MATCHED else n_out
+
+
+@inline
+def passage(kind, pol, u, n_outer, n_out, loss):
+    """Split of unit flux that enters the outer medium: (leaves, absorbed there, comes back).
+
+    loss : 4 pi k d / lambda of the slab, one pass along the normal.
+    """
+    if kind == OPEN:
+        return 1.0, 0.0, 0.0
+    if kind == ABSORBING:
+        return 0.0, 1.0, 0.0
+    if u >= n_outer:
+        return 0.0, 0.0, 0.0
+    cosine = math.sqrt(1.0 - (u / n_outer) ** 2)
+    once = math.exp(-loss / cosine)
+    if kind == MATCHED:
+        return once, 1.0 - once, 0.0
+    rho = face_reflectance(pol, u, n_outer, n_out)
+    return once * (1.0 - rho), (1.0 - once) * (1.0 + rho * once), once * once * rho
+
+
+@inline
+def settle_bounces(back_b, back_t, stack, p_b, p_t):
+    """Total fluxes into both outer media from first arrivals p_b, p_t.
+
+    stack : (R_b, R_t, T, A_b, A_t), the whole film stack lit from the bottom or the top medium.
+    """
+    r_b, r_t, through, a_b, a_t = stack
+    lack_b, lack_t = 1.0 - r_b, 1.0 - r_t
+    if lack_b < _TINY_LOSS:
+        lack_b = through + a_b
+    if lack_t < _TINY_LOSS:
+        lack_t = through + a_t
+    # 1 - R g as a sum of non-negative terms, so that nothing cancels.
+    diag_b = lack_b + (1.0 - lack_b) * (1.0 - back_b)
+    diag_t = lack_t + (1.0 - lack_t) * (1.0 - back_t)
+    det = diag_b * diag_t - through * through * back_b * back_t
+    if det <= 1e-280:
+        return p_b, p_t
+    i_b = (diag_t * p_b + through * back_t * p_t) / det
+    i_t = (diag_b * p_t + through * back_b * p_b) / det
+    return i_b, i_t
+
+
+@inline
+def whole_stack(phase, r_a, r_b, flux_out, ports_a, ports_b, absorbed_a, absorbed_b):
+    """Whole stack lit from the medium outside half b: (R, T, A) per unit incident flux.
+
+    Parameters
+    ----------
+    phase : complex
+        exp(i kz d) of the emitter film.
+    r_a, r_b : complex
+        Reflections of both halves seen from the emitter film.
+    flux_out : (float, float)
+        Re Y of the medium outside half a (transmitted) and outside half b (incident).
+    ports_a : complex
+        t of half a, from the emitter film out.
+    ports_b : (complex, complex, complex)
+        t of half b outward, t inward, reflection from outside.
+    absorbed_a : float
+        Absorption of half a for unit amplitude from the emitter film.
+    absorbed_b : (float, float, complex)
+        Hermitian absorption form of half b: inside, outside, cross.
+    """
+    t_out, t_in, r_out = ports_b
+    ring = 1.0 - r_a * r_b * phase * phase
+    toward_a = t_in * phase / ring
+    toward_b = toward_a * phase * r_a
+    r = r_out + t_out * toward_b
+    inside, outside, cross = absorbed_b
+    absorbed = absorbed_a * abs2(toward_a) + outside + inside * abs2(toward_b)
+    absorbed += 2.0 * (toward_b.conjugate() * cross).real
+    through = abs2(ports_a * toward_a) * flux_out[0]
+    return abs2(r), through / flux_out[1], absorbed / flux_out[1]
+
+

@@ -1,0 +1,96 @@
+"""Power absorbed in each film: the closed-form volume integral of Im eps |E|^2.
+
+A half stack can be lit from both ends. Its absorption for amplitudes x (from the emitter film)
+and w (from outside) is the Hermitian form  a_in |x|^2 + a_out |w|^2 + 2 Re(conj(x) w a_cross),
+film by film, in the units of flux Re(Y) |amplitude|^2.
+"""
+
+import math
+
+from optics.kernels.compiled import kernel
+from optics.kernels.halfstack import P, S, abs2
+
+
+@kernel
+def film_coefficients(u, eps_o, eps_e, kd, kz, alpha, beta):
+    """Absorption of a film as alpha (|f|^2 + |g|^2) + 2 beta Re(conj(f) g).
+
+    f and g are the two waves' amplitudes, each at the face where it enters the film.
+    From Poynting's theorem: s, d(flux)/dz = -Im eps_o |E|^2; p (H amplitudes),
+    d(flux)/dz = -(Im eps_o |E_x|^2 + Im eps_e |E_z|^2) with |E_x| = |H' / eps_o| and
+    |E_z| = |u H / eps_e|, lengths in 1/k0.
+
+    Parameters
+    ----------
+    u : complex (n,)
+        Real in-plane wavevectors over k0 (imaginary parts are not used).
+    eps_o, eps_e : complex (m,)
+    kd : float (m,)
+    kz : complex (2, m, n)
+    alpha, beta : float (2, m, n), output
+        Zero for lossless films and for both ends.
+    """
+    last = eps_o.size - 1
+    for j in range(last + 1):
+        loss_o, loss_e = eps_o[j].imag, eps_e[j].imag
+        if j == 0 or j == last or (loss_o == 0.0 and loss_e == 0.0):
+            alpha[:, j, :] = 0.0
+            beta[:, j, :] = 0.0
+            continue
+        d = kd[j]
+        inv_o, inv_e = 1.0 / abs2(eps_o[j]), 1.0 / abs2(eps_e[j])
+        for pol in range(2):
+            for i in range(u.size):
+                k = kz[pol, j, i]
+                x = 2.0 * k.imag * d
+                # Integrals of |e^{i kz z}|^2 and of the cross term, both real.
+                same = d if x < 1e-14 else -math.expm1(-x) * d / x
+                turn = k.real * d
+                cross = d if abs(turn) < 1e-8 else d * math.sin(turn) / turn
+                cross *= math.exp(-0.5 * x)
+                if pol == S:
+                    alpha[S, j, i] = loss_o * same
+                    beta[S, j, i] = loss_o * cross
+                else:
+                    plane = loss_o * inv_o * abs2(k)
+                    normal = loss_e * inv_e * u[i].real * u[i].real
+                    alpha[P, j, i] = (normal + plane) * same
+                    beta[P, j, i] = (normal - plane) * cross
+
+
+@kernel
+def absorbed_from_inside(e, r_far, f, alpha, beta, a_in):
+    """Absorption in each film for unit amplitude from medium 0: a_in (2, m, n)."""
+    for pol in range(2):
+        for j in range(1, e.shape[1] - 1):
+            for i in range(e.shape[2]):
+                f1 = f[pol, j, i]
+                q = r_far[pol, j, i] * e[pol, j, i]
+                power = alpha[pol, j, i] * (1.0 + abs2(q)) + 2.0 * beta[pol, j, i] * q.real
+                a_in[pol, j, i] = power * abs2(f1)
+
+
+@kernel
+def absorbed_from_outside(e, r_near, g, alpha, beta, a_out):
+    """Absorption in each film for unit amplitude from the last medium: a_out (2, m, n)."""
+    for pol in range(2):
+        for j in range(1, e.shape[1] - 1):
+            for i in range(e.shape[2]):
+                q = r_near[pol, j, i] * e[pol, j, i]
+                power = alpha[pol, j, i] * (1.0 + abs2(q)) + 2.0 * beta[pol, j, i] * q.real
+                a_out[pol, j, i] = power * abs2(g[pol, j, i])
+
+
+@kernel
+def absorbed_cross(e, r_far, f, r_near, g, alpha, beta, a_cross):
+    """Cross term between both ways of lighting the half stack: a_cross, complex (2, m, n)."""
+    for pol in range(2):
+        for j in range(1, e.shape[1] - 1):
+            for i in range(e.shape[2]):
+                f1 = f[pol, j, i]
+                g1 = r_far[pol, j, i] * e[pol, j, i] * f1
+                g2 = g[pol, j, i]
+                f2 = r_near[pol, j, i] * e[pol, j, i] * g2
+                a_cross[pol, j, i] = alpha[pol, j, i] * (
+                    f1.conjugate() * f2 + g1.conjugate() * g2
+                ) + beta[pol, j, i] * (f1.conjugate() * g2 + g1.conjugate() * f2)
