@@ -84,7 +84,7 @@ class Cauchy:
             n = n * inverse_square + coefficient
         if np.any(n <= 0.0):
             raise UndefinedError(n <= 0.0, "a refractive index at or below 0", "n > 0")
-        return _isotropic((n + 1j * self.k) ** 2)
+        return _isotropic(np.square(n + 1j * self.k, dtype=np.complex128))
 
 
 @dataclass(frozen=True, slots=True, eq=False)

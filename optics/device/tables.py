@@ -208,7 +208,7 @@ def _check_order(raw: RawTable, column: str, faults: list[Fault], *, zero_allowe
     for row in np.flatnonzero(low):
         expected = "0 or more" if zero_allowed else "more than 0"
         faults.append(raw.fault(raw.lines[row], f"{values[row]:.10g}", expected, column))
-    usable = np.flatnonzero(np.isfinite(values))
+    usable = np.flatnonzero(np.isfinite(values) & ~low)
     # The direction of most steps is the table's; the others are the misplaced rows.
     falling = int(np.sign(np.diff(values[usable])).sum()) < 0
     order = "descending" if falling else "ascending"
