@@ -4,7 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass
-from difflib import get_close_matches
+from difflib import SequenceMatcher
+
+# Share of matching characters from which a name passes for a misspelling of another.
+LIKENESS_NEEDED = 0.6
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,7 +86,10 @@ class RangeError(CaseError):
 
 
 def nearest(name: str, candidates: Iterable[str]) -> str | None:
-    """Return the candidate that looks most like `name`, or None when none comes close."""
-    by_lower_case = {candidate.lower(): candidate for candidate in candidates}
-    close = get_close_matches(name.lower(), by_lower_case, n=1, cutoff=0.6)
-    return by_lower_case[close[0]] if close else None
+    """Return the candidate that looks most like `name` (the first of equals), or None."""
+
+    def likeness(candidate: str) -> float:
+        return SequenceMatcher(None, candidate.lower(), name.lower()).ratio()
+
+    best = max(candidates, key=likeness, default=None)
+    return best if best is not None and likeness(best) >= LIKENESS_NEEDED else None

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Protocol
 
 import numpy as np
@@ -84,7 +84,7 @@ class Material:
     """
 
     name: str
-    law: Law
+    law: Law = field(repr=False)
     isotropic: bool = True
     range_nm: tuple[float, float] = UNLIMITED_NM
     tables: tuple[TableUse, ...] = ()
@@ -136,12 +136,14 @@ class Material:
     def _range_error(self, wanted: FloatArray) -> RangeError:
         span = (float(wanted.min()), float(wanted.max()))
         short = [use for use in self.tables if np.any(_outside(wanted, use.range_nm))]
-        because = "".join(f"; table {use.name} has {span_text(use.range_nm)}" for use in short)
+        because = ", ".join(f"table {use.name} has {span_text(use.range_nm)}" for use in short)
+        if len(short) == 1 and short[0].range_nm == self.range_nm:
+            because = f"table {short[0].name}"
         fault = Fault(
             where=f"material {self.name}",
             key="wavelength_nm",
             found=span_text(span),
-            expected=f"within {span_text(self.range_nm)}{because}",
+            expected=f"within {span_text(self.range_nm)}" + (f" ({because})" if because else ""),
         )
         return RangeError([fault], self.name, self.range_nm, span)
 
