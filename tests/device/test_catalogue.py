@@ -87,9 +87,9 @@ def test_published_silver_differs_widely() -> None:
 
 def test_unknown_names() -> None:
     with pytest.raises(CaseError) as caught:
-        catalogue.load("f8bt-0")
+        catalogue.load("f8bto")
     assert str(caught.value) == (
-        "bundled materials: found no material 'f8bt-0'; "
+        "bundled materials: found no material 'f8bto'; "
         "expected the name of a bundled material (did you mean f8bt-o?)"
     )
     with pytest.raises(CaseError, match=r"found no spectrum 'gren'.*did you mean green\?"):
@@ -110,3 +110,18 @@ def test_bundled_spectra_are_what_their_headers_say(name: str) -> None:
     np.testing.assert_allclose(curve.y, shape / shape.max(), atol=5.1e-7, rtol=0)
     # Cut where nothing is left, so that a wider grid is no fault.
     assert max(curve.y[0], curve.y[-1]) < 0.01
+
+
+def test_user_page_lists_the_catalogue_as_it_is() -> None:
+    page = (catalogue.data_folder().parent / "docs" / "materials.md").read_text(encoding="utf-8")
+    for record in catalogue.entries():
+        if record.points:
+            low, high = record.range_nm
+            aliases = ", ".join(f"`{alias}`" for alias in record.aliases)
+            row = f"| `{record.name}` | {aliases} | {record.title} | {low:.0f} to {high:.0f} "
+            assert row + f"| {record.points} | {record.note} |" in page
+        for alias, reason in zip(record.aliases, record.reasons, strict=True):
+            if reason != "the only table":
+                assert f"| `{alias}` | `{record.name}` | {reason} |" in page
+    for name in catalogue.spectra_names():
+        assert f"`{name}`" in page
