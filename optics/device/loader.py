@@ -1,0 +1,212 @@
+"""Files and materials that a case file names."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field, replace
+from pathlib import Path
+
+from optics.device import catalogue, models
+from optics.device.door import Faults
+from optics.device.errors import CaseError, nearest
+from optics.device.material_schema import (
+    BirefringentModel,
+    CauchyModel,
+    ConstantModel,
+    LorentzDrudeModel,
+    MaterialModel,
+    MixModel,
+    PairModel,
+    SellmeierModel,
+    TableModel,
+)
+from optics.device.materials import Material, TableUse
+from optics.device.tables import Curve, IndexTable, read_curve, read_index_table
+
+
+@dataclass(slots=True)
+class Files:
+    """Tables of one case, each read once.
+
+    A changed copy of a case shares them: it is quick and rests on the very bytes the first one
+    read.
+
+    Attributes
+    ----------
+    folder : Path
+        Folder of the case file; paths in it are relative to this.
+    """
+
+    folder: Path
+    _read: dict[tuple[str, str], IndexTable | Curve] = field(default_factory=dict)
+    _names: dict[str, str] = field(default_factory=dict)
+
+    def index_table(self, path: str, key: str, faults: Faults) -> IndexTable | None:
+        """Table of optical constants; faults are noted under `key`."""
+        table = self._load(path, "index", key, faults, read_index_table)
+        return table if isinstance(table, IndexTable) else None
+
+    def curve(
+        self, path: str, column: str, key: str, faults: Faults, *coordinates: str
+    ) -> Curve | None:
+        """Two-column table of `column` against one of `coordinates`."""
+
+        def read(file: Path) -> Curve:
+            return read_curve(file, column, coordinate=coordinates)
+
+        table = self._load(path, column, key, faults, read)
+        return table if isinstance(table, Curve) else None
+
+    def spectrum(self, path: str, key: str, faults: Faults) -> Curve | None:
+        """Spectrum table, from the case's folder or else the bundled one of that name."""
+        if not (self.folder / path).is_file() and path in catalogue.spectra_names():
+            name, path = path, str(catalogue.spectrum_path(path).resolve())
+            self._names[path] = name
+        return self.curve(path, "value", key, faults, "wavelength_nm")
+
+    def hashes(self) -> dict[str, str]:
+        """Hash of the bytes of every table read, by its path as the case file has it."""
+        return {
+            self._names.get(path, path): table.sha256 for (path, _), table in self._read.items()
+        }
+
+    def _load(
+        self,
+        path: str,
+        kind: str,
+        key: str,
+        faults: Faults,
+        read: Callable[[Path], IndexTable | Curve],
+    ) -> IndexTable | Curve | None:
+        if (path, kind) not in self._read:
+            file = self.folder / path
+            if not file.is_file():
+                self._note_missing(path, key, faults)
+                return None
+            try:
+                self._read[path, kind] = read(file)
+            except CaseError as error:
+                for fault in error.faults:
+                    # The table's own line is what the user must mend; the key says who reads it.
+                    place = f"{path}: {fault.key}" if fault.key else path
+                    faults.add(f"{key}: {place}", fault.found, fault.expected, fault.near)
+                return None
+        return self._read[path, kind]
+
+    def _note_missing(self, path: str, key: str, faults: Faults) -> None:
+        folder = (self.folder / path).parent
+        names = [entry.name for entry in folder.iterdir()] if folder.is_dir() else []
+        if key.endswith("spectrum.table"):
+            names += catalogue.spectra_names()
+        faults.add(
+            key,
+            f'"{path}", no such file',
+            "the path of a table, relative to the case file",
+            nearest(Path(path).name, names),
+        )
+
+
+def table_use(curve: Curve) -> TableUse:
+    """Record of a spectrum, filter or zone table; `range_nm` is the range of its coordinate."""
+    span = (float(curve.x[0]), float(curve.x[-1]))
+    return TableUse(curve.path.name, curve.header.get("source", ""), span, curve.sha256)
+
+
+@dataclass(slots=True)
+class Materials:
+    """Materials by name: those of the case file first, then the bundled catalogue.
+
+    Attributes
+    ----------
+    parts : mapping of str to parsed material or None
+        Local materials; None where the description itself is at fault.
+    """
+
+    parts: Mapping[str, MaterialModel | None]
+    files: Files
+    faults: Faults
+    _made: dict[str, Material | None] = field(default_factory=dict)
+    _open: list[str] = field(default_factory=list)
+
+    def get(self, name: str, key: str) -> Material | None:
+        """Material called `name`; an unknown one is noted under `key`.
+
+        Returns None where the material is at fault (noted before).
+        """
+        if name in self._open:
+            cycle = " → ".join([*self._open[self._open.index(name) :], name])
+            self.faults.add(key, f"the cycle {cycle}", "materials that do not contain themselves")
+            return None
+        if name in self.parts:
+            if name not in self._made:
+                self._open.append(name)
+                self._made[name] = self._make(name)
+                self._open.pop()
+            return self._made[name]
+        if name not in catalogue.names():
+            known = [*self.parts, *catalogue.names()]
+            expected = "a material of [materials] or of the catalogue"
+            self.faults.add(key, f'"{name}", no such material', expected, nearest(name, known))
+            return None
+        return catalogue.load(name)
+
+    def _make(self, name: str) -> Material | None:
+        part = self.parts[name]
+        key = f"materials.{name}"
+        if part is None:
+            return None
+        try:
+            return self._construct(name, key, part)
+        except CaseError as error:
+            for fault in error.faults:
+                inner = f"{key}.{fault.key}" if fault.key else key
+                self.faults.add(inner, fault.found, fault.expected, fault.near)
+            return None
+
+    def _construct(self, name: str, key: str, part: MaterialModel) -> Material | None:
+        match part:
+            case ConstantModel():
+                return models.constant(name, part.n, part.k)
+            case BirefringentModel():
+                return models.birefringent(
+                    name, part.n_ordinary, part.n_extraordinary, part.k_ordinary,
+                    part.k_extraordinary,
+                )  # fmt: skip
+            case CauchyModel():
+                return models.cauchy(name, part.cauchy_nm, part.k)
+            case SellmeierModel():
+                return models.sellmeier(name, part.sellmeier.b, part.sellmeier.c_um2)
+            case LorentzDrudeModel():
+                terms = part.lorentz_drude
+                return models.lorentz_drude(
+                    name, terms.plasma_eV, terms.f0, terms.gamma0_eV, terms.oscillators
+                )
+            case TableModel():
+                table = self.files.index_table(part.table, f"{key}.table", self.faults)
+                return models.tabulated(name, table) if table else None
+            case PairModel():
+                return self._pair(name, key, part)
+            case MixModel():
+                return self._mix(name, key, part)
+
+    def _pair(self, name: str, key: str, part: PairModel) -> Material | None:
+        ordinary = self.get(part.ordinary, f"{key}.ordinary")
+        extraordinary = self.get(part.extraordinary, f"{key}.extraordinary")
+        if ordinary is None or extraordinary is None:
+            return None
+        return models.pair(name, ordinary, extraordinary)
+
+    def _mix(self, name: str, key: str, part: MixModel) -> Material | None:
+        components = [
+            (self.get(component, f"{key}.mix.{component}"), fraction)
+            for component, fraction in part.mix.items()
+        ]
+        present = [(material, fraction) for material, fraction in components if material]
+        if len(present) < len(components):
+            return None
+        # Faults of a mixture name its components as the case file does.
+        named = [
+            (replace(material, name=component), fraction)
+            for (material, fraction), component in zip(present, part.mix, strict=True)
+        ]
+        return models.mix(name, named, part.rule)

@@ -1,0 +1,273 @@
+"""Where in its film an emitter may emit, and the quadrature of averages over its zone.
+
+Positions are in nm from the bottom face of the emitter film.
+"""
+
+from __future__ import annotations
+
+import math
+from functools import lru_cache
+from itertools import pairwise
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from optics.device.zone_shapes import (
+    ExponentialZone,
+    Face,
+    GaussianZone,
+    PointZone,
+    TableZone,
+    UniformZone,
+    Zone,
+)
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from optics.device.emitter import Emitter
+    from optics.device.stack import Stack
+
+__all__ = [
+    "EmptyZoneError",
+    "ExponentialZone",
+    "GaussianZone",
+    "PointZone",
+    "TableZone",
+    "UniformZone",
+    "Zone",
+    "absorber_distances",
+    "unbounded_faces",
+    "zone_interval",
+    "zone_quadrature",
+]
+
+# Next to an absorber at zero distance the panels shrink geometrically down to this.
+_SMALLEST_PANEL_NM = 1e-3
+
+
+class EmptyZoneError(ValueError):
+    """Nothing of a zone lies where it may be nonzero."""
+
+
+@lru_cache(maxsize=64)
+def _gauss_legendre(order: int) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Nodes and weights on -1 to 1."""
+    node, weight = np.polynomial.legendre.leggauss(order)
+    return node, weight
+
+
+def zone_quadrature(
+    zone: Zone,
+    thickness_nm: float,
+    interval_nm: tuple[float, float],
+    singular_nm: tuple[float, float] = (math.inf, math.inf),
+    scale_nm: float = math.inf,
+    order: int = 8,
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Positions and weights for averages over a zone.
+
+    Gauss-Legendre panels, each no longer than `scale_nm`, than what the density needs, and than
+    the distance of its nearer end from the singularities outside the film.
+
+    Parameters
+    ----------
+    zone : Zone
+        Density of exciton formation.
+    thickness_nm : float
+        Thickness of the emitter film in nm.
+    interval_nm : (float, float)
+        Where the density may be nonzero, in nm from the bottom face (see `zone_interval`); a
+        point zone ignores it.
+    singular_nm : (float, float)
+        Distance in nm from the bottom face down, and from the top face up, to the nearest
+        absorber; inf if there is none, 0 if it touches.
+    scale_nm : float
+        Length in nm over which what is averaged varies.
+    order : int
+        Nodes of a full-length panel; panels far shorter than their limit get fewer. Raise it to
+        refine.
+
+    Returns
+    -------
+    position_nm, weight : arrays, shape (n,)
+        Ascending positions in nm from the bottom face; weight = quadrature weight * density,
+        with sum 1.
+
+    Raises
+    ------
+    EmptyZoneError
+        If the interval is empty or the density is zero all over it.
+    """
+    if isinstance(zone, PointZone):
+        return np.array([zone.position_nm(thickness_nm)]), np.ones(1)
+    low, high = zone.support_nm(thickness_nm, interval_nm)
+    if not high > low:
+        raise EmptyZoneError
+    inner = {kink for kink in zone.kinks_nm(thickness_nm) if low < kink < high}
+    edges = [low, *sorted(inner), high]
+    positions, weights = [], []
+    for start, stop in pairwise(edges):
+        for left, right, fill in _panels(start, stop, zone, thickness_nm, singular_nm, scale_nm):
+            node, weight = _gauss_legendre(_nodes_for(fill, order))
+            positions.append((left + right) / 2 + (right - left) / 2 * node)
+            weights.append((right - left) / 2 * weight)
+    position = np.concatenate(positions)
+    weight = np.concatenate(weights) * zone.density(position, thickness_nm, interval_nm)
+    total = float(weight.sum())
+    if not total > 0:
+        raise EmptyZoneError
+    return position, weight / total
+
+
+def _nodes_for(fill: float, order: int) -> int:
+    """Nodes of a panel that fills its allowed length to the given share.
+
+    Halving a panel keeps its Gauss error with about one node fewer for an analytic integrand
+    whose nearest singularity is a panel length away.
+    """
+    halvings = int(-math.log2(fill)) if 0 < fill < 1 else 0
+    return max(order - halvings - (halvings > 0), order // 2, 2)
+
+
+def _panels(
+    start: float,
+    stop: float,
+    zone: Zone,
+    thickness_nm: float,
+    singular_nm: tuple[float, float],
+    scale_nm: float,
+) -> list[tuple[float, float, float]]:
+    """Panels (left, right, share of the allowed length) that fill a smooth stretch.
+
+    Panels are cut off at whichever end allows the shorter one, so both ends are graded.
+    """
+    left_end, right_end = start, stop
+    lower: list[tuple[float, float, float]] = []
+    upper: list[tuple[float, float, float]] = []
+    while right_end > left_end:
+        length = right_end - left_end
+        below = left_end + singular_nm[0]
+        above = thickness_nm - right_end + singular_nm[1]
+        smooth = min(scale_nm, zone.longest_panel_nm(left_end, right_end, thickness_nm))
+        at_left = min(smooth, below, (length + above) / 2)
+        at_right = min(smooth, above, (length + below) / 2)
+        # The density may vary faster at one end than in the middle of what is left.
+        at_left = min(at_left, zone.longest_panel_nm(left_end, left_end, thickness_nm))
+        at_right = min(at_right, zone.longest_panel_nm(right_end, right_end, thickness_nm))
+        at_left, at_right = (max(cut, _SMALLEST_PANEL_NM) for cut in (at_left, at_right))
+        allowed = min(smooth, max(below, _SMALLEST_PANEL_NM), max(above, _SMALLEST_PANEL_NM))
+        if length <= allowed * (1 + 1e-9):
+            # Without any limit nothing is known about the integrand: the full order then.
+            lower.append((left_end, right_end, length / allowed if allowed < math.inf else 1.0))
+            break
+        if at_left <= at_right:
+            cut = left_end + length / max(math.ceil(length / at_left - 1e-9), 2)
+            cut = min(cut, left_end + at_left)
+            lower.append((left_end, cut, min(1.0, (cut - left_end) / at_left)))
+            left_end = cut
+        else:
+            cut = right_end - length / max(math.ceil(length / at_right - 1e-9), 2)
+            cut = max(cut, right_end - at_right)
+            upper.append((cut, right_end, min(1.0, (right_end - cut) / at_right)))
+            right_end = cut
+    return lower + upper[::-1]
+
+
+def absorber_distances(
+    stack: Stack, film_index: int, wavelength_nm: NDArray[np.float64]
+) -> tuple[float, float]:
+    """Distance from each face of a film to the nearest absorber beyond it.
+
+    Slabs count as transparent; a film of zero thickness is as good as absent.
+
+    Parameters
+    ----------
+    stack : Stack
+        The device.
+    film_index : int
+        The emitter film, counted from the bottom.
+    wavelength_nm : array, shape (n,)
+        Every wavelength of the case in nm.
+
+    Returns
+    -------
+    below_nm, above_nm : float
+        Through lossless films; 0 = adjacent, inf = none.
+    """
+    films, (bottom, top) = stack.absorbing(wavelength_nm)
+    below = range(film_index - 1, -1, -1)
+    above = range(film_index + 1, len(stack.films))
+    return (
+        _distance(stack, below, films, bottom and stack.substrate is None),
+        _distance(stack, above, films, top and stack.cover is None),
+    )
+
+
+def _distance(
+    stack: Stack, order: range, absorbing: NDArray[np.bool_], absorbing_end: bool
+) -> float:
+    """Thickness of the lossless films in front of the first absorber, in the order given."""
+    distance = 0.0
+    for index in order:
+        thickness = stack.films[index].thickness_nm
+        if absorbing[index] and thickness > 0:
+            return distance
+        distance += thickness
+    return distance if absorbing_end else math.inf
+
+
+def zone_interval(
+    stack: Stack, emitter: Emitter, wavelength_nm: NDArray[np.float64]
+) -> tuple[float, float]:
+    """Where an emitter's continuous zone may be nonzero.
+
+    Zones are zero within the closest approach of any absorber outside the emitter's own film.
+
+    Parameters
+    ----------
+    stack : Stack
+        The device.
+    emitter : Emitter
+        The emitter.
+    wavelength_nm : array, shape (n,)
+        Every wavelength of the case in nm.
+
+    Returns
+    -------
+    low_nm, high_nm : float
+        In nm from the bottom face; empty if ``high_nm <= low_nm``.
+    """
+    below, above = absorber_distances(stack, emitter.film_index, wavelength_nm)
+    thickness = stack.films[emitter.film_index].thickness_nm
+    low = max(0.0, emitter.closest_approach_nm - below)
+    high = thickness - max(0.0, emitter.closest_approach_nm - above)
+    return low, high
+
+
+def unbounded_faces(
+    stack: Stack, emitter: Emitter, wavelength_nm: NDArray[np.float64]
+) -> tuple[Face, ...]:
+    """Faces of the emitter film where its continuous zone reaches an adjacent absorber.
+
+    There the dissipated power has no bound, so its zone average does not exist. Happens only
+    with a closest approach of 0. A table that falls to zero just at the face counts too: the
+    power grows with the inverse cube of the distance.
+
+    Returns
+    -------
+    tuple of {"bottom", "top"}
+        Empty for point zones.
+    """
+    if isinstance(emitter.zone, PointZone):
+        return ()
+    thickness = stack.films[emitter.film_index].thickness_nm
+    distances = absorber_distances(stack, emitter.film_index, wavelength_nm)
+    interval = zone_interval(stack, emitter, wavelength_nm)
+    low, high = emitter.zone.support_nm(thickness, interval)
+    faces: list[Face] = []
+    if distances[0] == 0 and low <= 0:
+        faces.append("bottom")
+    if distances[1] == 0 and high >= thickness:
+        faces.append("top")
+    return tuple(faces)
