@@ -153,19 +153,16 @@ def _around(poles: list[complex]) -> tuple[float, ...]:
 
 
 def _beyond(geo: Geometry) -> list[Stretch]:
-    start, near, end = geo.largest_outer_line, geo.near_field_line, geo.reach()
+    start, end = geo.largest_outer_line, geo.reach()
+    near = min(geo.near_field_line, end)
     if not geo.metallic:
         depth = min(0.3, (near - start) / 2)
         path = [Stretch("guided", paths.Piece("ellipse", start, near, depth))]
-        return (
-            path if geo.lossless else [*path, Stretch("near_guided", paths.Piece("log", near, end))]
-        )
+        tail = [Stretch("near_guided", paths.Piece("log", near, end))]
+        return path + (tail if end > near else [])
     own = geo.emitter.extraordinary.real**0.5
-    edges = [
-        ("guided", start, own),
-        ("plasmon", max(start, own), near),
-        ("near_plasmon", near, end),
-    ]
+    edges = [("guided", start, own), ("plasmon", max(start, own), near)]
+    edges += [("near_plasmon", near, end)]
     return [
         Stretch(part, piece)
         for part, lo, hi in edges

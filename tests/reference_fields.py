@@ -63,8 +63,10 @@ def march(films: tuple[Film, ...], outer: complex, kappa: Array, pol: str) -> Ma
         lost = _absorbed(film, q, value, slope, kappa, pol)
         step = np.expm1(2j * q * film.depth)
         cosine, sine = 1 + step / 2, step / 2j
+        # sin(q d)/q, which is d on the film's own light line.
+        reduced = np.where(q == 0, film.depth, sine / np.where(q == 0, 1.0, q))
         value, slope = (
-            value * cosine - weight * slope * sine / q,
+            value * cosine - weight * slope * reduced,
             slope * cosine + q / weight * value * sine,
         )
         growth = growth + q.imag * film.depth

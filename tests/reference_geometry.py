@@ -113,14 +113,13 @@ class Geometry:
             return replace(self, substrate=changed)
         return replace(self, cover=changed)
 
-    def reach(self) -> float:
-        """In-plane wavenumber (k0 = 1) beyond which nothing above e^-80 is dissipated.
+    def distance_to_loss(self) -> float | None:
+        """Decay length from the dipole to the nearest matter that absorbs or has Re eps < 0.
 
-        The field decays as exp(-kappa sqrt(eps_o/eps_e) distance) to the nearest matter
-        that absorbs or has Re eps < 0; without such matter there is no mode, hence no
-        dissipation, beyond the largest index.
+        The field decays as exp(-kappa distance) at large kappa, with sqrt(eps_o/eps_e) of
+        each film counted in. None without such matter: no mode, hence no dissipation, then
+        lies beyond the largest index.
         """
-        start = 1.05 * self.near_field_line
         distances = []
         for films, outer in ((self.below, self.bottom), (self.above, self.top)):
             depth = 0.0
@@ -130,11 +129,16 @@ class Geometry:
                     distances.append(depth)
                     break
                 depth += film.depth * math.sqrt(film.ordinary.real / film.extraordinary.real)
-        if not distances:
-            return start
-        if min(distances) <= 0:
+        if distances and min(distances) <= 0:
             raise ValueError("the dipole touches an absorber: its dissipation has no bound")
-        return max(start, 40.0 / min(distances))
+        return min(distances, default=None)
+
+    def reach(self) -> float:
+        """In-plane wavenumber (k0 = 1) beyond which nothing above e^-80 is dissipated."""
+        clear = [f.largest_index for f in self.whole if not f.absorbs]
+        guides = 1.05 * max([*clear, *self.outer_lines])
+        distance = self.distance_to_loss()
+        return guides if distance is None else max(guides, 40.0 / distance)
 
 
 def geometry(

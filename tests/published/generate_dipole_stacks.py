@@ -127,11 +127,18 @@ STACKS: dict[str, dict[str, Any]] = {
     "water_above": stack("water above without a slab, glass to air below", 550,
                          [ITO, film(1.75, 60), film(1.8, 30), film(1.7, 50)], 2, 11, 1.52, 1.33,
                          slab()),
-    "backward_model_metal": stack("eps = -4 + 0.2i, 20 nm, between films of n = 1.9", 400,
-                                  [film(1.9, 60), metal(-4 + 0.2j, 20), film(1.9, 60)], 0, 40,
-                                  1.5),
-    "backward_silver": stack("25 nm silver between ZnS-like films; leaky backward pole", 390,
-                             [film(2.5, 50), metal(AG390, 25), film(2.5, 50)], 0, 30, 1.0),
+    "near_resonance_metal": stack(
+        "eps = -4 + 0.2i, 20 nm, between films of n = 1.9: forward modes only", 400,
+        [film(1.9, 60), metal(-4 + 0.2j, 20), film(1.9, 60)], 0, 40, 1.5),
+    "backward_model_metal": stack(
+        "eps = -3.3 + 0.2i, 20 nm: backward pole at 7.85 - 1.74i", 400,
+        [film(1.9, 60), metal(-3.3 + 0.2j, 20), film(1.9, 60)], 0, 40, 1.5),
+    "backward_silver_embedded": stack(
+        "25 nm silver between half spaces of n = 2.5; backward pole at 1.65 - 2.28i", 390,
+        [film(2.5, 40), metal(AG390, 25)], 0, 22, 2.5, 2.5),
+    "backward_silver": stack(
+        "25 nm silver between ZnS-like films; backward pole at 1.77 - 2.57i", 390,
+        [film(2.5, 50), metal(AG390, 25), film(2.5, 50)], 0, 30, 1.0),
     "metal_gap": stack("8 nm gap between silver films", 550,
                        [metal(AG550, 60), film(1.7, 8), metal(AG550, 60)], 1, 3, 1.52,
                        substrate=slab()),
