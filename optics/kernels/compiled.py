@@ -84,6 +84,8 @@ def kernel(function: _F) -> _F:
 
 
 def inline(function: _F) -> _F:
-    """Compile a small helper that is merged into the kernels that call it."""
-    compiled: _F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+    """Compile a helper that only kernels call: no cache entry and no entry from Python."""
+    compiled: _F = numba.njit(
+        nogil=True, error_model="numpy", no_cpython_wrapper=True, no_cfunc_wrapper=True
+    )(function)
     return compiled

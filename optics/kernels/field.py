@@ -7,11 +7,11 @@ film by film, in the units of flux Re(Y) |amplitude|^2.
 
 import math
 
-from optics.kernels.compiled import kernel
+from optics.kernels.compiled import inline
 from optics.kernels.halfstack import P, S, abs2
 
 
-@kernel
+@inline
 def film_coefficients(u, eps_o, eps_e, kd, kz, alpha, beta):
     """Absorption of a film as alpha (|f|^2 + |g|^2) + 2 beta Re(conj(f) g).
 
@@ -58,7 +58,7 @@ def film_coefficients(u, eps_o, eps_e, kd, kz, alpha, beta):
                     beta[P, j, i] = (normal - plane) * cross
 
 
-@kernel
+@inline
 def absorbed_from_inside(e, r_far, f, alpha, beta, a_in):
     """Absorption in each film for unit amplitude from medium 0: a_in (2, m, n)."""
     for pol in range(2):
@@ -70,7 +70,7 @@ def absorbed_from_inside(e, r_far, f, alpha, beta, a_in):
                 a_in[pol, j, i] = power * abs2(f1)
 
 
-@kernel
+@inline
 def absorbed_from_outside(e, r_near, g, alpha, beta, a_out):
     """Absorption in each film for unit amplitude from the last medium: a_out (2, m, n)."""
     for pol in range(2):
@@ -81,7 +81,7 @@ def absorbed_from_outside(e, r_near, g, alpha, beta, a_out):
                 a_out[pol, j, i] = power * abs2(g[pol, j, i])
 
 
-@kernel
+@inline
 def absorbed_cross(e, r_far, f, r_near, g, alpha, beta, a_cross):
     """Cross term between both ways of lighting the half stack: a_cross, complex (2, m, n)."""
     for pol in range(2):

@@ -12,7 +12,7 @@ import math
 
 import numpy as np
 
-from optics.kernels.compiled import inline, kernel
+from optics.kernels.compiled import inline
 
 S, P = 0, 1
 
@@ -59,7 +59,7 @@ def abs2(z):
     return z.real * z.real + z.imag * z.imag
 
 
-@kernel
+@inline
 def waves(u, eps_o, eps_e, kd, kz, y, e):
     """Normal wavevector, admittance and one-pass phase factor of every medium.
 
@@ -105,7 +105,7 @@ def waves(u, eps_o, eps_e, kd, kz, y, e):
                     e[P, j, i] = exp_i(kz[P, j, i] * kd[j])
 
 
-@kernel
+@inline
 def reflection(y, e, r):
     """Reflection seen from medium 0: r (2, n) from y, e (2, m, n) of `waves`."""
     last = y.shape[1] - 1
@@ -122,7 +122,7 @@ def reflection(y, e, r):
                 r[pol, i] = (minus + plus * back) * reciprocal(plus + minus * back)
 
 
-@kernel
+@inline
 def outward(y, e, r_far, f, t):
     """Unit amplitude arrives from medium 0: reflection at every interface, amplitudes, exit.
 
@@ -163,7 +163,7 @@ def outward(y, e, r_far, f, t):
             t[pol, i] = f[pol, last, i]
 
 
-@kernel
+@inline
 def inward(y, e, r_near, g, r_out):
     """Unit amplitude arrives from the last medium: reflections looking inward, amplitudes.
 
@@ -203,7 +203,7 @@ def inward(y, e, r_near, g, r_out):
             r_out[pol, i] = r_near[pol, last, i]
 
 
-@kernel
+@inline
 def allocate(m, n):
     """Return work arrays for `waves`, `outward` and `inward`: seven of (2, m, n), two of (2, n)."""
     big = np.zeros((7, 2, m, n), dtype=np.complex128)

@@ -1,8 +1,14 @@
-"""Integration of the dipole's power along a path whose panels halve themselves."""
+"""Integration of the dipole's power along paths whose panels halve themselves.
+
+The two kernels of the main job. A task is one path at one wavelength; tasks are independent.
+"""
+
+import numpy as np
 
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
-from optics.kernels.paths import panel_error, panel_sum, place
+from optics.kernels.paths import NODES, TAIL, panel_error, panel_sum, place
+from optics.kernels.problem import Half, Sides, Source, work_space
 from optics.kernels.source import dissipated, radiated
 
 # A panel is halved at most this often, and no path uses more panels than this.
@@ -11,66 +17,93 @@ _MOST_PANELS = 600
 
 
 @inline
-def evaluate(on_axis, path, a, b, problem, bench):
-    """Fill bench.values for the panel theta in a..b of a path; return the number of columns."""
-    kind, lo, hi, depth, beyond_bulk = path
-    place(kind, lo, hi, depth, a, b, bench.u, bench.du)
-    source, sides, up, down = problem.source, problem.sides, problem.up, problem.down
-    positions = source.kz_positions.size
-    if on_axis:
-        radiated(
-            source, sides, up, down, bench.up, bench.down, bench.u, bench.du,
-            bench.shares, bench.spare, bench.values,
-        )  # fmt: skip
-        return 2 * COLUMNS * positions
-    dissipated(
-        source, up, down, bench.up, bench.down, bench.u, bench.du, beyond_bulk, bench.values
+def at_wavelength(problem, w):
+    """Source, sides and halves of one wavelength."""
+    source, sides, up, down = problem
+    return (
+        Source(
+            source.eps_o[w], source.eps_e[w], source.kd[w], source.kz_positions[w], source.bulk[w]
+        ),
+        Sides(sides.kind, sides.n_outer[w], sides.n_out[w], sides.loss[w]),
+        Half(up.eps_o[w], up.eps_e[w], up.kd[w]),
+        Half(down.eps_o[w], down.eps_e[w], down.kd[w]),
     )
-    return 3 * positions
 
 
 @kernel
-def adapt(on_axis, path, a, b, problem, bench, scale, tolerance, result):
-    """Integrate theta from a to b along a path, halving panels until each is resolved.
+def integrate_dissipated(problem, rows, paths, scale, tolerance, result, error, panels):
+    """Dissipated power along many paths.
 
     Parameters
     ----------
-    on_axis : bool
-        Take all destinations (`radiated`, real paths) rather than the dissipated power only.
-    path : (kind, lo, hi, depth, beyond_bulk)
-        As in `paths.place`.
-    scale : float (q,)
-        What errors are measured against, column by column.
+    problem : Problem
+    rows : int (t,)
+        Wavelength of each task.
+    paths : float (t, 4)
+        kind, lo, hi, depth of each path, see `paths.place`.
+    scale : float (t, 3 * positions)
+        What errors are measured against.
     tolerance : float
         Largest error of one panel over scale.
-    result : float (q,)
-        The integral is added to it.
-
-    Returns
-    -------
-    error : float
-        Sum of the panels' estimated errors over scale.
-    panels : int
-        Number of panels evaluated.
+    result, error : float (t, 3 * positions), output
+        Integrals and their estimated errors; column channel * positions + position.
+    panels : int (t,), output
     """
-    ends = bench.ends
-    ends[0, 0], ends[1, 0] = a, b
-    waiting, panels, error = 1, 0, 0.0
-    narrowest = (b - a) * 0.5**_DEEPEST
-    while waiting > 0:
-        waiting -= 1
-        lo, hi = ends[0, waiting], ends[1, waiting]
-        q = evaluate(on_axis, path, lo, hi, problem, bench)
-        panels += 1
-        miss = panel_error(bench.values, q, scale, bench.moments)
-        if miss > tolerance and hi - lo > narrowest and panels < _MOST_PANELS:
-            middle = 0.5 * (lo + hi)
-            ends[0, waiting], ends[1, waiting] = lo, middle
-            ends[0, waiting + 1], ends[1, waiting + 1] = middle, hi
-            waiting += 2
-            continue
-        error += miss
-        panel_sum(bench.values, q, bench.total)
-        for k in range(q):
-            result[k] += bench.total[k]
-    return error, panels
+    columns = result.shape[1]
+    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
+    values, moments, misses = np.zeros((NODES, columns)), np.zeros((3, columns)), np.zeros(columns)
+    ends = np.zeros((2, 2 * _DEEPEST))
+    for task in range(rows.size):
+        source, _, up, down = at_wavelength(problem, rows[task])
+        kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
+        ends[0, 0], ends[1, 0] = 0.0, 1.0
+        waiting, count = 1, 0
+        while waiting > 0:
+            waiting -= 1
+            a, b = ends[0, waiting], ends[1, waiting]
+            place(kind, lo, hi, depth, a, b, u, du)
+            dissipated(source, up, down, work_up, work_down, u, du, kind == TAIL, values)
+            count += 1
+            worst = panel_error(values, scale[task], moments, misses)
+            if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_PANELS:
+                ends[0, waiting], ends[1, waiting] = a, 0.5 * (a + b)
+                ends[0, waiting + 1], ends[1, waiting + 1] = 0.5 * (a + b), b
+                waiting += 2
+                continue
+            panel_sum(values, misses, result[task], error[task])
+        panels[task] = count
+
+
+@kernel
+def integrate_radiated(problem, rows, paths, scale, tolerance, result, error, panels):
+    """Dissipated power and every destination along real paths below the outer light lines.
+
+    Parameters as `integrate_dissipated`, but with 2 * COLUMNS * positions columns:
+    (orientation * COLUMNS + destination) * positions + position.
+    """
+    columns = result.shape[1]
+    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
+    values, moments, misses = np.zeros((NODES, columns)), np.zeros((3, columns)), np.zeros(columns)
+    shares, spare = np.zeros((2, COLUMNS)), np.zeros(COLUMNS)
+    ends = np.zeros((2, 2 * _DEEPEST))
+    for task in range(rows.size):
+        source, sides, up, down = at_wavelength(problem, rows[task])
+        kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
+        ends[0, 0], ends[1, 0] = 0.0, 1.0
+        waiting, count = 1, 0
+        while waiting > 0:
+            waiting -= 1
+            a, b = ends[0, waiting], ends[1, waiting]
+            place(kind, lo, hi, depth, a, b, u, du)
+            radiated(source, sides, up, down, work_up, work_down, u, du, shares, spare, values)
+            count += 1
+            worst = panel_error(values, scale[task], moments, misses)
+            if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_PANELS:
+                ends[0, waiting], ends[1, waiting] = a, 0.5 * (a + b)
+                ends[0, waiting + 1], ends[1, waiting + 1] = 0.5 * (a + b), b
+                waiting += 2
+                continue
+            panel_sum(values, misses, result[task], error[task])
+        panels[task] = count

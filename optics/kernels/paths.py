@@ -8,7 +8,7 @@ import math
 
 import numpy as np
 
-from optics.kernels.compiled import inline, kernel
+from optics.kernels.compiled import inline
 
 NODES = 16
 
@@ -27,7 +27,7 @@ ARC_FROM_BRANCH = 2  # the same with square roots at both ends
 TAIL = 3  # lo: real axis from lo to infinity
 
 
-@kernel
+@inline
 def place(kind, lo, hi, depth, a, b, u, du):
     """Nodes u and derivative du of a panel, theta from a to b, on a path (both complex (n,)).
 
@@ -56,26 +56,40 @@ def place(kind, lo, hi, depth, a, b, u, du):
 
 
 @inline
-def panel_sum(values, q, total):
-    """Add up a panel: total[:q] = Gauss sum of values (NODES, q); return nothing."""
-    for k in range(q):
-        total[k] = 0.0
+def panel_sum(values, misses, result, error):
+    """Add a panel's Gauss sums and error estimates to result and error (both (q,))."""
+    for k in range(result.size):
+        error[k] += misses[k]
     for i in range(NODES):
         w = GAUSS_W[i]
-        for k in range(q):
-            total[k] += w * values[i, k]
+        for k in range(result.size):
+            result[k] += w * values[i, k]
 
 
 @inline
-def panel_error(values, q, scale, moments):
-    """Largest estimated error of a panel's sums over their scale.
+def panel_error(values, scale, moments, misses):
+    """Estimate the error of a panel's Gauss sums.
 
-    The last Legendre coefficients tell how fast the integrand is resolved. A Gauss rule errs
-    by about the square of that ratio where convergence is geometric; the power 3/2 used here
-    is the cautious choice.
+    The last Legendre coefficients tell how far the integrand is resolved. A Gauss rule errs by
+    about the square of that ratio where convergence is geometric; the power 3/2 used here is
+    the cautious choice.
 
-    values (NODES, q), scale (q,) ; moments (3, q) is work space.
+    Parameters
+    ----------
+    values : float (NODES, q)
+    scale : float (q,)
+        What each column's error is compared with.
+    moments : float (3, q)
+        Work space.
+    misses : float (q,), output
+        Estimated error of each column.
+
+    Returns
+    -------
+    float
+        Largest error over scale.
     """
+    q = scale.size
     for k in range(q):
         moments[0, k] = 0.0
         moments[1, k] = 0.0
@@ -89,9 +103,8 @@ def panel_error(values, q, scale, moments):
             moments[2, k] += s * v
     worst = 0.0
     for k in range(q):
-        size = 0.5 * moments[0, k]
+        size = 0.5 * moments[0, k] + 1e-300
         unresolved = max(abs(moments[1, k]), abs(moments[2, k]))
-        if unresolved > 0.0:
-            error = 2.0 * unresolved * math.sqrt(min(1.0, unresolved / max(size, 1e-300)))
-            worst = max(worst, error / scale[k])
+        misses[k] = 2.0 * unresolved * math.sqrt(min(1.0, unresolved / size))
+        worst = max(worst, misses[k] / scale[k])
     return worst

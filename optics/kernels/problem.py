@@ -1,4 +1,4 @@
-"""One wavelength's problem and its work space as plain tuples of arrays.
+"""A device seen from one emitter film, for many wavelengths, as plain tuples of arrays.
 
 Compiled functions take named tuples as they take arrays; these carry no behavior.
 """
@@ -6,60 +6,45 @@ Compiled functions take named tuples as they take arrays; these carry no behavio
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
-from optics.kernels.compiled import kernel
+from optics.kernels.compiled import inline
 from optics.kernels.paths import NODES
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+Integers = NDArray[np.int64]
 
 
 class Half(NamedTuple):
-    """Media from the emitter film outward: permittivities and k0 * thickness."""
+    """Media from the emitter film outward, both ends included."""
 
-    eps_o: np.ndarray
-    eps_e: np.ndarray
-    kd: np.ndarray
+    eps_o: Complexes  # (w, m) in-plane permittivity
+    eps_e: Complexes  # (w, m) normal permittivity
+    kd: Floats  # (w, m) k0 * thickness; 0 for both ends
 
 
 class Sides(NamedTuple):
-    """Outside of the films; index 0 is the bottom, 1 the top."""
+    """What lies outside the films; last axis bottom, top."""
 
-    kind: np.ndarray  # OPEN, PLANAR, MATCHED, ABSORBING
-    n_outer: np.ndarray  # index of the medium next to the films (real part)
-    n_out: np.ndarray  # index of the surroundings behind the slab
-    loss: np.ndarray  # 4 pi k d / lambda of the slab
+    kind: Integers  # (2,) OPEN, PLANAR, MATCHED, ABSORBING
+    n_outer: Floats  # (w, 2) index of the medium next to the films (real part)
+    n_out: Floats  # (w, 2) index of the surroundings behind the slab
+    loss: Floats  # (w, 2) 4 pi k d / lambda of the slab
 
 
 class Source(NamedTuple):
     """The emitter film (lossless) and the dipoles' places in it."""
 
-    eps_o: float
-    eps_e: float
-    kd: float
-    kz_positions: np.ndarray  # k0 * distance from the bottom face
-    bulk: np.ndarray  # rates of a vertical and a horizontal dipole in the bulk, vacuum = 1
-
-
-class Work(NamedTuple):
-    """Arrays that one half stack needs at the nodes of one panel."""
-
-    kz: np.ndarray
-    y: np.ndarray
-    e: np.ndarray
-    r: np.ndarray
-    r_far: np.ndarray
-    f: np.ndarray
-    t: np.ndarray
-    r_near: np.ndarray
-    g: np.ndarray
-    r_out: np.ndarray
-    alpha: np.ndarray
-    beta: np.ndarray
-    a_in: np.ndarray
-    a_out: np.ndarray
-    a_cross: np.ndarray
+    eps_o: Floats  # (w,)
+    eps_e: Floats  # (w,)
+    kd: Floats  # (w,)
+    kz_positions: Floats  # (w, z) k0 * distance from the bottom face
+    bulk: Floats  # (w, 2) rates of a vertical and a horizontal dipole in the bulk, vacuum = 1
 
 
 class Problem(NamedTuple):
-    """Everything that is known about one wavelength."""
+    """Everything the integrals need."""
 
     source: Source
     sides: Sides
@@ -67,22 +52,27 @@ class Problem(NamedTuple):
     down: Half
 
 
-class Bench(NamedTuple):
-    """All work space for one wavelength, allocated once."""
+class Work(NamedTuple):
+    """Arrays that one half stack needs at the nodes of one panel."""
 
-    up: Work
-    down: Work
-    u: np.ndarray
-    du: np.ndarray
-    shares: np.ndarray
-    spare: np.ndarray
-    values: np.ndarray
-    moments: np.ndarray
-    total: np.ndarray
-    ends: np.ndarray
+    kz: Complexes
+    y: Complexes
+    e: Complexes
+    r: Complexes
+    r_far: Complexes
+    f: Complexes
+    t: Complexes
+    r_near: Complexes
+    g: Complexes
+    r_out: Complexes
+    alpha: Floats
+    beta: Floats
+    a_in: Floats
+    a_out: Floats
+    a_cross: Complexes
 
 
-@kernel
+@inline
 def work_space(m):
     """Work arrays for a half stack of m media."""
     big = np.zeros((8, 2, m, NODES), dtype=np.complex128)
@@ -94,19 +84,81 @@ def work_space(m):
     )  # fmt: skip
 
 
-@kernel
-def bench_space(media_up, media_down, positions, columns):
-    """Work space for half stacks of so many media and so many positions."""
-    width = max(3, 2 * columns) * positions
-    return Bench(
-        work_space(media_up),
-        work_space(media_down),
-        np.zeros(NODES, dtype=np.complex128),
-        np.zeros(NODES, dtype=np.complex128),
-        np.zeros((2, columns)),
-        np.zeros(columns),
-        np.zeros((NODES, width)),
-        np.zeros((3, width)),
-        np.zeros(width),
-        np.zeros((2, 2 * 64)),
+def make_half(
+    eps_o: Complexes, eps_e: Complexes, kd: Floats, outer: Complexes, emitter: int, step: int
+) -> Half:
+    """Media from the emitter film to one side: films in the direction of step, then outer.
+
+    Parameters
+    ----------
+    eps_o, eps_e : complex (w, m)
+        Films, bottom to top.
+    kd : float (w, m)
+    outer : complex (w,)
+    emitter : int
+    step : int
+        1 for the upper half, -1 for the lower.
+    """
+    films = slice(emitter, None) if step > 0 else slice(emitter, None, -1)
+    ends = np.zeros((kd.shape[0], 1))
+    thickness = np.hstack([kd[:, films], ends])
+    thickness[:, 0] = 0.0
+    return Half(
+        np.ascontiguousarray(np.hstack([eps_o[:, films], outer[:, None]])),
+        np.ascontiguousarray(np.hstack([eps_e[:, films], outer[:, None]])),
+        np.ascontiguousarray(thickness),
     )
+
+
+def make_problem(
+    wavelength_nm: Floats,
+    eps_o: Complexes,
+    eps_e: Complexes,
+    thickness_nm: Floats,
+    outer: Complexes,
+    emitter: int,
+    position_nm: Floats,
+    sides: Sides,
+) -> Problem:
+    """Gather a device into arrays.
+
+    Parameters
+    ----------
+    wavelength_nm : float (w,)
+        In vacuum.
+    eps_o, eps_e : complex (w, m)
+        Permittivities of the films, bottom to top. Losses of the emitter film are dropped.
+    thickness_nm : float (m,)
+    outer : complex (w, 2)
+        Permittivity of the media next to the films: bottom, top.
+    emitter : int
+        Index of the emitter film.
+    position_nm : float (z,)
+        Dipoles, from the bottom face of the emitter film.
+    sides : Sides
+    """
+    k0_nm = 2.0 * np.pi / wavelength_nm
+    kd = k0_nm[:, None] * thickness_nm[None, :]
+    eps_o, eps_e = lossless_film(eps_o, emitter), lossless_film(eps_e, emitter)
+    own_o, own_e = eps_o[:, emitter].real.copy(), eps_e[:, emitter].real.copy()
+    n_o = np.sqrt(own_o)
+    source = Source(
+        own_o,
+        own_e,
+        kd[:, emitter].copy(),
+        k0_nm[:, None] * position_nm[None, :],
+        np.stack([n_o, (3.0 * own_o + own_e) / (4.0 * n_o)], axis=1),
+    )
+    return Problem(
+        source,
+        sides,
+        make_half(eps_o, eps_e, kd, outer[:, 1], emitter, 1),
+        make_half(eps_o, eps_e, kd, outer[:, 0], emitter, -1),
+    )
+
+
+def lossless_film(eps: Complexes, film: int) -> Complexes:
+    """Permittivities with k of one film set to 0 and its n kept: eps = (Re sqrt eps)^2."""
+    changed = eps.copy()
+    changed[:, film] = np.sqrt(eps[:, film]).real ** 2
+    return changed

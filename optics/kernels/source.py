@@ -10,7 +10,7 @@ the same dipole in the unbounded emitter medium.
 
 import math
 
-from optics.kernels.compiled import inline, kernel
+from optics.kernels.compiled import inline
 from optics.kernels.exits import (
     ABSORBED,
     ABSORBING,
@@ -66,7 +66,7 @@ def outgoing_factor(c, source, u, kz):
     return 0.375 * u / (abs2(kz) * source.bulk[1])
 
 
-@kernel
+@inline
 def dissipated(source, up, down, work_up, work_down, u, du, beyond_bulk, values):
     """Dissipated power at the nodes of a panel on any path.
 
@@ -229,7 +229,7 @@ def light_returns(sides, u):
     return False
 
 
-@kernel
+@inline
 def radiated(source, sides, up, down, work_up, work_down, u, du, shares, spare, values):
     """Dissipated power and all destinations at real nodes below the outer light lines.
 
