@@ -20,7 +20,7 @@ from optics.device.errors import CaseError, nearest
 from optics.device.layering import make_stack
 from optics.device.loader import Files, table_use
 from optics.device.materials import TableUse, span_text
-from optics.device.schema import CaseModel, SideModel
+from optics.device.schema import DEFAULT_UNIT, CaseModel, SideModel
 from optics.device.stack import Stack
 from optics.device.studies import check_studies
 
@@ -105,11 +105,12 @@ def _drive(draft: Draft) -> Drive | None:
     part = draft.parts.drive
     if part is None:
         return None
-    units = tuple(dict.fromkeys(emitter.unit for emitter in draft.parts.emitters if emitter))
+    units = tuple(
+        dict.fromkeys(str(raw.get("unit", DEFAULT_UNIT)) for raw in draft.raw("emitters"))
+    )
     balance = part.charge_balance
     if isinstance(balance, dict):
-        if all(draft.parts.emitters):
-            _check_units(draft, balance, units)
+        _check_units(draft, balance, units)
         by_unit = ByUnit(tuple((unit, balance[unit]) for unit in units if unit in balance))
     else:
         by_unit = ByUnit(tuple((unit, balance) for unit in units))

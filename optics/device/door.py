@@ -29,6 +29,8 @@ _EXPECTED = {
     "string_pattern_mismatch": "letters, digits, _ and - only",
 }
 
+_RANGE_KINDS = ("greater_than", "greater_than_equal", "less_than", "less_than_equal")
+
 
 @dataclass(slots=True)
 class Faults:
@@ -133,6 +135,8 @@ def _note(details: ErrorDetails, document: Mapping[str, Any], faults: Faults) ->
         _note_kind(key, value, context, faults)
     elif kind == "string_pattern_mismatch" and "[key]" in details["loc"]:
         faults.add(key, f'the name "{location[-1]}"', _EXPECTED[kind])
+    elif kind in _RANGE_KINDS:
+        faults.add(key, shown(value), _range(owner, location[-1], context))
     else:
         faults.add(key, shown(value), _expected(kind, context), _near_literal(kind, value, context))
 
@@ -162,12 +166,26 @@ def _expected(kind: str, context: Mapping[str, Any]) -> str:
     if kind == "literal_error":
         return "one of " + str(context["expected"]).replace("'", '"').replace(" or ", ", ")
     if kind == "too_short":
-        return f"at least {context['min_length']} of them"
+        return f"at least {context['min_length']}"
     if kind == "too_long":
-        return f"at most {context['max_length']} of them"
-    words = {"gt": "above", "ge": "at least", "lt": "below", "le": "at most"}
-    limits = [f"{word} {context[key]:g}" for key, word in words.items() if key in context]
-    return "a number " + " and ".join(limits) if limits else kind.replace("_", " ")
+        return f"at most {context['max_length']}"
+    return kind.replace("_", " ")
+
+
+def _range(owner: type[BaseModel] | None, key: str | int, context: Mapping[str, Any]) -> str:
+    """Range of a number, both ends where the model tells them."""
+    schema: Mapping[str, Any] = {}
+    if owner is not None:
+        schema = owner.model_json_schema()["properties"].get(key, {})
+        schema = next(iter(schema.get("anyOf", [])), schema)
+    low, above = schema.get("minimum", context.get("ge")), schema.get("exclusiveMinimum")
+    high, above = schema.get("maximum", context.get("le")), context.get("gt", above)
+    ends = [] if above is None else [f"above {above:g}"]
+    if low is not None and high is not None:
+        return f"a number from {low:g} to {high:g}"
+    ends += [] if low is None else [f"of at least {low:g}"]
+    ends += [] if high is None else [f"of at most {high:g}"]
+    return f"a number {' and '.join(ends)}"
 
 
 def _near_literal(kind: str, value: Any, context: Mapping[str, Any]) -> str | None:

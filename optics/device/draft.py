@@ -122,11 +122,15 @@ class Draft:
         """Dotted key of a list entry."""
         return entry_key(self.document, section, index)
 
-    def names(self, section: str) -> list[str | None]:
-        """Names in a list as the document has them, even where an entry is at fault."""
+    def raw(self, section: str) -> list[Mapping[str, Any]]:
+        """Entries of a list as the document has them, even where they are at fault."""
         raw = self.document.get(section)
         entries = raw if isinstance(raw, list) else []
-        names = [entry.get("name") if isinstance(entry, Mapping) else None for entry in entries]
+        return [entry if isinstance(entry, Mapping) else {} for entry in entries]
+
+    def names(self, section: str) -> list[str | None]:
+        """Names in a list as the document has them, even where an entry is at fault."""
+        names = [entry.get("name") for entry in self.raw(section)]
         return [name if isinstance(name, str) else None for name in names]
 
     def check_names(self, section: str) -> None:
@@ -149,7 +153,7 @@ def _line_nm(emitter: EmitterModel | None) -> float | None:
 def wavelength_grid(
     part: WavelengthRange | WavelengthValues | None, faults: Faults
 ) -> NDArray[np.float64] | None:
-    """Ascending wavelengths in nm, read-only; None (with the fault noted) if there are none."""
+    """Ascending wavelengths in nm, read-only; None where the range is unknown. Notes faults."""
     if part is None:
         return None
     grid = _values(part, faults) if isinstance(part, WavelengthValues) else _steps(part, faults)
@@ -185,7 +189,8 @@ def _steps(part: WavelengthRange, faults: Faults) -> NDArray[np.float64] | None:
     if abs(steps - round(steps)) > STEP_SLACK * max(steps, 1) or round(steps) < 1:
         expected = f"a step that divides the range of {span:.10g} nm into whole steps"
         faults.add("wavelength.step_nm", shown(part.step_nm), expected)
-        return None
+        # The range is known all the same, so the rest of the case can be checked against it.
+        return np.array([part.start_nm, part.stop_nm])
     if steps > MOST_WAVELENGTHS:
         faults.add(
             "wavelength.step_nm", shown(part.step_nm), f"at most {MOST_WAVELENGTHS} wavelengths"

@@ -10,29 +10,32 @@ if TYPE_CHECKING:
     from optics.device.tables import Curve
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class ByUnit(Mapping[str, float]):
     """Numbers by emission unit: an immutable mapping that can be pickled and hashed.
 
     Attributes
     ----------
-    items_ : tuple of (str, float)
+    pairs : tuple of (str, float)
         Unit and number, in the order in which the units first appear.
     """
 
-    items_: tuple[tuple[str, float], ...]
+    pairs: tuple[tuple[str, float], ...]
 
     def __getitem__(self, unit: str) -> float:
-        for name, value in self.items_:
+        for name, value in self.pairs:
             if name == unit:
                 return value
         raise KeyError(unit)
 
     def __iter__(self) -> Iterator[str]:
-        return (name for name, _ in self.items_)
+        return (name for name, _ in self.pairs)
 
     def __len__(self) -> int:
-        return len(self.items_)
+        return len(self.pairs)
+
+    def __hash__(self) -> int:
+        return hash(frozenset(self.pairs))
 
 
 @dataclass(frozen=True, slots=True)

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -15,6 +15,7 @@ from optics.device.emitter import ISOTROPIC_FRACTION, Emitter, horizontal_fracti
 from optics.device.errors import nearest
 from optics.device.loader import table_use
 from optics.device.schema import (
+    DEFAULT_UNIT,
     EmitterModel,
     ExponentialZoneModel,
     GaussianSpectrumModel,
@@ -50,17 +51,28 @@ def make_emitters(draft: Draft, stack: Stack | None) -> tuple[Emitter, ...]:
     """Emitters without fault, in the order of the file; faults are noted in the draft."""
     draft.check_names("emitters")
     _check_shares(draft)
-    made = [
-        _emitter(draft, stack, index, part)
-        for index, part in enumerate(draft.parts.emitters)
-        if part is not None
-    ]
+    made = []
+    for index, part in enumerate(draft.parts.emitters):
+        if part is not None:
+            made.append(_emitter(draft, stack, index, part))
+        else:
+            _check_faulty(draft, index)
     return tuple(emitter for emitter in made if emitter is not None)
+
+
+def _check_faulty(draft: Draft, index: int) -> None:
+    """Check what can be of an emitter that has other faults, so that all come to light."""
+    raw = draft.raw("emitters")[index]
+    key = draft.key("emitters", index)
+    if isinstance(raw.get("layer"), str):
+        _film_index(draft, key, raw["layer"], str(raw.get("name", "an emitter")))
+    given = [name for name in ORIENTATION_KEYS if name in raw]
+    _one_orientation(draft, key, given, raw)
 
 
 def _emitter(draft: Draft, stack: Stack | None, index: int, part: EmitterModel) -> Emitter | None:
     key = draft.key("emitters", index)
-    film_index = _film_index(draft, key, part)
+    film_index = _film_index(draft, key, part.layer, part.name)
     horizontal = _horizontal_fraction(draft, key, part)
     spectrum = _spectrum(draft, key, part)
     thickness = _thickness_nm(draft, film_index)
@@ -87,18 +99,20 @@ def _emitter(draft: Draft, stack: Stack | None, index: int, part: EmitterModel) 
     return emitter
 
 
-def _film_index(draft: Draft, key: str, part: EmitterModel) -> int | None:
+def _film_index(draft: Draft, key: str, layer: str, emitter: str) -> int | None:
     names = draft.names("layers")
-    if part.layer not in names:
+    if layer not in names:
         known = [name for name in names if name]
-        found = f"{shown(part.layer)}, no such layer"
-        expected = "the name of a layer" + (f": {', '.join(known)}" if known else "")
-        draft.faults.add(f"{key}.layer", found, expected, nearest(part.layer, known))
+        if not known:  # which is a fault of its own
+            return None
+        found = f"{shown(layer)}, no such layer"
+        expected = f"the name of a layer: {', '.join(known)}"
+        draft.faults.add(f"{key}.layer", found, expected, nearest(layer, known))
         return None
-    index = names.index(part.layer)
+    index = names.index(layer)
     if _thickness_nm(draft, index) == 0:
         layer_key = f"{draft.key('layers', index)}.thickness_nm"
-        draft.faults.add(layer_key, "0", f"above 0 nm, since {part.name} emits in this layer")
+        draft.faults.add(layer_key, "0", f"above 0 nm, since {emitter} emits in this layer")
         return None
     return index
 
@@ -112,14 +126,21 @@ def _horizontal_fraction(draft: Draft, key: str, part: EmitterModel) -> float | 
     given = [name for name in ORIENTATION_KEYS if getattr(part, name) is not None]
     if not given:
         return ISOTROPIC_FRACTION
+    if not _one_orientation(draft, key, given, part.model_dump()):
+        return None
+    return horizontal_fraction_from(given[0], getattr(part, given[0]))
+
+
+def _one_orientation(
+    draft: Draft, key: str, given: Sequence[str], values: Mapping[str, Any]
+) -> bool:
     if len(given) > 1:
         draft.faults.add(
             f"{key}.{given[1]}",
-            f"{shown(getattr(part, given[1]))} beside {given[0]}",
+            f"{shown(values[given[1]])} beside {given[0]}",
             f"one of {', '.join(ORIENTATION_KEYS)}",
         )
-        return None
-    return horizontal_fraction_from(given[0], getattr(part, given[0]))
+    return len(given) <= 1
 
 
 def _spectrum(draft: Draft, key: str, part: EmitterModel) -> Spectrum | None:
@@ -135,6 +156,11 @@ def _spectrum(draft: Draft, key: str, part: EmitterModel) -> Spectrum | None:
         if curve is None:
             return None
         draft.tables.append(table_use(curve))
+        stated = curve.header.get("quantity", described.quantity)
+        if stated != described.quantity:
+            found = f"{shown(described.quantity)}, while the table says {stated}"
+            draft.faults.add(f"{key}.spectrum.quantity", found, "what the table says")
+            return None
         if not curve.y.max() > 0:
             draft.faults.add(curve_key, "a spectrum that is zero everywhere", "some light")
             return None
@@ -294,19 +320,20 @@ def _check_point(draft: Draft, key: str, emitter: Emitter, distance_nm: float) -
 
 
 def _check_shares(draft: Draft) -> None:
-    """Shares of the emitters of a unit sum to 1; checked only where all of them parsed."""
-    parts: Sequence[EmitterModel | None] = draft.parts.emitters
-    if not all(parts):
-        return
-    units: dict[str, list[EmitterModel]] = {}
-    for part in parts:
-        if part is not None:
-            units.setdefault(part.unit, []).append(part)
+    """Check that the shares of the emitters of a unit sum to 1."""
+    units: dict[Any, list[Mapping[str, Any]]] = {}
+    for raw in draft.raw("emitters"):
+        share = raw.get("share", 1.0)
+        if isinstance(share, bool) or not isinstance(share, int | float):
+            return
+        if not math.isfinite(share):
+            return
+        units.setdefault(str(raw.get("unit", DEFAULT_UNIT)), []).append({**raw, "share": share})
     for unit, members in units.items():
-        total = math.fsum(member.share for member in members)
-        if abs(total - 1) > SHARE_SUM_SLACK:
-            listed = " + ".join(f"{member.share:.10g}" for member in members)
-            names = ", ".join(member.name for member in members)
+        total = math.fsum(member["share"] for member in members)
+        if not abs(total - 1) <= SHARE_SUM_SLACK:
+            listed = " + ".join(f"{member['share']:.10g}" for member in members)
+            names = ", ".join(str(member.get("name", "?")) for member in members)
             draft.faults.add(
                 "emitters",
                 f"shares {listed} = {total:.10g} in unit {unit} ({names})",

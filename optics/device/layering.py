@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from collections.abc import Mapping
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -21,10 +22,7 @@ def make_stack(draft: Draft) -> Stack | None:
     """Stack of a case; None if something in it is at fault (noted in the draft)."""
     draft.check_names("layers")
     uses = _Uses(draft)
-    films = [
-        _film(draft, uses, index) if layer else None
-        for index, layer in enumerate(draft.parts.layers)
-    ]
+    films = [_film(draft, uses, index) for index in range(len(draft.parts.layers))]
     substrate = _slab(draft, uses, "substrate", draft.parts.substrate)
     cover = _slab(draft, uses, "cover", draft.parts.cover)
     surroundings = draft.parts.surroundings
@@ -99,13 +97,22 @@ def _covering(
 def _film(draft: Draft, uses: _Uses, index: int) -> Film | None:
     layer = draft.parts.layers[index]
     if layer is None:
+        _check_name(draft, draft.raw("layers")[index], draft.key("layers", index))
         return None
     material = uses.material(layer.material, f"{draft.key('layers', index)}.material")
     return Film(layer.name, material, layer.thickness_nm) if material else None
 
 
+def _check_name(draft: Draft, raw: Any, key: str) -> None:
+    """Look up the material of an entry that has other faults, so that all come to light."""
+    name = raw.get("material") if isinstance(raw, Mapping) else None
+    if isinstance(name, str):
+        draft.materials.get(name, f"{key}.material")
+
+
 def _slab(draft: Draft, uses: _Uses, section: str, part: SlabModel | None) -> Slab | None:
     if part is None:
+        _check_name(draft, draft.document.get(section), section)
         return None
     key = f"{section}.material"
     material = uses.material(part.material, key)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
@@ -203,6 +204,7 @@ class Materials:
         ]
         present = [(material, fraction) for material, fraction in components if material]
         if len(present) < len(components):
+            self._check_sum(f"{key}.mix", part)
             return None
         # Faults of a mixture name its components as the case file does.
         named = [
@@ -210,3 +212,9 @@ class Materials:
             for (material, fraction), component in zip(present, part.mix, strict=True)
         ]
         return models.mix(name, named, part.rule)
+
+    def _check_sum(self, key: str, part: MixModel) -> None:
+        """Check the fractions of a mixture that cannot be made for other reasons."""
+        total = math.fsum(part.mix.values())
+        if abs(total - 1) > models.FRACTION_SUM_SLACK:
+            self.faults.add(key, f"fractions that sum to {total:.10g}", "a sum of 1")

@@ -34,6 +34,8 @@ from optics.device.schema_parts import (
 )
 from optics.device.study_schema import OptimizeModel, SweepModel, ToleranceModel
 
+DEFAULT_UNIT = "device"
+
 
 class WavelengthRange(Part):
     """Even steps, both ends included."""
@@ -203,7 +205,7 @@ class EmitterModel(Part):
 
     name: Name = Field(description="a name that no other emitter has")
     layer: str = Field(description="name of a layer")
-    unit: Name = Field(default="device", description="emission unit of a tandem")
+    unit: Name = Field(default=DEFAULT_UNIT, description="emission unit of a tandem")
     spectrum: SpectrumModel = Field(
         description="a table: peak_nm with fwhm_nm, line_nm, or table with quantity"
     )

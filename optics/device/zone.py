@@ -106,9 +106,10 @@ def zone_quadrature(
         raise EmptyZoneError
     inner = {kink for kink in zone.kinks_nm(thickness_nm) if low < kink < high}
     edges = [low, *sorted(inner), high]
+    longest = min(scale_nm, zone.longest_panel_nm(thickness_nm, interval_nm))
     positions, weights = [], []
     for start, stop in pairwise(edges):
-        for left, right, fill in _panels(start, stop, zone, thickness_nm, singular_nm, scale_nm):
+        for left, right, fill in _panels(start, stop, thickness_nm, singular_nm, longest):
             node, weight = _gauss_legendre(_nodes_for(fill, order))
             positions.append((left + right) / 2 + (right - left) / 2 * node)
             weights.append((right - left) / 2 * weight)
@@ -133,45 +134,34 @@ def _nodes_for(fill: float, order: int) -> int:
 def _panels(
     start: float,
     stop: float,
-    zone: Zone,
     thickness_nm: float,
     singular_nm: tuple[float, float],
-    scale_nm: float,
+    longest_nm: float,
 ) -> list[tuple[float, float, float]]:
     """Panels (left, right, share of the allowed length) that fill a smooth stretch.
 
     Panels are cut off at whichever end allows the shorter one, so both ends are graded.
     """
-    left_end, right_end = start, stop
     lower: list[tuple[float, float, float]] = []
     upper: list[tuple[float, float, float]] = []
-    while right_end > left_end:
-        length = right_end - left_end
-        below = left_end + singular_nm[0]
-        above = thickness_nm - right_end + singular_nm[1]
-        smooth = min(scale_nm, zone.longest_panel_nm(left_end, right_end, thickness_nm))
-        at_left = min(smooth, below, (length + above) / 2)
-        at_right = min(smooth, above, (length + below) / 2)
-        # The density may vary faster at one end than in the middle of what is left.
-        at_left = min(at_left, zone.longest_panel_nm(left_end, left_end, thickness_nm))
-        at_right = min(at_right, zone.longest_panel_nm(right_end, right_end, thickness_nm))
-        at_left, at_right = (max(cut, _SMALLEST_PANEL_NM) for cut in (at_left, at_right))
-        allowed = min(smooth, max(below, _SMALLEST_PANEL_NM), max(above, _SMALLEST_PANEL_NM))
+    left, right = start, stop
+    while True:
+        length = right - left
+        below = max(left + singular_nm[0], _SMALLEST_PANEL_NM)
+        above = max(thickness_nm - right + singular_nm[1], _SMALLEST_PANEL_NM)
+        allowed = min(longest_nm, below, above)
         if length <= allowed * (1 + 1e-9):
             # Without any limit nothing is known about the integrand: the full order then.
-            lower.append((left_end, right_end, length / allowed if allowed < math.inf else 1.0))
-            break
-        if at_left <= at_right:
-            cut = left_end + length / max(math.ceil(length / at_left - 1e-9), 2)
-            cut = min(cut, left_end + at_left)
-            lower.append((left_end, cut, min(1.0, (cut - left_end) / at_left)))
-            left_end = cut
+            lower.append((left, right, length / allowed if allowed < math.inf else 1.0))
+            return lower + upper[::-1]
+        # Panels from here to the end in equal parts, unless growing distance allows longer ones.
+        cut = length / max(math.ceil(length / allowed - 1e-9), 2)
+        if below <= above:
+            lower.append((left, left + cut, cut / allowed))
+            left += cut
         else:
-            cut = right_end - length / max(math.ceil(length / at_right - 1e-9), 2)
-            cut = max(cut, right_end - at_right)
-            upper.append((cut, right_end, min(1.0, (right_end - cut) / at_right)))
-            right_end = cut
-    return lower + upper[::-1]
+            upper.append((right - cut, right, cut / allowed))
+            right -= cut
 
 
 def absorber_distances(

@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 from abc import ABC, abstractmethod
 from dataclasses import dataclass
+from functools import partial
 from typing import TYPE_CHECKING, ClassVar, Literal
 
 import numpy as np
@@ -46,8 +47,8 @@ class Zone(ABC):
         """Part of the interval outside which the density is negligible."""
         return interval_nm
 
-    def longest_panel_nm(self, low_nm: float, high_nm: float, thickness_nm: float) -> float:
-        """Longest quadrature panel that resolves the density between two positions."""
+    def longest_panel_nm(self, thickness_nm: float, interval_nm: tuple[float, float]) -> float:
+        """Longest panel of 8 Gauss nodes that resolves the density to about 1e-11."""
         return math.inf
 
 
@@ -139,9 +140,9 @@ class ExponentialZone(Zone):
             return low, min(high, low + reach)
         return max(low, high - reach), high
 
-    def longest_panel_nm(self, low_nm: float, high_nm: float, thickness_nm: float) -> float:
-        """Two decay lengths."""
-        return 2 * self.decay_nm
+    def longest_panel_nm(self, thickness_nm: float, interval_nm: tuple[float, float]) -> float:
+        """Four decay lengths."""
+        return 4 * self.decay_nm
 
 
 @dataclass(frozen=True, slots=True)
@@ -190,13 +191,11 @@ class GaussianZone(Zone):
         reach = math.sqrt(offset**2 + 2 * _NEGLIGIBLE_EXPONENT * self.width_nm**2)
         return max(interval_nm[0], center - reach), min(interval_nm[1], center + reach)
 
-    def longest_panel_nm(self, low_nm: float, high_nm: float, thickness_nm: float) -> float:
-        """1.5 standard deviations; far from the center two local decay lengths."""
-        center = self.at * thickness_nm
-        nearest = max(low_nm - center, center - high_nm, 0.0)
-        if nearest <= self.width_nm:
-            return 1.5 * self.width_nm
-        return max(2 * self.width_nm**2 / nearest, self.width_nm / 8)
+    def longest_panel_nm(self, thickness_nm: float, interval_nm: tuple[float, float]) -> float:
+        """2.5 standard deviations, or four local decay lengths if the center lies outside."""
+        offset = self._offset_nm(thickness_nm, interval_nm)
+        wide = 2.5 * self.width_nm
+        return min(wide, 4 * self.width_nm**2 / offset) if offset > 0 else wide
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -223,10 +222,16 @@ class TableZone(Zone):
         cls, points: NDArray[np.float64], values: NDArray[np.float64], *, relative: bool
     ) -> TableZone:
         """Zone with read-only copies of the arrays."""
-        own_points, own_values = np.array(points), np.array(values)
+        own_points = np.array(points, dtype=np.float64)
+        own_values = np.array(values, dtype=np.float64)
         own_points.setflags(write=False)
         own_values.setflags(write=False)
         return cls(own_points, own_values, relative)
+
+    def __reduce__(self) -> tuple[object, ...]:
+        """Pickle through `from_table`, which makes the arrays read-only again."""
+        restore = partial(TableZone.from_table, relative=self.relative)
+        return (restore, (self.points, self.values))
 
     def points_nm(self, thickness_nm: float) -> NDArray[np.float64]:
         """Table positions in nm from the bottom face."""
