@@ -375,6 +375,14 @@ def test_stored_records_add_up(case: ReferenceCase) -> None:
         assert stored["dissipated"] == pytest.approx(total, rel=1e-9)
 
 
+def test_unresolved_mode_is_refused() -> None:
+    """A guide that leaks through 2.5 um into a dense medium: a mode 1e-17 from the axis."""
+    films = [film(1.5, 400), film(1.75, 80), film(1.5, 2500)]
+    leaky = Reference(385, films, 1.5**2, 1.72**2, 1, 30.0)
+    with pytest.raises(ArithmeticError, match="too close to the axis"):
+        leaky.destinations()
+
+
 def test_dipole_on_an_absorber_is_refused() -> None:
     touching = Reference(550, [film(1.7, 30)], -12 + 0.5j, 1.7**2, 0, 0.0)
     with pytest.raises(ValueError, match="touches an absorber"):

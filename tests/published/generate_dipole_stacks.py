@@ -84,6 +84,9 @@ STACKS: dict[str, dict[str, Any]] = {
     "birefringent_emitter": stack(
         "uniaxial emitter film, n_e < n_o", 550,
         [ITO, HTL, film(1.80, 30, 1.66), ETL, metal(AL550, 100)], 2, 10, 1.52, substrate=slab()),
+    "birefringent_emitter_positive": stack(
+        "uniaxial emitter film, n_e > n_o, on silver", 550,
+        [ITO, HTL, film(1.70, 30, 1.90), ETL, metal(AG550, 100)], 2, 20, 1.52, substrate=slab()),
     "two_slabs_unequal_planar": stack(
         "open stack between unequal slabs, both planar, one in water", 550,
         [film(1.9 + 0.005j, 90), *OPEN], 2, 7, 1.52, 1.65,
@@ -145,8 +148,8 @@ STACKS: dict[str, dict[str, Any]] = {
     "high_q_cavity": stack("600 nm cavity between 35 nm silver", 550,
                            [metal(AG550, 35), film(1.7, 600), metal(AG550, 35)], 1, 260, 1.52,
                            substrate=slab()),
-    "near_cutoff": stack("TE0 of an asymmetric guide just above its cut-off", 550,
-                         [film(1.8, 46.5)], 0, 20, 1.5),
+    "near_cutoff": stack("TE0 of an asymmetric guide just above its cut-off at 74.2 nm", 550,
+                         [film(1.8, 75.0)], 0, 20, 1.5),
     "lossless_metal": stack("Re eps < 0 and no loss at all: modes on the axis", 550,
                             [film(1.7, 40), metal(-9.0, 30), film(1.6, 50)], 0, 20, 1.5,
                             substrate=slab()),
