@@ -58,13 +58,19 @@ def shown(value: Any) -> str:
         return "true" if value else "false"
     if isinstance(value, str):
         return f'"{value}"'
-    if isinstance(value, int | float):
+    if isinstance(value, int):
+        return (
+            str(value)
+            if abs(value) < 10**15
+            else f"{str(value)[:5]}... of {len(str(value))} digits"
+        )
+    if isinstance(value, float):
         return f"{value:.10g}"
     if isinstance(value, Mapping):
         return "a table with " + (", ".join(map(str, value)) or "nothing in it")
     if isinstance(value, Sequence):
         return f"a list of {len(value)}"
-    return f"{type(value).__name__} {value}"
+    return f"the {type(value).__name__} {value}"
 
 
 def entry_key(document: Mapping[str, Any], section: str, index: int) -> str:
@@ -145,7 +151,8 @@ def _note_kind(key: str, value: Any, context: Mapping[str, Any], faults: Faults)
     """No kind, or more than one, of a table that comes in several kinds."""
     options = str(context["options"]).split()
     if not isinstance(value, Mapping):
-        faults.add(key, shown(value), f"a table with {context['expected']}")
+        inside = f"{context['key']}, " if context["key"] else ""
+        faults.add(key, shown(value), f"a table with {inside}{context['expected']}")
     elif context["key"]:
         shape_key = str(context["key"])
         shape = value.get(shape_key)

@@ -68,7 +68,11 @@ class Parts:
                 values[name] = [parse_part(name, entry) for entry in listed]
             elif name == "materials":
                 named = raw if isinstance(raw, Mapping) else {}
-                values[name] = {key: parse_part(name, entry) for key, entry in named.items()}
+                values[name] = {
+                    key: parse_part(name, entry)
+                    for key, entry in named.items()
+                    if isinstance(key, str)
+                }
             elif name in document:
                 values[name] = parse_part(name, raw)
             else:
@@ -186,16 +190,16 @@ def _steps(part: WavelengthRange, faults: Faults) -> NDArray[np.float64] | None:
         return None
     span = part.stop_nm - part.start_nm
     steps = span / part.step_nm
-    if abs(steps - round(steps)) > STEP_SLACK * max(steps, 1) or round(steps) < 1:
-        expected = f"a step that divides the range of {span:.10g} nm into whole steps"
-        faults.add("wavelength.step_nm", shown(part.step_nm), expected)
-        # The range is known all the same, so the rest of the case can be checked against it.
-        return np.array([part.start_nm, part.stop_nm])
     if steps > MOST_WAVELENGTHS:
         faults.add(
             "wavelength.step_nm", shown(part.step_nm), f"at most {MOST_WAVELENGTHS} wavelengths"
         )
         return None
+    if abs(steps - round(steps)) > STEP_SLACK * max(steps, 1) or round(steps) < 1:
+        expected = f"a step that divides the range of {span:.10g} nm into whole steps"
+        faults.add("wavelength.step_nm", shown(part.step_nm), expected)
+        # The range is known all the same, so the rest of the case can be checked against it.
+        return np.array([part.start_nm, part.stop_nm])
     return np.linspace(part.start_nm, part.stop_nm, round(steps) + 1)
 
 

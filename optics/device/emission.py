@@ -324,10 +324,8 @@ def _check_shares(draft: Draft) -> None:
     units: dict[Any, list[Mapping[str, Any]]] = {}
     for raw in draft.raw("emitters"):
         share = raw.get("share", 1.0)
-        if isinstance(share, bool) or not isinstance(share, int | float):
-            return
-        if not math.isfinite(share):
-            return
+        if isinstance(share, bool) or not isinstance(share, int | float) or not 0 <= share <= 1:
+            return  # noted before
         units.setdefault(str(raw.get("unit", DEFAULT_UNIT)), []).append({**raw, "share": share})
     for unit, members in units.items():
         total = math.fsum(member["share"] for member in members)

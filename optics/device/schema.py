@@ -30,6 +30,8 @@ from optics.device.schema_parts import (
     Positive,
     PositiveShare,
     Share,
+    Thickness,
+    ZoneLength,
     kinds,
 )
 from optics.device.study_schema import OptimizeModel, SweepModel, ToleranceModel
@@ -99,7 +101,7 @@ class LayerModel(Part):
 
     name: Name = Field(description="a name that no other layer has")
     material: str = Field(description="name of a material")
-    thickness_nm: AtLeastZero = Field(description="thickness in nm, at least 0")
+    thickness_nm: Thickness = Field(description="thickness in nm, at least 0")
 
 
 class GaussianSpectrumModel(Part):
@@ -155,7 +157,7 @@ class ExponentialZoneModel(Part):
 
     shape: Literal["exponential"]
     start: FaceName = Field(alias="from", description='"top" or "bottom"')
-    decay_nm: Positive = Field(description="distance in nm over which it falls to 1/e")
+    decay_nm: ZoneLength = Field(description="distance in nm over which it falls to 1/e")
 
 
 class GaussianZoneModel(Part):
@@ -163,7 +165,7 @@ class GaussianZoneModel(Part):
 
     shape: Literal["gaussian"]
     at: Share = Field(description="0 (bottom face) to 1")
-    width_nm: Positive = Field(description="standard deviation in nm")
+    width_nm: ZoneLength = Field(description="standard deviation in nm")
 
 
 class TableZoneModel(Part):

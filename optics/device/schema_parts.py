@@ -12,6 +12,10 @@ TAG_MARK = "kind:"
 Name = Annotated[str, Field(pattern=NAME_PATTERN)]
 Positive = Annotated[float, Field(gt=0)]
 AtLeastZero = Annotated[float, Field(ge=0)]
+# Beyond a centimeter a film is no coherent film any more; below a millionth of a nanometer a zone
+# is a point.
+Thickness = Annotated[float, Field(ge=0, le=1e7)]
+ZoneLength = Annotated[float, Field(ge=1e-6)]
 Share = Annotated[float, Field(ge=0, le=1)]
 PositiveShare = Annotated[float, Field(gt=0, le=1)]
 FaceName = Literal["top", "bottom"]

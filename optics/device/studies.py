@@ -9,7 +9,7 @@ from pydantic import BaseModel
 
 from optics.device.address import orientation_group, value_at
 from optics.device.door import shown
-from optics.device.draft import STEP_SLACK, Draft
+from optics.device.draft import MOST_WAVELENGTHS, STEP_SLACK, Draft
 from optics.device.errors import CaseError
 from optics.device.study_schema import (
     AxisModel,
@@ -77,7 +77,9 @@ def _check_axis(draft: Draft, key: str, axis: AxisModel) -> None:
         draft.faults.add(f"{key}.stop", shown(axis.stop), f"above start = {axis.start:.10g}")
         return
     steps = (axis.stop - axis.start) / axis.step
-    if abs(steps - round(steps)) > STEP_SLACK * max(steps, 1) or round(steps) < 1:
+    if steps > MOST_WAVELENGTHS:
+        draft.faults.add(f"{key}.step", shown(axis.step), f"at most {MOST_WAVELENGTHS} values")
+    elif abs(steps - round(steps)) > STEP_SLACK * max(steps, 1) or round(steps) < 1:
         span = axis.stop - axis.start
         draft.faults.add(f"{key}.step", shown(axis.step), f"a step that divides {span:.10g}")
 

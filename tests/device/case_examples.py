@@ -3,7 +3,13 @@
 from __future__ import annotations
 
 import copy
+from pathlib import Path
 from typing import Any
+
+import pytest
+
+from optics.device.case import case_from_dict
+from optics.device.errors import CaseError
 
 _FULL: dict[str, Any] = {
     "title": "invented bottom-emitting stack",
@@ -92,3 +98,10 @@ def changed(path: str, value: Any, document: dict[str, Any] | None = None) -> di
     else:
         place[last] = value
     return document
+
+
+def faults_of(document: dict[str, Any], folder: Path | str = ".") -> list[str]:
+    """Lines of the error that a document at fault must raise."""
+    with pytest.raises(CaseError) as error:
+        case_from_dict(document, folder, "my.toml")
+    return str(error.value).splitlines()
