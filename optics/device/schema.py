@@ -6,6 +6,8 @@ says what belongs there; messages about a missing key and the JSON Schema use it
 
 from __future__ import annotations
 
+import json
+import sys
 from typing import Annotated, Any, Literal
 
 from pydantic import BaseModel, Discriminator, Field, Tag
@@ -310,3 +312,13 @@ def json_schema() -> dict[str, Any]:
         **schema,
         "title": "outcouple case file",
     }
+
+
+def schema_text() -> str:
+    """Return the JSON Schema as ``docs/case.schema.json`` holds it."""
+    return json.dumps(json_schema(), indent=2, ensure_ascii=False) + "\n"
+
+
+if __name__ == "__main__":  # python -m optics.device.schema > docs/case.schema.json
+    sys.stdout.reconfigure(encoding="utf-8")  # type: ignore[union-attr]
+    sys.stdout.write(schema_text())
