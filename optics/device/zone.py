@@ -44,6 +44,8 @@ __all__ = [
 
 # Next to an absorber at zero distance the panels shrink geometrically down to this.
 _SMALLEST_PANEL_NM = 1e-3
+# Share of the zone below which a stretch between two kinks carries nothing that counts.
+_SMALLEST_STRETCH = 1e-9
 
 
 class EmptyZoneError(ValueError):
@@ -104,8 +106,7 @@ def zone_quadrature(
     low, high = zone.support_nm(thickness_nm, interval_nm)
     if not high > low:
         raise EmptyZoneError
-    inner = {kink for kink in zone.kinks_nm(thickness_nm) if low < kink < high}
-    edges = [low, *sorted(inner), high]
+    edges = _edges(zone.kinks_nm(thickness_nm), low, high)
     longest = min(scale_nm, zone.longest_panel_nm(thickness_nm, interval_nm))
     positions, weights = [], []
     for start, stop in pairwise(edges):
@@ -119,6 +120,20 @@ def zone_quadrature(
     if not total > 0:
         raise EmptyZoneError
     return position, weight / total
+
+
+def _edges(kinks_nm: tuple[float, ...], low: float, high: float) -> list[float]:
+    """List the ends of the smooth stretches between `low` and `high`.
+
+    Kinks nearer than rounding to an end or to each other are left out: nodes of a stretch of no
+    length would fall on the face itself.
+    """
+    gap = _SMALLEST_STRETCH * (high - low)
+    edges = [low]
+    for kink in sorted(kinks_nm):
+        if edges[-1] + gap < kink < high - gap:
+            edges.append(kink)
+    return [*edges, high]
 
 
 def _nodes_for(fill: float, order: int) -> int:

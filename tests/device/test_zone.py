@@ -7,7 +7,7 @@ import pickle
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 from numpy.testing import assert_allclose
 
@@ -184,6 +184,7 @@ def zones() -> st.SearchStrategy[Zone]:
     st.sampled_from([60.0, 150.0]),
     st.sampled_from([0.0, 0.2]),
 )
+@example(GaussianZone(0.9999999999999999, 1.0), 2.00001, 0.0, 0.0, 60.0, 0.0)
 def test_weights_are_a_distribution_inside_the_interval(
     zone: Zone, thickness: float, below: float, above: float, scale: float, cut: float
 ) -> None:
