@@ -55,8 +55,8 @@ class Drive:
     """
 
     charge_balance: ByUnit
-    current_density_mA_cm2: float | None = None  # noqa: N815 (units keep their capitals)
-    voltage_V: float | None = None  # noqa: N815
+    current_density_mA_cm2: float | None = None
+    voltage_V: float | None = None
     aperture_ratio: float = 1.0
     duty: float = 1.0
 

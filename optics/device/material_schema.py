@@ -61,9 +61,9 @@ class SellmeierModel(Part):
 class LorentzDrudeTerms(Part):
     """Free and bound electrons."""
 
-    plasma_eV: AtLeastZero = Field(description="plasma energy in eV")  # noqa: N815
+    plasma_eV: AtLeastZero = Field(description="plasma energy in eV")
     f0: AtLeastZero = Field(description="strength of the free electrons")
-    gamma0_eV: AtLeastZero = Field(description="damping of the free electrons in eV")  # noqa: N815
+    gamma0_eV: AtLeastZero = Field(description="damping of the free electrons in eV")
     oscillators: list[Annotated[list[AtLeastZero], Field(min_length=3, max_length=3)]] = Field(
         default=[], description="a list of [f, Γ in eV, ω in eV]"
     )

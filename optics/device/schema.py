@@ -243,10 +243,10 @@ class DriveModel(Part):
     """Electrical side."""
 
     charge_balance: ChargeBalance = Field(default=1.0, description="a number or a table by unit")
-    current_density_mA_cm2: Positive | None = Field(  # noqa: N815
+    current_density_mA_cm2: Positive | None = Field(
         default=None, description="average over the display area"
     )
-    voltage_V: Positive | None = Field(default=None, description="drive voltage")  # noqa: N815
+    voltage_V: Positive | None = Field(default=None, description="drive voltage")
     aperture_ratio: PositiveShare = Field(default=1.0, description="emitting share of the area")
     duty: PositiveShare = Field(default=1.0, description="share of the time")
 
