@@ -1,3 +1,38 @@
-"""Light outcoupling of thin-film light-emitting devices."""
+"""Light outcoupling of thin-film light-emitting devices.
 
-__version__ = "0.1.0"
+Names load what they need when they are first used, so that importing the package is quick.
+"""
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+from optics._version import VERSION as __version__
+
+if TYPE_CHECKING:
+    from optics.device.case import Case, read_case
+    from optics.device.errors import CaseError
+    from optics.outcome.budget import Budget, budget
+
+_HOMES = {
+    "Budget": "optics.outcome.budget",
+    "Case": "optics.device.case",
+    "CaseError": "optics.device.errors",
+    "budget": "optics.outcome.budget",
+    "read_case": "optics.device.case",
+}
+
+__all__ = ["Budget", "Case", "CaseError", "__version__", "budget", "read_case"]
+
+
+def __getattr__(name: str) -> Any:
+    """Load a public name from its home on first use."""
+    if name not in _HOMES:
+        raise AttributeError(f"module 'optics' has no attribute {name!r}")
+    value = getattr(import_module(_HOMES[name]), name)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    """List the public names, loaded or not."""
+    return sorted(__all__)

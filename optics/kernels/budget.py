@@ -119,7 +119,9 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     error = np.maximum(error, _disagreement(parts, scale))
     careful = (error > tolerance) | backward_modes_possible(problem)
     for row in np.flatnonzero(careful):
-        error[row] = _settle(problem, row, lines[row], start[row], far[row], scale, per_panel, parts)
+        error[row] = _settle(
+            problem, row, lines[row], start[row], far[row], scale, per_panel, parts
+        )
     return _collect(parts, plasmon, error, panels, careful)
 
 

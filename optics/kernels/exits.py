@@ -116,5 +116,3 @@ def whole_stack(phase, r_a, r_b, flux_out, ports_a, ports_b, absorbed_a, absorbe
     absorbed += 2.0 * (toward_b.conjugate() * cross).real
     through = abs2(ports_a * toward_a) * flux_out[0]
     return abs2(r), through / flux_out[1], absorbed / flux_out[1]
-
-

@@ -41,9 +41,7 @@ class Careful:
             octaves = lo * 2.0 ** np.arange(_FAR_OCTAVES + 1)
             intervals = np.column_stack([octaves[:-1], octaves[1:]])
             tail = Tasks.on(np.array([self._row]), TAIL, octaves[-1:], hi)
-            value, miss, _ = run_dissipated(
-                self._problem, tail, self._scale, self._tolerance
-            )
+            value, miss, _ = run_dissipated(self._problem, tail, self._scale, self._tolerance)
             found, error = found + value[0], float(miss[0])
         while intervals.size and hi > lo:
             straight, miss = self._on_axis(intervals)

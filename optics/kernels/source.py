@@ -8,7 +8,6 @@ Channels: 0 vertical (p), 1 horizontal p, 2 horizontal s. Everything is divided 
 the same dipole in the unbounded emitter medium.
 """
 
-import math
 
 from optics.kernels.compiled import inline
 from optics.kernels.exits import (
@@ -21,10 +20,8 @@ from optics.kernels.exits import (
     MATCHED,
     MATCHED_BOTTOM,
     MATCHED_TOP,
-    OPEN,
     PLANAR,
     SUBSTRATE,
-    TOTAL,
     exit_line,
     passage,
     settle_bounces,
@@ -36,7 +33,17 @@ from optics.kernels.field import (
     absorbed_from_outside,
     film_coefficients,
 )
-from optics.kernels.halfstack import P, S, abs2, exp_i, inward, outward, reciprocal, reflection, waves
+from optics.kernels.halfstack import (
+    P,
+    S,
+    abs2,
+    exp_i,
+    inward,
+    outward,
+    reciprocal,
+    reflection,
+    waves,
+)
 from optics.kernels.paths import NODES
 
 
@@ -157,12 +164,8 @@ def exit_shares(sides, kind_b, kind_t, pol, u, stack, p_b, p_t, shares):
         exit_line(kind_b, sides.n_outer[0], sides.n_out[0]),
         exit_line(kind_t, sides.n_outer[1], sides.n_out[1]),
     )
-    out_b, lost_b, back_b = passage(
-        kind_b, pol, u, sides.n_outer[0], sides.n_out[0], sides.loss[0]
-    )
-    out_t, lost_t, back_t = passage(
-        kind_t, pol, u, sides.n_outer[1], sides.n_out[1], sides.loss[1]
-    )
+    out_b, lost_b, back_b = passage(kind_b, pol, u, sides.n_outer[0], sides.n_out[0], sides.loss[0])
+    out_t, lost_t, back_t = passage(kind_t, pol, u, sides.n_outer[1], sides.n_out[1], sides.loss[1])
     if u >= exits:
         # Trapped: counted at first arrival in a slab, or swallowed by absorbing surroundings.
         shares[ABSORBED if kind_b == ABSORBING else SUBSTRATE] += p_b
@@ -278,5 +281,3 @@ def radiated(source, sides, up, down, work_up, work_down, u, du, shares, spare, 
                         values[i, base + k * nz + q] += (
                             sent_down * shares[0, k] + sent_up * shares[1, k]
                         )
-
-

@@ -1,0 +1,106 @@
+"""Averages over spectrum, zone and orientation, and the chain from charge to photon.
+
+Symbols as in the definitions: s(lambda) intrinsic photon spectrum, F dissipated power, q
+intrinsic radiative yield, zone(z) density of exciton formation, X any destination.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+
+from optics.kernels import budget as engine
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from optics.device.emitter import Emitter
+    from optics.outcome.light import Light
+
+#: Destinations in the order in which they are reported, with their place in the engine's result.
+DESTINATIONS = {
+    "air_bottom": engine.AIR_BOTTOM,
+    "air_top": engine.AIR_TOP,
+    "substrate": engine.SUBSTRATE,
+    "cover": engine.COVER,
+    "guided": engine.GUIDED,
+    "surface_plasmon": engine.SURFACE_PLASMON,
+    "absorbed": engine.ABSORBED,
+}
+_PLACES = list(DESTINATIONS.values())
+
+
+class Emission(NamedTuple):
+    """What becomes of the excitons and photons of one emitter."""
+
+    purcell_factor: float
+    decay_rate_ratio: float
+    radiative_efficiency: float
+    shares: NDArray[np.float64]  # (engine.OUTCOMES,) of the dissipated photons
+    emitted_profile: NDArray[np.float64]  # (z,), sum 1, or all 0 where no light leaves
+    spectrum_weight: NDArray[np.float64]  # (w,) s times trapezoid weights, sum 1
+
+
+def orientation_average(
+    values: NDArray[np.float64], bulk: NDArray[np.float64], horizontal_fraction: float
+) -> NDArray[np.float64]:
+    """Ensemble average over orientation, on absolute rates.
+
+    X = ((1 - T) b_v X_v + T b_h X_h) / ((1 - T) b_v + T b_h), with X_v, X_h relative to their
+    own bulk rates b_v, b_h per squared dipole moment.
+
+    Parameters
+    ----------
+    values : float (w, z, 2, ...)
+        Vertical, horizontal.
+    bulk : float (w, 2)
+    horizontal_fraction : float
+        T, share of the squared transition dipole moment in the film plane.
+
+    Returns
+    -------
+    float (w, z, ...)
+    """
+    rate = bulk * np.array([1.0 - horizontal_fraction, horizontal_fraction])
+    rate /= rate.sum(axis=1, keepdims=True)
+    average: NDArray[np.float64] = np.einsum("wo,wzo...->wz...", rate, values)
+    return average
+
+
+def emission(emitter: Emitter, light: Light) -> Emission:
+    """Average an emitter's light over spectrum, zone and orientation.
+
+    Destinations are ratios of averages, int w X/F dz / int w dz with
+    w = zone q F / (1 - q + q F); the factor q cancels and is left out, so that q = 0 is the
+    limit.
+    """
+    spectrum_weight = emitter.spectrum.weights(light.wavelength_nm)
+    theta, q = emitter.horizontal_fraction, emitter.quantum_yield
+    dissipated = spectrum_weight @ orientation_average(light.engine.dissipation, light.bulk, theta)
+    shares = np.einsum(
+        "w,wzk->zk", spectrum_weight, orientation_average(light.engine.shares, light.bulk, theta)
+    )
+    decay = 1.0 - q + q * dissipated
+    radiating = light.zone_weight * dissipated / decay
+    leaving = light.zone_weight * (shares[:, engine.AIR_BOTTOM] + shares[:, engine.AIR_TOP]) / decay
+    total = leaving.sum()
+    return Emission(
+        purcell_factor=float(light.zone_weight @ dissipated),
+        decay_rate_ratio=float(light.zone_weight @ decay),
+        radiative_efficiency=float(q * radiating.sum()),
+        shares=(light.zone_weight / decay) @ shares / radiating.sum(),
+        emitted_profile=leaving / total if total > 0.0 else np.zeros_like(leaving),
+        spectrum_weight=spectrum_weight,
+    )
+
+
+def destinations(shares: NDArray[np.float64]) -> dict[str, float]:
+    """Name the destinations among an engine's outcomes (engine.OUTCOMES,)."""
+    return {name: float(shares[place]) for name, place in DESTINATIONS.items()}
+
+
+def energy_balance(light: Light) -> float:
+    """Largest share of the dissipated power that no destination accounts for."""
+    found = light.engine.shares[..., _PLACES].sum(axis=-1)
+    return float(np.abs(found / light.engine.dissipation - 1.0).max())

@@ -1,0 +1,160 @@
+"""From a case to the engine's arrays and back: the light of one emitter at every wavelength."""
+
+from __future__ import annotations
+
+import os
+from concurrent.futures import ThreadPoolExecutor
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+
+from optics.device.stack import absorbs
+from optics.device.zone import absorber_distances, zone_interval, zone_quadrature
+from optics.kernels.budget import Budget as EngineBudget
+from optics.kernels.budget import light_budget
+from optics.kernels.exits import ABSORBING, MATCHED, OPEN, PLANAR
+from optics.kernels.problem import Problem, Sides, make_problem
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from optics.device.case import Case
+    from optics.device.emitter import Emitter
+    from optics.device.materials import Material
+    from optics.device.stack import Slab
+
+# Fewer wavelengths than this are not worth a second thread.
+_SMALLEST_CHUNK = 4
+_NM_PER_MM = 1e6
+
+
+class Light(NamedTuple):
+    """Power of one emitter by wavelength, position and orientation (vertical, horizontal)."""
+
+    wavelength_nm: NDArray[np.float64]  # (w,)
+    position_nm: NDArray[np.float64]  # (z,) from the bottom face of the emitter film
+    zone_weight: NDArray[np.float64]  # (z,) quadrature weight times density, sum 1
+    bulk: NDArray[np.float64]  # (w, 2) bulk rates over that in vacuum
+    engine: EngineBudget
+
+
+def emitter_light(case: Case, emitter: Emitter, tolerance: float) -> Light:
+    """Run the engine for one emitter of a case.
+
+    Parameters
+    ----------
+    tolerance : float
+        Wanted accuracy of every destination as a fraction of the dissipated power.
+    """
+    wavelength_nm = emitter.spectrum.grid_nm(case.wavelength_nm)
+    position_nm, zone_weight = quadrature(case, emitter, wavelength_nm)
+    problem = problem_of(case, emitter, wavelength_nm, position_nm)
+    engine = _in_chunks(problem, tolerance)
+    return Light(wavelength_nm, position_nm, zone_weight, problem.source.bulk, engine)
+
+
+def quadrature(
+    case: Case, emitter: Emitter, wavelength_nm: NDArray[np.float64]
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Positions and weights over an emitter's zone.
+
+    A panel is at most half a wavelength in the film long: one period of the interference.
+    """
+    film = case.stack.films[emitter.film_index]
+    every = case.every_wavelength_nm
+    eps = film.material.permittivity(wavelength_nm)
+    index = np.sqrt(np.maximum(eps[0].real, eps[1].real))
+    return zone_quadrature(
+        emitter.zone,
+        film.thickness_nm,
+        zone_interval(case.stack, emitter, every),
+        absorber_distances(case.stack, emitter.film_index, every),
+        float((wavelength_nm / (2.0 * index)).min()),
+    )
+
+
+def problem_of(
+    case: Case,
+    emitter: Emitter,
+    wavelength_nm: NDArray[np.float64],
+    position_nm: NDArray[np.float64],
+) -> Problem:
+    """Engine arrays of a case, seen from one emitter's film."""
+    stack = case.stack
+    eps_o, eps_e = stack.permittivity(wavelength_nm)
+    sides = [
+        _side(slab, surroundings, wavelength_nm, case.every_wavelength_nm)
+        for slab, surroundings in ((stack.substrate, stack.bottom), (stack.cover, stack.top))
+    ]
+    return make_problem(
+        wavelength_nm,
+        eps_o,
+        eps_e,
+        stack.thickness_nm,
+        np.stack([side.outer for side in sides], axis=1),
+        emitter.film_index,
+        position_nm,
+        Sides(
+            np.array([side.kind for side in sides]),
+            np.stack([np.sqrt(side.outer).real for side in sides], axis=1),
+            np.stack([side.n_out for side in sides], axis=1),
+            np.stack([side.loss for side in sides], axis=1),
+        ),
+    )
+
+
+class _Outside(NamedTuple):
+    kind: int
+    outer: NDArray[np.complex128]  # permittivity next to the films
+    n_out: NDArray[np.float64]  # index of the surroundings
+    loss: NDArray[np.float64]  # 4 pi k d / lambda of the slab
+
+
+def _side(
+    slab: Slab | None,
+    surroundings: Material,
+    wavelength_nm: NDArray[np.float64],
+    every_wavelength_nm: NDArray[np.float64],
+) -> _Outside:
+    """What stands outside the films on one side."""
+    beyond = np.sqrt(surroundings.permittivity(wavelength_nm)[0])
+    nothing = np.zeros_like(wavelength_nm)
+    if slab is None:
+        if absorbs(surroundings, every_wavelength_nm):
+            return _Outside(ABSORBING, beyond**2, beyond.real, nothing)
+        return _Outside(OPEN, (beyond.real**2).astype(np.complex128), beyond.real, nothing)
+    index = np.sqrt(slab.material.permittivity(wavelength_nm)[0])
+    loss = 4.0 * np.pi * index.imag * slab.thickness_mm * _NM_PER_MM / wavelength_nm
+    kind = MATCHED if slab.exit == "matched" else PLANAR
+    return _Outside(kind, (index.real**2).astype(np.complex128), beyond.real, loss)
+
+
+def _in_chunks(problem: Problem, tolerance: float) -> EngineBudget:
+    """Run the engine over all wavelengths, on as many threads as there are cores."""
+    wavelengths = problem.source.eps_o.size
+    workers = min(_cores(), max(1, wavelengths // _SMALLEST_CHUNK))
+    if workers == 1:
+        return light_budget(problem, tolerance)
+    chunks = np.array_split(np.arange(wavelengths), 2 * workers)
+    with ThreadPoolExecutor(workers) as pool:
+        found = list(pool.map(lambda rows: light_budget(_at(problem, rows), tolerance), chunks))
+    return EngineBudget(*(np.concatenate(parts) for parts in zip(*found, strict=True)))
+
+
+def _at(problem: Problem, rows: NDArray[np.int64]) -> Problem:
+    """The same problem at some of its wavelengths."""
+    first, last = rows[0], rows[-1] + 1
+    source, sides, up, down = problem
+    return Problem(
+        type(source)(*(part[first:last] for part in source)),
+        Sides(sides.kind, *(part[first:last] for part in sides[1:])),
+        type(up)(*(part[first:last] for part in up)),
+        type(down)(*(part[first:last] for part in down)),
+    )
+
+
+def _cores() -> int:
+    """Cores that this process may use."""
+    if hasattr(os, "sched_getaffinity"):
+        return len(os.sched_getaffinity(0))
+    return os.cpu_count() or 1
