@@ -303,7 +303,8 @@ def _check_reach(draft: Draft, key: str, stack: Stack, emitter: Emitter) -> None
     for face in unbounded_faces(stack, emitter, draft.every_nm):
         draft.warnings.append(
             f"{key}: closest_approach_nm is 0 and the zone reaches an absorber at the {face} face "
-            "of its film, where the dissipated power has no bound"
+            "of its film, where the dissipated power has no bound: purcell_factor and, unless "
+            "quantum_yield is 0, decay_rate_ratio are left out"
         )
 
 

@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from optics.kernels import settle
+from optics.kernels.arrays import Floats, Integers
 from optics.kernels.exits import COLUMNS, TOTAL
 from optics.kernels.geometry import (
     backward_modes_possible,
@@ -21,7 +22,7 @@ from optics.kernels.geometry import (
     light_lines,
 )
 from optics.kernels.paths import ARC, ARC_FROM_BRANCH, REAL, TAIL
-from optics.kernels.problem import Floats, Integers, Problem
+from optics.kernels.problem import Problem
 from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_destination
 
 # Places on the last axis of Budget.shares.
@@ -91,7 +92,7 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     tolerance : float
         Wanted accuracy of every destination as a fraction of the dissipated power.
     """
-    w, z = problem.source.kz_positions.shape
+    w = problem.source.eps_o.size
     rows = np.arange(w)
     far = 2.0 * largest_index(problem)
     lines = light_lines(problem)
@@ -118,7 +119,7 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     error = np.maximum(error, _disagreement(parts, scale))
     careful = (error > tolerance) | backward_modes_possible(problem)
-    for row in np.flatnonzero(careful):
+    for row in np.flatnonzero(careful).tolist():
         error[row] = _settle(
             problem, row, lines[row], start[row], far[row], scale, per_panel, parts
         )

@@ -17,6 +17,9 @@ from typing import Any, TypeVar
 import llvmlite
 import numba
 
+# The compiler declares no types for its settings and half of its options.
+_compiler: Any = numba
+
 _F = TypeVar("_F", bound=Callable[..., Any])
 
 
@@ -60,12 +63,12 @@ def _cache_folder() -> Path:
 
 
 CACHE_FOLDER = _cache_folder()
-numba.config.CACHE_DIR = str(CACHE_FOLDER)
+_compiler.config.CACHE_DIR = str(CACHE_FOLDER)
 
 
 def cache_is_warm() -> bool:
     """Tell whether compiled kernels of this very source already lie in the cache."""
-    if numba.config.DISABLE_JIT:
+    if _compiler.config.DISABLE_JIT:
         return True
     return (CACHE_FOLDER / "complete").exists()
 
@@ -77,15 +80,18 @@ def mark_cache_warm() -> None:
 
 # No division check: it would stop the loops from vectorizing, and every divisor is guarded.
 # No fastmath: it gains nothing here and breaks the tests for NaN.
+_OPTIONS = {"nogil": True, "error_model": "numpy"}
+
+
 def kernel(function: _F) -> _F:
-    """Compile a top-level kernel: cached on disk, releasing the interpreter lock."""
-    compiled: _F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+    """Compile a kernel that Python calls: cached on disk, releasing the interpreter lock."""
+    compiled: _F = _compiler.njit(cache=True, **_OPTIONS)(function)
     return compiled
 
 
 def inline(function: _F) -> _F:
     """Compile a helper that only kernels call: no cache entry and no entry from Python."""
-    compiled: _F = numba.njit(
-        nogil=True, error_model="numpy", no_cpython_wrapper=True, no_cfunc_wrapper=True
-    )(function)
+    compiled: _F = _compiler.njit(no_cpython_wrapper=True, no_cfunc_wrapper=True, **_OPTIONS)(
+        function
+    )
     return compiled

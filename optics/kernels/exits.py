@@ -6,6 +6,7 @@ faces and the film stack, a geometric series, solved for both sides together.
 
 import math
 
+from optics.kernels.arrays import StackPowers
 from optics.kernels.compiled import inline
 from optics.kernels.halfstack import S, abs2
 
@@ -21,7 +22,7 @@ _TINY_LOSS = 1e-8
 
 
 @inline
-def face_reflectance(pol, u, n_slab, n_out):
+def face_reflectance(pol: int, u: float, n_slab: float, n_out: float) -> float:
     """Fresnel reflectance of a slab's outer face for in-plane wavevector u; 1 beyond its line."""
     if u >= n_out:
         return 1.0
@@ -35,7 +36,7 @@ def face_reflectance(pol, u, n_slab, n_out):
 
 
 @inline
-def exit_line(kind, n_outer, n_out):
+def exit_line(kind: int, n_outer: float, n_out: float) -> float:
     """In-plane wavevector below which light can leave on this side; 0 if it never can."""
     if kind == ABSORBING:
         return 0.0
@@ -43,7 +44,9 @@ def exit_line(kind, n_outer, n_out):
 
 
 @inline
-def passage(kind, pol, u, n_outer, n_out, loss):
+def passage(
+    kind: int, pol: int, u: float, n_outer: float, n_out: float, loss: float
+) -> tuple[float, float, float]:
     """Split of unit flux that enters the outer medium: (leaves, absorbed there, comes back).
 
     loss : 4 pi k d / lambda of the slab, one pass along the normal.
@@ -63,7 +66,9 @@ def passage(kind, pol, u, n_outer, n_out, loss):
 
 
 @inline
-def settle_bounces(back_b, back_t, stack, p_b, p_t):
+def settle_bounces(
+    back_b: float, back_t: float, stack: StackPowers, p_b: float, p_t: float
+) -> tuple[float, float]:
     """Total fluxes into both outer media from first arrivals p_b, p_t.
 
     stack : (R_b, R_t, T, A_b, A_t), the whole film stack lit from the bottom or the top medium.
@@ -86,7 +91,16 @@ def settle_bounces(back_b, back_t, stack, p_b, p_t):
 
 
 @inline
-def whole_stack(phase, r_a, r_b, flux_out, ports_a, ports_b, absorbed_a, absorbed_b):
+def whole_stack(
+    phase: complex,
+    r_a: complex,
+    r_b: complex,
+    flux_out: tuple[float, float],
+    ports_a: complex,
+    ports_b: tuple[complex, complex, complex],
+    absorbed_a: float,
+    absorbed_b: tuple[float, float, complex],
+) -> tuple[float, float, float]:
     """Whole stack lit from the medium outside half b: (R, T, A) per unit incident flux.
 
     Parameters

@@ -7,12 +7,21 @@ film by film, in the units of flux Re(Y) |amplitude|^2.
 
 import math
 
+from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
 from optics.kernels.halfstack import P, S, abs2
 
 
 @inline
-def film_coefficients(u, eps_o, eps_e, kd, kz, alpha, beta):
+def film_coefficients(
+    u: Complexes,
+    eps_o: Complexes,
+    eps_e: Complexes,
+    kd: Floats,
+    kz: Complexes,
+    alpha: Floats,
+    beta: Floats,
+) -> None:
     """Absorption of a film as alpha (|f|^2 + |g|^2) + 2 beta Re(conj(f) g).
 
     f and g are the two waves' amplitudes, each at the face where it enters the film.
@@ -59,7 +68,9 @@ def film_coefficients(u, eps_o, eps_e, kd, kz, alpha, beta):
 
 
 @inline
-def absorbed_from_inside(e, r_far, f, alpha, beta, a_in):
+def absorbed_from_inside(
+    e: Complexes, r_far: Complexes, f: Complexes, alpha: Floats, beta: Floats, a_in: Floats
+) -> None:
     """Absorption in each film for unit amplitude from medium 0: a_in (2, m, n)."""
     for pol in range(2):
         for j in range(1, e.shape[1] - 1):
@@ -71,7 +82,9 @@ def absorbed_from_inside(e, r_far, f, alpha, beta, a_in):
 
 
 @inline
-def absorbed_from_outside(e, r_near, g, alpha, beta, a_out):
+def absorbed_from_outside(
+    e: Complexes, r_near: Complexes, g: Complexes, alpha: Floats, beta: Floats, a_out: Floats
+) -> None:
     """Absorption in each film for unit amplitude from the last medium: a_out (2, m, n)."""
     for pol in range(2):
         for j in range(1, e.shape[1] - 1):
@@ -82,7 +95,16 @@ def absorbed_from_outside(e, r_near, g, alpha, beta, a_out):
 
 
 @inline
-def absorbed_cross(e, r_far, f, r_near, g, alpha, beta, a_cross):
+def absorbed_cross(
+    e: Complexes,
+    r_far: Complexes,
+    f: Complexes,
+    r_near: Complexes,
+    g: Complexes,
+    alpha: Floats,
+    beta: Floats,
+    a_cross: Complexes,
+) -> None:
     """Cross term between both ways of lighting the half stack: a_cross, complex (2, m, n)."""
     for pol in range(2):
         for j in range(1, e.shape[1] - 1):

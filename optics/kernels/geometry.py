@@ -3,8 +3,9 @@
 import numpy as np
 from numpy.typing import NDArray
 
+from optics.kernels.arrays import Floats
 from optics.kernels.exits import ABSORBING
-from optics.kernels.problem import Floats, Half, Problem
+from optics.kernels.problem import Half, Problem
 
 # A film whose Re eps lies above -(this) * (largest positive Re eps) may carry backward modes.
 _RESONANT = 4.0
@@ -17,7 +18,7 @@ def _media(problem: Problem) -> tuple[NDArray[np.complex128], NDArray[np.bool_]]
         return np.hstack([half.eps_o, half.eps_e])
 
     eps = np.hstack([inner(problem.up), inner(problem.down)])
-    return eps, eps.real < 0.0
+    return eps, np.less(eps.real, 0.0)
 
 
 def largest_index(problem: Problem) -> Floats:
@@ -30,8 +31,7 @@ def largest_index(problem: Problem) -> Floats:
 def has_plasmon(problem: Problem) -> NDArray[np.bool_]:
     """Tell where some film or absorbing surroundings has a negative permittivity (w,)."""
     _, negative = _media(problem)
-    found: NDArray[np.bool_] = negative.any(axis=1)
-    return found
+    return np.asarray(negative.any(axis=1))
 
 
 def backward_modes_possible(problem: Problem) -> NDArray[np.bool_]:

@@ -10,8 +10,7 @@ the recursion in reflection coefficients never overflows, however thick a film i
 
 import math
 
-import numpy as np
-
+from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
 
 S, P = 0, 1
@@ -22,7 +21,7 @@ _LIGHT_LINE = 1e-12
 
 
 @inline
-def sqrt_upper(z):
+def sqrt_upper(z: complex) -> complex:
     """Square root with Im >= 0 (and Re >= 0 on the real axis): the branch of every kz."""
     x, y = z.real, z.imag
     m = math.sqrt(x * x + y * y)
@@ -40,27 +39,35 @@ def sqrt_upper(z):
 
 
 @inline
-def reciprocal(z):
+def reciprocal(z: complex) -> complex:
     """1 / z without the range checks that the language's own complex division makes."""
     m = 1.0 / (z.real * z.real + z.imag * z.imag)
     return complex(z.real * m, -z.imag * m)
 
 
 @inline
-def exp_i(z):
+def exp_i(z: complex) -> complex:
     """exp(i z) for Im z >= 0."""
     e = math.exp(-z.imag)
     return complex(e * math.cos(z.real), e * math.sin(z.real))
 
 
 @inline
-def abs2(z):
+def abs2(z: complex) -> float:
     """|z|^2."""
     return z.real * z.real + z.imag * z.imag
 
 
 @inline
-def waves(u, eps_o, eps_e, kd, kz, y, e):
+def waves(
+    u: Complexes,
+    eps_o: Complexes,
+    eps_e: Complexes,
+    kd: Floats,
+    kz: Complexes,
+    y: Complexes,
+    e: Complexes,
+) -> None:
     """Normal wavevector, admittance and one-pass phase factor of every medium.
 
     Parameters
@@ -106,7 +113,7 @@ def waves(u, eps_o, eps_e, kd, kz, y, e):
 
 
 @inline
-def reflection(y, e, r):
+def reflection(y: Complexes, e: Complexes, r: Complexes) -> None:
     """Reflection seen from medium 0: r (2, n) from y, e (2, m, n) of `waves`."""
     last = y.shape[1] - 1
     n = y.shape[2]
@@ -123,7 +130,7 @@ def reflection(y, e, r):
 
 
 @inline
-def outward(y, e, r_far, f, t):
+def outward(y: Complexes, e: Complexes, r_far: Complexes, f: Complexes, t: Complexes) -> None:
     """Unit amplitude arrives from medium 0: reflection at every interface, amplitudes, exit.
 
     Parameters
@@ -164,7 +171,7 @@ def outward(y, e, r_far, f, t):
 
 
 @inline
-def inward(y, e, r_near, g, r_out):
+def inward(y: Complexes, e: Complexes, r_near: Complexes, g: Complexes, r_out: Complexes) -> None:
     """Unit amplitude arrives from the last medium: reflections looking inward, amplitudes.
 
     Parameters
@@ -201,11 +208,3 @@ def inward(y, e, r_near, g, r_out):
                 g[pol, j, i] *= g[pol, j + 1, i] * e[pol, j + 1, i]
         for i in range(n):
             r_out[pol, i] = r_near[pol, last, i]
-
-
-@inline
-def allocate(m, n):
-    """Return work arrays for `waves`, `outward` and `inward`: seven of (2, m, n), two of (2, n)."""
-    big = np.zeros((7, 2, m, n), dtype=np.complex128)
-    small = np.zeros((2, 2, n), dtype=np.complex128)
-    return big, small

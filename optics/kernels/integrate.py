@@ -5,10 +5,11 @@ The two kernels of the main job. A task is one path at one wavelength; tasks are
 
 import numpy as np
 
+from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
 from optics.kernels.paths import NODES, TAIL, panel_error, panel_sum, place
-from optics.kernels.problem import Half, Sides, Source, work_space
+from optics.kernels.problem import Half, Problem, Sides, Source, work_space
 from optics.kernels.source import dissipated, radiated
 
 # A panel is halved at most this often, and no path uses more panels than this.
@@ -17,7 +18,7 @@ _MOST_PANELS = 600
 
 
 @inline
-def at_wavelength(problem, w):
+def at_wavelength(problem: Problem, w: int) -> tuple[Source, Sides, Half, Half]:
     """Source, sides and halves of one wavelength."""
     source, sides, up, down = problem
     return (
@@ -31,7 +32,16 @@ def at_wavelength(problem, w):
 
 
 @kernel
-def integrate_dissipated(problem, rows, paths, scale, tolerance, result, error, panels):
+def integrate_dissipated(
+    problem: Problem,
+    rows: Integers,
+    paths: Floats,
+    scale: Floats,
+    tolerance: float,
+    result: Floats,
+    error: Floats,
+    panels: Integers,
+) -> None:
     """Dissipated power along many paths.
 
     Parameters
@@ -76,7 +86,16 @@ def integrate_dissipated(problem, rows, paths, scale, tolerance, result, error, 
 
 
 @kernel
-def integrate_radiated(problem, rows, paths, scale, tolerance, result, error, panels):
+def integrate_radiated(
+    problem: Problem,
+    rows: Integers,
+    paths: Floats,
+    scale: Floats,
+    tolerance: float,
+    result: Floats,
+    error: Floats,
+    panels: Integers,
+) -> None:
     """Dissipated power and every destination along real paths below the outer light lines.
 
     Parameters as `integrate_dissipated`, but with 2 * COLUMNS * positions columns:

@@ -8,6 +8,7 @@ import math
 
 import numpy as np
 
+from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
 
 NODES = 16
@@ -28,7 +29,9 @@ TAIL = 3  # lo: real axis from lo to infinity
 
 
 @inline
-def place(kind, lo, hi, depth, a, b, u, du):
+def place(
+    kind: float, lo: float, hi: float, depth: float, a: float, b: float, u: Complexes, du: Complexes
+) -> None:
     """Nodes u and derivative du of a panel, theta from a to b, on a path (both complex (n,)).
 
     The derivative includes (b - a)/2, so that sum(GAUSS_W * f(u) * du) is the integral.
@@ -56,7 +59,7 @@ def place(kind, lo, hi, depth, a, b, u, du):
 
 
 @inline
-def panel_sum(values, misses, result, error):
+def panel_sum(values: Floats, misses: Floats, result: Floats, error: Floats) -> None:
     """Add a panel's Gauss sums and error estimates to result and error (both (q,))."""
     for k in range(result.size):
         error[k] += misses[k]
@@ -67,7 +70,7 @@ def panel_sum(values, misses, result, error):
 
 
 @inline
-def panel_error(values, scale, moments, misses):
+def panel_error(values: Floats, scale: Floats, moments: Floats, misses: Floats) -> float:
     """Estimate the error of a panel's Gauss sums.
 
     The last Legendre coefficients tell how far the integrand is resolved. A Gauss rule errs by

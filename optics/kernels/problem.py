@@ -6,14 +6,10 @@ Compiled functions take named tuples as they take arrays; these carry no behavio
 from typing import NamedTuple
 
 import numpy as np
-from numpy.typing import NDArray
 
+from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline
 from optics.kernels.paths import NODES
-
-Floats = NDArray[np.float64]
-Complexes = NDArray[np.complex128]
-Integers = NDArray[np.int64]
 
 
 class Half(NamedTuple):
@@ -73,7 +69,7 @@ class Work(NamedTuple):
 
 
 @inline
-def work_space(m):
+def work_space(m: int) -> Work:
     """Work arrays for a half stack of m media."""
     big = np.zeros((8, 2, m, NODES), dtype=np.complex128)
     small = np.zeros((3, 2, NODES), dtype=np.complex128)

@@ -11,9 +11,10 @@ negative, so the path that finds most has missed nothing.
 
 import numpy as np
 
+from optics.kernels.arrays import Floats
 from optics.kernels.exits import AIR_BOTTOM, COLUMNS, MATCHED_BOTTOM, TOTAL
 from optics.kernels.paths import ARC_FROM_BRANCH, REAL, TAIL
-from optics.kernels.problem import Floats, Problem
+from optics.kernels.problem import Problem
 from optics.kernels.tasks import Tasks, run_dissipated, run_radiated
 
 _NARROW = 1e-6  # width over k0 below which a disagreement is settled

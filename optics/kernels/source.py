@@ -8,7 +8,12 @@ Channels: 0 vertical (p), 1 horizontal p, 2 horizontal s. Everything is divided 
 the same dipole in the unbounded emitter medium.
 """
 
+from typing import TypeVar
 
+import numpy as np
+from numpy.typing import NDArray
+
+from optics.kernels.arrays import Complexes, Floats, StackPowers
 from optics.kernels.compiled import inline
 from optics.kernels.exits import (
     ABSORBED,
@@ -45,16 +50,19 @@ from optics.kernels.halfstack import (
     waves,
 )
 from optics.kernels.paths import NODES
+from optics.kernels.problem import Half, Sides, Source, Work
+
+_Number = TypeVar("_Number", np.float64, np.complex128)
 
 
 @inline
-def channel(c):
+def channel(c: int) -> tuple[int, float]:
     """Polarization of a channel and the sign with which its reflections enter."""
     return (S, 1.0) if c == 2 else (P, 1.0 if c == 0 else -1.0)
 
 
 @inline
-def dissipated_factor(c, source, u, kz):
+def dissipated_factor(c: int, source: Source, u: complex, kz: complex) -> complex:
     """Factor before the reflection bracket in the dissipated power per du."""
     if c == 0:
         return 1.5 * u * u * u * source.eps_o / (source.eps_e**2 * source.bulk[0]) * reciprocal(kz)
@@ -64,7 +72,7 @@ def dissipated_factor(c, source, u, kz):
 
 
 @inline
-def outgoing_factor(c, source, u, kz):
+def outgoing_factor(c: int, source: Source, u: float, kz: complex) -> float:
     """Factor before |amplitude|^2 in the power carried to one side per du (u real)."""
     if c == 0:
         return 0.75 * u**3 * (source.eps_o / source.eps_e) ** 2 / (abs2(kz) * source.bulk[0])
@@ -74,7 +82,17 @@ def outgoing_factor(c, source, u, kz):
 
 
 @inline
-def dissipated(source, up, down, work_up, work_down, u, du, beyond_bulk, values):
+def dissipated(
+    source: Source,
+    up: Half,
+    down: Half,
+    work_up: Work,
+    work_down: Work,
+    u: Complexes,
+    du: Complexes,
+    beyond_bulk: bool,
+    values: Floats,
+) -> None:
     """Dissipated power at the nodes of a panel on any path.
 
     Parameters
@@ -111,7 +129,7 @@ def dissipated(source, up, down, work_up, work_down, u, du, beyond_bulk, values)
 
 
 @inline
-def solve_half(half, work, u, lit_from_outside):
+def solve_half(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> None:
     """Fill the work space of one half stack at real nodes."""
     waves(u, half.eps_o, half.eps_e, half.kd, work.kz, work.y, work.e)
     outward(work.y, work.e, work.r_far, work.f, work.t)
@@ -126,7 +144,7 @@ def solve_half(half, work, u, lit_from_outside):
 
 
 @inline
-def sum_films(a, pol, i):
+def sum_films(a: NDArray[_Number], pol: int, i: int) -> _Number:
     """Sum over films of a per-film absorption (2, m, n) at one node."""
     total = a[pol, 0, i] * 0.0
     for j in range(1, a.shape[1] - 1):
@@ -135,7 +153,9 @@ def sum_films(a, pol, i):
 
 
 @inline
-def stack_from_both_sides(work_up, work_down, phase, pol, i):
+def stack_from_both_sides(
+    work_up: Work, work_down: Work, phase: complex, pol: int, i: int
+) -> StackPowers:
     """(R_b, R_t, T, A_b, A_t) of the whole stack at one node."""
     last_a, last_b = work_up.y.shape[1] - 1, work_down.y.shape[1] - 1
     flux_t, flux_b = work_up.y[pol, last_a, i].real, work_down.y[pol, last_b, i].real
@@ -158,7 +178,17 @@ def stack_from_both_sides(work_up, work_down, phase, pol, i):
 
 
 @inline
-def exit_shares(sides, kind_b, kind_t, pol, u, stack, p_b, p_t, shares):
+def exit_shares(
+    sides: Sides,
+    kind_b: int,
+    kind_t: int,
+    pol: int,
+    u: float,
+    stack: StackPowers,
+    p_b: float,
+    p_t: float,
+    shares: Floats,
+) -> None:
     """Where first arrivals p_b, p_t end up: adds to shares (COLUMNS,)."""
     exits = max(
         exit_line(kind_b, sides.n_outer[0], sides.n_out[0]),
@@ -178,7 +208,18 @@ def exit_shares(sides, kind_b, kind_t, pol, u, stack, p_b, p_t, shares):
 
 
 @inline
-def node_weights(sides, work_up, work_down, phase, pol, i, u, returns, shares, spare):
+def node_weights(
+    sides: Sides,
+    work_up: Work,
+    work_down: Work,
+    phase: complex,
+    pol: int,
+    i: int,
+    u: float,
+    returns: bool,
+    shares: Floats,
+    spare: Floats,
+) -> None:
     """Destinations of unit |amplitude|^2 sent up or down in the emitter film at one node.
 
     shares : float (2, COLUMNS), output; row 0 for light sent down, row 1 for light sent up.
@@ -220,7 +261,7 @@ def node_weights(sides, work_up, work_down, phase, pol, i, u, returns, shares, s
 
 
 @inline
-def light_returns(sides, u):
+def light_returns(sides: Sides, u: float) -> bool:
     """Tell whether some slab sends light back at in-plane wavevector u (in any variant)."""
     for side in range(2):
         if sides.kind[side] == PLANAR and u < sides.n_outer[side]:
@@ -233,7 +274,19 @@ def light_returns(sides, u):
 
 
 @inline
-def radiated(source, sides, up, down, work_up, work_down, u, du, shares, spare, values):
+def radiated(
+    source: Source,
+    sides: Sides,
+    up: Half,
+    down: Half,
+    work_up: Work,
+    work_down: Work,
+    u: Complexes,
+    du: Complexes,
+    shares: Floats,
+    spare: Floats,
+    values: Floats,
+) -> None:
     """Dissipated power and all destinations at real nodes below the outer light lines.
 
     Parameters

@@ -6,9 +6,10 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
+from optics.kernels.arrays import Floats, Integers
 from optics.kernels.exits import COLUMNS
 from optics.kernels.integrate import integrate_dissipated, integrate_radiated
-from optics.kernels.problem import Floats, Integers, Problem
+from optics.kernels.problem import Problem
 
 
 class Tasks(NamedTuple):

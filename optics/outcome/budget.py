@@ -9,6 +9,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from optics._version import VERSION
+from optics.device.zone import unbounded_faces
 from optics.kernels import budget as engine
 from optics.outcome import cautions
 from optics.outcome.efficiency import (
@@ -238,7 +239,7 @@ def budget(case: Case, tolerance: float = DEFAULT_TOLERANCE) -> Budget:
 
 
 def _emitter_budget(case: Case, emitter: Emitter, found: Emission) -> EmitterBudget:
-    unbounded = bool(list(cautions.unbounded(case, emitter)))
+    unbounded = bool(unbounded_faces(case.stack, emitter, case.every_wavelength_nm))
     shares = destinations(found.shares)
     outcoupling = shares["air_bottom"] + shares["air_top"]
     generated = (
@@ -338,7 +339,6 @@ def _warnings(
         weight = emissions[emitter.name].spectrum_weight
         checks = (
             partial(cautions.own_absorption, case, emitter, weight),
-            partial(cautions.unbounded, case, emitter),
             partial(cautions.near_field, case, emitter, result.near_field_share),
         )
         for check in checks:

@@ -7,7 +7,6 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from optics.device.stack import absorbs
-from optics.device.zone import unbounded_faces
 
 if TYPE_CHECKING:
     from collections.abc import Iterator
@@ -91,16 +90,6 @@ def nearest_absorber(case: Case, emitter: Emitter) -> str:
             if end:
                 found.append((distance, f"the {side} surroundings"))
     return min(found)[1] if found else "the films around it"
-
-
-def unbounded(case: Case, emitter: Emitter) -> Iterator[str]:
-    """A zone that touches an absorber, where the dissipated power has no bound."""
-    for face in unbounded_faces(case.stack, emitter, case.every_wavelength_nm):
-        yield (
-            f"emitter {emitter.name}: its zone touches an absorber at the {face} face and "
-            "closest_approach_nm is 0, so the average of the dissipated power does not exist; "
-            "purcell_factor and, unless quantum_yield is 0, decay_rate_ratio are left out"
-        )
 
 
 def accuracy(tolerance: float, energy_balance: float, integration_error: float) -> Iterator[str]:

@@ -13,7 +13,7 @@ from optics.device.zone import absorber_distances, zone_interval, zone_quadratur
 from optics.kernels.budget import Budget as EngineBudget
 from optics.kernels.budget import light_budget
 from optics.kernels.exits import ABSORBING, MATCHED, OPEN, PLANAR
-from optics.kernels.problem import Problem, Sides, make_problem
+from optics.kernels.problem import Half, Problem, Sides, Source, make_problem
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -146,10 +146,12 @@ def _at(problem: Problem, rows: NDArray[np.int64]) -> Problem:
     first, last = rows[0], rows[-1] + 1
     source, sides, up, down = problem
     return Problem(
-        type(source)(*(part[first:last] for part in source)),
+        Source(*(part[first:last] for part in source)),
         Sides(sides.kind, *(part[first:last] for part in sides[1:])),
-        type(up)(*(part[first:last] for part in up)),
-        type(down)(*(part[first:last] for part in down)),
+        *(
+            Half(half.eps_o[first:last], half.eps_e[first:last], half.kd[first:last])
+            for half in (up, down)
+        ),
     )
 
 

@@ -97,7 +97,8 @@ def test_no_closest_approach_at_an_absorber_is_a_warning() -> None:
     document["layers"][3]["material"] = "metal"
     assert case_from_dict(document).warnings == (
         "emitters.green: closest_approach_nm is 0 and the zone reaches an absorber at the top face "
-        "of its film, where the dissipated power has no bound",
+        "of its film, where the dissipated power has no bound: purcell_factor and, unless "
+        "quantum_yield is 0, decay_rate_ratio are left out",
     )
 
 
