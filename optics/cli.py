@@ -1,0 +1,250 @@
+"""The command line: reads the options, calls, prints. Heavy libraries load inside commands."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Callable
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, TypeVar
+
+import click
+
+if TYPE_CHECKING:
+    from optics.present.constants import Shown
+
+DONE, FAILED, INPUT_AT_FAULT = 0, 1, 2
+_TRACEBACK = "optics.traceback"
+_Command = TypeVar("_Command", bound=Callable[..., Any])
+
+
+class Roof(click.Group):
+    """Turns what commands raise into a message and an exit status."""
+
+    def invoke(self, ctx: click.Context) -> Any:
+        """Run the command; status 2 if the input is at fault, 1 for anything else."""
+        try:
+            return super().invoke(ctx)
+        except (click.ClickException, click.exceptions.Exit, click.Abort, BrokenPipeError):
+            raise
+        except Exception as error:
+            from optics.device.errors import CaseError
+
+            if isinstance(error, CaseError):
+                click.echo(str(error), err=True)
+                ctx.exit(INPUT_AT_FAULT)
+            if ctx.meta.get(_TRACEBACK):
+                raise
+            click.echo(_short(error), err=True)
+            ctx.exit(FAILED)
+
+
+def _short(error: Exception) -> str:
+    said = str(error) or "no message"
+    return f"outcouple failed: {type(error).__name__}: {said}\n--traceback tells where."
+
+
+def _keep_traceback(ctx: click.Context, _parameter: click.Parameter, value: bool) -> None:
+    if value:
+        ctx.meta[_TRACEBACK] = True
+
+
+def _version(ctx: click.Context, _parameter: click.Parameter, value: bool) -> None:
+    if not value or ctx.resilient_parsing:
+        return
+    from optics._version import VERSION
+
+    click.echo(f"outcouple {VERSION}")
+    ctx.exit()
+
+
+def _traceback_option(command: _Command) -> _Command:
+    option = click.option(
+        "--traceback",
+        is_flag=True,
+        expose_value=False,
+        callback=_keep_traceback,
+        help="Show where a failure comes from.",
+    )
+    return option(command)
+
+
+def _json_option(command: _Command) -> _Command:
+    text = "Print one JSON object and nothing else on standard output."
+    return click.option("--json", "as_object", is_flag=True, help=text)(command)
+
+
+def _output_option(formats: str) -> Callable[[_Command], _Command]:
+    return click.option(
+        "-o",
+        "--output",
+        "outputs",
+        type=click.Path(path_type=Path),
+        multiple=True,
+        metavar="PATH",
+        help=f"Write to a file, {formats} by its suffix; may be given several times.",
+    )
+
+
+@click.group(cls=Roof, context_settings={"help_option_names": ["-h", "--help"]})
+@click.option(
+    "--version", is_flag=True, is_eager=True, expose_value=False, callback=_version,
+    help="Show the version and exit.",
+)  # fmt: skip
+@_traceback_option
+def main() -> None:
+    """Where the light generated in a thin-film stack goes, and how much of it gets out.
+
+    A device is described in a case file (TOML). Exit status: 0 done, 2 the input is at fault,
+    1 anything else.
+    """
+    for stream in (sys.stdout, sys.stderr):
+        # Sources have names with accents; a terminal that lacks them gets question marks.
+        if hasattr(stream, "reconfigure"):
+            stream.reconfigure(errors="replace")
+
+
+@main.command()
+@click.argument("case", metavar="CASE", type=click.Path(path_type=Path))
+@_json_option
+@_output_option(".json, .csv or .nc")
+@click.option(
+    "--tolerance",
+    type=click.FloatRange(min=0.0, max=0.1, min_open=True),
+    default=1e-6,
+    show_default=True,
+    help="Wanted accuracy of every destination, as a fraction of the dissipated power.",
+)
+@_traceback_option
+def budget(case: Path, as_object: bool, outputs: tuple[Path, ...], tolerance: float) -> None:
+    """Show where the generated light goes, and the EQE chain.
+
+    CASE is a case file; see docs/case-file.md, or outcouple schema for editors.
+    """
+    from optics.present import files
+
+    files.check_targets(outputs, (".json", ".csv", ".nc"))
+
+    import optics
+
+    device = optics.read_case(case)
+
+    from optics.kernels import cache_is_warm
+    from optics.present.cautions import cautions
+    from optics.present.terminal import compiling_notice
+
+    with compiling_notice(needed=not cache_is_warm()):
+        outcome = optics.budget(device, tolerance=tolerance)
+    result = outcome.to_dict()
+    writers: dict[str, files.Writer] = {
+        ".json": lambda path: files.write_json(result, path),
+        ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
+        ".nc": lambda path: outcome.to_dataset().to_netcdf(path, engine="h5netcdf"),
+    }
+    files.publish({path: writers[path.suffix.lower()] for path in outputs})
+    reminders = cautions(device, result)
+    if as_object:
+        click.echo(files.as_json(result))
+        for kind, lines in (("Warning", outcome.warnings), ("Caution", reminders)):
+            for line in lines:
+                click.echo(f"{kind}: {line}", err=True)
+    else:
+        from optics.present.tables import print_budget
+        from optics.present.terminal import console
+
+        print_budget(console(), result, outcome.tables, reminders)
+    _say_written(outputs)
+
+
+@main.command()
+@click.argument("name", metavar="[NAME | TABLE]", required=False)
+@_json_option
+@_output_option(".png, .svg or .pdf")
+@_traceback_option
+def materials(name: str | None, as_object: bool, outputs: tuple[Path, ...]) -> None:
+    """List, plot and check optical constants.
+
+    Without a name: all that is bundled. NAME: a table (ag-yang), a plain name (ag: every
+    measurement of that material) or an emission spectrum (green). TABLE: path of a table of
+    your own, which is checked.
+    """
+    from optics.present import constants, files, plots
+
+    files.check_targets(outputs, plots.SUFFIXES)
+    if name is None:
+        if outputs:
+            raise click.UsageError("-o draws one material: give its NAME")
+        _list_catalogue(as_object)
+        return
+    shown = constants.find(name)
+    if outputs:
+        figure = plots.draw(shown)
+        files.publish({path: lambda draft: plots.save(figure, draft) for path in outputs})
+    _show_constants(name, shown, as_object)
+    _say_written(outputs)
+
+
+@main.command()
+@click.option(
+    "-o", "--output", "outputs", type=click.Path(path_type=Path), multiple=True, metavar="PATH",
+    help="Write to a .json file instead of standard output.",
+)  # fmt: skip
+@_traceback_option
+def schema(outputs: tuple[Path, ...]) -> None:
+    """Print the JSON Schema of the case file, for editors."""
+    from optics.present import files
+
+    files.check_targets(outputs, (".json",))
+
+    from optics.device.case import json_schema
+
+    described = json_schema()
+    if not outputs:
+        click.echo(files.as_json(described))
+    files.publish({path: lambda draft: files.write_json(described, draft) for path in outputs})
+    _say_written(outputs)
+
+
+def _list_catalogue(as_object: bool) -> None:
+    from optics._version import VERSION
+    from optics.present import constants, files
+
+    if as_object:
+        head = {"schema": "outcouple.materials/1", "version": VERSION}
+        click.echo(files.as_json({**head, **constants.catalogue_dict()}))
+        return
+    from optics.present.materials import CATALOGUE_WIDTH, catalogue_view
+    from optics.present.terminal import console, show
+
+    show(console(plain_width=CATALOGUE_WIDTH), catalogue_view())
+
+
+def _show_constants(name: str, shown: Shown, as_object: bool) -> None:
+    from optics._version import VERSION
+    from optics.present import files
+    from optics.present.constants import EmissionSpectrum
+
+    if as_object:
+        head = {"version": VERSION, "name": name}
+        if isinstance(shown, EmissionSpectrum):
+            body = {"schema": "outcouple.spectrum/1", **head, **shown.to_dict()}
+        else:
+            each = [one.to_dict() for one in shown]
+            body = {"schema": "outcouple.material/1", **head, "measurements": each}
+        click.echo(files.as_json(body))
+        return
+    from optics.present.materials import measurements_view, spectrum_view
+    from optics.present.terminal import console, show
+
+    if isinstance(shown, EmissionSpectrum):
+        show(console(), spectrum_view(shown))
+    else:
+        show(console(), measurements_view(shown))
+
+
+def _say_written(outputs: tuple[Path, ...]) -> None:
+    for path in outputs:
+        click.echo(f"Wrote {path}", err=True)
+
+
+if __name__ == "__main__":
+    main()
