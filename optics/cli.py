@@ -57,6 +57,12 @@ def _version(ctx: click.Context, _parameter: click.Parameter, value: bool) -> No
     ctx.exit()
 
 
+def _not_nan(_ctx: click.Context, _parameter: click.Parameter, value: float) -> float:
+    if value != value:
+        raise click.BadParameter("nan is not a number")
+    return value
+
+
 def _traceback_option(command: _Command) -> _Command:
     option = click.option(
         "--traceback",
@@ -111,6 +117,7 @@ def main() -> None:
     "--tolerance",
     type=click.FloatRange(min=0.0, max=0.1, min_open=True),
     default=1e-6,
+    callback=_not_nan,
     show_default=True,
     help="Wanted accuracy of every destination, as a fraction of the dissipated power.",
 )
@@ -128,17 +135,18 @@ def budget(case: Path, as_object: bool, outputs: tuple[Path, ...], tolerance: fl
 
     device = optics.read_case(case)
 
-    from optics.kernels import cache_is_warm
+    from optics.kernels.compiled import cache_is_warm, mark_cache_warm
     from optics.present.cautions import cautions
     from optics.present.terminal import compiling_notice
 
     with compiling_notice(needed=not cache_is_warm()):
         outcome = optics.budget(device, tolerance=tolerance)
+    mark_cache_warm()
     result = outcome.to_dict()
     writers: dict[str, files.Writer] = {
         ".json": lambda path: files.write_json(result, path),
         ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
-        ".nc": lambda path: outcome.to_dataset().to_netcdf(path, engine="h5netcdf"),
+        ".nc": lambda path: outcome.to_tree().to_netcdf(path, engine="h5netcdf"),
     }
     files.publish({path: writers[path.suffix.lower()] for path in outputs})
     reminders = cautions(device, result)

@@ -37,10 +37,13 @@ def draw(shown: Shown) -> Figure:
 
 def save(figure: Figure, path: Path) -> None:
     """Write a picture; the suffix picks the format."""
+    from matplotlib import rc_context
+
     kind = path.suffix.lower().removeprefix(".")
-    # Without a date the same numbers give the same file.
+    # Without a date and with fixed identifiers the same numbers give the same file.
     undated: dict[str, Any] = {"pdf": {"CreationDate": None}, "svg": {"Date": None}}
-    figure.savefig(path, format=kind, dpi=150, metadata=undated.get(kind))
+    with rc_context({"svg.hashsalt": "outcouple"}):
+        figure.savefig(path, format=kind, dpi=150, metadata=undated.get(kind))
 
 
 def constants_figure(shown: tuple[Measurement, ...]) -> Figure:

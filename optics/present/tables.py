@@ -91,7 +91,7 @@ def _headline(result: Mapping[str, Any], *, terminal: bool) -> RenderableType:
     total = result["external_quantum_efficiency"]
     eqe = percent(total)
     lines: list[RenderableType] = []
-    if terminal and "e" not in eqe:
+    if terminal and "<" not in eqe:
         lines += [Text(line, style="bold green") for line in large(f"{eqe} %")]
         lines.append(Text("external quantum efficiency (EQE), photons out per charge injected"))
     else:

@@ -20,13 +20,13 @@ MISSING = "-"
 
 
 def percent(share: float | None) -> str:
-    """``0.2431`` as ``24.31``, for columns in percent; an exact zero as ``0``."""
+    """Word 0.2431 as ``24.31``, for columns in percent; ``0`` is exact, ``<0.01`` is not."""
     if share is None:
         return MISSING
     if share == 0.0:
         return "0"
     if abs(share) < 5e-5:
-        return f"{100 * share:.0e}"
+        return "<0.01"
     return f"{100 * share:.2f}"
 
 
