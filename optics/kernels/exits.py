@@ -8,7 +8,7 @@ import math
 
 from optics.kernels.arrays import StackPowers
 from optics.kernels.compiled import inline
-from optics.kernels.halfstack import S, abs2
+from optics.kernels.halfstack import S, abs2, reciprocal
 
 # What stands outside the films on one side.
 OPEN, PLANAR, MATCHED, ABSORBING = 0, 1, 2, 3
@@ -19,6 +19,8 @@ COLUMNS = 8
 
 # Where 1 - R falls below this, rounding of R shows; then T + A says the same, exactly.
 _TINY_LOSS = 1e-8
+# Light in a slab between perfect mirrors has nowhere to go; it is left where it arrived.
+_STUCK = 1e-280
 
 
 @inline
@@ -44,35 +46,38 @@ def exit_line(kind: int, n_outer: float, n_out: float) -> float:
 
 
 @inline
-def passage(
-    kind: int, pol: int, u: float, n_outer: float, n_out: float, loss: float
-) -> tuple[float, float, float]:
-    """Split of unit flux that enters the outer medium: (leaves, absorbed there, comes back).
+def once_through(u: float, n_outer: float, loss: float) -> float:
+    """Transmittance of one pass through a slab by Beer-Lambert; loss = 4 pi k d / lambda."""
+    if u >= n_outer:
+        return 0.0
+    return 1.0 if loss == 0.0 else math.exp(-loss / math.sqrt(1.0 - (u / n_outer) ** 2))
 
-    loss : 4 pi k d / lambda of the slab, one pass along the normal.
+
+@inline
+def passage(kind: int, rho: float, once: float) -> tuple[float, float, float]:
+    """Split of unit flux that enters an outer medium: (leaves, absorbed there, comes back).
+
+    rho : reflectance of the slab's outer face; once : transmittance of one pass.
     """
     if kind == OPEN:
         return 1.0, 0.0, 0.0
     if kind == ABSORBING:
         return 0.0, 1.0, 0.0
-    if u >= n_outer:
-        return 0.0, 0.0, 0.0
-    cosine = math.sqrt(1.0 - (u / n_outer) ** 2)
-    once = math.exp(-loss / cosine)
     if kind == MATCHED:
         return once, 1.0 - once, 0.0
-    rho = face_reflectance(pol, u, n_outer, n_out)
     return once * (1.0 - rho), (1.0 - once) * (1.0 + rho * once), once * once * rho
 
 
 @inline
-def settle_bounces(
-    back_b: float, back_t: float, stack: StackPowers, p_b: float, p_t: float
-) -> tuple[float, float]:
-    """Total fluxes into both outer media from first arrivals p_b, p_t.
+def bounces(back_b: float, back_t: float, stack: StackPowers) -> tuple[float, float, float, float]:
+    """Total fluxes into the outer media per first arrival there.
 
-    stack : (R_b, R_t, T, A_b, A_t), the whole film stack lit from the bottom or the top medium.
+    Returns
+    -------
+    bottom from bottom, bottom from top, top from bottom, top from top : float
     """
+    if back_b == 0.0 and back_t == 0.0:
+        return 1.0, 0.0, 0.0, 1.0
     r_b, r_t, through, a_b, a_t = stack
     lack_b, lack_t = 1.0 - r_b, 1.0 - r_t
     if lack_b < _TINY_LOSS:
@@ -83,11 +88,9 @@ def settle_bounces(
     diag_b = lack_b + (1.0 - lack_b) * (1.0 - back_b)
     diag_t = lack_t + (1.0 - lack_t) * (1.0 - back_t)
     det = diag_b * diag_t - through * through * back_b * back_t
-    if det <= 1e-280:
-        return p_b, p_t
-    i_b = (diag_t * p_b + through * back_t * p_t) / det
-    i_t = (diag_b * p_t + through * back_b * p_b) / det
-    return i_b, i_t
+    if det <= _STUCK:
+        return 1.0, 0.0, 0.0, 1.0
+    return diag_t / det, through * back_t / det, through * back_b / det, diag_b / det
 
 
 @inline
@@ -121,8 +124,7 @@ def whole_stack(
         Hermitian absorption form of half b: inside, outside, cross.
     """
     t_out, t_in, r_out = ports_b
-    ring = 1.0 - r_a * r_b * phase * phase
-    toward_a = t_in * phase / ring
+    toward_a = t_in * phase * reciprocal(1.0 - r_a * r_b * phase * phase)
     toward_b = toward_a * phase * r_a
     r = r_out + t_out * toward_b
     inside, outside, cross = absorbed_b

@@ -11,6 +11,9 @@ from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
 from optics.kernels.halfstack import P, S, abs2
 
+# Up to this one-pass attenuation exponent the integral over a film is taken from its series.
+_THIN = 1e-4
+
 
 @inline
 def film_coefficients(
@@ -19,6 +22,7 @@ def film_coefficients(
     eps_e: Complexes,
     kd: Floats,
     kz: Complexes,
+    e: Complexes,
     alpha: Floats,
     beta: Floats,
 ) -> None:
@@ -35,7 +39,8 @@ def film_coefficients(
         Real in-plane wavevectors over k0 (imaginary parts are not used).
     eps_o, eps_e : complex (m,)
     kd : float (m,)
-    kz : complex (2, m, n)
+    kz, e : complex (2, m, n)
+        From `waves`.
     alpha, beta : float (2, m, n), output
         Zero for lossless films and for both ends.
     """
@@ -52,11 +57,14 @@ def film_coefficients(
             for i in range(u.size):
                 k = kz[pol, j, i]
                 x = 2.0 * k.imag * d
-                # Integrals of |e^{i kz z}|^2 and of the cross term, both real.
-                same = d if x < 1e-14 else -math.expm1(-x) * d / x
+                # Integrals of |e^{i kz z}|^2 and of the cross term, both real; the one-pass
+                # factor already holds the exponential and the sine.
+                if x < _THIN:
+                    same = d * (1.0 - 0.5 * x * (1.0 - x / 3.0))
+                else:
+                    same = d * (1.0 - abs2(e[pol, j, i])) / x
                 turn = k.real * d
-                cross = d if abs(turn) < 1e-8 else d * math.sin(turn) / turn
-                cross *= math.exp(-0.5 * x)
+                cross = d * math.exp(-0.5 * x) if abs(turn) < 1e-8 else e[pol, j, i].imag / k.real
                 if pol == S:
                     alpha[S, j, i] = loss_o * same
                     beta[S, j, i] = loss_o * cross
@@ -68,30 +76,21 @@ def film_coefficients(
 
 
 @inline
-def absorbed_from_inside(
-    e: Complexes, r_far: Complexes, f: Complexes, alpha: Floats, beta: Floats, a_in: Floats
+def absorbed_alone(
+    e: Complexes, back: Complexes, amplitude: Complexes, alpha: Floats, beta: Floats, a: Floats
 ) -> None:
-    """Absorption in each film for unit amplitude from medium 0: a_in (2, m, n)."""
+    """Absorption in each film for unit amplitude from one end: a (2, m, n).
+
+    back is the reflection at each film's other face, amplitude the wave where it enters the
+    film: r_far and f of `outward` for light from medium 0, r_near and g of `inward` for light
+    from the last medium.
+    """
     for pol in range(2):
         for j in range(1, e.shape[1] - 1):
             for i in range(e.shape[2]):
-                f1 = f[pol, j, i]
-                q = r_far[pol, j, i] * e[pol, j, i]
+                q = back[pol, j, i] * e[pol, j, i]
                 power = alpha[pol, j, i] * (1.0 + abs2(q)) + 2.0 * beta[pol, j, i] * q.real
-                a_in[pol, j, i] = power * abs2(f1)
-
-
-@inline
-def absorbed_from_outside(
-    e: Complexes, r_near: Complexes, g: Complexes, alpha: Floats, beta: Floats, a_out: Floats
-) -> None:
-    """Absorption in each film for unit amplitude from the last medium: a_out (2, m, n)."""
-    for pol in range(2):
-        for j in range(1, e.shape[1] - 1):
-            for i in range(e.shape[2]):
-                q = r_near[pol, j, i] * e[pol, j, i]
-                power = alpha[pol, j, i] * (1.0 + abs2(q)) + 2.0 * beta[pol, j, i] * q.real
-                a_out[pol, j, i] = power * abs2(g[pol, j, i])
+                a[pol, j, i] = power * abs2(amplitude[pol, j, i])
 
 
 @inline
@@ -116,3 +115,15 @@ def absorbed_cross(
                 a_cross[pol, j, i] = alpha[pol, j, i] * (
                     f1.conjugate() * f2 + g1.conjugate() * g2
                 ) + beta[pol, j, i] * (f1.conjugate() * g2 + g1.conjugate() * f2)
+
+
+@inline
+def sum_films(a_in: Floats, a_out: Floats, a_cross: Complexes, form: Complexes) -> None:
+    """Add up the films of a half stack: form (3, 2, n) with rows inside, outside, cross."""
+    form[:, :, :] = 0.0
+    for pol in range(2):
+        for j in range(1, a_in.shape[1] - 1):
+            for i in range(a_in.shape[2]):
+                form[0, pol, i] += a_in[pol, j, i]
+                form[1, pol, i] += a_out[pol, j, i]
+                form[2, pol, i] += a_cross[pol, j, i]

@@ -47,7 +47,11 @@ def reciprocal(z: complex) -> complex:
 
 @inline
 def exp_i(z: complex) -> complex:
-    """exp(i z) for Im z >= 0."""
+    """exp(i z) for Im z >= 0; waves in lossless films need only half of it."""
+    if z.imag == 0.0:
+        return complex(math.cos(z.real), math.sin(z.real))
+    if z.real == 0.0:
+        return complex(math.exp(-z.imag), 0.0)
     e = math.exp(-z.imag)
     return complex(e * math.cos(z.real), e * math.sin(z.real))
 

@@ -9,7 +9,7 @@ from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
 from optics.kernels.paths import NODES, TAIL, panel_error, panel_sum, place
-from optics.kernels.problem import Half, Problem, Sides, Source, work_space
+from optics.kernels.problem import Half, Problem, Sides, Source, scratch_space, work_space
 from optics.kernels.source import dissipated, radiated
 
 # A panel is halved at most this often, and no path uses more panels than this.
@@ -63,6 +63,7 @@ def integrate_dissipated(
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     values, moments, misses = np.zeros((NODES, columns)), np.zeros((3, columns)), np.zeros(columns)
+    scratch = scratch_space(problem.source.kz_positions.shape[1], COLUMNS)
     ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, _, up, down = at_wavelength(problem, rows[task])
@@ -73,7 +74,7 @@ def integrate_dissipated(
             waiting -= 1
             a, b = ends[0, waiting], ends[1, waiting]
             place(kind, lo, hi, depth, a, b, u, du)
-            dissipated(source, up, down, work_up, work_down, u, du, kind == TAIL, values)
+            dissipated(source, up, down, work_up, work_down, scratch, u, du, kind == TAIL, values)
             count += 1
             worst = panel_error(values, scale[task], moments, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_PANELS:
@@ -105,7 +106,7 @@ def integrate_radiated(
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     values, moments, misses = np.zeros((NODES, columns)), np.zeros((3, columns)), np.zeros(columns)
-    shares, spare = np.zeros((2, COLUMNS)), np.zeros(COLUMNS)
+    scratch = scratch_space(problem.source.kz_positions.shape[1], COLUMNS)
     ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
@@ -116,7 +117,7 @@ def integrate_radiated(
             waiting -= 1
             a, b = ends[0, waiting], ends[1, waiting]
             place(kind, lo, hi, depth, a, b, u, du)
-            radiated(source, sides, up, down, work_up, work_down, u, du, shares, spare, values)
+            radiated(source, sides, up, down, work_up, work_down, scratch, u, du, values)
             count += 1
             worst = panel_error(values, scale[task], moments, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_PANELS:

@@ -66,6 +66,15 @@ class Work(NamedTuple):
     a_in: Floats
     a_out: Floats
     a_cross: Complexes
+    form: Complexes
+
+
+class Scratch(NamedTuple):
+    """Arrays that the source terms of one panel need."""
+
+    to_bottom: Complexes  # (NODES, z) phase factor from the dipole to the bottom face
+    to_top: Complexes  # (NODES, z)
+    shares: Floats  # (2, COLUMNS) destinations of light sent down, up
 
 
 @inline
@@ -74,10 +83,18 @@ def work_space(m: int) -> Work:
     big = np.zeros((8, 2, m, NODES), dtype=np.complex128)
     small = np.zeros((3, 2, NODES), dtype=np.complex128)
     real = np.zeros((4, 2, m, NODES))
+    form = np.zeros((3, 2, NODES), dtype=np.complex128)
     return Work(
         big[0], big[1], big[2], small[0], big[3], big[4], small[1], big[5], big[6],
-        small[2], real[0], real[1], real[2], real[3], big[7],
+        small[2], real[0], real[1], real[2], real[3], big[7], form,
     )  # fmt: skip
+
+
+@inline
+def scratch_space(positions: int, columns: int) -> Scratch:
+    """Arrays for so many positions and columns of destinations."""
+    phases = np.zeros((2, NODES, positions), dtype=np.complex128)
+    return Scratch(phases[0], phases[1], np.zeros((2, columns)))
 
 
 def make_half(

@@ -8,11 +8,6 @@ Channels: 0 vertical (p), 1 horizontal p, 2 horizontal s. Everything is divided 
 the same dipole in the unbounded emitter medium.
 """
 
-from typing import TypeVar
-
-import numpy as np
-from numpy.typing import NDArray
-
 from optics.kernels.arrays import Complexes, Floats, StackPowers
 from optics.kernels.compiled import inline
 from optics.kernels.exits import (
@@ -27,17 +22,14 @@ from optics.kernels.exits import (
     MATCHED_TOP,
     PLANAR,
     SUBSTRATE,
+    bounces,
     exit_line,
+    face_reflectance,
+    once_through,
     passage,
-    settle_bounces,
     whole_stack,
 )
-from optics.kernels.field import (
-    absorbed_cross,
-    absorbed_from_inside,
-    absorbed_from_outside,
-    film_coefficients,
-)
+from optics.kernels.field import absorbed_alone, absorbed_cross, film_coefficients, sum_films
 from optics.kernels.halfstack import (
     P,
     S,
@@ -50,9 +42,7 @@ from optics.kernels.halfstack import (
     waves,
 )
 from optics.kernels.paths import NODES
-from optics.kernels.problem import Half, Sides, Source, Work
-
-_Number = TypeVar("_Number", np.float64, np.complex128)
+from optics.kernels.problem import Half, Scratch, Sides, Source, Work
 
 
 @inline
@@ -82,12 +72,26 @@ def outgoing_factor(c: int, source: Source, u: float, kz: complex) -> float:
 
 
 @inline
+def fill_phases(pol: int, source: Source, work: Work, scratch: Scratch) -> None:
+    """Phase factors from every dipole to both faces of the emitter film, at every node."""
+    if pol == P and source.eps_o == source.eps_e:
+        return  # those of s, which came first
+    for q in range(source.kz_positions.size):
+        below = source.kz_positions[q]
+        above = source.kd - below
+        for i in range(NODES):
+            scratch.to_bottom[i, q] = exp_i(work.kz[pol, 0, i] * below)
+            scratch.to_top[i, q] = exp_i(work.kz[pol, 0, i] * above)
+
+
+@inline
 def dissipated(
     source: Source,
     up: Half,
     down: Half,
     work_up: Work,
     work_down: Work,
+    scratch: Scratch,
     u: Complexes,
     du: Complexes,
     beyond_bulk: bool,
@@ -109,23 +113,23 @@ def dissipated(
     waves(u, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
     reflection(work_up.y, work_up.e, work_up.r)
     reflection(work_down.y, work_down.e, work_down.r)
-    nz = source.kz_positions.size
-    for c in range(3):
+    positions = source.kz_positions.size
+    for c in (2, 0, 1):
         pol, sign = channel(c)
+        if c != 1:
+            fill_phases(pol, source, work_up, scratch)
         for i in range(NODES):
             kz = work_up.kz[pol, 0, i]
-            factor = dissipated_factor(c, source, u[i], kz) * du[i]
             a_face, b_face = work_up.r[pol, i], work_down.r[pol, i]
-            through = exp_i(kz * source.kd)
-            inv = reciprocal(1.0 - a_face * b_face * through * through)
-            factor *= inv
-            for q in range(nz):
-                e_b = exp_i(kz * source.kz_positions[q])
-                e_a = exp_i(kz * (source.kd - source.kz_positions[q]))
-                a = sign * a_face * e_a * e_a
-                b = sign * b_face * e_b * e_b
+            through = scratch.to_bottom[i, 0] * scratch.to_top[i, 0]
+            factor = dissipated_factor(c, source, u[i], kz) * du[i]
+            factor *= reciprocal(1.0 - a_face * b_face * through * through)
+            a_face, b_face = sign * a_face, sign * b_face
+            for q in range(positions):
+                a = a_face * scratch.to_top[i, q] * scratch.to_top[i, q]
+                b = b_face * scratch.to_bottom[i, q] * scratch.to_bottom[i, q]
                 bracket = a + b + 2.0 * a * b if beyond_bulk else (1.0 + a) * (1.0 + b)
-                values[i, c * nz + q] = (factor * bracket).real
+                values[i, c * positions + q] = (factor * bracket).real
 
 
 @inline
@@ -133,131 +137,91 @@ def solve_half(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> 
     """Fill the work space of one half stack at real nodes."""
     waves(u, half.eps_o, half.eps_e, half.kd, work.kz, work.y, work.e)
     outward(work.y, work.e, work.r_far, work.f, work.t)
-    film_coefficients(u, half.eps_o, half.eps_e, half.kd, work.kz, work.alpha, work.beta)
-    absorbed_from_inside(work.e, work.r_far, work.f, work.alpha, work.beta, work.a_in)
+    film_coefficients(u, half.eps_o, half.eps_e, half.kd, work.kz, work.e, work.alpha, work.beta)
+    absorbed_alone(work.e, work.r_far, work.f, work.alpha, work.beta, work.a_in)
     if lit_from_outside:
         inward(work.y, work.e, work.r_near, work.g, work.r_out)
-        absorbed_from_outside(work.e, work.r_near, work.g, work.alpha, work.beta, work.a_out)
+        absorbed_alone(work.e, work.r_near, work.g, work.alpha, work.beta, work.a_out)
         absorbed_cross(
             work.e, work.r_far, work.f, work.r_near, work.g, work.alpha, work.beta, work.a_cross
         )
-
-
-@inline
-def sum_films(a: NDArray[_Number], pol: int, i: int) -> _Number:
-    """Sum over films of a per-film absorption (2, m, n) at one node."""
-    total = a[pol, 0, i] * 0.0
-    for j in range(1, a.shape[1] - 1):
-        total += a[pol, j, i]
-    return total
+    sum_films(work.a_in, work.a_out, work.a_cross, work.form)
 
 
 @inline
 def stack_from_both_sides(
     work_up: Work, work_down: Work, phase: complex, pol: int, i: int
 ) -> StackPowers:
-    """(R_b, R_t, T, A_b, A_t) of the whole stack at one node."""
-    last_a, last_b = work_up.y.shape[1] - 1, work_down.y.shape[1] - 1
-    flux_t, flux_b = work_up.y[pol, last_a, i].real, work_down.y[pol, last_b, i].real
+    """Solve the whole stack at one node: (R_b, R_t, T, A_b, A_t)."""
+    flux_t, flux_b = work_up.y[pol, -1, i].real, work_down.y[pol, -1, i].real
     r_a, r_b = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
     ports_up = (work_up.t[pol, i], work_up.g[pol, 0, i], work_up.r_out[pol, i])
     ports_down = (work_down.t[pol, i], work_down.g[pol, 0, i], work_down.r_out[pol, i])
-    in_up, in_down = sum_films(work_up.a_in, pol, i), sum_films(work_down.a_in, pol, i)
-    form_up = (in_up, sum_films(work_up.a_out, pol, i), sum_films(work_up.a_cross, pol, i))
-    form_down = (in_down, sum_films(work_down.a_out, pol, i), sum_films(work_down.a_cross, pol, i))
+    form_up = (
+        work_up.form[0, pol, i].real,
+        work_up.form[1, pol, i].real,
+        work_up.form[2, pol, i],
+    )
+    form_down = (
+        work_down.form[0, pol, i].real,
+        work_down.form[1, pol, i].real,
+        work_down.form[2, pol, i],
+    )
     rb, rt, through, ab, at = 1.0, 1.0, 0.0, 0.0, 0.0
     if flux_b > 0.0:
         rb, through, ab = whole_stack(
-            phase, r_a, r_b, (flux_t, flux_b), ports_up[0], ports_down, in_up, form_down
+            phase, r_a, r_b, (flux_t, flux_b), ports_up[0], ports_down, form_up[0], form_down
         )
     if flux_t > 0.0:
         rt, through, at = whole_stack(
-            phase, r_b, r_a, (flux_b, flux_t), ports_down[0], ports_up, in_down, form_up
+            phase, r_b, r_a, (flux_b, flux_t), ports_down[0], ports_up, form_down[0], form_up
         )
     return rb, rt, through, ab, at
 
 
 @inline
-def exit_shares(
-    sides: Sides,
-    kind_b: int,
-    kind_t: int,
-    pol: int,
-    u: float,
-    stack: StackPowers,
-    p_b: float,
-    p_t: float,
-    shares: Floats,
+def share_out(
+    sides: Sides, pol: int, u: float, stack: StackPowers, p_b: float, p_t: float, shares: Floats
 ) -> None:
-    """Where first arrivals p_b, p_t end up: adds to shares (COLUMNS,)."""
-    exits = max(
-        exit_line(kind_b, sides.n_outer[0], sides.n_out[0]),
-        exit_line(kind_t, sides.n_outer[1], sides.n_out[1]),
-    )
-    out_b, lost_b, back_b = passage(kind_b, pol, u, sides.n_outer[0], sides.n_out[0], sides.loss[0])
-    out_t, lost_t, back_t = passage(kind_t, pol, u, sides.n_outer[1], sides.n_out[1], sides.loss[1])
-    if u >= exits:
-        # Trapped: counted at first arrival in a slab, or swallowed by absorbing surroundings.
-        shares[ABSORBED if kind_b == ABSORBING else SUBSTRATE] += p_b
-        shares[ABSORBED if kind_t == ABSORBING else COVER] += p_t
-        return
-    i_b, i_t = settle_bounces(back_b, back_t, stack, p_b, p_t)
-    shares[AIR_BOTTOM] += i_b * out_b
-    shares[AIR_TOP] += i_t * out_t
-    shares[ABSORBED] += i_b * (lost_b + back_b * stack[3]) + i_t * (lost_t + back_t * stack[4])
+    """Where light goes that arrives first with p_b in the bottom, p_t in the top medium.
 
-
-@inline
-def node_weights(
-    sides: Sides,
-    work_up: Work,
-    work_down: Work,
-    phase: complex,
-    pol: int,
-    i: int,
-    u: float,
-    returns: bool,
-    shares: Floats,
-    spare: Floats,
-) -> None:
-    """Destinations of unit |amplitude|^2 sent up or down in the emitter film at one node.
-
-    shares : float (2, COLUMNS), output; row 0 for light sent down, row 1 for light sent up.
+    shares : float (2, COLUMNS), added to; row 0 for p_b, row 1 for p_t.
     """
-    shares[:, :] = 0.0
-    last_a, last_b = work_up.y.shape[1] - 1, work_down.y.shape[1] - 1
-    p_t = abs2(work_up.t[pol, i]) * work_up.y[pol, last_a, i].real
-    p_b = abs2(work_down.t[pol, i]) * work_down.y[pol, last_b, i].real
-    stack = (0.0, 0.0, 0.0, 0.0, 0.0)
-    if returns:
-        stack = stack_from_both_sides(work_up, work_down, phase, pol, i)
     kind_b, kind_t = sides.kind[0], sides.kind[1]
-    exit_shares(sides, kind_b, kind_t, pol, u, stack, p_b, 0.0, shares[0])
-    exit_shares(sides, kind_b, kind_t, pol, u, stack, 0.0, p_t, shares[1])
-    shares[0, ABSORBED] += sum_films(work_down.a_in, pol, i)
-    shares[1, ABSORBED] += sum_films(work_up.a_in, pol, i)
+    n_b, n_t = sides.n_outer[0], sides.n_outer[1]
+    line_b, line_t = exit_line(kind_b, n_b, sides.n_out[0]), exit_line(kind_t, n_t, sides.n_out[1])
+    once_b, once_t = once_through(u, n_b, sides.loss[0]), once_through(u, n_t, sides.loss[1])
+    rho_b, rho_t = 1.0, 1.0
+    if kind_b == PLANAR and u < n_b:
+        rho_b = face_reflectance(pol, u, n_b, sides.n_out[0])
+    if kind_t == PLANAR and u < n_t:
+        rho_t = face_reflectance(pol, u, n_t, sides.n_out[1])
+    out_b, lost_b, back_b = passage(kind_b, rho_b, once_b)
+    out_t, lost_t, back_t = passage(kind_t, rho_t, once_t)
+    if u < max(line_b, line_t):
+        bb, bt, tb, tt = bounces(back_b, back_t, stack)
+        for row in range(2):
+            i_b = bb * p_b if row == 0 else bt * p_t
+            i_t = tb * p_b if row == 0 else tt * p_t
+            shares[row, AIR_BOTTOM] += i_b * out_b
+            shares[row, AIR_TOP] += i_t * out_t
+            shares[row, ABSORBED] += i_b * (lost_b + back_b * stack[3])
+            shares[row, ABSORBED] += i_t * (lost_t + back_t * stack[4])
+    else:
+        # Trapped: counted at first arrival in a slab, or swallowed by absorbing surroundings.
+        shares[0, ABSORBED if kind_b == ABSORBING else SUBSTRATE] += p_b
+        shares[1, ABSORBED if kind_t == ABSORBING else COVER] += p_t
     # The same light if one slab's face were replaced by an index-matched hemisphere.
-    for side in range(2):
-        if sides.kind[side] != PLANAR and sides.kind[side] != MATCHED:
-            continue
-        column = MATCHED_BOTTOM if side == 0 else MATCHED_TOP
-        air = AIR_BOTTOM if side == 0 else AIR_TOP
-        for sent in range(2):
-            spare[:] = 0.0
-            arrive_b = p_b if sent == 0 else 0.0
-            arrive_t = p_t if sent == 1 else 0.0
-            exit_shares(
-                sides,
-                MATCHED if side == 0 else kind_b,
-                MATCHED if side == 1 else kind_t,
-                pol,
-                u,
-                stack,
-                arrive_b,
-                arrive_t,
-                spare,
-            )
-            shares[sent, column] = spare[air]
+    if kind_b in (PLANAR, MATCHED):
+        back = back_t if u < max(n_b, line_t) else 0.0
+        bb, bt, _, _ = bounces(0.0, back, stack)
+        shares[0, MATCHED_BOTTOM] += bb * p_b * once_b
+        shares[1, MATCHED_BOTTOM] += bt * p_t * once_b
+    if kind_t in (PLANAR, MATCHED):
+        back = back_b if u < max(n_t, line_b) else 0.0
+        _, _, tb, tt = bounces(back, 0.0, stack)
+        shares[0, MATCHED_TOP] += tb * p_b * once_t
+        shares[1, MATCHED_TOP] += tt * p_t * once_t
 
 
 @inline
@@ -266,9 +230,8 @@ def light_returns(sides: Sides, u: float) -> bool:
     for side in range(2):
         if sides.kind[side] == PLANAR and u < sides.n_outer[side]:
             other = sides.kind[1 - side]
-            line = exit_line(PLANAR, sides.n_outer[side], sides.n_out[side])
             beyond = sides.n_outer[1 - side] if other != ABSORBING else 0.0
-            if u < max(line, beyond):
+            if u < max(sides.n_out[side], beyond):
                 return True
     return False
 
@@ -281,10 +244,9 @@ def radiated(
     down: Half,
     work_up: Work,
     work_down: Work,
+    scratch: Scratch,
     u: Complexes,
     du: Complexes,
-    shares: Floats,
-    spare: Floats,
     values: Floats,
 ) -> None:
     """Dissipated power and all destinations at real nodes below the outer light lines.
@@ -292,45 +254,46 @@ def radiated(
     Parameters
     ----------
     u, du : complex (NODES,), real-valued
-    shares, spare : float (2, COLUMNS), (COLUMNS,), work space
     values : float (NODES, 2 * COLUMNS * positions), output
         Column (orientation * COLUMNS + destination) * positions + position.
     """
-    nz = source.kz_positions.size
-    any_return = False
-    for i in range(NODES):
-        any_return = any_return or light_returns(sides, u[i].real)
+    positions = source.kz_positions.size
+    any_return = light_returns(sides, u[0].real) or light_returns(sides, u[-1].real)
     solve_half(up, work_up, u, any_return)
     solve_half(down, work_down, u, any_return)
-    for i in range(NODES):
-        for k in range(2 * COLUMNS * nz):
-            values[i, k] = 0.0
-        returns = any_return and light_returns(sides, u[i].real)
-        for pol in range(2):
+    shares = scratch.shares
+    values[:, :] = 0.0
+    for pol in range(2):
+        fill_phases(pol, source, work_up, scratch)
+        for i in range(NODES):
             kz = work_up.kz[pol, 0, i]
-            phase = exp_i(kz * source.kd)
-            node_weights(
-                sides, work_up, work_down, phase, pol, i, u[i].real, returns, shares, spare
-            )
+            phase = scratch.to_bottom[i, 0] * scratch.to_top[i, 0]
             a_face, b_face = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
             inv = reciprocal(1.0 - a_face * b_face * phase * phase)
+            stack = (0.0, 0.0, 0.0, 0.0, 0.0)
+            if any_return and light_returns(sides, u[i].real):
+                stack = stack_from_both_sides(work_up, work_down, phase, pol, i)
+            shares[:, :] = 0.0
+            shares[0, ABSORBED] = work_down.form[0, pol, i].real
+            shares[1, ABSORBED] = work_up.form[0, pol, i].real
+            p_t = abs2(work_up.t[pol, i]) * work_up.y[pol, -1, i].real
+            p_b = abs2(work_down.t[pol, i]) * work_down.y[pol, -1, i].real
+            share_out(sides, pol, u[i].real, stack, p_b, p_t, shares)
             for c in range(3):
                 channel_pol, sign = channel(c)
                 if channel_pol != pol:
                     continue
-                orientation = 0 if c == 0 else 1
-                base = orientation * COLUMNS * nz
+                base = 0 if c == 0 else COLUMNS * positions
                 through = dissipated_factor(c, source, u[i], kz) * du[i] * inv
                 carried = outgoing_factor(c, source, u[i].real, kz) * du[i].real * abs2(inv)
-                for q in range(nz):
-                    e_b = exp_i(kz * source.kz_positions[q])
-                    e_a = exp_i(kz * (source.kd - source.kz_positions[q]))
-                    a = sign * a_face * e_a * e_a
-                    b = sign * b_face * e_b * e_b
-                    sent_up = carried * abs2(e_a * (1.0 + b))
-                    sent_down = carried * abs2(e_b * (1.0 + a))
-                    values[i, base + q] += (through * (1.0 + a) * (1.0 + b)).real
+                for q in range(positions):
+                    to_b, to_t = scratch.to_bottom[i, q], scratch.to_top[i, q]
+                    a = 1.0 + sign * a_face * to_t * to_t
+                    b = 1.0 + sign * b_face * to_b * to_b
+                    sent_up = carried * abs2(to_t * b)
+                    sent_down = carried * abs2(to_b * a)
+                    values[i, base + q] += (through * a * b).real
                     for k in range(1, COLUMNS):
-                        values[i, base + k * nz + q] += (
+                        values[i, base + k * positions + q] += (
                             sent_down * shares[0, k] + sent_up * shares[1, k]
                         )
