@@ -20,8 +20,9 @@ from optics.kernels.geometry import (
     has_plasmon,
     largest_index,
     light_lines,
+    nearest_absorber,
 )
-from optics.kernels.paths import ARC, ARC_FROM_BRANCH, REAL, TAIL
+from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
 from optics.kernels.problem import Problem
 from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_destination
 
@@ -52,6 +53,9 @@ _RADIATED = {
 }
 
 _SMALLEST_SCALE = 1e-5  # errors are relative to the dissipated power, but not below this
+# Of the arcs that parts of the total run on; other than the total's own, so that a pole that one
+# of them passes under shows.
+_FLATNESS = 0.7
 _PANEL_SHARE = 0.1  # of the wanted accuracy, allowed to one panel
 
 
@@ -74,7 +78,7 @@ class Budget(NamedTuple):
     shares: Floats  # (w, z, 2, OUTCOMES), relative to the orientation's own bulk rate
     dissipation: Floats  # (w, z, 2), F
     error: Floats  # (w,), estimate for the worst destination over F
-    panels: Integers  # (w,), panels of NODES nodes that were evaluated
+    batches: Integers  # (w,), batches of NODES nodes that were evaluated
     careful: NDArray[np.bool_]  # (w,), whether the careful way decided
 
 
@@ -99,21 +103,24 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     trapped = lines[:, -1]
     plasmon = has_plasmon(problem)
     start = np.where(plasmon, np.maximum(trapped, np.sqrt(problem.source.eps_e)), trapped)
-    panels = np.zeros(w, dtype=np.int64)
+    batches = np.zeros(w, dtype=np.int64)
     per_panel = _PANEL_SHARE * tolerance
 
     arc = along_arcs(rows, ARC, np.zeros(w), far)
-    tail = Tasks.on(rows, TAIL, far, np.full(w, np.inf))
+    tail = Tasks.on(rows, TAIL, far, np.inf, np.maximum(far, 1.0 / nearest_absorber(problem)))
     total, near, scale, miss_total, miss_near = _total_and_scale(
-        problem, arc, tail, per_panel, panels
+        problem, arc, tail, per_panel, batches
     )
-    ranges = [along_arcs(rows, ARC_FROM_BRANCH, trapped, start).nonempty()]
-    ranges.append(along_arcs(rows, ARC_FROM_BRANCH, start, far))
+    kind = np.where(start > trapped, ARC, ARC_FROM_LINE)
+    ranges = (
+        along_arcs(rows, ARC_FROM_LINE, trapped, start, _FLATNESS).nonempty(),
+        along_arcs(rows, kind, start, far, _FLATNESS),
+    )
     (guided, miss_guided), (beyond, miss_beyond) = (
-        dissipated_power(problem, tasks, scale, per_panel, panels) for tasks in ranges
+        dissipated_power(problem, tasks, scale, per_panel, batches) for tasks in ranges
     )
-    axis = Tasks.between(rows, REAL, lines)
-    free, miss_free = every_destination(problem, axis, scale, per_panel, panels)
+    axis = Tasks.between(rows, lines)
+    free, miss_free = every_destination(problem, axis, scale, per_panel, batches)
 
     parts = Parts(by_orientation(total), free, guided, beyond, near)
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
@@ -123,11 +130,11 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
         error[row] = _settle(
             problem, row, lines[row], start[row], far[row], scale, per_panel, parts
         )
-    return _collect(parts, plasmon, error, panels, careful)
+    return _collect(parts, plasmon, error, batches, careful)
 
 
 def _total_and_scale(
-    problem: Problem, arc: Tasks, tail: Tasks, per_panel: float, panels: Integers
+    problem: Problem, arc: Tasks, tail: Tasks, per_panel: float, batches: Integers
 ) -> tuple[Floats, Floats, Floats, Floats, Floats]:
     """Total power up to and beyond far, and the scale (w, 2, z) errors are measured against.
 
@@ -135,11 +142,11 @@ def _total_and_scale(
     """
     w, z = problem.source.kz_positions.shape
     anything = np.full((w, 2, z), np.inf)
-    coarse, _ = dissipated_power(problem, arc, anything, 1.0, panels)
-    near, _ = dissipated_power(problem, tail, anything, 1.0, panels)
+    coarse, _ = dissipated_power(problem, arc, anything, 1.0, batches)
+    near, _ = dissipated_power(problem, tail, anything, 1.0, batches)
     scale = np.maximum(np.abs(by_orientation(coarse + near)), _SMALLEST_SCALE)
-    total, miss_total = dissipated_power(problem, arc, scale, per_panel, panels)
-    near, miss_near = dissipated_power(problem, tail, scale, per_panel, panels)
+    total, miss_total = dissipated_power(problem, arc, scale, per_panel, batches)
+    near, miss_near = dissipated_power(problem, tail, scale, per_panel, batches)
     return total, near, scale, miss_total, miss_near
 
 
@@ -182,7 +189,7 @@ def _collect(
     parts: Parts,
     plasmon: NDArray[np.bool_],
     error: Floats,
-    panels: Integers,
+    batches: Integers,
     careful: NDArray[np.bool_],
 ) -> Budget:
     """Sort the integrals into destinations."""
@@ -201,7 +208,7 @@ def _collect(
         np.ascontiguousarray(shares.transpose(0, 3, 1, 2)),
         np.ascontiguousarray(dissipation.transpose(0, 2, 1)),
         error,
-        panels,
+        batches,
         careful,
     )
 

@@ -9,6 +9,8 @@ from optics.kernels.problem import Half, Problem
 
 # A film whose Re eps lies above -(this) * (largest positive Re eps) may carry backward modes.
 _RESONANT = 4.0
+_SHORTEST_WAY = 1e-7  # k0 times a distance, where a dipole touches an absorber
+_NO_ABSORBER = 1e3
 
 
 def _media(problem: Problem) -> tuple[NDArray[np.complex128], NDArray[np.bool_]]:
@@ -67,3 +69,24 @@ def light_lines(problem: Problem) -> Floats:
         ]
     )
     return np.sort(np.minimum(points, outer_light_line(problem)[:, None]), axis=1)
+
+
+def nearest_absorber(problem: Problem) -> Floats:
+    """k0 times the shortest way from a dipole to a medium that swallows near fields (w,)."""
+    source = problem.source
+    to_bottom = source.kz_positions.min(axis=1)
+    to_top = source.kd - source.kz_positions.max(axis=1)
+    shortest = np.minimum(
+        to_bottom + _way_to_absorber(problem.down), to_top + _way_to_absorber(problem.up)
+    )
+    return np.maximum(shortest, _SHORTEST_WAY)
+
+
+def _way_to_absorber(half: Half) -> Floats:
+    """k0 times the thickness in front of the first absorbing or negative medium (w,)."""
+    in_front = np.cumsum(half.kd, axis=1) - half.kd
+    swallows = np.zeros(in_front.shape, dtype=np.bool_)
+    for eps in (half.eps_o, half.eps_e):
+        swallows |= (eps.imag > 0.0) | (eps.real < 0.0)
+    way: Floats = np.where(swallows, in_front, _NO_ABSORBER).min(axis=1)
+    return way

@@ -6,49 +6,53 @@ same curve and panels can be halved until their estimate is met.
 
 import math
 
-import numpy as np
-
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
+from optics.kernels.rules import LAST, NODES, SECOND, WEIGHT, X
 
-NODES = 16
-
-_X, _W = np.polynomial.legendre.leggauss(NODES)
-_V = np.polynomial.legendre.legvander(_X, NODES - 1)
-# Gauss weights, and the rows that give the last two Legendre coefficients of the sampled integrand.
-GAUSS_X = _X
-GAUSS_W = _W
-LAST = _W * _V[:, NODES - 1] * (2 * NODES - 1) / 2.0
-SECOND = _W * _V[:, NODES - 2] * (2 * NODES - 3) / 2.0
-
-# Kinds of path, with their three parameters.
-REAL = 0  # lo, hi: real axis, square roots at both ends smoothed
-ARC = 1  # lo, hi, depth: half ellipse below the axis, both ends regular
-ARC_FROM_BRANCH = 2  # the same with square roots at both ends
-TAIL = 3  # lo: real axis from lo to infinity
+# Kinds of path, with their three parameters. Square roots of the integrand lie at light lines.
+REAL = 0  # lo, hi: real axis, smooth where both ends are light lines
+REAL_FROM_ZERO = 1  # lo, hi: real axis, only hi is a light line
+ARC = 2  # lo, hi, depth: half ellipse below the axis, neither end is a light line
+ARC_FROM_LINE = 3  # the same, lo is a light line
+ARC_BETWEEN_LINES = 4  # the same, both ends are
+TAIL = 5  # lo, hi = inf, length: real axis from lo to infinity, half the nodes within length
 
 
 @inline
 def place(
-    kind: float, lo: float, hi: float, depth: float, a: float, b: float, u: Complexes, du: Complexes
+    kind: float,
+    lo: float,
+    hi: float,
+    depth: float,
+    a: float,
+    b: float,
+    stage: int,
+    u: Complexes,
+    du: Complexes,
 ) -> None:
-    """Nodes u and derivative du of a panel, theta from a to b, on a path (both complex (n,)).
+    """Nodes u, derivative du of one stage of a panel, theta from a to b (both complex (NODES,)).
 
-    The derivative includes (b - a)/2, so that sum(GAUSS_W * f(u) * du) is the integral.
+    The derivative includes (b - a)/2, so that sum(weight * f(u) * du) is the integral.
     """
     half = 0.5 * (b - a)
     for i in range(NODES):
-        theta = a + half * (GAUSS_X[i] + 1.0)
+        theta = a + half * (X[stage * NODES + i] + 1.0)
         if kind == REAL:
             s = math.sin(0.5 * math.pi * theta)
             u[i] = lo + (hi - lo) * s * s
             du[i] = (hi - lo) * 0.5 * math.pi * math.sin(math.pi * theta) * half
+        elif kind == REAL_FROM_ZERO:
+            u[i] = lo + (hi - lo) * math.sin(0.5 * math.pi * theta)
+            du[i] = (hi - lo) * 0.5 * math.pi * math.cos(0.5 * math.pi * theta) * half
         elif kind == TAIL:
-            u[i] = lo / (1.0 - theta)
-            du[i] = lo / (1.0 - theta) ** 2 * half
+            u[i] = lo + depth * theta / (1.0 - theta)
+            du[i] = depth / (1.0 - theta) ** 2 * half
         else:
             t, dt = math.pi * theta, math.pi
-            if kind == ARC_FROM_BRANCH:
+            if kind == ARC_FROM_LINE:
+                t, dt = math.pi * theta * theta, 2.0 * math.pi * theta
+            elif kind == ARC_BETWEEN_LINES:
                 s = math.sin(0.5 * math.pi * theta)
                 t, dt = math.pi * s * s, 0.5 * math.pi**2 * math.sin(math.pi * theta)
             radius = 0.5 * (hi - lo)
@@ -59,27 +63,31 @@ def place(
 
 
 @inline
-def panel_sum(values: Floats, misses: Floats, result: Floats, error: Floats) -> None:
-    """Add a panel's Gauss sums and error estimates to result and error (both (q,))."""
+def panel_sum(values: Floats, stage: int, misses: Floats, result: Floats, error: Floats) -> None:
+    """Add a panel's sums and error estimates to result and error (both (q,))."""
     for k in range(result.size):
         error[k] += misses[k]
-    for i in range(NODES):
-        w = GAUSS_W[i]
+    for i in range((stage + 1) * NODES):
+        w = WEIGHT[stage, i]
         for k in range(result.size):
             result[k] += w * values[i, k]
 
 
 @inline
-def panel_error(values: Floats, scale: Floats, moments: Floats, misses: Floats) -> float:
-    """Estimate the error of a panel's Gauss sums.
+def panel_error(
+    values: Floats, stage: int, scale: Floats, moments: Floats, misses: Floats
+) -> float:
+    """Estimate the error of a panel's sums.
 
-    The last Legendre coefficients tell how far the integrand is resolved. A Gauss rule errs by
-    about the square of that ratio where convergence is geometric; the power 3/2 used here is
-    the cautious choice.
+    The last Legendre coefficients of the interpolant tell how far the integrand is resolved.
+    Where convergence is geometric a Gauss rule errs by about the square of that ratio, its
+    extension by the power 1.6; the power 3/2 used here is the cautious choice.
 
     Parameters
     ----------
-    values : float (NODES, q)
+    values : float (STAGES * NODES, q)
+    stage : int
+        How many stages are filled in, less one.
     scale : float (q,)
         What each column's error is compared with.
     moments : float (3, q)
@@ -93,12 +101,9 @@ def panel_error(values: Floats, scale: Floats, moments: Floats, misses: Floats) 
         Largest error over scale.
     """
     q = scale.size
-    for k in range(q):
-        moments[0, k] = 0.0
-        moments[1, k] = 0.0
-        moments[2, k] = 0.0
-    for i in range(NODES):
-        w, p, s = GAUSS_W[i], LAST[i], SECOND[i]
+    moments[:, :] = 0.0
+    for i in range((stage + 1) * NODES):
+        w, p, s = WEIGHT[stage, i], LAST[stage, i], SECOND[stage, i]
         for k in range(q):
             v = values[i, k]
             moments[0, k] += w * abs(v)

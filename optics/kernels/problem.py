@@ -9,7 +9,7 @@ import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline
-from optics.kernels.paths import NODES
+from optics.kernels.rules import NODES
 
 
 class Half(NamedTuple):

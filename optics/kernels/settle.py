@@ -13,7 +13,7 @@ import numpy as np
 
 from optics.kernels.arrays import Floats
 from optics.kernels.exits import AIR_BOTTOM, COLUMNS, MATCHED_BOTTOM, TOTAL
-from optics.kernels.paths import ARC_FROM_BRANCH, REAL, TAIL
+from optics.kernels.paths import ARC_BETWEEN_LINES, REAL, TAIL
 from optics.kernels.problem import Problem
 from optics.kernels.tasks import Tasks, run_dissipated, run_radiated
 
@@ -41,7 +41,7 @@ class Careful:
         if np.isinf(hi):
             octaves = lo * 2.0 ** np.arange(_FAR_OCTAVES + 1)
             intervals = np.column_stack([octaves[:-1], octaves[1:]])
-            tail = Tasks.on(np.array([self._row]), TAIL, octaves[-1:], hi)
+            tail = Tasks.on(np.array([self._row]), TAIL, octaves[-1:], hi, octaves[-1:])
             value, miss, _ = run_dissipated(self._problem, tail, self._scale, self._tolerance)
             found, error = found + value[0], float(miss[0])
         while intervals.size and hi > lo:
@@ -100,7 +100,7 @@ class Careful:
     def _on_arc(self, intervals: Floats, side: float) -> Floats:
         """Dissipated power on half circles below (side 1) or above (-1) the axis."""
         depth = side * np.minimum(0.5 * (intervals[:, 1] - intervals[:, 0]), 1.0)
-        tasks = self._tasks(ARC_FROM_BRANCH, intervals, depth)
+        tasks = self._tasks(ARC_BETWEEN_LINES, intervals, depth)
         return run_dissipated(self._problem, tasks, self._scale, self._tolerance)[0]
 
     def _destinations(self, intervals: Floats) -> tuple[Floats, Floats]:

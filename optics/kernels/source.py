@@ -41,8 +41,8 @@ from optics.kernels.halfstack import (
     reflection,
     waves,
 )
-from optics.kernels.paths import NODES
 from optics.kernels.problem import Half, Scratch, Sides, Source, Work
+from optics.kernels.rules import NODES
 
 
 @inline

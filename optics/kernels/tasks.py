@@ -1,6 +1,5 @@
 """Lists of integration tasks, and their sums by wavelength."""
 
-from collections.abc import Callable
 from typing import NamedTuple
 
 import numpy as np
@@ -8,7 +7,8 @@ from numpy.typing import ArrayLike
 
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.exits import COLUMNS
-from optics.kernels.integrate import integrate_dissipated, integrate_radiated
+from optics.kernels.integrate import integrate
+from optics.kernels.paths import REAL, REAL_FROM_ZERO
 from optics.kernels.problem import Problem
 
 
@@ -20,7 +20,7 @@ class Tasks(NamedTuple):
 
     @classmethod
     def on(
-        cls, rows: Integers, kind: int, lo: ArrayLike, hi: ArrayLike, depth: ArrayLike = 0.0
+        cls, rows: Integers, kind: ArrayLike, lo: ArrayLike, hi: ArrayLike, depth: ArrayLike = 0.0
     ) -> "Tasks":
         """Paths of one kind."""
         paths = np.empty((rows.size, 4))
@@ -29,13 +29,11 @@ class Tasks(NamedTuple):
         return cls(rows, paths)
 
     @classmethod
-    def between(cls, rows: Integers, kind: int, lines: Floats) -> "Tasks":
-        """Paths between neighboring break points (w, p); empty ones are left out."""
-        count = lines.shape[1] - 1
-        tasks = cls.on(
-            np.repeat(rows, count), kind, lines[:, :-1].reshape(-1), lines[:, 1:].reshape(-1)
-        )
-        return tasks.nonempty()
+    def between(cls, rows: Integers, lines: Floats) -> "Tasks":
+        """Real paths between neighboring light lines (w, p), from 0; empty ones are left out."""
+        lo, hi = lines[:, :-1].reshape(-1), lines[:, 1:].reshape(-1)
+        kind = np.where(lo == 0.0, REAL_FROM_ZERO, REAL)
+        return cls.on(np.repeat(rows, lines.shape[1] - 1), kind, lo, hi).nonempty()
 
     def nonempty(self) -> "Tasks":
         """Only the paths that have a length."""
@@ -43,61 +41,66 @@ class Tasks(NamedTuple):
         return Tasks(self.rows[kept], self.paths[kept])
 
 
-def along_arcs(rows: Integers, kind: int, lo: Floats, hi: Floats) -> Tasks:
-    """Half ellipses below the axis; deeper than k0 they would pass under backward modes."""
-    return Tasks.on(rows, kind, lo, hi, np.minimum(0.5 * (hi - lo), 1.0))
+def along_arcs(
+    rows: Integers, kind: ArrayLike, lo: Floats, hi: Floats, flatness: float = 1.0
+) -> Tasks:
+    """Half ellipses below the axis, flatness = 1 half circles at most.
+
+    Deeper than k0 they would pass under too many backward modes.
+    """
+    return Tasks.on(rows, kind, lo, hi, np.minimum(flatness * 0.5 * (hi - lo), 1.0))
 
 
 def run_dissipated(
     problem: Problem, tasks: Tasks, scale: Floats, tolerance: float
 ) -> tuple[Floats, Floats, Integers]:
-    """Dissipated power of every task (t, 3, z), its error over scale (t,), panels (t,).
+    """Dissipated power of every task (t, 3, z), its error over scale (t,), batches (t,).
 
     scale : float (w, 2, z)
     """
     z = scale.shape[2]
     by_channel = scale[:, [0, 1, 1]].reshape(-1, 3 * z)[tasks.rows]
-    value, error, panels = _run(integrate_dissipated, problem, tasks, by_channel, tolerance)
-    return value.reshape(-1, 3, z), error, panels
+    value, error, batches = _run(problem, tasks, False, by_channel, tolerance)
+    return value.reshape(-1, 3, z), error, batches
 
 
 def run_radiated(
     problem: Problem, tasks: Tasks, scale: Floats, tolerance: float
 ) -> tuple[Floats, Floats, Integers]:
-    """Every destination of every task (t, 2, COLUMNS, z), its error over scale, panels."""
+    """Every destination of every task (t, 2, COLUMNS, z), its error over scale, batches."""
     z = scale.shape[2]
     by_column = np.repeat(scale, COLUMNS, axis=1).reshape(-1, 2 * COLUMNS * z)[tasks.rows]
-    value, error, panels = _run(integrate_radiated, problem, tasks, by_column, tolerance)
-    return value.reshape(-1, 2, COLUMNS, z), error, panels
+    value, error, batches = _run(problem, tasks, True, by_column, tolerance)
+    return value.reshape(-1, 2, COLUMNS, z), error, batches
 
 
 def _run(
-    kernel: Callable[..., None], problem: Problem, tasks: Tasks, scale: Floats, tolerance: float
+    problem: Problem, tasks: Tasks, everything: bool, scale: Floats, tolerance: float
 ) -> tuple[Floats, Floats, Integers]:
     value, miss = np.zeros_like(scale), np.zeros_like(scale)
-    panels = np.zeros(tasks.rows.size, dtype=np.int64)
-    kernel(problem, tasks.rows, tasks.paths, scale, tolerance, value, miss, panels)
-    return value, (miss / scale).max(axis=1, initial=0.0), panels
+    batches = np.zeros(tasks.rows.size, dtype=np.int64)
+    integrate(problem, tasks.rows, tasks.paths, everything, scale, tolerance, value, miss, batches)
+    return value, (miss / scale).max(axis=1, initial=0.0), batches
 
 
 def dissipated_power(
-    problem: Problem, tasks: Tasks, scale: Floats, tolerance: float, panels: Integers
+    problem: Problem, tasks: Tasks, scale: Floats, tolerance: float, batches: Integers
 ) -> tuple[Floats, Floats]:
     """Sum of the tasks by wavelength: power (w, 3, z) and error over scale (w,).
 
-    panels (w,) is counted up.
+    batches (w,) is counted up.
     """
     w, _, z = scale.shape
     value, miss, used = run_dissipated(problem, tasks, scale, tolerance)
     power, error = np.zeros((w, 3, z)), np.zeros(w)
     np.add.at(power, tasks.rows, value)
     np.add.at(error, tasks.rows, miss)
-    np.add.at(panels, tasks.rows, used)
+    np.add.at(batches, tasks.rows, used)
     return power, error
 
 
 def every_destination(
-    problem: Problem, tasks: Tasks, scale: Floats, tolerance: float, panels: Integers
+    problem: Problem, tasks: Tasks, scale: Floats, tolerance: float, batches: Integers
 ) -> tuple[Floats, Floats]:
     """Sum of the tasks by wavelength: (w, 2, COLUMNS, z) and error over scale (w,)."""
     w, _, z = scale.shape
@@ -105,5 +108,5 @@ def every_destination(
     power, error = np.zeros((w, 2, COLUMNS, z)), np.zeros(w)
     np.add.at(power, tasks.rows, value)
     np.add.at(error, tasks.rows, miss)
-    np.add.at(panels, tasks.rows, used)
+    np.add.at(batches, tasks.rows, used)
     return power, error
