@@ -82,8 +82,14 @@ class Careful:
             for i in np.flatnonzero(~agree & narrow):
                 above = self._lack(straight[i : i + 1], self._on_arc(intervals[i : i + 1], -1.0))
                 most = np.maximum(np.maximum(lack[i], above[0]), 0.0)
-                found += straight[i] + self._resonance(intervals[i], most)
-                error += float(miss[i]) + self._tolerance
+                if miss[i] > 10.0 * self._tolerance:
+                    # The axis has seen part of the resonance: better to take all of it anew.
+                    most += straight[i, :, TOTAL]
+                else:
+                    found += straight[i]
+                    error += float(miss[i])
+                found += self._resonance(intervals[i], most)
+                error += self._tolerance
             intervals = _halved(intervals[~agree & ~narrow])
         return found, error
 
