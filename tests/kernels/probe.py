@@ -1,0 +1,76 @@
+"""Ways into the compiled kernels at single wavevectors, for comparison with other programs."""
+
+from __future__ import annotations
+
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from optics.kernels.compiled import kernel
+from optics.kernels.exits import COLUMNS
+from optics.kernels.integrate import at_wavelength, integrate_radiated
+from optics.kernels.paths import NODES, REAL
+from optics.kernels.problem import Problem, work_space
+from optics.kernels.source import solve_half
+
+Floats = NDArray[np.float64]
+Complexes = NDArray[np.complex128]
+S, P = 0, 1
+# Half width of an interval that stands for a point. What its mean misses is the second
+# derivative times a sixth of the square of this; what rounding adds is 1e-16 over this.
+POINT = 1e-5
+
+
+class HalfStack(NamedTuple):
+    """One half stack at real wavevectors; leading axis of all s, p, last one the nodes."""
+
+    r: Complexes  # (2, n) reflection seen from the emitter film
+    t: Complexes  # (2, n) E (s) or H (p) in the outer medium per unit in the emitter film
+    r_out: Complexes  # (2, n) reflection seen from outside
+    t_in: Complexes  # (2, n) from outside into the emitter film
+    y_in: Complexes  # (2, n) admittance of the emitter film
+    y_out: Complexes  # (2, n) and of the outer medium
+    absorbed: Floats  # (2, m, n) by film, lit from the emitter film
+    absorbed_from_outside: Floats  # (2, m, n)
+
+
+def density(problem: Problem, u: float) -> Floats:
+    """What `integrate_radiated` adds up, per du at one wavevector: (2, COLUMNS, positions)."""
+    z = problem.source.kz_positions.shape[1]
+    value, miss = np.zeros((2, 1, 2 * COLUMNS * z))
+    path = np.array([[REAL, u - POINT, u + POINT, 0.0]])
+    one = np.zeros(1, dtype=np.int64)
+    integrate_radiated(problem, one, path, np.ones_like(value), np.inf, value, miss, one.copy())
+    return value.reshape(2, COLUMNS, z) / (2 * POINT)
+
+
+def half_stack(problem: Problem, upper: bool, u: list[complex]) -> HalfStack:
+    """Two-port and absorption of one half stack at up to 16 wavevectors."""
+    m = (problem.up if upper else problem.down).kd.shape[1]
+    nodes = np.array([*u, *([u[-1]] * (NODES - len(u)))], complex)
+    ports, films = np.zeros((6, 2, NODES), complex), np.zeros((2, 2, m, NODES))
+    _half_stack(problem, upper, nodes, ports, films)
+    n = len(u)
+    return HalfStack(*ports[..., :n], *films[..., :n])
+
+
+@kernel
+def _half_stack(
+    problem: Problem, upper: bool, u: Complexes, ports: Complexes, films: Floats
+) -> None:
+    _, _, up, down = at_wavelength(problem, 0)
+    half = up if upper else down
+    work = work_space(half.kd.size)
+    solve_half(half, work, u, True)
+    for pol in range(2):
+        for i in range(NODES):
+            ports[0, pol, i] = work.r_far[pol, 0, i]
+            ports[1, pol, i] = work.t[pol, i]
+            ports[2, pol, i] = work.r_out[pol, i]
+            ports[3, pol, i] = work.g[pol, 0, i]
+            ports[4, pol, i] = work.y[pol, 0, i]
+            ports[5, pol, i] = work.y[pol, -1, i]
+            for j in range(half.kd.size):
+                films[0, pol, j, i] = work.a_in[pol, j, i]
+                films[1, pol, j, i] = work.a_out[pol, j, i]
