@@ -12,6 +12,7 @@ import math
 
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
+from optics.kernels.elementary import exp_i
 
 S, P = 0, 1
 
@@ -25,17 +26,17 @@ def sqrt_upper(z: complex) -> complex:
     """Square root with Im >= 0 (and Re >= 0 on the real axis): the branch of every kz."""
     x, y = z.real, z.imag
     m = math.sqrt(x * x + y * y)
-    if m < _LIGHT_LINE:
-        return complex(math.sqrt(_LIGHT_LINE), 0.0)
-    if x >= 0.0:
-        a = math.sqrt(0.5 * (m + x))
-        b = 0.5 * y / a
-    else:
-        b = math.sqrt(0.5 * (m - x))
-        a = 0.5 * y / b
-    if b < 0.0:
-        a, b = -a, -b
-    return complex(a, b)
+    # Choices rather than branches, so that loops vectorize.
+    at_line = m < _LIGHT_LINE
+    x = _LIGHT_LINE if at_line else x
+    y = 0.0 if at_line else y
+    m = _LIGHT_LINE if at_line else m
+    large = math.sqrt(0.5 * (m + abs(x)))
+    small = 0.5 * y / large
+    a = large if x >= 0.0 else small
+    b = small if x >= 0.0 else large
+    sign = -1.0 if b < 0.0 else 1.0
+    return complex(sign * a, sign * b)
 
 
 @inline
@@ -43,17 +44,6 @@ def reciprocal(z: complex) -> complex:
     """1 / z without the range checks that the language's own complex division makes."""
     m = 1.0 / (z.real * z.real + z.imag * z.imag)
     return complex(z.real * m, -z.imag * m)
-
-
-@inline
-def exp_i(z: complex) -> complex:
-    """exp(i z) for Im z >= 0; waves in lossless films need only half of it."""
-    if z.imag == 0.0:
-        return complex(math.cos(z.real), math.sin(z.real))
-    if z.real == 0.0:
-        return complex(math.exp(-z.imag), 0.0)
-    e = math.exp(-z.imag)
-    return complex(e * math.cos(z.real), e * math.sin(z.real))
 
 
 @inline

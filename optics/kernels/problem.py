@@ -75,6 +75,7 @@ class Scratch(NamedTuple):
     to_bottom: Complexes  # (NODES, z) phase factor from the dipole to the bottom face
     to_top: Complexes  # (NODES, z)
     shares: Floats  # (2, COLUMNS) destinations of light sent down, up
+    sent: Floats  # (2, z) power sent down, up
 
 
 @inline
@@ -94,7 +95,7 @@ def work_space(m: int) -> Work:
 def scratch_space(positions: int, columns: int) -> Scratch:
     """Arrays for so many positions and columns of destinations."""
     phases = np.zeros((2, NODES, positions), dtype=np.complex128)
-    return Scratch(phases[0], phases[1], np.zeros((2, columns)))
+    return Scratch(phases[0], phases[1], np.zeros((2, columns)), np.zeros((2, positions)))
 
 
 def make_half(

@@ -10,6 +10,7 @@ the same dipole in the unbounded emitter medium.
 
 from optics.kernels.arrays import Complexes, Floats, StackPowers
 from optics.kernels.compiled import inline
+from optics.kernels.elementary import exp_i
 from optics.kernels.exits import (
     ABSORBED,
     ABSORBING,
@@ -34,7 +35,6 @@ from optics.kernels.halfstack import (
     P,
     S,
     abs2,
-    exp_i,
     inward,
     outward,
     reciprocal,
@@ -76,12 +76,12 @@ def fill_phases(pol: int, source: Source, work: Work, scratch: Scratch) -> None:
     """Phase factors from every dipole to both faces of the emitter film, at every node."""
     if pol == P and source.eps_o == source.eps_e:
         return  # those of s, which came first
-    for q in range(source.kz_positions.size):
-        below = source.kz_positions[q]
-        above = source.kd - below
-        for i in range(NODES):
-            scratch.to_bottom[i, q] = exp_i(work.kz[pol, 0, i] * below)
-            scratch.to_top[i, q] = exp_i(work.kz[pol, 0, i] * above)
+    for i in range(NODES):
+        kz = work.kz[pol, 0, i]
+        for q in range(source.kz_positions.size):
+            scratch.to_bottom[i, q] = exp_i(kz * source.kz_positions[q])
+        for q in range(source.kz_positions.size):
+            scratch.to_top[i, q] = exp_i(kz * (source.kd - source.kz_positions[q]))
 
 
 @inline
@@ -290,10 +290,15 @@ def radiated(
                     to_b, to_t = scratch.to_bottom[i, q], scratch.to_top[i, q]
                     a = 1.0 + sign * a_face * to_t * to_t
                     b = 1.0 + sign * b_face * to_b * to_b
-                    sent_up = carried * abs2(to_t * b)
-                    sent_down = carried * abs2(to_b * a)
+                    scratch.sent[0, q] = carried * abs2(to_b * a)
+                    scratch.sent[1, q] = carried * abs2(to_t * b)
                     values[i, base + q] += (through * a * b).real
-                    for k in range(1, COLUMNS):
-                        values[i, base + k * positions + q] += (
-                            sent_down * shares[0, k] + sent_up * shares[1, k]
+                for k in range(1, COLUMNS):
+                    down_share, up_share = shares[0, k], shares[1, k]
+                    if down_share == 0.0 and up_share == 0.0:
+                        continue
+                    first = base + k * positions
+                    for q in range(positions):
+                        values[i, first + q] += (
+                            scratch.sent[0, q] * down_share + scratch.sent[1, q] * up_share
                         )
