@@ -12,16 +12,19 @@ if TYPE_CHECKING:
     from optics.device.case import Case, read_case
     from optics.device.errors import CaseError
     from optics.outcome.budget import Budget, budget
+    from optics.study.check import Check, check
 
 _HOMES = {
     "Budget": "optics.outcome.budget",
     "Case": "optics.device.case",
     "CaseError": "optics.device.errors",
+    "Check": "optics.study.check",
     "budget": "optics.outcome.budget",
+    "check": "optics.study.check",
     "read_case": "optics.device.case",
 }
 
-__all__ = ["Budget", "Case", "CaseError", "__version__", "budget", "read_case"]
+__all__ = ["Budget", "Case", "CaseError", "Check", "__version__", "budget", "check", "read_case"]
 
 
 def __getattr__(name: str) -> Any:

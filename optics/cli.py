@@ -9,11 +9,14 @@ from typing import TYPE_CHECKING, Any, TypeVar
 
 import click
 
+from optics.present import pictures
+
 if TYPE_CHECKING:
     from optics.present.constants import Shown
 
 DONE, FAILED, INPUT_AT_FAULT = 0, 1, 2
 _TRACEBACK = "optics.traceback"
+_WIDE = 180  # columns of a table of comparisons outside a terminal
 _Command = TypeVar("_Command", bound=Callable[..., Any])
 
 
@@ -61,6 +64,18 @@ def _not_nan(_ctx: click.Context, _parameter: click.Parameter, value: float) -> 
     if value != value:
         raise click.BadParameter("nan is not a number")
     return value
+
+
+def _numbers(
+    _ctx: click.Context, _parameter: click.Parameter, value: str | None
+) -> tuple[float, ...] | None:
+    """Numbers of a list such as 0,15,30."""
+    if value is None:
+        return None
+    try:
+        return tuple(float(word) for word in value.split(","))
+    except ValueError:
+        raise click.BadParameter(f"found {value!r}; expected numbers such as 0,15,30") from None
 
 
 def _traceback_option(command: _Command) -> _Command:
@@ -112,7 +127,14 @@ def main() -> None:
 @main.command()
 @click.argument("case", metavar="CASE", type=click.Path(path_type=Path))
 @_json_option
-@_output_option(".json, .csv or .nc")
+@_output_option(".json, .csv, .nc, .png, .svg or .pdf")
+@click.option(
+    "--picture",
+    type=click.Choice(pictures.PICTURES),
+    help="What a .png, .svg or .pdf shows: the chain from charge to air (if not said), "
+    "destinations against wavelength or against the emitter's position, or dissipated power "
+    "over wavelength and effective index.",
+)
 @click.option(
     "--tolerance",
     type=click.FloatRange(min=0.0, max=0.1, min_open=True),
@@ -122,14 +144,19 @@ def main() -> None:
     help="Wanted accuracy of every destination, as a fraction of the dissipated power.",
 )
 @_traceback_option
-def budget(case: Path, as_object: bool, outputs: tuple[Path, ...], tolerance: float) -> None:
+def budget(
+    case: Path, as_object: bool, outputs: tuple[Path, ...], picture: str | None, tolerance: float
+) -> None:
     """Show where the generated light goes, and the EQE chain.
 
     CASE is a case file; see docs/case-file.md, or outcouple schema for editors.
     """
     from optics.present import files
 
-    files.check_targets(outputs, (".json", ".csv", ".nc"))
+    files.check_targets(outputs, (".json", ".csv", ".nc", *pictures.SUFFIXES))
+    draws = any(path.suffix.lower() in pictures.SUFFIXES for path in outputs)
+    if picture is not None and not draws:
+        raise click.UsageError(f"--picture {picture} needs a file: give -o with .png, .svg or .pdf")
 
     import optics
 
@@ -148,6 +175,10 @@ def budget(case: Path, as_object: bool, outputs: tuple[Path, ...], tolerance: fl
         ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
         ".nc": lambda path: outcome.to_tree().to_netcdf(path, engine="h5netcdf"),
     }
+    if draws:
+        figure = pictures.draw(picture or pictures.PICTURES[0], device, outcome, tolerance)
+        drawn: files.Writer = lambda path: pictures.write(figure, path)  # noqa: E731
+        writers |= dict.fromkeys(pictures.SUFFIXES, drawn)
     files.publish({path: writers[path.suffix.lower()] for path in outputs})
     reminders = cautions(device, result)
     if as_object:
@@ -161,6 +192,71 @@ def budget(case: Path, as_object: bool, outputs: tuple[Path, ...], tolerance: fl
 
         print_budget(console(), result, outcome.tables, reminders)
     _say_written(outputs)
+
+
+@main.command()
+@click.argument("case", metavar="CASE", type=click.Path(path_type=Path))
+@_json_option
+@_output_option(".json or .csv")
+@click.option(
+    "--wavelengths",
+    callback=_numbers,
+    metavar="NM,NM,...",
+    help="Wavelengths of the case in nm; default the first, the last and each emitter's peak.",
+)
+@click.option(
+    "--angles",
+    callback=_numbers,
+    metavar="DEG,DEG,...",
+    help="Angles in the media next to the films; default 0,20,40,60,80.",
+)
+@click.option("--all", "every_row", is_flag=True, help="Show the comparisons that passed too.")
+@_traceback_option
+def check(
+    case: Path,
+    as_object: bool,
+    outputs: tuple[Path, ...],
+    wavelengths: tuple[float, ...] | None,
+    angles: tuple[float, ...] | None,
+    every_row: bool,
+) -> None:
+    """Verify a case's own numbers by independent means.
+
+    Exit status 1 if any difference exceeds its tolerance. What could not be checked is listed
+    with the reason.
+    """
+    from optics.present import files
+
+    files.check_targets(outputs, (".json", ".csv"))
+
+    import optics
+    from optics.kernels.compiled import cache_is_warm
+    from optics.present.terminal import compiling_notice
+    from optics.study.check import DEFAULT_ANGLES_DEG
+
+    device = optics.read_case(case)
+    with compiling_notice(needed=not cache_is_warm()):
+        outcome = optics.check(
+            device, wavelengths_nm=wavelengths, angles_deg=angles or DEFAULT_ANGLES_DEG
+        )
+    result = outcome.to_dict()
+    writers: dict[str, files.Writer] = {
+        ".json": lambda path: files.write_json(result, path),
+        ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
+    }
+    files.publish({path: writers[path.suffix.lower()] for path in outputs})
+    if as_object:
+        click.echo(files.as_json(result))
+        for line in outcome.warnings:
+            click.echo(f"Warning: {line}", err=True)
+    else:
+        from optics.present.check import print_check
+        from optics.present.terminal import console
+
+        print_check(console(plain_width=_WIDE), result, every_row=every_row)
+    _say_written(outputs)
+    if not outcome.passed:
+        click.get_current_context().exit(FAILED)
 
 
 @main.command()

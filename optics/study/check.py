@@ -19,7 +19,7 @@ from optics.study.check_rows import KINDS, Place, Row, compared, not_checked
 from optics.study.check_stack import layers_of
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator, Sequence
+    from collections.abc import Iterator, Mapping, Sequence
 
     import pandas
     import xarray
@@ -142,7 +142,9 @@ def check(
         for index in _wavelengths(data, wavelengths_nm):
             rows += _point_rows(case, emitter, data.isel(wavelength_nm=index), angles_deg)
         rows += _energy_rows(emitter, data)
-    rows += average_rows(case, outcome.to_dict(), outcome.spectral)
+    result = outcome.to_dict()
+    rows += _chain_rows(result)
+    rows += average_rows(case, result, outcome.spectral)
     order = {kind: place for place, kind in enumerate(KINDS)}
     rows.sort(key=lambda row: order[row.kind])
     return Check(case.title, case.sha256, tuple(rows), outcome.warnings)
@@ -217,6 +219,14 @@ def _point_rows(
                     DEFAULT_TOLERANCE + found.error,
                     found.note,
                 )
+
+
+def _chain_rows(result: Mapping[str, Any]) -> Iterator[Row]:
+    """The parts into which the charge of a unit splits add up to all of it."""
+    for unit in result["chain"]:
+        total = sum(value for key, value in unit.items() if key != "unit")
+        name = f"chain of unit {unit['unit']}"
+        yield compared("energy balance", name, "sum", Place(""), total, 1.0, 1.0, DEFAULT_TOLERANCE)
 
 
 def _energy_rows(emitter: Emitter, data: xarray.Dataset) -> Iterator[Row]:

@@ -70,9 +70,6 @@ def average_rows(
     total = eqe["bottom"] + eqe["top"]
     name = "external_quantum_efficiency"
     yield _row(name, device, result[name], total)
-    for unit in result["chain"]:
-        parts = sum(value for key, value in unit.items() if key != "unit")
-        yield _row(f"sum of the chain of unit {unit['unit']}", device, parts, 1.0)
 
 
 def _row(name: str, place: Place, ours: float, theirs: float) -> Row:

@@ -6,7 +6,8 @@ rule. Absorbed light is what neither leaves nor is trapped, while the engine int
 fields inside the films.
 
 Poles of sharp modes become break points. Where one is too sharp for any quadrature (a guide
-without loss) the path steps around it below the axis, where the dissipated power is analytic.
+without loss) the path steps around it off the axis, where the dissipated power is analytic:
+below the axis, or above it for a mode that runs backward.
 """
 
 from __future__ import annotations
@@ -72,7 +73,6 @@ def powers(layers: Layers, position_nm: Sequence[float]) -> Powers:
     breaks = {0.0, line, far, float(np.sqrt(layers.own.eps_o).real)}
     breaks |= {float(np.sqrt(layers.own.eps_e).real)}
     breaks |= {value for o in counted for value in (o.n_outer, o.n_out)}
-    # Metals beside the films are smooth there; transparent films bring square roots that cancel.
     found = resonances(layers, far)
     z = np.asarray(position_nm, dtype=float)
     below = [r for r in found if r.place.real < line and r.sharp]
@@ -95,11 +95,7 @@ def powers(layers: Layers, position_nm: Sequence[float]) -> Powers:
         return Powers(nothing, np.inf, "", str(reason))
     total, error = total + part, error + miss
     total[_NEAR] = part[_ALL]
-    note = (
-        f"path steps around {len(detours)} guided mode(s) without loss, below the axis"
-        if detours
-        else ""
-    )
+    note = f"the path steps around {len(detours)} guided mode(s) without loss" if detours else ""
     return Powers(total, float((error / total[_ALL]).max()), note, "")
 
 
@@ -148,14 +144,17 @@ def _tail(layers: Layers, z: Floats, far: float, line: float) -> tuple[Floats, F
 
 
 def _around(layers: Layers, z: Floats, resonance: Resonance, line: float) -> tuple[Floats, Floats]:
-    """Half circle below a pole, from its gap's one end to the other."""
+    """Half circle below a pole (above one that runs backward), from one end of its gap."""
     center, radius = 0.5 * (resonance.lo + resonance.hi), 0.5 * (resonance.hi - resonance.lo)
 
     def integrand(t: Floats) -> Floats:
         arrow: Array = np.asarray(np.exp(1j * t))
         return _per_wavevector(layers, z, center + radius * arrow, 1j * radius * arrow, line)
 
-    return _integrate(integrand, np.pi, 2.0 * np.pi)
+    if resonance.forward:
+        return _integrate(integrand, np.pi, 2.0 * np.pi)
+    part, miss = _integrate(integrand, 0.0, np.pi)
+    return -part, miss
 
 
 def _per_wavevector(layers: Layers, z: Floats, u: Array, du: Array, line: float) -> Floats:
@@ -172,7 +171,9 @@ def _per_wavevector(layers: Layers, z: Floats, u: Array, du: Array, line: float)
         phase = 1j * layers.k0 * kz[:, None]
         to_bottom = np.exp(phase * z)
         to_top = np.exp(phase * (own.thickness_nm - z))
-        after = _destinations(layers, u.real, pol)
+        after = np.zeros((4, 2, u.size))
+        if not trapped.all():
+            after = _destinations(layers, u.real, pol)
         for orientation in (0, 1) if pol == "p" else (1,):
             sign = -1.0 if pol == "p" and orientation == 1 else 1.0
             a, b = sign * up.r[:, None] * to_top**2, sign * down.r[:, None] * to_bottom**2

@@ -12,20 +12,20 @@ Verdict = Literal["pass", "fail", "not checked"]
 KINDS: dict[str, tuple[str, str]] = {
     "far field": (
         "largest value among the angles of this side, wavelength, position and dipole",
-        "both values are closed expressions, so only rounding may part them; it grows with film "
-        "phases (up to 1e3 rad) and resonances (up to 1e3), 1e-16 each",
+        "both are closed expressions, so only rounding may part them: 1e-16, magnified by the "
+        "phases of films (up to 1e3 rad) and by resonances (up to 1e4)",
     ),
     "light from outside": (
         "the incident power",
-        "both values are closed expressions, so only rounding may part them; it grows with film "
-        "phases (up to 1e3 rad) and resonances (up to 1e3), 1e-16 each",
+        "both are closed expressions, so only rounding may part them: 1e-16, magnified by the "
+        "phases of films (up to 1e3 rad) and by resonances (up to 1e4)",
     ),
     "power": (
         "the dissipated power",
         "accuracy asked of the engine, and what the quadrature says of itself",
     ),
     "energy balance": (
-        "the dissipated power",
+        "the dissipated power (of a chain: the charge injected)",
         "accuracy asked of the engine: absorption comes from fields, the total from its own path",
     ),
     "average": (
