@@ -9,7 +9,6 @@ from functools import cache
 from pathlib import Path
 from typing import Any
 
-import optics
 from optics.device.errors import CaseError, Fault, nearest
 from optics.device.materials import UNLIMITED_NM, Material
 from optics.device.models import constant, pair, tabulated
@@ -143,7 +142,7 @@ def spectrum_path(name: str) -> Path:
 @cache
 def data_folder() -> Path:
     """Folder of the bundled files: inside an installed package, or beside it in a checkout."""
-    package = Path(optics.__file__).resolve().parent
+    package = Path(__file__).resolve().parents[1]
     installed = package / "_materials"
     return installed if installed.is_dir() else package.parent / "materials"
 
