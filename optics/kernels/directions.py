@@ -8,13 +8,13 @@ import numpy as np
 
 from optics.kernels.arrays import Floats
 from optics.kernels.compiled import inline, kernel
-from optics.kernels.halfstack import abs2, exp_i, outward, reciprocal, waves
+from optics.kernels.elementary import exp_i
+from optics.kernels.halfstack import abs2, outward, reciprocal, waves
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.problem import Problem, Sides, scratch_space, work_space
+from optics.kernels.problem import Problem, Sides, work_space
 from optics.kernels.rules import NODES
 from optics.kernels.source import (
     channel,
-    fill_phases,
     outgoing_factor,
     solve_half,
     stack_from_both_sides,
@@ -49,7 +49,9 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
     """
     n = u.shape[1]
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
-    scratch = scratch_space(problem.source.kz_positions.shape[1], 1)
+    positions = problem.source.kz_positions.shape[1]
+    to_bottom = np.zeros(positions, dtype=np.complex128)
+    to_top = np.zeros(positions, dtype=np.complex128)
     nodes = np.zeros(NODES, dtype=np.complex128)
     for w in range(u.shape[0]):
         source, sides, up, down = at_wavelength(problem, w)
@@ -61,11 +63,13 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
             outward(work_up.y, work_up.e, work_up.r_far, work_up.f, work_up.t)
             outward(work_down.y, work_down.e, work_down.r_far, work_down.f, work_down.t)
             for pol in range(2):
-                fill_phases(pol, source, work_up, scratch)
                 for i in range(min(NODES, n - start)):
                     at = nodes[i].real
                     kz = work_up.kz[pol, 0, i]
-                    through = scratch.to_bottom[i, 0] * scratch.to_top[i, 0]
+                    through = exp_i(kz * source.kd)
+                    for q in range(positions):
+                        to_bottom[q] = exp_i(kz * source.kz_positions[q])
+                        to_top[q] = exp_i(kz * (source.kd - source.kz_positions[q]))
                     a_face, b_face = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
                     inv = reciprocal(1.0 - a_face * b_face * through * through)
                     flux_t = abs2(work_up.t[pol, i]) * work_up.y[pol, -1, i].real
@@ -77,8 +81,8 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
                         if channel_pol != pol:
                             continue
                         factor = outgoing_factor(c, source, at, kz) / at * abs2(inv)
-                        for q in range(source.kz_positions.size):
-                            to_b, to_t = scratch.to_bottom[i, q], scratch.to_top[i, q]
+                        for q in range(positions):
+                            to_b, to_t = to_bottom[q], to_top[q]
                             a = 1.0 + sign * a_face * to_t * to_t
                             b = 1.0 + sign * b_face * to_b * to_b
                             power[w, 0, c, start + i, q] = factor * abs2(to_b * a) * flux_b
