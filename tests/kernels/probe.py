@@ -8,11 +8,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from optics.kernels.compiled import kernel
-from optics.kernels.exits import COLUMNS
-from optics.kernels.integrate import at_wavelength, integrate_radiated
+from optics.kernels.integrate import at_wavelength
 from optics.kernels.paths import NODES, REAL
 from optics.kernels.problem import Problem, work_space
 from optics.kernels.source import solve_half
+from optics.kernels.tasks import Tasks, run_radiated
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -35,14 +35,16 @@ class HalfStack(NamedTuple):
     absorbed_from_outside: Floats  # (2, m, n)
 
 
-def density(problem: Problem, u: float) -> Floats:
-    """What `integrate_radiated` adds up, per du at one wavevector: (2, COLUMNS, positions)."""
+def sums(problem: Problem, lo: float, hi: float, tolerance: float = 1e-12) -> Floats:
+    """All that leaves, is trapped or absorbed between two wavevectors: (2, COLUMNS, positions)."""
     z = problem.source.kz_positions.shape[1]
-    value, miss = np.zeros((2, 1, 2 * COLUMNS * z))
-    path = np.array([[REAL, u - POINT, u + POINT, 0.0]])
-    one = np.zeros(1, dtype=np.int64)
-    integrate_radiated(problem, one, path, np.ones_like(value), np.inf, value, miss, one.copy())
-    return value.reshape(2, COLUMNS, z) / (2 * POINT)
+    path = Tasks.on(np.zeros(1, dtype=np.int64), REAL, lo, hi)
+    return np.asarray(run_radiated(problem, path, np.ones((1, 2, z)), tolerance)[0][0])
+
+
+def density(problem: Problem, u: float) -> Floats:
+    """The same per du at one wavevector."""
+    return sums(problem, u - POINT, u + POINT) / (2 * POINT)
 
 
 def half_stack(problem: Problem, upper: bool, u: list[complex]) -> HalfStack:

@@ -12,15 +12,13 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from probe import sums
 from reference import Reference
 from reference_cases import load
 from stacks import HORIZONTAL, VERTICAL, answers, film, imbalance, metal, problem_of, slab, solved
 
 from optics.kernels.budget import AIR_BOTTOM, AIR_TOP, light_budget
 from optics.kernels.exits import AIR_TOP as TO_TOP
-from optics.kernels.exits import COLUMNS
-from optics.kernels.integrate import integrate_radiated
-from optics.kernels.paths import REAL
 
 PUBLISHED = Path(__file__).parents[1] / "published"
 EIGHT_DIGITS = 1e-8  # printed digits of the values
@@ -194,18 +192,7 @@ def test_fresnel_loss_of_the_escape_cone() -> None:
 def test_escape_cone_without_fresnel_loss(n: float) -> None:
     """What a bulk dipole sends into its own medium up to kappa = k0 is geometry."""
     problem = problem_of(Reference(550, [film(n, 100)], n**2, n**2, 0, 30))
-    value, miss = np.zeros((2, 2 * COLUMNS))
-    integrate_radiated(
-        problem,
-        np.zeros(1, dtype=np.int64),
-        np.array([[REAL, 0.0, 1.0, 0.0]]),
-        np.ones((1, 2 * COLUMNS)),
-        1e-12,
-        value[None],
-        miss[None],
-        np.zeros(1, dtype=np.int64),
-    )
-    normal, in_plane = value.reshape(2, COLUMNS)[:, TO_TOP]
+    normal, in_plane = sums(problem, 0.0, 1.0)[:, TO_TOP, 0]
     assert normal == pytest.approx(cones(n)["normal"], rel=1e-11)
     assert in_plane == pytest.approx(cones(n)["in_plane"], rel=1e-11)
     assert (normal + 2 * in_plane) / 3 == pytest.approx(cones(n)["isotropic"], rel=1e-11)
