@@ -248,7 +248,7 @@ def _energy_rows(emitter: Emitter, data: xarray.Dataset) -> Iterator[Row]:
         yield compared(
             "energy balance",
             "all destinations",
-            "dissipated power on a path of its own",
+            "total by a path of its own",
             place,
             float(summed[w, z, o]),
             float(total[w, z, o]),

@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     from optics.device.emitter import Emitter
 
 TOLERANCE = 1e-10
-_METHOD = "plain sums over spectrum, zone and dipoles"
+_METHOD = "plain sums"
 _DESTINATIONS = (
     "air_bottom",
     "air_top",
