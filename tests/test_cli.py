@@ -147,7 +147,8 @@ def test_an_unknown_suffix_is_refused_before_the_case_is_read(tmp_path: Path) ->
     result = run("budget", tmp_path / "no.toml", "-o", tmp_path / "out.xlsx")
     assert result.exit_code == 2
     assert result.stderr == (
-        f"{tmp_path}/out.xlsx: -o: found suffix .xlsx; expected .json, .csv or .nc\n"
+        f"{tmp_path}/out.xlsx: -o: found suffix .xlsx; "
+        "expected .json, .csv, .nc, .png, .svg or .pdf\n"
     )
 
 
