@@ -158,6 +158,9 @@ SWAPPED = [
 
 
 def check_turning_over(stack: Reference) -> None:
+    """Between transparent surroundings; absorbing ones stay below here."""
+    if stack.bottom.imag > 0.0:
+        return
     same(everything(turned_over(stack)), everything(stack)[:, SWAPPED])
 
 
