@@ -35,7 +35,7 @@ LOOKS = {
     "cover": Look("cover", "#009E73", "///", "white"),
     "guided": Look("guided in the films", "#0072B2", "", "white"),
     "surface_plasmon": Look("surface plasmons", "#CC79A7", "\\\\\\", INK),
-    "absorbed": Look("absorbed", "#4D4D4D", "", "white"),
+    "absorbed": Look("absorbed", "#2B2B2B", "", "white"),
 }
 
 
