@@ -11,20 +11,34 @@ from optics._version import VERSION as __version__
 if TYPE_CHECKING:
     from optics.device.case import Case, read_case
     from optics.device.errors import CaseError
+    from optics.outcome.angular import Angular, angular
     from optics.outcome.budget import Budget, budget
     from optics.study.check import Check, check
 
 _HOMES = {
+    "Angular": "optics.outcome.angular",
     "Budget": "optics.outcome.budget",
     "Case": "optics.device.case",
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
+    "angular": "optics.outcome.angular",
     "budget": "optics.outcome.budget",
     "check": "optics.study.check",
     "read_case": "optics.device.case",
 }
 
-__all__ = ["Budget", "Case", "CaseError", "Check", "__version__", "budget", "check", "read_case"]
+__all__ = [
+    "Angular",
+    "Budget",
+    "Case",
+    "CaseError",
+    "Check",
+    "__version__",
+    "angular",
+    "budget",
+    "check",
+    "read_case",
+]
 
 
 def __getattr__(name: str) -> Any:

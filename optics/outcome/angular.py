@@ -1,0 +1,241 @@
+"""Emission against angle: radiance, luminance and color on both sides of a device."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from functools import partial
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from optics._version import VERSION
+from optics.outcome.budget import DEFAULT_TOLERANCE, Accuracy, Budget, budget
+from optics.outcome.color import ACCURATE_DUV, observer_at
+from optics.outcome.directional import SIDES, Source, sources
+from optics.outcome.side import Outside, SideAngular, observed
+from optics.outcome.spectra import Spectra, angular_dataset, angular_frame, gather, spectra_dict
+
+if TYPE_CHECKING:
+    import pandas
+    import xarray
+
+    from optics.device.case import Case
+    from optics.device.materials import TableUse
+
+SCHEMA = "outcouple.angular/1"
+DEFAULT_ANGLES_DEG = tuple(float(angle) for angle in range(91))
+_AMPERE_PER_M2 = 10.0  # one mA/cm2
+
+
+@dataclass(frozen=True, slots=True)
+class Angular:
+    """Emission of a device against angle.
+
+    Attributes
+    ----------
+    title, case_sha256 : str
+    sides : mapping of str to SideAngular
+        ``bottom`` and ``top``.
+    accuracy : Accuracy
+        Of the light budget that the integrals over angle are taken from.
+    warnings : tuple of str
+    tables : tuple of TableUse
+        Tables of optical constants and spectra behind the numbers.
+    budget : Budget
+        Light budget of the case, before filter and polarizer.
+    """
+
+    title: str
+    case_sha256: str
+    sides: Mapping[str, SideAngular]
+    accuracy: Accuracy
+    warnings: tuple[str, ...]
+    tables: tuple[TableUse, ...]
+    budget: Budget
+    _spectra: Spectra
+
+    @property
+    def spectral(self) -> xarray.Dataset:
+        """Spectral radiance by side, angle_deg, wavelength_nm and polarization (s, p).
+
+        Per area and current, and per area where the case states a current density. Lines are
+        apart, by line_nm and not per nm.
+        """
+        return angular_dataset(self._spectra, self._head())
+
+    def to_dict(self, *, spectral: bool = False, polarization: bool = False) -> dict[str, Any]:
+        """Build the JSON result, ``outcouple.angular/1``: plain types only.
+
+        Parameters
+        ----------
+        spectral : bool
+            With spectral radiance by angle and wavelength.
+        polarization : bool
+            With radiance and luminance of s and p apart.
+        """
+        sides = {}
+        for place, (name, side) in enumerate(self.sides.items()):
+            sides[name] = side.to_dict(polarization=polarization)
+            if spectral:
+                sides[name] |= spectra_dict(self._spectra, place)
+        return {
+            **self._head(),
+            "sides": sides,
+            "accuracy": self.accuracy.to_dict(),
+            "warnings": list(self.warnings),
+        }
+
+    def to_frame(self, *, polarization: bool = False) -> pandas.DataFrame:
+        """Build a long table: columns side, angle_deg, quantity, value, unit."""
+        return angular_frame(self.to_dict(polarization=polarization)["sides"])
+
+    def _head(self) -> dict[str, Any]:
+        return {
+            "schema": SCHEMA,
+            "version": VERSION,
+            "title": self.title,
+            "case_sha256": self.case_sha256,
+        }
+
+
+def angular(
+    case: Case,
+    angles_deg: Sequence[float] = DEFAULT_ANGLES_DEG,
+    tolerance: float = DEFAULT_TOLERANCE,
+) -> Angular:
+    """Compute emission against angle, with luminance and color.
+
+    Parameters
+    ----------
+    case : Case
+        From `optics.read_case`.
+    angles_deg : sequence of float
+        0 to 90, in the medium outside; in the slab's medium where its exit is matched. They
+        say what is listed; integrals over angle do not depend on them.
+    tolerance : float
+        Wanted accuracy of what leaves at all angles together, as a fraction of the dissipated
+        power.
+
+    Returns
+    -------
+    Angular
+
+    Raises
+    ------
+    ValueError
+        If an angle lies outside 0 to 90 or is given twice, or as `budget`.
+
+    Examples
+    --------
+    >>> import optics
+    >>> result = optics.angular(optics.read_case("cases/green-bottom-pixel.toml"), [0, 60])
+    >>> result.sides["bottom"].current_efficiency_cd_A  # doctest: +SKIP
+    """
+    angles = _checked(angles_deg)
+    outcome = budget(case, tolerance)
+    emitting = sources(case, outcome)
+    outside = _outside(case)
+    pairs = [observed(case, emitting, side, angles, outside) for side in range(2)]
+    sides = {name: seen for name, (seen, _) in zip(SIDES, pairs, strict=True)}
+    return Angular(
+        title=case.title,
+        case_sha256=case.sha256,
+        sides=MappingProxyType(sides),
+        accuracy=outcome.accuracy,
+        warnings=outcome.warnings + tuple(_warnings(case, emitting, sides)),
+        tables=outcome.tables,
+        budget=outcome,
+        _spectra=gather(case, emitting, angles, [rays for _, rays in pairs], outside),
+    )
+
+
+def faults_of_angles(angles_deg: Sequence[float]) -> list[str]:
+    """What is wrong with a list of angles, one line each; empty if nothing is."""
+    if len(angles_deg) == 0:
+        return ["angles: found none; expected angles in degrees from 0 to 90"]
+    faults = [
+        f"angles: found {angle:g}; expected degrees from 0 to 90"
+        for angle in angles_deg
+        if not 0.0 <= angle <= 90.0
+    ]
+    twice = sorted({angle for angle in angles_deg if list(angles_deg).count(angle) > 1})
+    faults += [f"angles: found {angle:g} twice; expected every angle once" for angle in twice]
+    return faults
+
+
+def _checked(angles_deg: Sequence[float]) -> np.ndarray[Any, np.dtype[np.float64]]:
+    faults = faults_of_angles(angles_deg)
+    if faults:
+        raise ValueError("\n".join(faults))
+    return np.abs(np.array(angles_deg, dtype=np.float64))  # -0 is 0
+
+
+def _outside(case: Case) -> Outside:
+    drive = case.drive
+    current = drive.current_density_mA_cm2
+    return Outside(
+        current_A_m2=None if current is None else _AMPERE_PER_M2 * current,
+        voltage_V=drive.voltage_V,
+        lit_share=drive.aperture_ratio * drive.duty,
+    )
+
+
+def _warnings(
+    case: Case, emitting: Sequence[Source], sides: Mapping[str, SideAngular]
+) -> list[str]:
+    checks = (
+        partial(_blind, case, emitting),
+        partial(_about_sides, sides),
+    )
+    return [line for check in checks for line in check()]
+
+
+def _blind(case: Case, emitting: Sequence[Source]) -> list[str]:
+    """Emitters whose whole spectrum the standard observer does not see."""
+    return [
+        f"emitter {one.emitter.name}: all its light lies outside 360 to 830 nm; it adds nothing "
+        "to luminance and color"
+        for one in emitting
+        if not np.any((observer_at(one.wavelength_nm)[:, 1] > 0.0) & (one.watts > 0.0))
+        and np.any(one.watts > 0.0)
+    ]
+
+
+def _about_sides(sides: Mapping[str, SideAngular]) -> list[str]:
+    said = []
+    for name, side in sides.items():
+        if side.external_quantum_efficiency == 0.0:
+            continue
+        if side.normal_is_dark:
+            said.append(
+                f"side {name}: no visible light along the normal; what is relative to it is null"
+            )
+        if side.grid_is_narrow:
+            said.append(
+                f"side {name}: the spectrum along the normal has not fallen to half of its peak "
+                "where the wavelength grid ends; its width is null"
+            )
+        if side.grazing_is_unbounded:
+            said.append(
+                f"side {name}: all media have one index, so radiance grows without bound toward "
+                "90 deg; its values there are null"
+            )
+        duv = side.duv
+        if duv is not None and abs(duv) > ACCURATE_DUV and side.is_white:
+            said.append(
+                f"side {name}: the color lies {abs(duv):.4f} in u, v from a black body's, more "
+                f"than the {ACCURATE_DUV} that the color rendering index is made for"
+            )
+    return said
+
+
+__all__ = [
+    "DEFAULT_ANGLES_DEG",
+    "SCHEMA",
+    "Angular",
+    "SideAngular",
+    "angular",
+    "faults_of_angles",
+]

@@ -1,0 +1,188 @@
+"""Spectral radiance of every emitter against angle, and what leaves at all angles together.
+
+Everything is per current density, A/m2, so that results without a stated current remain: spectral
+radiance in W/(sr A nm), exitance in W/(A nm).
+"""
+
+from __future__ import annotations
+
+import os
+from concurrent.futures import ThreadPoolExecutor
+from typing import TYPE_CHECKING, NamedTuple
+
+import numpy as np
+
+from optics.device.constants import HC_EV_NM
+from optics.device.spectrum import trapezoid_weights
+from optics.kernels.angles import leaving
+from optics.outcome.efficiency import orientation_average
+from optics.outcome.light import problem_of
+
+if TYPE_CHECKING:
+    import xarray
+    from numpy.typing import NDArray
+
+    from optics.device.case import Case
+    from optics.device.emitter import Emitter
+    from optics.kernels.problem import Problem
+    from optics.outcome.budget import Budget
+
+    Floats = NDArray[np.float64]
+
+SIDES = ("bottom", "top")
+POLARIZATIONS = ("s", "p")
+# Wavelengths that are computed together: what their directions take of memory stays small.
+_TOGETHER = 8
+
+
+class Source(NamedTuple):
+    """Light of one emitter, ready to be sent into directions."""
+
+    emitter: Emitter
+    wavelength_nm: Floats  # (w,)
+    step_nm: Floats  # (w,) trapezoid weights; 1 for a line and a single wavelength
+    orientation: Floats  # (w, 2) shares of the bulk rate, vertical and horizontal
+    position_nm: Floats  # (z,)
+    radiating: Floats  # (z,) zone weight * q / (1 - q + q F)
+    watts: Floats  # (w,) W/(A nm) of one photon per exciton of the unit, before outcoupling
+    leaves: Floats  # (w, 2) radiating-weighted power that leaves at the bottom, top; over bulk
+
+    @property
+    def is_line(self) -> bool:
+        """Whether all its light has one wavelength, and nothing is per nm."""
+        return self.emitter.spectrum.line_nm is not None
+
+
+def sources(case: Case, outcome: Budget) -> tuple[Source, ...]:
+    """Gather the light of all emitters of a case.
+
+    Parameters
+    ----------
+    case : Case
+    outcome : Budget
+        Of this case: its F and its light by side are used, so that what is integrated over
+        angles is the light budget's own.
+    """
+    return tuple(
+        _source(case, emitter, outcome.spectral[emitter.name]) for emitter in case.emitters
+    )
+
+
+def _source(case: Case, emitter: Emitter, data: xarray.Dataset) -> Source:
+    wavelength_nm = data["wavelength_nm"].to_numpy()
+    position_nm = data["position_nm"].to_numpy()
+    bulk = problem_of(case, emitter, wavelength_nm, position_nm).source.bulk
+    theta, q = emitter.horizontal_fraction, emitter.quantum_yield
+    average = data["spectrum_weight"].to_numpy() @ orientation_average(
+        data["F"].to_numpy(), bulk, theta
+    )
+    radiating = data["zone_weight"].to_numpy() * q / (1.0 - q + q * average)
+    leaves = [
+        orientation_average(data[f"air_{side}"].to_numpy(), bulk, theta) @ radiating
+        for side in SIDES
+    ]
+    rate = bulk * np.array([1.0 - theta, theta])
+    step_nm = trapezoid_weights(wavelength_nm)
+    excitons = case.drive.charge_balance[emitter.unit] * emitter.share * emitter.exciton_fraction
+    # The weights hold density times step; a line's density has no unit and its step is 1.
+    photons = data["spectrum_weight"].to_numpy() / step_nm
+    return Source(
+        emitter,
+        wavelength_nm,
+        step_nm,
+        rate / rate.sum(axis=1, keepdims=True),
+        position_nm,
+        radiating,
+        excitons * photons * HC_EV_NM / wavelength_nm,
+        np.stack(leaves, axis=1),
+    )
+
+
+def transmitted(case: Case, side: int, wavelength_nm: Floats) -> Floats:
+    """Share (w,) that filter and polarizer outside one side let through."""
+    outside = (case.sides.bottom, case.sides.top)[side]
+    share = np.full(wavelength_nm.shape, outside.polarizer_transmittance)
+    if outside.filter is not None:
+        share *= np.interp(wavelength_nm, outside.filter.x, outside.filter.y)
+    return share
+
+
+def exitance(case: Case, source: Source, side: int) -> Floats:
+    """Spectral exitance (w,) of one emitter in W/(A nm), after filter and polarizer."""
+    passed = transmitted(case, side, source.wavelength_nm)
+    result: Floats = source.watts * source.leaves[:, side] * passed
+    return result
+
+
+def radiance(case: Case, source: Source, side: int, angle_deg: Floats) -> Floats:
+    """Spectral radiance of one emitter in W/(sr A nm), after filter and polarizer.
+
+    Parameters
+    ----------
+    angle_deg : float (n,)
+        0 to 90 in the medium outside: surroundings, or the slab of a matched exit.
+
+    Returns
+    -------
+    float (w, n, 2)
+        Polarizations s, p.
+    """
+    emitted = radiance_over_bulk(case, source, side, angle_deg)
+    factor = source.watts * transmitted(case, side, source.wavelength_nm)
+    result: Floats = emitted * factor[:, None, None]
+    return result
+
+
+def radiance_over_bulk(case: Case, source: Source, side: int, angle_deg: Floats) -> Floats:
+    """Integral of zone * q / (1 - q + q F) * u / cos(angle) over the zone (w, n, 2), s and p.
+
+    u: photons per solid angle relative to the bulk rate. Where the side's surroundings absorb
+    nothing leaves.
+    """
+    starts = range(0, source.wavelength_nm.size, _TOGETHER)
+
+    def some(start: int) -> Floats:
+        return _some_wavelengths(case, source, side, angle_deg, slice(start, start + _TOGETHER))
+
+    with ThreadPoolExecutor(min(os.cpu_count() or 1, len(starts))) as pool:
+        return np.concatenate(list(pool.map(some, starts)))
+
+
+def _some_wavelengths(
+    case: Case, source: Source, side: int, angle_deg: Floats, rows: slice
+) -> Floats:
+    problem = problem_of(case, source.emitter, source.wavelength_nm[rows], source.position_nm)
+    n = index_outside(case, problem, side)
+    u = np.ascontiguousarray(n[:, None] * np.sin(np.deg2rad(angle_deg)))
+    channels = leaving(problem, u, side) @ source.radiating
+    vertical, horizontal = (source.orientation[rows, k, None] for k in range(2))
+    p = vertical * channels[:, 0] + horizontal * channels[:, 1]
+    s = horizontal * channels[:, 2]
+    # dP/dOmega = (dP/du) n^2 cos / (2 pi u), and the cosine goes into the radiance.
+    result: Floats = np.stack([s, p], axis=2) * (n * n / (2.0 * np.pi))[:, None, None]
+    return result
+
+
+def index_outside(case: Case, problem: Problem, side: int) -> Floats:
+    """Index (w,) of the medium in which a side's angles are measured."""
+    slab = (case.stack.substrate, case.stack.cover)[side]
+    matched = slab is not None and slab.exit == "matched"
+    return (problem.sides.n_outer if matched else problem.sides.n_out)[:, side]
+
+
+def unbounded_at_grazing(case: Case, source: Source, side: int) -> bool:
+    """Whether radiance grows without bound toward 90 deg.
+
+    Only where no face anywhere turns grazing light back: films, emitter and both outer media
+    have one and the same index, and this side's exit is no slab face.
+    """
+    slab = (case.stack.substrate, case.stack.cover)[side]
+    if slab is not None and slab.exit != "matched":
+        return False
+    problem = problem_of(case, source.emitter, source.wavelength_nm, source.position_nm)
+    own = problem.source.eps_o[:, None]
+    return all(
+        bool(np.all(eps == own))
+        for half in (problem.up, problem.down)
+        for eps in (half.eps_o, half.eps_e)
+    )

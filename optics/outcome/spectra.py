@@ -1,0 +1,163 @@
+"""Spectral radiance of both sides, labelled: arrays, JSON lists and tables."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING, Any, NamedTuple
+
+import numpy as np
+
+from optics.outcome.directional import POLARIZATIONS, SIDES, Source
+
+if TYPE_CHECKING:
+    import pandas
+    import xarray
+    from numpy.typing import NDArray
+
+    from optics.device.case import Case
+    from optics.outcome.side import Outside
+
+    Floats = NDArray[np.float64]
+
+_DIMS = ("side", "angle_deg", "wavelength_nm", "polarization")
+_LINE_DIMS = ("side", "angle_deg", "line_nm", "polarization")
+_UNITS = {
+    "_W_sr_m2_nm": "W sr-1 m-2 nm-1",
+    "_W_sr_A_nm": "W sr-1 A-1 nm-1",
+    "_W_sr_m2": "W sr-1 m-2",
+    "_W_sr_A": "W sr-1 A-1",
+    "_cd_m2": "cd m-2",
+    "_cd_A": "cd A-1",
+    "_lm_m2": "lm m-2",
+    "_W_m2": "W m-2",
+    "_lm_W": "lm W-1",
+    "_W_W": "1",
+    "_deg": "degree",
+    "_nm": "nm",
+    "_nm_normal": "nm",
+    "_K": "K",
+    "_cd_m2_normal": "cd m-2",
+}
+
+
+class Spectra(NamedTuple):
+    """Spectral radiance per current density by side, angle, wavelength and polarization."""
+
+    angle_deg: Floats  # (n,)
+    wavelength_nm: Floats  # (w,)
+    per_current: Floats  # (2, n, w, 2) W/(sr A nm)
+    line_nm: Floats  # (l,) ascending
+    line_per_current: Floats  # (2, n, l, 2) W/(sr A)
+    current_A_m2: float | None
+
+
+def gather(
+    case: Case,
+    emitting: Sequence[Source],
+    angle_deg: Floats,
+    by_side: Sequence[Sequence[Floats]],
+    outside: Outside,
+) -> Spectra:
+    """Add up the emitters: those per nm on the case's grid, lines by their wavelength.
+
+    Parameters
+    ----------
+    by_side : for each side a sequence of float (w, n, 2)
+        Spectral radiance of every emitter, s and p.
+    """
+    grid, n = case.wavelength_nm, angle_deg.size
+    lines = np.array(sorted({float(one.wavelength_nm[0]) for one in emitting if one.is_line}))
+    spread, apart = np.zeros((2, n, grid.size, 2)), np.zeros((2, n, lines.size, 2))
+    for side, rays in enumerate(by_side):
+        for source, ray in zip(emitting, rays, strict=True):
+            if source.is_line:
+                place = int(np.searchsorted(lines, source.wavelength_nm[0]))
+                apart[side, :, place] += ray[0]
+            else:
+                spread[side] += ray.transpose(1, 0, 2)
+    for values in (angle_deg, spread, lines, apart):
+        values.setflags(write=False)
+    return Spectra(angle_deg, grid, spread, lines, apart, outside.current_A_m2)
+
+
+def unit_of(key: str) -> str:
+    """Unit of a quantity by the end of its name; 1 for ratios."""
+    fitting = [end for end in _UNITS if key.endswith(end)]
+    return _UNITS[max(fitting, key=len)] if fitting else "1"
+
+
+def spectra_dict(spectra: Spectra, side: int) -> dict[str, Any]:
+    """Spectral part of one side's JSON entry: lists by angle, then wavelength.
+
+    Values per area are null without a current density; those per current are always there.
+    """
+    current = spectra.current_A_m2
+    entry: dict[str, Any] = {"wavelength_nm": spectra.wavelength_nm.tolist()}
+    for place, name in enumerate(POLARIZATIONS):
+        values = spectra.per_current[side, :, :, place]
+        key = f"spectral_radiance_{name}"
+        entry[f"{key}_W_sr_m2_nm"] = None if current is None else (current * values).tolist()
+        entry[f"{key}_W_sr_A_nm"] = values.tolist()
+    if spectra.line_nm.size:
+        entry["line_nm"] = spectra.line_nm.tolist()
+        for place, name in enumerate(POLARIZATIONS):
+            values = spectra.line_per_current[side, :, :, place]
+            key = f"line_radiance_{name}"
+            entry[f"{key}_W_sr_m2"] = None if current is None else (current * values).tolist()
+            entry[f"{key}_W_sr_A"] = values.tolist()
+    return entry
+
+
+def angular_dataset(spectra: Spectra, head: Mapping[str, Any]) -> xarray.Dataset:
+    """Label the spectra; values per area only where a current density is stated."""
+    import xarray
+
+    variables: dict[str, Any] = {
+        "spectral_radiance_W_sr_A_nm": (_DIMS, spectra.per_current, "per current"),
+    }
+    if spectra.line_nm.size:
+        variables["line_radiance_W_sr_A"] = (
+            _LINE_DIMS, spectra.line_per_current, "of spectral lines, per current",
+        )  # fmt: skip
+    if spectra.current_A_m2 is not None:
+        variables |= {
+            key.replace("_A", "_m2"): (dims, spectra.current_A_m2 * values, about.split(", per")[0])
+            for key, (dims, values, about) in variables.items()
+        }
+    coords: dict[str, Any] = {
+        "side": list(SIDES),
+        "angle_deg": ("angle_deg", spectra.angle_deg, {"units": "degree"}),
+        "wavelength_nm": ("wavelength_nm", spectra.wavelength_nm, {"units": "nm"}),
+        "polarization": list(POLARIZATIONS),
+    }
+    if spectra.line_nm.size:
+        coords["line_nm"] = ("line_nm", spectra.line_nm, {"units": "nm"})
+    return xarray.Dataset(
+        {
+            key: (dims, values.copy(), {"units": unit_of(key), "long_name": f"radiance {about}"})
+            for key, (dims, values, about) in variables.items()
+        },
+        coords=coords,
+        attrs=dict(head),
+    )
+
+
+def angular_frame(sides: Mapping[str, Mapping[str, Any]]) -> pandas.DataFrame:
+    """Long table of the JSON result's sides: columns side, angle_deg, quantity, value, unit.
+
+    Quantities of a whole side have no angle.
+    """
+    import pandas
+
+    rows: list[tuple[str, float | None, str, float | None, str]] = []
+    for name, side in sides.items():
+        angles = side["angle_deg"]
+        for key, value in side.items():
+            if key == "angle_deg":
+                continue
+            if isinstance(value, list):
+                pairs = zip(angles, value, strict=True)
+                rows += [(name, angle, key, one, unit_of(key)) for angle, one in pairs]
+            else:
+                rows.append((name, None, key, value, unit_of(key)))
+    return pandas.DataFrame(rows, columns=["side", "angle_deg", "quantity", "value", "unit"])
