@@ -65,6 +65,17 @@ def test_own_optical_constants_say_where_they_come_from(path: Path) -> None:
     assert "invented" in tomllib.loads(text)["title"]
 
 
+@pytest.mark.parametrize("path", CASES, ids=lambda path: path.stem)
+def test_the_guide_lists_every_case_with_its_numbers(path: Path) -> None:
+    guide = (path.parents[1] / "docs" / "cases.md").read_text(encoding="utf-8")
+    (row,) = [line for line in guide.splitlines() if f"(../cases/{path.name})" in line]
+    eqe, outcoupled = (float(cell) for cell in row.split("|")[2:4])
+    outcome = optics.budget(optics.read_case(path))
+    assert outcome.outcoupling_efficiency is not None
+    assert eqe == pytest.approx(100 * outcome.external_quantum_efficiency, abs=0.0501)
+    assert outcoupled == pytest.approx(100 * outcome.outcoupling_efficiency, abs=0.0501)
+
+
 def test_purpose_comes_first() -> None:
     for path in CASES:
         head = path.read_text(encoding="utf-8").split("title =")[0]
@@ -102,6 +113,8 @@ def test_nothing_leaves_through_the_opaque_backplane() -> None:
     assert 0.34 < tuned.outcoupling_efficiency < 0.55  # published: 0.34 isotropic to 0.50 flat
     off = optics.budget(case.replace("layers.HTL.thickness_nm", 75.0))
     assert off.external_quantum_efficiency < 0.5 * tuned.external_quantum_efficiency
+    first = optics.budget(case.replace("layers.HTL.thickness_nm", 30.0))
+    assert first.external_quantum_efficiency > 2.0 * off.external_quantum_efficiency
 
 
 def test_spin_statistics_scale_the_fluorescent_pixel() -> None:
