@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import tomllib
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -30,13 +31,18 @@ def case_called(stem: str) -> optics.Case:
     return optics.read_case(path)
 
 
+@cache
+def budget_of(stem: str) -> optics.Budget:
+    return optics.budget(case_called(stem))
+
+
 def test_there_is_a_case_of_every_kind() -> None:
     assert {path.stem for path in CASES} >= KINDS
 
 
 @pytest.mark.parametrize("path", CASES, ids=lambda path: path.stem)
 def test_case_runs_without_stray_warning_and_adds_up(path: Path) -> None:
-    outcome = optics.budget(optics.read_case(path)).to_dict()
+    outcome = budget_of(path.stem).to_dict()
     meant = MEANT_WARNINGS.get(path.stem, ())
     assert len(outcome["warnings"]) == len(meant)
     for part, warning in zip(meant, outcome["warnings"], strict=True):
@@ -70,7 +76,7 @@ def test_the_guide_lists_every_case_with_its_numbers(path: Path) -> None:
     guide = (path.parents[1] / "docs" / "cases.md").read_text(encoding="utf-8")
     (row,) = [line for line in guide.splitlines() if f"(../cases/{path.name})" in line]
     eqe, outcoupled = (float(cell) for cell in row.split("|")[2:4])
-    outcome = optics.budget(optics.read_case(path))
+    outcome = budget_of(path.stem)
     assert outcome.outcoupling_efficiency is not None
     assert eqe == pytest.approx(100 * outcome.external_quantum_efficiency, abs=0.0501)
     assert outcoupled == pytest.approx(100 * outcome.outcoupling_efficiency, abs=0.0501)
@@ -95,7 +101,7 @@ def test_one_material_has_the_same_constants_in_every_case() -> None:
 def test_the_green_pixel_behaves_like_a_plain_bottom_emitter() -> None:
     """Common practice, no source: some 20 to 30 % leave a plain planar device, more with a lens."""
     case = case_called("green-bottom-pixel")
-    plain = optics.budget(case).to_dict()
+    plain = budget_of("green-bottom-pixel").to_dict()
     matched = optics.budget(case.replace("substrate.exit", "matched")).to_dict()
     assert 0.15 < plain["outcoupling_efficiency"] < 0.35
     assert plain["external_quantum_efficiency_top"] < 1e-6
@@ -107,7 +113,7 @@ def test_the_green_pixel_behaves_like_a_plain_bottom_emitter() -> None:
 def test_nothing_leaves_through_the_opaque_backplane() -> None:
     """The cavity's second antinode beats the place between two antinodes by far."""
     case = case_called("red-top-microcavity")
-    tuned = optics.budget(case)
+    tuned = budget_of("red-top-microcavity")
     assert tuned.external_quantum_efficiency_bottom < 1e-3
     assert tuned.outcoupling_efficiency is not None
     assert 0.34 < tuned.outcoupling_efficiency < 0.55  # published: 0.34 isotropic to 0.50 flat
@@ -119,17 +125,17 @@ def test_nothing_leaves_through_the_opaque_backplane() -> None:
 
 def test_spin_statistics_scale_the_fluorescent_pixel() -> None:
     case = case_called("blue-fluorescent-pixel")
-    (unit,) = optics.budget(case).chain
+    (unit,) = budget_of("blue-fluorescent-pixel").chain
     assert unit["dark_excitons"] == pytest.approx(0.95 * 0.60)
     singlets = optics.budget(case.replace("emitters.blue.exciton_fraction", 0.25))
     assert singlets.external_quantum_efficiency == pytest.approx(
-        optics.budget(case).external_quantum_efficiency * 0.25 / 0.40, rel=1e-12
+        budget_of("blue-fluorescent-pixel").external_quantum_efficiency * 0.25 / 0.40, rel=1e-12
     )
 
 
 def test_silicon_swallows_what_passes_the_mirror() -> None:
     case = case_called("silicon-microdisplay")
-    on_silicon = optics.budget(case)
+    on_silicon = budget_of("silicon-microdisplay")
     assert on_silicon.external_quantum_efficiency_bottom == 0.0
     assert on_silicon.destinations["substrate"] == 0.0
     in_air = optics.budget(case.replace("surroundings.bottom", "air"))
@@ -139,7 +145,7 @@ def test_silicon_swallows_what_passes_the_mirror() -> None:
 def test_shares_of_the_panel_sum_to_one_and_its_emitters_add_up() -> None:
     case = case_called("white-lighting-panel")
     assert sum(emitter.share for emitter in case.emitters) == pytest.approx(1.0)
-    outcome = optics.budget(case)
+    outcome = budget_of("white-lighting-panel")
     assert len(outcome.chain) == 1
     assert outcome.external_quantum_efficiency == pytest.approx(
         sum(one.external_quantum_efficiency for one in outcome.emitters), rel=1e-12
@@ -147,7 +153,7 @@ def test_shares_of_the_panel_sum_to_one_and_its_emitters_add_up() -> None:
 
 
 def test_every_charge_passes_both_units_of_the_tandem() -> None:
-    outcome = optics.budget(case_called("white-tandem"))
+    outcome = budget_of("white-tandem")
     assert [unit["unit"] for unit in outcome.chain] == ["yellow", "blue"]
     assert [unit["unbalanced"] for unit in outcome.chain] == pytest.approx([0.05, 0.10])
     generated = sum(one.generated for one in outcome.emitters)
@@ -156,7 +162,7 @@ def test_every_charge_passes_both_units_of_the_tandem() -> None:
 
 def test_more_light_leaves_into_water_than_into_air() -> None:
     case = case_called("transparent-porthole")
-    wet = optics.budget(case)
+    wet = budget_of("transparent-porthole")
     dry = optics.budget(case.replace("surroundings.top", "air"))
     assert wet.external_quantum_efficiency_bottom > 0.05
     assert wet.external_quantum_efficiency_top > 1.2 * dry.external_quantum_efficiency_top
@@ -167,5 +173,5 @@ def test_the_polymer_is_birefringent_and_its_result_an_upper_bound() -> None:
     ordinary, extraordinary = case.stack.permittivity(case.wavelength_nm)
     film = case.stack.film_index("polymer")
     assert (ordinary[:, film].real - extraordinary[:, film].real).min() > 0.1
-    (warning,) = optics.budget(case).warnings
+    (warning,) = budget_of("polymer-f8bt").warnings
     assert "upper bound" in warning
