@@ -44,7 +44,8 @@ QUANTITIES = (
 _ALL, _AIR, _SLAB = 0, (1, 2), (3, 4)
 _GUIDED, _PLASMON, _ABSORBED, _NEAR = 5, 6, 7, 8
 _ABSOLUTE, _RELATIVE = 3e-9, 3e-9
-_MOST_SUBDIVISIONS = 4000
+_MOST_SUBDIVISIONS = 1000
+_DEEP = 8.0  # resonances are looked for up to this multiple of the start of the near field
 
 
 class Powers(NamedTuple):
@@ -73,28 +74,30 @@ def powers(layers: Layers, position_nm: Sequence[float]) -> Powers:
     breaks = {0.0, line, far, float(np.sqrt(layers.own.eps_o).real)}
     breaks |= {float(np.sqrt(layers.own.eps_e).real)}
     breaks |= {value for o in counted for value in (o.n_outer, o.n_out)}
-    found = resonances(layers, far)
+    edges = [*sorted(b for b in breaks if b <= far), _DEEP * far]
+    found = resonances(layers, edges)
     z = np.asarray(position_nm, dtype=float)
     below = [r for r in found if r.place.real < line and r.sharp]
     nothing = np.full((len(QUANTITIES), 2, z.size), np.nan)
     if below:
         text = f"a resonance at n_eff = {below[0].place.real:.6f} is too sharp for real quadrature"
         return Powers(nothing, np.inf, "", text)
-    edges = sorted(b for b in breaks if b <= far)
     total, error = np.zeros_like(nothing), np.zeros_like(nothing)
+    near = np.zeros_like(nothing)
     detours = [r for r in found if r.sharp]
     try:
         for lo, hi in _pieces(edges, found):
             part, miss = _on_axis(layers, z, lo, hi, line)
-            total, error = total + part, error + miss
+            total, error, near = total + part, error + miss, near + (part if lo >= far else 0.0)
         for resonance in detours:
             part, miss = _around(layers, z, resonance, line)
-            total, error = total + part, error + miss
-        part, miss = _tail(layers, z, far, line)
+            beyond = resonance.lo >= far
+            total, error, near = total + part, error + miss, near + (part if beyond else 0.0)
+        part, miss = _tail(layers, z, _DEEP * far, line)
     except _NotConverged as reason:
         return Powers(nothing, np.inf, "", str(reason))
     total, error = total + part, error + miss
-    total[_NEAR] = part[_ALL]
+    total[_NEAR] = (near + part)[_ALL]
     note = f"the path steps around {len(detours)} guided mode(s) without loss" if detours else ""
     return Powers(total, float((error / total[_ALL]).max()), note, "")
 

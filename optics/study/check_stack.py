@@ -64,6 +64,7 @@ class Half(NamedTuple):
     r: Array  # reflection at the emitter film's face
     t: Array  # amplitude in the outer medium
     flux: NDArray[np.float64]  # Re Y of the outer medium
+    scale: Array  # times r or t it has no poles left
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,33 +112,37 @@ class Layers:
         """Half stack below (0) or above (1) the dipoles."""
         films = self.films[: self.emitter][::-1] if side == 0 else self.films[self.emitter + 1 :]
         outer = self.outside[side].medium
-        load, passed = self._behind(u, polarization, films, outer)
+        load, passed, scale = self._behind(u, polarization, films, outer)
         own = admittance(self.own, u, polarization)
         r = (own - load) / (own + load)
-        return Half(r, (1.0 + r) * passed, admittance(outer, u, polarization).real)
+        flux = admittance(outer, u, polarization).real
+        return Half(r, (1.0 + r) * passed, flux, (own + load) * scale)
 
     def whole(self, u: Array, polarization: str, side: int) -> tuple[NDArray[np.float64], Array]:
         """Reflectance, and transmitted over incident |amplitude|, lit from one side."""
         first, *films, last = self.ordered(side)
-        load, passed = self._behind(u, polarization, films, last)
+        load, passed, _ = self._behind(u, polarization, films, last)
         own = admittance(first, u, polarization)
         r = (own - load) / (own + load)
         return np.abs(r) ** 2, (1.0 + r) * passed
 
     def _behind(
         self, u: Array, polarization: str, films: tuple[Medium, ...] | list[Medium], outer: Medium
-    ) -> tuple[Array, Array]:
-        """Effective admittance in front of films, and the field behind over that in front."""
+    ) -> tuple[Array, Array, Array]:
+        """Effective admittance in front of films, field behind over that in front, its poles."""
         load, passed = admittance(outer, u, polarization), np.ones_like(u)
+        scale = np.ones_like(u)
         for film in reversed(films):
             own = admittance(film, u, polarization)
-            once = np.exp(1j * normal(film, u, polarization) * self.k0 * film.thickness_nm)
+            turn = normal(film, u, polarization) * self.k0 * film.thickness_nm
+            once = np.exp(1j * turn)
             twice = once * once
             ratio = load / own
             below = (1.0 + twice) + ratio * (1.0 - twice)
             load = own * ((1.0 - twice) + ratio * (1.0 + twice)) / below
             passed = passed * 2.0 * once / below
-        return load, passed
+            scale = scale * 0.5 * below * np.exp(-1j * turn.real)
+        return load, passed, scale
 
 
 def normal(medium: Medium, u: Array, polarization: str) -> Array:
