@@ -16,7 +16,7 @@ if TYPE_CHECKING:
 
 DONE, FAILED, INPUT_AT_FAULT = 0, 1, 2
 _TRACEBACK = "optics.traceback"
-_WIDE = 180  # columns of a table of comparisons outside a terminal
+_WIDE = 200  # columns of a table of comparisons outside a terminal
 _Command = TypeVar("_Command", bound=Callable[..., Any])
 
 
