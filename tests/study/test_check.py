@@ -92,6 +92,28 @@ def test_guides_without_loss_are_checked_on_a_path_around_their_modes() -> None:
     assert all(value is not None and value > 0.01 for value in guided)
 
 
+@pytest.mark.parametrize(
+    "document",
+    [
+        # found at random: a plasmon that couples weakly through its metal, modes near cut-off
+        devices.device(
+            ("host", 180.0),
+            ("lossless-metal", 32.0),
+            emitter=0,
+            cover={"material": "glass", "thickness_mm": 0.5},
+        ),
+        devices.device(("host", 28.0), ("lossless-metal", 90.0), emitter=0, substrate=None),
+        devices.device(("along", 125.0), ("high", 190.0), ("host", 30.0), emitter=0),
+    ],
+    ids=["weakly coupled plasmon", "near cut-off", "s and p close together"],
+)
+def test_sharp_modes_are_not_overlooked(document: dict[str, Any]) -> None:
+    document["materials"]["lossless-metal"] = {"n": 1e-9, "k": 4.6}
+    found = checked(document)
+    assert failing(found) == set()
+    assert "pass" in results(found, "power", "dissipated")
+
+
 def test_absorbing_surroundings_are_listed_with_the_reason() -> None:
     document = devices.device(
         ("high", 60.0), ("host", 80.0), substrate=None, surroundings={"bottom": "silicon-like"}
