@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any, TypeVar
 
 import click
 
-from optics.present import pictures
+from optics.present import pictures, pictures_angular
 
 if TYPE_CHECKING:
     from optics.present.constants import Shown
@@ -191,6 +191,85 @@ def budget(
         from optics.present.terminal import console
 
         print_budget(console(), result, outcome.tables, reminders)
+    _say_written(outputs)
+
+
+@main.command()
+@click.argument("case", metavar="CASE", type=click.Path(path_type=Path))
+@_json_option
+@_output_option(".json, .csv, .nc, .png, .svg or .pdf")
+@click.option(
+    "--angles",
+    callback=_numbers,
+    metavar="DEG,DEG,...",
+    help="Angles outside the device, 0 to 90; default every degree.",
+)
+@click.option("--spectral", is_flag=True, help="With spectral radiance by angle and wavelength.")
+@click.option("--polarization", is_flag=True, help="With s and p apart.")
+@click.option(
+    "--picture",
+    type=click.Choice(pictures_angular.PICTURES),
+    help="What a .png, .svg or .pdf shows: luminance against a Lambertian (if not said), spectra "
+    "at chosen angles, the path of the color, or spectral radiance over wavelength and angle.",
+)
+@_traceback_option
+def angular(
+    case: Path,
+    as_object: bool,
+    outputs: tuple[Path, ...],
+    angles: tuple[float, ...] | None,
+    spectral: bool,
+    polarization: bool,
+    picture: str | None,
+) -> None:
+    """Show emission against angle: radiance, luminance and color.
+
+    Angles count from the normal in the medium outside; where a slab's exit is matched, in the
+    slab. Numbers of a whole side do not depend on the angles listed.
+    """
+    from optics.present import files
+
+    files.check_targets(outputs, (".json", ".csv", ".nc", *pictures.SUFFIXES))
+    draws = any(path.suffix.lower() in pictures.SUFFIXES for path in outputs)
+    if picture is not None and not draws:
+        raise click.UsageError(f"--picture {picture} needs a file: give -o with .png, .svg or .pdf")
+
+    import optics
+    from optics.kernels.angles import angles_are_compiled
+    from optics.kernels.compiled import mark_cache_warm
+    from optics.outcome.angular import DEFAULT_ANGLES_DEG, faults_of_angles
+    from optics.present.cautions import brightest_cd_m2, cautions
+    from optics.present.terminal import compiling_notice
+
+    asked = DEFAULT_ANGLES_DEG if angles is None else angles
+    if faults := faults_of_angles(asked):
+        raise click.UsageError("\n".join(faults))
+    device = optics.read_case(case)
+    with compiling_notice(needed=not angles_are_compiled()):
+        outcome = optics.angular(device, asked)
+    mark_cache_warm()
+    result = outcome.to_dict(spectral=spectral, polarization=polarization)
+    choice = {"spectral": spectral, "polarization": polarization}
+    writers: dict[str, files.Writer] = {
+        ".json": lambda path: files.write_json(result, path),
+        ".csv": lambda path: outcome.to_frame(**choice).to_csv(path, index=False),
+        ".nc": lambda path: outcome.to_dataset().to_netcdf(path, engine="h5netcdf"),
+    }
+    if draws:
+        figure = pictures_angular.draw_case(picture or pictures_angular.PICTURES[0], device, angles)
+        writers |= {end: lambda path: pictures.write(figure, path) for end in pictures.SUFFIXES}
+    files.publish({path: writers[path.suffix.lower()] for path in outputs})
+    reminders = cautions(device, outcome.budget.to_dict(), brightest_cd_m2(device, result))
+    if as_object:
+        click.echo(files.as_json(result))
+        for kind, lines in (("Warning", outcome.warnings), ("Caution", reminders)):
+            for line in lines:
+                click.echo(f"{kind}: {line}", err=True)
+    else:
+        from optics.present.angular import print_angular
+        from optics.present.terminal import console
+
+        print_angular(console(), result, reminders, every_angle=angles is not None)
     _say_written(outputs)
 
 

@@ -3,7 +3,7 @@
 import numpy as np
 
 from optics.kernels.arrays import Floats
-from optics.kernels.compiled import kernel
+from optics.kernels.compiled import CACHE_FOLDER, cache_is_warm, kernel
 from optics.kernels.directions import lit_from_outside, sent_into_directions
 from optics.kernels.exits import AIR_BOTTOM, AIR_TOP, COLUMNS, PLANAR
 from optics.kernels.integrate import at_wavelength
@@ -69,3 +69,8 @@ def leaving(problem: Problem, u: Floats, side: int) -> Floats:
     out: Floats = sent[:, 0] * shares[:, side, 0, :, :, None]
     out += sent[:, 1] * shares[:, side, 1, :, :, None]
     return out
+
+
+def angles_are_compiled() -> bool:
+    """Tell whether the kernels of this module lie compiled in the cache, next to the main ones."""
+    return cache_is_warm() and any(CACHE_FOLDER.rglob("angles.shares_that_leave*.nbi"))

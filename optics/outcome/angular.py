@@ -15,7 +15,14 @@ from optics.outcome.budget import DEFAULT_TOLERANCE, Accuracy, Budget, budget
 from optics.outcome.color import ACCURATE_DUV, observer_at
 from optics.outcome.directional import SIDES, Source, sources
 from optics.outcome.side import Outside, SideAngular, observed
-from optics.outcome.spectra import Spectra, angular_dataset, angular_frame, gather, spectra_dict
+from optics.outcome.spectra import (
+    Spectra,
+    angular_dataset,
+    angular_frame,
+    curves_dataset,
+    gather,
+    spectra_dict,
+)
 
 if TYPE_CHECKING:
     import pandas
@@ -87,9 +94,16 @@ class Angular:
             "warnings": list(self.warnings),
         }
 
-    def to_frame(self, *, polarization: bool = False) -> pandas.DataFrame:
-        """Build a long table: columns side, angle_deg, quantity, value, unit."""
-        return angular_frame(self.to_dict(polarization=polarization)["sides"])
+    def to_frame(self, *, spectral: bool = False, polarization: bool = False) -> pandas.DataFrame:
+        """Build a long table: side, angle_deg, wavelength_nm, quantity, value, unit."""
+        return angular_frame(self.to_dict(spectral=spectral, polarization=polarization)["sides"])
+
+    def to_dataset(self) -> xarray.Dataset:
+        """Build labelled arrays: `spectral`, every curve by side and angle, numbers by side."""
+        curves = curves_dataset(self.to_dict(polarization=True)["sides"])
+        said = {**self.accuracy.to_dict(), "warnings": "\n".join(self.warnings)}
+        merged: xarray.Dataset = self.spectral.merge(curves).assign_attrs(said)
+        return merged
 
     def _head(self) -> dict[str, Any]:
         return {

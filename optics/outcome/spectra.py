@@ -142,22 +142,55 @@ def angular_dataset(spectra: Spectra, head: Mapping[str, Any]) -> xarray.Dataset
     )
 
 
-def angular_frame(sides: Mapping[str, Mapping[str, Any]]) -> pandas.DataFrame:
-    """Long table of the JSON result's sides: columns side, angle_deg, quantity, value, unit.
+def curves_dataset(sides: Mapping[str, Mapping[str, Any]]) -> xarray.Dataset:
+    """Label the JSON result's sides: curves by side and angle_deg, numbers by side.
 
-    Quantities of a whole side have no angle.
+    Null becomes NaN; quantities that are null throughout on both sides are left out.
+    """
+    import xarray
+
+    def number(value: float | None) -> float:
+        return np.nan if value is None else value
+
+    variables: dict[str, Any] = {}
+    angles = next(iter(sides.values()))["angle_deg"]
+    for key in [key for key in next(iter(sides.values())) if key != "angle_deg"]:
+        values = [side[key] for side in sides.values()]
+        if all(value is None for value in values):
+            continue
+        attrs = {"units": unit_of(key)}
+        if isinstance(values[0], list):
+            rows = [[number(one) for one in value] for value in values]
+            variables[key] = (("side", "angle_deg"), rows, attrs)
+        else:
+            variables[key] = (("side",), [number(value) for value in values], attrs)
+    coords = {"side": list(sides), "angle_deg": ("angle_deg", angles, {"units": "degree"})}
+    return xarray.Dataset(variables, coords=coords)
+
+
+def angular_frame(sides: Mapping[str, Mapping[str, Any]]) -> pandas.DataFrame:
+    """Long table of the JSON result's sides.
+
+    Columns side, angle_deg, wavelength_nm, quantity, value, unit; the first two coordinates are
+    empty where a quantity has none. Spectra are there if the result holds them.
     """
     import pandas
 
-    rows: list[tuple[str, float | None, str, float | None, str]] = []
+    columns = ["side", "angle_deg", "wavelength_nm", "quantity", "value", "unit"]
+    rows: list[tuple[str, float | None, float | None, str, float | None, str]] = []
     for name, side in sides.items():
         angles = side["angle_deg"]
         for key, value in side.items():
-            if key == "angle_deg":
+            if key in ("angle_deg", "wavelength_nm", "line_nm"):
                 continue
-            if isinstance(value, list):
-                pairs = zip(angles, value, strict=True)
-                rows += [(name, angle, key, one, unit_of(key)) for angle, one in pairs]
-            else:
-                rows.append((name, None, key, value, unit_of(key)))
-    return pandas.DataFrame(rows, columns=["side", "angle_deg", "quantity", "value", "unit"])
+            if not isinstance(value, list):
+                rows.append((name, None, None, key, value, unit_of(key)))
+                continue
+            at = side.get("line_nm" if key.startswith("line_") else "wavelength_nm", [])
+            for angle, one in zip(angles, value, strict=True):
+                if isinstance(one, list):
+                    pairs = zip(at, one, strict=True)
+                    rows += [(name, angle, nm, key, number, unit_of(key)) for nm, number in pairs]
+                else:
+                    rows.append((name, angle, None, key, one, unit_of(key)))
+    return pandas.DataFrame(rows, columns=columns)

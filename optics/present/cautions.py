@@ -11,13 +11,23 @@ if TYPE_CHECKING:
 #: Emission counts as rich in blue where its mean peak lies below this wavelength.
 BLUE_BELOW_NM = 500.0
 
+#: Emission counts as bright above this luminance (IEC 62471, from memory: below it a white
+#: source needs no spectral evaluation).
+BRIGHT_CD_M2 = 1e4
+
+BRIGHT = (
+    "bright emission, computed and not measured; this is no photobiological safety assessment "
+    "(IEC 62471)"
+)
 PHOTOBIOLOGICAL = "emission rich in blue; this is no photobiological safety assessment (IEC 62471)"
 ELECTRICAL = (
     "the case states an electrical drive; work on it by your local rules and licensed practice"
 )
 
 
-def cautions(case: Case, result: Mapping[str, Any]) -> tuple[str, ...]:
+def cautions(
+    case: Case, result: Mapping[str, Any], brightest_cd_m2: float | None = None
+) -> tuple[str, ...]:
     """Reminders for a case and its light budget.
 
     Parameters
@@ -25,11 +35,15 @@ def cautions(case: Case, result: Mapping[str, Any]) -> tuple[str, ...]:
     case : Case
     result : mapping
         As ``budget --json`` writes it. Its efficiencies weigh the peaks of the emitters.
+    brightest_cd_m2 : float or None
+        Largest luminance of the lit area, where it is known.
     """
     said = []
     peak_nm = mean_peak_nm(case, result)
     if peak_nm is not None and peak_nm < BLUE_BELOW_NM:
         said.append(PHOTOBIOLOGICAL)
+    elif brightest_cd_m2 is not None and brightest_cd_m2 > BRIGHT_CD_M2:
+        said.append(BRIGHT)
     if case.drive.current_density_mA_cm2 is not None or case.drive.voltage_V is not None:
         said.append(ELECTRICAL)
     return tuple(said)
@@ -43,3 +57,18 @@ def mean_peak_nm(case: Case, result: Mapping[str, Any]) -> float | None:
         return None
     peaks = [emitter.spectrum.peak_nm for emitter in case.emitters]
     return sum(weight * peak for weight, peak in zip(weights, peaks, strict=True)) / total
+
+
+def brightest_cd_m2(case: Case, result: Mapping[str, Any]) -> float | None:
+    """Largest luminance of the lit area at any angle; None without a current density.
+
+    Parameters
+    ----------
+    case : Case
+    result : mapping
+        As ``angular --json`` writes it.
+    """
+    curves = [side["luminance_cd_m2"] or () for side in result["sides"].values()]
+    known = [value for curve in curves for value in curve if value is not None]
+    lit = case.drive.aperture_ratio * case.drive.duty
+    return max(known) / lit if known else None
