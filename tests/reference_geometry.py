@@ -82,15 +82,20 @@ class Geometry:
         return max(lines)
 
     @property
+    def present(self) -> list[Film]:
+        """Films that are there: one of zero thickness is as good as absent."""
+        return [self.emitter, *(f for f in self.whole if f.depth > 0)]
+
+    @property
     def near_field_line(self) -> float:
         outer = [cmath.sqrt(e).real for e in (self.bottom, self.top)]
-        return 2 * max([f.largest_index for f in self.whole] + outer)
+        return 2 * max([f.largest_index for f in self.present] + outer)
 
     @property
     def metallic(self) -> bool:
         """Whether surface plasmons are counted: some Re eps < 0."""
         outer = (complex(self.bottom), complex(self.top))
-        return any(f.metallic for f in self.whole) or any(e.real < 0 for e in outer)
+        return any(f.metallic for f in self.present) or any(e.real < 0 for e in outer)
 
     @property
     def lossless(self) -> bool:

@@ -197,11 +197,11 @@ def test_compiling_is_announced_on_standard_error(
 ) -> None:
     from optics.kernels import compiled
 
-    monkeypatch.setattr(compiled, "cache_is_warm", lambda: False)
+    monkeypatch.setattr(compiled, "cache_is_warm", lambda job="budget": False)
     cold = run("budget", case, "--json")
     assert cold.stderr.startswith("Compiling the kernels (first use only, about half a minute) ...")
     no_constants(cold.stdout)
-    monkeypatch.setattr(compiled, "cache_is_warm", lambda: True)
+    monkeypatch.setattr(compiled, "cache_is_warm", lambda job="budget": True)
     assert "Compiling" not in run("budget", case, "--json").stderr
 
 

@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
 Exit = Literal["planar", "matched"]
 
-# An imaginary part below a few roundings of |eps| is arithmetic, not absorption.
+# A k below a few roundings of |n| is arithmetic, not absorption.
 _ROUNDING = 8 * np.finfo(float).eps
 
 
@@ -153,10 +153,8 @@ class Stack:
 
 def absorbs(material: Material, wavelength_nm: NDArray[np.float64]) -> bool:
     """Whether a material has k > 0, ordinary or extraordinary, at any of the wavelengths in nm."""
-    return any(
-        bool(np.any(eps.imag > _ROUNDING * np.abs(eps)))
-        for eps in material.permittivity(wavelength_nm)
-    )
+    index = [np.sqrt(eps) for eps in material.permittivity(wavelength_nm)]
+    return any(bool(np.any(n.imag > _ROUNDING * np.abs(n))) for n in index)
 
 
 def without_loss(eps: NDArray[np.complex128]) -> NDArray[np.complex128]:

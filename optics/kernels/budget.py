@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from optics.kernels import settle
 from optics.kernels.arrays import Floats, Integers
+from optics.kernels.compiled import mark_cache_warm
 from optics.kernels.exits import COLUMNS, TOTAL
 from optics.kernels.geometry import (
     backward_modes_possible,
@@ -56,7 +57,7 @@ _SMALLEST_SCALE = 1e-5  # errors are relative to the dissipated power, but not b
 # Of the arcs that parts of the total run on; other than the total's own, so that a pole that one
 # of them passes under shows.
 _FLATNESS = 0.7
-_PANEL_SHARE = 0.1  # of the wanted accuracy, allowed to one panel
+_PANEL_SHARE = 0.05  # of the wanted accuracy, allowed to one panel
 
 
 class Parts(NamedTuple):
@@ -125,11 +126,12 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     parts = Parts(by_orientation(total), free, guided, beyond, near)
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     error = np.maximum(error, _disagreement(parts, scale))
-    careful = (error > tolerance) | backward_modes_possible(problem)
+    careful = ~(error <= tolerance) | backward_modes_possible(problem)
     for row in np.flatnonzero(careful).tolist():
         error[row] = _settle(
             problem, row, lines[row], start[row], far[row], scale, per_panel, parts
         )
+    mark_cache_warm()
     return _collect(parts, plasmon, error, batches, careful)
 
 
@@ -138,7 +140,7 @@ def _total_and_scale(
 ) -> tuple[Floats, Floats, Floats, Floats, Floats]:
     """Total power up to and beyond far, and the scale (w, 2, z) errors are measured against.
 
-    A first coarse pass gives the scale; what it already resolves is kept.
+    A first coarse pass gives the scale.
     """
     w, z = problem.source.kz_positions.shape
     anything = np.full((w, 2, z), np.inf)

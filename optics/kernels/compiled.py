@@ -8,8 +8,10 @@ read-only.
 
 import hashlib
 import os
+import shutil
 import sys
 import tempfile
+import time
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any, TypeVar
@@ -53,29 +55,31 @@ def _writable(folder: Path) -> bool:
 
 
 def _cache_folder() -> Path:
-    stamp = _stamp()
-    chosen = _user_cache() / "outcouple" / f"kernels-{stamp}"
-    if _writable(chosen):
-        return chosen
-    chosen = Path(tempfile.gettempdir()) / f"outcouple-kernels-{os.getuid()}-{stamp}"
-    chosen.mkdir(parents=True, exist_ok=True)
-    return chosen
+    """Folder of this source's compiled kernels; a new private one where nothing can be kept."""
+    chosen = _user_cache() / "outcouple" / f"kernels-{_stamp()}"
+    return chosen if _writable(chosen) else Path(tempfile.mkdtemp(prefix="outcouple-kernels-"))
 
 
 CACHE_FOLDER = _cache_folder()
 _compiler.config.CACHE_DIR = str(CACHE_FOLDER)
 
-
-def cache_is_warm() -> bool:
-    """Tell whether compiled kernels of this very source already lie in the cache."""
-    if _compiler.config.DISABLE_JIT:
-        return True
-    return (CACHE_FOLDER / "complete").exists()
+# Folders of earlier sources that nobody has used for so long are cleared away.
+_OUTDATED_S = 30 * 86400.0
 
 
-def mark_cache_warm() -> None:
-    """Note that every kernel of the main job has been compiled into the cache."""
-    (CACHE_FOLDER / "complete").touch()
+def cache_is_warm(job: str = "budget") -> bool:
+    """Tell whether the kernels of a job, as they stand, already lie compiled in the cache."""
+    return bool(_compiler.config.DISABLE_JIT) or (CACHE_FOLDER / f"{job}-complete").exists()
+
+
+def mark_cache_warm(job: str = "budget") -> None:
+    """Note that every kernel of a job has been compiled into the cache."""
+    if cache_is_warm(job):
+        return
+    (CACHE_FOLDER / f"{job}-complete").touch()
+    for old in CACHE_FOLDER.parent.glob("kernels-*"):
+        if old != CACHE_FOLDER and time.time() - old.stat().st_mtime > _OUTDATED_S:
+            shutil.rmtree(old, ignore_errors=True)
 
 
 # No division check: it would stop the loops from vectorizing, and every divisor is guarded.

@@ -107,7 +107,7 @@ def lit_from_outside(problem: Problem, u: Floats, powers: Floats) -> None:
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
     nodes = np.zeros(NODES, dtype=np.complex128)
     for w in range(u.shape[0]):
-        source, _, up, down = at_wavelength(problem, w)
+        source, sides, up, down = at_wavelength(problem, w)
         for start in range(0, n, NODES):
             for i in range(NODES):
                 nodes[i] = u[w, min(start + i, n - 1)]
@@ -116,6 +116,6 @@ def lit_from_outside(problem: Problem, u: Floats, powers: Floats) -> None:
             for pol in range(2):
                 for i in range(min(NODES, n - start)):
                     phase = exp_i(work_up.kz[pol, 0, i] * source.kd)
-                    found = stack_from_both_sides(work_up, work_down, phase, pol, i)
+                    found = stack_from_both_sides(sides, work_up, work_down, phase, pol, i)
                     for k in range(5):
                         powers[w, pol, start + i, k] = found[k]

@@ -34,7 +34,7 @@ _C2, _C3, _C4, _C5, _C6, _C7, _C8 = (1.0 / math.factorial(n) for n in range(2, 9
 @inline
 def decay(x: float) -> float:
     """exp(-x) for x >= 0."""
-    x = min(x, _LARGEST)
+    x = x if x < _LARGEST else _LARGEST  # whatever is no number never gets to the table
     i = np.int64(x * _FINE + 0.5)
     r = i * (1.0 / _FINE) - x
     series = 1.0 + r * (1.0 + r * (_C2 + r * (_C3 + r * (_C4 + r * (_C5 + r * _C6)))))

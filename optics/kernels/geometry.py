@@ -14,13 +14,18 @@ _NO_ABSORBER = 1e3
 
 
 def _media(problem: Problem) -> tuple[NDArray[np.complex128], NDArray[np.bool_]]:
-    """All permittivities (w, m) of films and outer media, and which are a film's or absorber's."""
+    """All permittivities (w, m) of films and outer media, and which are negative.
 
-    def inner(half: Half) -> NDArray[np.complex128]:
-        return np.hstack([half.eps_o, half.eps_e])
-
-    eps = np.hstack([inner(problem.up), inner(problem.down)])
-    return eps, np.less(eps.real, 0.0)
+    A film of zero thickness is as good as absent and stands as vacuum, which changes nothing.
+    """
+    parts = []
+    for half in (problem.up, problem.down):
+        inner = np.ones(half.kd.shape, dtype=np.bool_)
+        inner[:, [0, -1]] = False
+        absent = inner & (half.kd == 0.0)
+        parts += [np.where(absent, 1.0, half.eps_o), np.where(absent, 1.0, half.eps_e)]
+    eps = np.hstack(parts)
+    return eps, eps.real < 0.0
 
 
 def largest_index(problem: Problem) -> Floats:

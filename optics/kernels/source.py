@@ -2,7 +2,7 @@
 
 Methods: Lukosz & Kunz, J. Opt. Soc. Am. 67, 1607 (1977); Chance, Prock & Silbey, Adv. Chem.
 Phys. 37, 1 (1978); Neyts, J. Opt. Soc. Am. A 15, 962 (1998); uniaxial emitter films after
-Penninck et al., J. Appl. Phys. 109 (2011) (from memory).
+Penninck et al., Opt. Express 19, 18558 (2011) (from memory).
 
 Channels: 0 vertical (p), 1 horizontal p, 2 horizontal s. Everything is divided by the rate of
 the same dipole in the unbounded emitter medium.
@@ -150,7 +150,7 @@ def solve_half(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> 
 
 @inline
 def stack_from_both_sides(
-    work_up: Work, work_down: Work, phase: complex, pol: int, i: int
+    sides: Sides, work_up: Work, work_down: Work, phase: complex, pol: int, i: int
 ) -> StackPowers:
     """Solve the whole stack at one node: (R_b, R_t, T, A_b, A_t)."""
     flux_t, flux_b = work_up.y[pol, -1, i].real, work_down.y[pol, -1, i].real
@@ -173,9 +173,12 @@ def stack_from_both_sides(
             phase, r_a, r_b, (flux_t, flux_b), ports_up[0], ports_down, form_up[0], form_down
         )
     if flux_t > 0.0:
-        rt, through, at = whole_stack(
+        rt, downward, at = whole_stack(
             phase, r_b, r_a, (flux_b, flux_t), ports_down[0], ports_up, form_down[0], form_up
         )
+        # T is the same both ways between transparent media; no light returns from an absorber.
+        if sides.kind[0] == ABSORBING:
+            through = downward
     return rb, rt, through, ab, at
 
 
@@ -229,8 +232,10 @@ def light_returns(sides: Sides, u: float) -> bool:
     """Tell whether some slab sends light back at in-plane wavevector u (in any variant)."""
     for side in range(2):
         if sides.kind[side] == PLANAR and u < sides.n_outer[side]:
-            other = sides.kind[1 - side]
-            beyond = sides.n_outer[1 - side] if other != ABSORBING else 0.0
+            other = 1 - side
+            beyond = max(sides.n_outer[other], sides.n_out[other])
+            if sides.kind[other] == ABSORBING:
+                beyond = 0.0
             if u < max(sides.n_out[side], beyond):
                 return True
     return False
@@ -272,7 +277,7 @@ def radiated(
             inv = reciprocal(1.0 - a_face * b_face * phase * phase)
             stack = (0.0, 0.0, 0.0, 0.0, 0.0)
             if any_return and light_returns(sides, u[i].real):
-                stack = stack_from_both_sides(work_up, work_down, phase, pol, i)
+                stack = stack_from_both_sides(sides, work_up, work_down, phase, pol, i)
             shares[:, :] = 0.0
             shares[0, ABSORBED] = work_down.form[0, pol, i].real
             shares[1, ABSORBED] = work_up.form[0, pol, i].real

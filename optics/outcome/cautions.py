@@ -53,8 +53,8 @@ def own_absorption(case: Case, emitter: Emitter, weight: NDArray[np.float64]) ->
     k = np.sqrt(film.material.permittivity(grid)[0]).imag
     lost = float(weight @ -np.expm1(-4.0 * np.pi * k * film.thickness_nm / grid))
     text = (
-        f"emitter {emitter.name}: its own film {film.name} is taken as transparent; that leaves "
-        f"out an absorptance of {lost:.2%} for one pass, averaged over the spectrum"
+        f"emitter {emitter.name}: its own film {film.name} is taken as transparent, which leaves "
+        f"out an absorptance of {lost:.2%} (one pass along the normal, spectral average)"
     )
     yield text + ("; the result is an upper bound" if lost > _LARGE_ABSORPTANCE else "")
 
@@ -98,5 +98,5 @@ def accuracy(tolerance: float, energy_balance: float, integration_error: float) 
         ("energy balance", energy_balance),
         ("integration error", integration_error),
     ):
-        if value > tolerance:
+        if not value <= tolerance:  # so that a value that is no number is told too
             yield f"the {name} is {value:.1e}, above the tolerance of {tolerance:.1e}"

@@ -90,7 +90,7 @@ class Spectral(Mapping[str, "xarray.Dataset"]):
     def __getitem__(self, name: str) -> xarray.Dataset:
         if name not in self._made:
             self._made[name] = emitter_dataset(*self._parts[name])
-        return self._made[name].copy()
+        return self._made[name].copy(deep=True)
 
     def __iter__(self) -> Iterator[str]:
         return iter(self._parts)

@@ -159,3 +159,10 @@ def test_positions_settle_together() -> None:
             alone.shares[0, 0] / scale, abs=2 * PROMISE
         )
     assert len(NAMES) == together.shares.shape[-1]
+
+
+def test_a_mirror_without_loss_or_end_is_told_and_not_waited_for() -> None:
+    """Once endless: eps = 1e10 i leaves resonances that no halving resolves; the error says so."""
+    found = solved(Reference(600.0, [film(1.5, 80.0)], 1e10j, 1.5**2 + 0j, 0, 40.0))
+    assert np.isfinite(found.shares).all()
+    assert found.error[0] > PROMISE
