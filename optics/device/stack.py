@@ -98,7 +98,7 @@ class Stack:
         raise KeyError(name)
 
     def permittivity(
-        self, wavelength_nm: NDArray[np.float64], *, transparent_film: int | None = None
+        self, wavelength_nm: NDArray[np.float64]
     ) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
         """Permittivity of every film.
 
@@ -106,8 +106,6 @@ class Stack:
         ----------
         wavelength_nm : array, shape (n_wavelength,)
             Vacuum wavelengths in nm.
-        transparent_film : int, optional
-            Index of a film whose k is set to 0 with n kept, as an emitter's own film is.
 
         Returns
         -------
@@ -123,10 +121,7 @@ class Stack:
         eps_o = np.empty(shape, dtype=np.complex128)
         eps_e = np.empty(shape, dtype=np.complex128)
         for index, film in enumerate(self.films):
-            pair = film.material.permittivity(wavelength_nm)
-            if index == transparent_film:
-                pair = (without_loss(pair[0]), without_loss(pair[1]))
-            eps_o[:, index], eps_e[:, index] = pair
+            eps_o[:, index], eps_e[:, index] = film.material.permittivity(wavelength_nm)
         return eps_o, eps_e
 
     def absorbing(
