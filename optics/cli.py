@@ -266,10 +266,10 @@ def angular(
             for line in lines:
                 click.echo(f"{kind}: {line}", err=True)
     else:
-        from optics.present.angular import print_angular
+        from optics.present.angular import WIDTH, print_angular
         from optics.present.terminal import console
 
-        print_angular(console(), result, reminders, every_angle=angles is not None)
+        print_angular(console(plain_width=WIDTH), result, reminders, every_angle=angles is not None)
     _say_written(outputs)
 
 

@@ -322,6 +322,7 @@ def _normal_spectrum(emitting: Sequence[Source], rays: Sequence[Floats]) -> tupl
     if any(source.is_line for source in emitting) or emitting[0].wavelength_nm.size < 2:
         return np.zeros(0), np.zeros(0)
     total = np.sum([ray[:, 0].sum(axis=1) for ray in rays], axis=0)
+    total.setflags(write=False)
     return emitting[0].wavelength_nm, total
 
 

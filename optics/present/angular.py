@@ -18,6 +18,8 @@ if TYPE_CHECKING:
 
 #: A side with less than this share of the light that leaves is summed up in one line.
 FAINT_SHARE = 1e-3
+#: Columns of the widest table, with polarizations.
+WIDTH = 120
 _MOST_ROWS = 20
 _WATT, _LUMEN = "W/(sr m\N{SUPERSCRIPT TWO})", "cd/m\N{SUPERSCRIPT TWO}"
 
