@@ -103,25 +103,28 @@ def print_angular(
     show(out, angular_view(result, cautions, every_angle=every_angle))
 
 
-def sides_with_light(sides: Mapping[str, Mapping[str, Any]]) -> list[str]:
-    """Names of the sides that get more than a thousandth of what leaves."""
-    total = sum(side["external_quantum_efficiency"] for side in sides.values())
-    return [
-        name
-        for name, side in sides.items()
-        if side["external_quantum_efficiency"] > FAINT_SHARE * total
-    ]
+def sides_with_light(photons: Mapping[str, float]) -> list[str]:
+    """Names of the sides that get more than a thousandth of what leaves.
+
+    Parameters
+    ----------
+    photons : mapping of str to float
+        Light of each side, such as photons per charge.
+    """
+    total = sum(photons.values())
+    return [name for name, out in photons.items() if out > FAINT_SHARE * total]
 
 
 def _by_light(
     sides: Mapping[str, Mapping[str, Any]],
 ) -> tuple[dict[str, Mapping[str, Any]], list[str]]:
     """Sides worth their tables, and a line for every other."""
-    bright = {name: sides[name] for name in sides_with_light(sides)}
+    photons = {name: side["external_quantum_efficiency"] for name, side in sides.items()}
+    bright = {name: sides[name] for name in sides_with_light(photons)}
     faint = []
-    for name, side in sides.items():
+    for name in sides:
         if name not in bright:
-            out = side["external_quantum_efficiency"]
+            out = photons[name]
             faint.append(
                 f"{name}: no light"
                 if out == 0.0

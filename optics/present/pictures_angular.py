@@ -56,7 +56,8 @@ def draw(picture: str, outcome: Angular, chosen_deg: Sequence[float] = CHOSEN_DE
 
     if picture not in PICTURES:
         raise ValueError(f"picture: found {picture!r}; expected one of {', '.join(PICTURES)}")
-    names = sides_with_light(outcome.to_dict()["sides"])
+    out = {side: one.external_quantum_efficiency for side, one in outcome.sides.items()}
+    names = sides_with_light(out)
     chosen = [float(angle) for angle in chosen_deg]
     if not names:
         from optics.present.pictures_style import INK, figure_of

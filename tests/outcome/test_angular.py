@@ -14,6 +14,7 @@ import pytest
 from devices import case, emitter, pixel, tandem
 
 import optics
+from optics.outcome import color
 from optics.outcome.angular import angular
 from optics.outcome.color import observer_at
 from optics.outcome.directional import (
@@ -317,6 +318,20 @@ def test_only_a_line_peaks_there_and_has_no_width() -> None:
     assert side.peak_nm_normal == 551.25
     assert side.fwhm_nm_normal is None
     assert side.dominant_wavelength_nm == pytest.approx(551.25, abs=0.02)
+
+
+def test_white_is_rated_and_green_is_not() -> None:
+    path = Path(__file__).parents[2] / "cases" / "white-tandem.toml"
+    white = angular(optics.read_case(path), [0.0]).sides["bottom"]
+    xy = (white.x_normal or 0.0, white.y_normal or 0.0)
+    assert color.temperature(xy) == (white.correlated_color_temperature_K, white.duv)
+    index = white.to_dict()["color_rendering_index"]
+    assert index == color.rendering_index(*white.normal_spectrum)
+    assert 0.0 < index < 100.0
+    green = angular(case(pixel()), [0.0]).sides["bottom"]
+    assert green.correlated_color_temperature_K is None
+    assert green.color_rendering_index is None
+    assert green.dominant_wavelength_nm is not None
 
 
 def test_a_single_wavelength_weighs_one() -> None:

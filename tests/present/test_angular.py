@@ -146,6 +146,12 @@ def test_lines_have_a_table_of_their_own() -> None:
     assert "546.1" in text
 
 
+def test_a_side_counts_from_a_thousandth_of_the_light() -> None:
+    assert sides_with_light({"bottom": 0.999, "top": 0.0011}) == ["bottom", "top"]
+    assert sides_with_light({"bottom": 0.9995, "top": 0.0005}) == ["bottom"]
+    assert sides_with_light({"bottom": 0.0, "top": 0.0}) == []
+
+
 def test_no_light_is_said_in_words() -> None:
     text = printed(seen(q=0.0))
     assert "bottom: no light" in text
@@ -204,7 +210,7 @@ def test_pictures_come_without_a_warning(
     figure.savefig(path, dpi=40)
     assert path.stat().st_size > 3000
     axes = [one for one in figure.axes if one.lines or one.collections]
-    assert len(axes) >= len(sides_with_light(outcome.to_dict()["sides"]))
+    assert len(axes) >= (2 if "cathode_nm" in kind else 1)
 
 
 @pytest.mark.parametrize("picture", pictures_angular.PICTURES)
