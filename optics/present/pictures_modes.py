@@ -1,0 +1,243 @@
+"""Pictures of modes: dispersion with shares, fields across the films, absorption by film."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from optics.outcome.modes_profile import field_profile
+from optics.present.pictures_style import (
+    FAINT,
+    GRID,
+    INK,
+    LOOKS,
+    SMALL_SIZE,
+    TEXT_SIZE,
+    caption,
+    figure_of,
+    plain,
+    spread,
+)
+from optics.present.wording import percent
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from matplotlib.axes import Axes
+    from matplotlib.figure import Figure
+
+    from optics.device.case import Case
+    from optics.outcome.film_absorption import FilmAbsorption
+    from optics.outcome.modes import EmitterModes, ModeLine, Modes
+
+#: What `draw` can draw.
+PICTURES = ("dispersion", "fields", "absorption")
+
+_COLORS = {"guided": "#0072B2", "plasmon": "#CC79A7", "overdamped": "0.75", "leaky": "#E69F00"}
+_THICKEST, _THINNEST = 9.0, 0.9
+_FULL_SHARE = 0.3  # share at which a line has its full width
+_MOST_FIELDS = 6
+_PLACES = {
+    "air_bottom": ("leaves, bottom", LOOKS["air_bottom"]),
+    "air_top": ("leaves, top", LOOKS["air_top"]),
+    "substrate": ("stays in the substrate", LOOKS["substrate"]),
+    "cover": ("stays in the cover", LOOKS["cover"]),
+    "substrate_absorbed": ("absorbed in the substrate", LOOKS["substrate"]),
+    "cover_absorbed": ("absorbed in the cover", LOOKS["cover"]),
+    "surroundings_bottom": ("enters the surroundings, bottom", LOOKS["absorbed"]),
+    "surroundings_top": ("enters the surroundings, top", LOOKS["absorbed"]),
+    "guided": ("stays guided", LOOKS["guided"]),
+}
+
+
+def draw(picture: str, case: Case, found: Modes) -> Figure:
+    """Draw one picture of modes.
+
+    Parameters
+    ----------
+    picture : {"dispersion", "fields", "absorption"}
+        Effective index against wavelength, line width by share; |E|^2 over the films with their
+        indices behind; where all generated light ends.
+    case : Case
+    found : Modes
+        Of this case.
+
+    Raises
+    ------
+    ValueError
+        If there is no such picture.
+    """
+    if picture == "dispersion":
+        return dispersion_figure(found)
+    if picture == "fields":
+        return fields_figure(case, found)
+    if picture == "absorption":
+        return absorption_figure(found)
+    raise ValueError(f"picture: found {picture!r}; expected one of {', '.join(PICTURES)}")
+
+
+def dispersion_figure(found: Modes) -> Figure:
+    """Draw the effective index of every mode against wavelength."""
+    figure = figure_of(0.8 + 5.6 * len(found.emitters), 5.4, found.title)
+    panels = figure.subplots(1, len(found.emitters), squeeze=False, sharey=True)[0]
+    for axes, emitter in zip(panels, found.emitters, strict=True):
+        for line in emitter.lines:
+            if set(line.kind) != {"overdamped"}:
+                _draw_line(axes, line)
+        _name_lines(axes, emitter)
+        axes.set_xlabel("vacuum wavelength (nm)")
+        axes.set_title(f"emitter {emitter.name}", fontsize=TEXT_SIZE, loc="left")
+        plain(axes)
+    panels[0].set_ylabel("effective index, real part")
+    caption(
+        figure,
+        "Width: share of the emitter's photons at that wavelength; paler below the outer light "
+        "line. Plain TE, dashed in the middle TM. Blue guided, purple plasmons, orange leaky "
+        "modes, which have no share.",
+    )
+    return figure
+
+
+def _draw_line(axes: Axes, line: ModeLine) -> None:
+    share = np.nan_to_num(line.share)
+    width = _THINNEST + (_THICKEST - _THINNEST) * np.sqrt(np.clip(share / _FULL_SHARE, 0, 1))
+    faint = [0.4 if place == "below light line" else 1.0 for place in line.destination]
+    x, y = line.wavelength_nm, line.effective_index.real
+    if x.size == 1:
+        marker = "o" if line.polarization == "s" else "D"
+        color = _COLORS[line.kind[0]]
+        axes.plot(x, y, marker, color=color, alpha=faint[0], markersize=float(2 + width[0]))
+        return
+    for i in range(x.size - 1):
+        axes.plot(
+            x[i : i + 2], y[i : i + 2], color=_COLORS[line.kind[i]], alpha=faint[i],
+            linewidth=float(0.5 * (width[i] + width[i + 1])), solid_capstyle="butt",
+        )  # fmt: skip
+    if line.polarization == "p":
+        thin = float(np.clip(0.3 * width.mean(), 0.9, 1.8))
+        axes.plot(x, y, color="white", linewidth=thin, linestyle=(0, (3, 3)))
+
+
+def _name_lines(axes: Axes, emitter: EmitterModes) -> None:
+    """Name every line that takes something in front of where it begins."""
+    named = [line for line in emitter.lines if line.leaky or (line.overall_share or 0.0) > 1e-4]
+    named.sort(key=lambda line: float(line.effective_index[0].real))
+    left, right = axes.get_xlim()
+    axes.set_xlim(left - 0.22 * (right - left), right)
+    low, high = axes.get_ylim()
+    places = [float(line.effective_index[0].real) for line in named]
+    moved = spread(places, 0.04 * (high - low), low, high)
+    for line, label in zip(named, moved, strict=True):
+        share = "" if line.leaky else f"  {percent(line.overall_share)} %"
+        start = float(line.wavelength_nm[0]) - 0.015 * (right - left)
+        axes.text(
+            start, label, f"{line.name}{share}", fontsize=SMALL_SIZE, color=INK,
+            ha="right", va="center",
+        )  # fmt: skip
+
+
+def fields_figure(case: Case, found: Modes) -> Figure:
+    """Draw |E|^2 of the strongest modes over the films of the stack."""
+    emitter = found.emitters[0]
+    ranked = [line for line in emitter.lines if not line.leaky]
+    ranked.sort(key=lambda line: -(line.overall_share or 0.0))
+    lines = [*ranked[:_MOST_FIELDS], *(line for line in emitter.lines if line.leaky)]
+    lines = lines[:_MOST_FIELDS]
+    columns = 2 if len(lines) > 1 else 1
+    rows = max(1, math.ceil(len(lines) / columns))
+    figure = figure_of(5.2 * columns, 0.8 + 2.5 * rows, found.title)
+    panels = figure.subplots(rows, columns, squeeze=False).ravel()
+    for axes in panels[len(lines) :]:
+        axes.set_axis_off()
+    for axes, line in zip(panels, lines, strict=False):
+        _draw_field(axes, case, emitter, line)
+    caption(
+        figure,
+        f"|E|^2 of the modes that take most, emitter {emitter.name}, at the wavelength that "
+        "adds most to each; over its largest value. Steps behind: real index in the film plane.",
+    )
+    return figure
+
+
+def _draw_field(axes: Axes, case: Case, emitter: EmitterModes, line: ModeLine) -> None:
+    strongest = line.strongest
+    wavelength_nm = float(line.wavelength_nm[strongest])
+    data = field_profile(case, emitter.name, line, wavelength_nm)
+    height = data["height_nm"].to_numpy()
+    behind = axes.twinx()
+    behind.fill_between(height, data["index"].to_numpy(), color=GRID, linewidth=0)
+    behind.set_ylim(0.0, 1.15 * float(data["index"].max()))
+    behind.tick_params(labelsize=SMALL_SIZE, colors=FAINT)
+    behind.spines[["top"]].set_visible(False)
+    behind.set_ylabel("index", fontsize=SMALL_SIZE, color=FAINT)
+    axes.set_zorder(behind.get_zorder() + 1)
+    axes.patch.set_visible(False)
+    axes.plot(
+        height, data["electric"].to_numpy(), color=_COLORS[line.kind[strongest]], linewidth=1.8
+    )
+    faces = data.attrs["faces_nm"]
+    for face in faces:
+        axes.axvline(face, color="white", linewidth=0.8, zorder=0)
+    for name, low, high in zip(emitter.media[1:-1], faces[:-1], faces[1:], strict=True):
+        if high - low > 0.045 * (height[-1] - height[0]):
+            axes.text(
+                0.5 * (low + high), 1.13, name, rotation=90, fontsize=6.5, color=FAINT,
+                ha="center", va="top",
+            )  # fmt: skip
+    axes.set_xlim(height[0], height[-1])
+    axes.set_ylim(0.0, 1.15)
+    index = line.effective_index[strongest]
+    share = "leaky" if line.leaky else f"{percent(line.overall_share)} %"
+    axes.set_title(
+        f"{line.name} ({line.kind[strongest]}), {share}, {wavelength_nm:g} nm, "
+        f"n = {index.real:.3f}{index.imag:+.3f}i",
+        fontsize=SMALL_SIZE, loc="left",
+    )  # fmt: skip
+    axes.set_xlabel("height above the lowest film's face (nm)")
+    plain(axes)
+
+
+def absorption_figure(found: Modes) -> Figure:
+    """Draw where all generated light ends, in the order of the stack."""
+    parts: list[tuple[str, FilmAbsorption]] = [(one.name, one.absorption) for one in found.emitters]
+    if found.absorption is not None and len(parts) > 1:
+        parts.insert(0, ("device", found.absorption))
+    rows = _rows(found.emitters)
+    figure = figure_of(2.4 + 3.4 * len(parts), 1.4 + 0.3 * len(rows), found.title)
+    panels = figure.subplots(1, len(parts), squeeze=False, sharey=True)[0]
+    for axes, (name, part) in zip(panels, parts, strict=True):
+        shares = [100.0 * {**part.films, **part.elsewhere}[key] for key, _ in rows]
+        for place, ((key, _), share) in enumerate(zip(rows, shares, strict=True)):
+            look = _PLACES[key][1] if key in _PLACES else LOOKS["absorbed"]
+            axes.barh(place, share, color=look.color, edgecolor=INK, linewidth=0.5, height=0.72)
+            axes.text(
+                share + 0.01 * max(shares), place, percent(0.01 * share), va="center",
+                fontsize=SMALL_SIZE, color=INK,
+            )  # fmt: skip
+        axes.set_xlim(0.0, 1.18 * max(shares))
+        axes.set_xlabel("share of the photons (%)")
+        axes.set_title(
+            f"{name}, sum less 1: {part.closure_error:+.0e}", fontsize=TEXT_SIZE, loc="left"
+        )
+        plain(axes)
+    panels[0].set_yticks(range(len(rows)), [label for _, label in rows], fontsize=TEXT_SIZE)
+    caption(
+        figure,
+        "From the bottom of the stack to its top. Films: everything absorbed in them, light on "
+        "its way out, guided light, plasmons and near field.",
+    )
+    return figure
+
+
+def _rows(emitters: Sequence[EmitterModes]) -> list[tuple[str, str]]:
+    """Places that some light reaches, with labels, in the order of the stack."""
+    below = ("air_bottom", "surroundings_bottom", "substrate", "substrate_absorbed")
+    above = ("cover_absorbed", "cover", "surroundings_top", "air_top", "guided")
+    every = [{**one.absorption.films, **one.absorption.elsewhere} for one in emitters]
+    films = tuple(emitters[0].absorption.films)
+    labels = {**{name: f"absorbed in {name}" for name in films},
+              **{name: label for name, (label, _) in _PLACES.items()}}  # fmt: skip
+    order = (*below, *films, *above)
+    return [(name, labels[name]) for name in order if any(one[name] != 0.0 for one in every)]
