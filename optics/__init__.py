@@ -13,6 +13,7 @@ if TYPE_CHECKING:
     from optics.device.errors import CaseError
     from optics.outcome.angular import Angular, angular
     from optics.outcome.budget import Budget, budget
+    from optics.outcome.modes import Modes, modes
     from optics.study.check import Check, check
 
 _HOMES = {
@@ -21,9 +22,11 @@ _HOMES = {
     "Case": "optics.device.case",
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
+    "Modes": "optics.outcome.modes",
     "angular": "optics.outcome.angular",
     "budget": "optics.outcome.budget",
     "check": "optics.study.check",
+    "modes": "optics.outcome.modes",
     "read_case": "optics.device.case",
 }
 
@@ -33,10 +36,12 @@ __all__ = [
     "Case",
     "CaseError",
     "Check",
+    "Modes",
     "__version__",
     "angular",
     "budget",
     "check",
+    "modes",
     "read_case",
 ]
 

@@ -17,6 +17,7 @@ if TYPE_CHECKING:
 DONE, FAILED, INPUT_AT_FAULT = 0, 1, 2
 _TRACEBACK = "optics.traceback"
 _WIDE = 200  # columns of a table of comparisons outside a terminal
+_MODE_PICTURES = ("dispersion", "fields", "absorption")
 _Command = TypeVar("_Command", bound=Callable[..., Any])
 
 
@@ -336,6 +337,75 @@ def check(
     _say_written(outputs)
     if not outcome.passed:
         click.get_current_context().exit(FAILED)
+
+
+@main.command()
+@click.argument("case", metavar="CASE", type=click.Path(path_type=Path))
+@_json_option
+@_output_option(".json, .csv, .nc, .png, .svg or .pdf")
+@click.option(
+    "--wavelength",
+    "wavelength_nm",
+    type=float,
+    callback=_not_nan,
+    metavar="NM",
+    help="Only this wavelength of the case, in nm.",
+)
+@click.option("--leaky", is_flag=True, help="List leaky modes too, marked as such.")
+@click.option("--all", "every_mode", is_flag=True, help="Show modes that take next to nothing too.")
+@click.option(
+    "--picture",
+    type=click.Choice(_MODE_PICTURES),
+    help="What a .png, .svg or .pdf shows: effective index against wavelength with shares (if "
+    "not said), fields over the films, or where the light ends, film by film.",
+)
+@_traceback_option
+def modes(
+    case: Path,
+    as_object: bool,
+    outputs: tuple[Path, ...],
+    wavelength_nm: float | None,
+    leaky: bool,
+    every_mode: bool,
+    picture: str | None,
+) -> None:
+    """Show guided modes one by one, and the power absorbed in each film."""
+    from optics.present import files
+
+    files.check_targets(outputs, (".json", ".csv", ".nc", *pictures.SUFFIXES))
+    draws = any(path.suffix.lower() in pictures.SUFFIXES for path in outputs)
+    if picture is not None and not draws:
+        raise click.UsageError(f"--picture {picture} needs a file: give -o with .png, .svg or .pdf")
+
+    import optics
+    from optics.kernels.compiled import cache_is_warm
+    from optics.present.terminal import compiling_notice
+
+    device = optics.read_case(case)
+    with compiling_notice(needed=not cache_is_warm()):
+        outcome = optics.modes(device, wavelength_nm, leaky=leaky)
+    result = outcome.to_dict()
+    writers: dict[str, files.Writer] = {
+        ".json": lambda path: files.write_json(result, path),
+        ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
+        ".nc": lambda path: outcome.to_tree().to_netcdf(path, engine="h5netcdf"),
+    }
+    if draws:
+        from optics.present import pictures_modes
+
+        figure = pictures_modes.draw(picture or _MODE_PICTURES[0], device, outcome)
+        writers |= {end: lambda path: pictures.write(figure, path) for end in pictures.SUFFIXES}
+    files.publish({path: writers[path.suffix.lower()] for path in outputs})
+    if as_object:
+        click.echo(files.as_json(result))
+        for line in outcome.warnings:
+            click.echo(f"Warning: {line}", err=True)
+    else:
+        from optics.present.modes import print_modes
+        from optics.present.terminal import console
+
+        print_modes(console(plain_width=_WIDE), result, every_mode=every_mode)
+    _say_written(outputs)
 
 
 @main.command()
