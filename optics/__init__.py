@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from optics.outcome.budget import Budget, budget
     from optics.outcome.modes import Modes, modes
     from optics.study.check import Check, check
+    from optics.study.sweep import sweep
 
 _HOMES = {
     "Angular": "optics.outcome.angular",
@@ -28,6 +29,7 @@ _HOMES = {
     "check": "optics.study.check",
     "modes": "optics.outcome.modes",
     "read_case": "optics.device.case",
+    "sweep": "optics.study.sweep",
 }
 
 __all__ = [
@@ -43,6 +45,7 @@ __all__ = [
     "check",
     "modes",
     "read_case",
+    "sweep",
 ]
 
 

@@ -178,8 +178,7 @@ def budget(
     }
     if draws:
         figure = pictures.draw(picture or pictures.PICTURES[0], device, outcome, tolerance)
-        drawn: files.Writer = lambda path: pictures.write(figure, path)  # noqa: E731
-        writers |= dict.fromkeys(pictures.SUFFIXES, drawn)
+        writers |= {end: lambda path: pictures.write(figure, path) for end in pictures.SUFFIXES}
     files.publish({path: writers[path.suffix.lower()] for path in outputs})
     reminders = cautions(device, result)
     if as_object:
@@ -336,6 +335,50 @@ def check(
         print_check(console(plain_width=_WIDE), result, every_row=every_row)
     _say_written(outputs)
     if not outcome.passed:
+        click.get_current_context().exit(FAILED)
+
+
+@main.command()
+@click.argument("case", metavar="CASE", type=click.Path(path_type=Path))
+@_json_option
+@_output_option(".json, .csv, .nc, .png, .svg or .pdf")
+@click.option(
+    "--outcome",
+    "shown",
+    multiple=True,
+    metavar="NAME",
+    help="Outcome that pictures show, all if not said; may be given several times.",
+)
+@click.option(
+    "--tolerance",
+    type=click.FloatRange(min=1e-12, max=0.1),
+    default=1e-6,
+    callback=_not_nan,
+    show_default=True,
+    help="Wanted accuracy of every destination, as a fraction of the dissipated power.",
+)
+@click.option("--cluster", metavar="ADDRESS", help="Dask scheduler that takes the work.")
+@_traceback_option
+def sweep(
+    case: Path,
+    as_object: bool,
+    outputs: tuple[Path, ...],
+    shown: tuple[str, ...],
+    tolerance: float,
+    cluster: str | None,
+) -> None:
+    """Compute any outcome over a grid of any numbers in the case.
+
+    The case file says which, in its table [sweep]; see docs/sweep.md. Stopped with Ctrl-C, the
+    same command continues where it was.
+    """
+    from optics.present import sweep_command
+
+    complete = sweep_command.run(
+        case, outputs, shown, as_object=as_object, tolerance=tolerance, cluster=cluster
+    )
+    _say_written(outputs)
+    if not complete:
         click.get_current_context().exit(FAILED)
 
 

@@ -1,0 +1,217 @@
+"""What a sweep is to compute: the grid from the case's `[sweep]` table, checked before any work."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from optics.device.errors import CaseError, Fault
+from optics.study.outcomes import Outcome, default_outcomes, find_outcomes
+
+if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from optics.device.case import Case
+
+    Floats = NDArray[np.float64]
+    Integers = NDArray[np.int64]
+
+# Numbers of one result, so that it stays well below a gigabyte.
+LARGEST_RESULT = 40_000_000
+_UNITS = {
+    "_nm": "nm",
+    "_mm": "mm",
+    "_eV": "eV",
+    "_V": "V",
+    "_mA_cm2": "mA/cm2",
+}
+
+
+@dataclass(frozen=True, slots=True)
+class Axis:
+    """Values of one number of the case, in the order of the file."""
+
+    path: str
+    values: tuple[float, ...]
+
+    @property
+    def units(self) -> str:
+        """Unit by the end of the path; 1 for ratios."""
+        return next((unit for end, unit in _UNITS.items() if self.path.endswith(end)), "1")
+
+
+@dataclass(frozen=True, slots=True)
+class Plan:
+    """A checked sweep.
+
+    Attributes
+    ----------
+    case : Case
+    axes : tuple of Axis
+        The last one varies fastest.
+    followers : tuple of (str, int)
+        Linked paths, each with the axis whose value it takes.
+    outcomes : tuple of Outcome
+    tolerance : float
+        Wanted accuracy of every destination, as a fraction of the dissipated power.
+    """
+
+    case: Case
+    axes: tuple[Axis, ...]
+    followers: tuple[tuple[str, int], ...]
+    outcomes: tuple[Outcome, ...]
+    tolerance: float
+
+    @property
+    def shape(self) -> tuple[int, ...]:
+        """Number of values on every axis."""
+        return tuple(len(axis.values) for axis in self.axes)
+
+    @property
+    def points(self) -> int:
+        """Number of grid points."""
+        return math.prod(self.shape)
+
+    def values_at(self, places: Integers) -> Floats:
+        """Values (n, axes) of grid points given by their places in the flattened grid."""
+        indices = np.unravel_index(places, self.shape)
+        columns = [np.array(axis.values)[i] for axis, i in zip(self.axes, indices, strict=True)]
+        return np.stack(columns, axis=-1)
+
+    def changes(self, values: Floats) -> dict[str, float]:
+        """Values by path of one grid point (axes,), followers included."""
+        every = {axis.path: float(v) for axis, v in zip(self.axes, values, strict=True)}
+        return every | {path: float(values[place]) for path, place in self.followers}
+
+    def name_of(self, place: int) -> str:
+        """Name a grid point for people, such as ``layers.HTL.thickness_nm = 40``."""
+        values = self.values_at(np.array([place]))[0]
+        pairs = zip(self.axes, values, strict=True)
+        return ", ".join(f"{axis.path} = {value:.10g}" for axis, value in pairs)
+
+
+def plan_sweep(case: Case, tolerance: float) -> Plan:
+    """Read a case's `[sweep]` table.
+
+    Raises
+    ------
+    CaseError
+        With every fault: no such table, outcomes that are unknown or ambiguous, values given
+        twice or refused by the case, links that contradict the axes, too large a grid.
+    """
+    study: Mapping[str, Any] | None = case.document.get("sweep")
+    if study is None:
+        raise CaseError([Fault(case.label, "sweep", "no such table", "a table with sweep.axes")])
+    axes = tuple(Axis(path, _values(entry)) for path, entry in study["axes"].items())
+    faults: list[Fault] = []
+    followers = _followers(case, axes, study.get("linked", {}), faults)
+    outcomes = _outcomes(case, axes, study.get("outcomes"), faults)
+    plan = Plan(case, axes, followers, outcomes, tolerance)
+    _check_size(plan, faults)
+    for place, axis in enumerate(axes):
+        twice = sorted({value for value in axis.values if axis.values.count(value) > 1})
+        key = _axis_key(axis.path)
+        faults += [Fault(case.label, key, f"{v:.10g} twice", "each value once") for v in twice]
+        _check_values(plan, place, faults)
+    if faults:
+        raise CaseError(faults)
+    return plan
+
+
+def _axis_key(path: str) -> str:
+    return f'sweep.axes."{path}"'
+
+
+def _values(entry: Mapping[str, Any]) -> tuple[float, ...]:
+    if entry.get("values") is not None:
+        return tuple(float(value) for value in entry["values"])
+    start, stop, step = entry["start"], entry["stop"], entry["step"]
+    count = round((stop - start) / step)
+    # Both ends exact, and decimal steps without the dust of binary sums.
+    return tuple(float(f"{start + (stop - start) * i / count:.12g}") for i in range(count + 1))
+
+
+def _followers(
+    case: Case, axes: tuple[Axis, ...], linked: Mapping[str, str], faults: list[Fault]
+) -> tuple[tuple[str, int], ...]:
+    """Follow every link to the axis at its end."""
+    places = {axis.path: place for place, axis in enumerate(axes)}
+    found: list[tuple[str, int]] = []
+    for path, leader in linked.items():
+        key = f'sweep.linked."{path}"'
+        if path in places:
+            expected = "a path that is no axis of its own"
+            faults.append(Fault(case.label, key, f"{path}, which is swept itself", expected))
+            continue
+        seen = [path]
+        while leader in linked and leader not in seen:
+            seen.append(leader)
+            leader = linked[leader]
+        if leader in seen:
+            circle = " follows ".join([*seen, leader])
+            faults.append(Fault(case.label, key, circle, "links that end at an axis"))
+        elif leader not in places:
+            expected = f"a path of sweep.axes: {', '.join(places)}"
+            faults.append(Fault(case.label, key, f"{leader}, which is not swept", expected))
+        else:
+            found.append((path, places[leader]))
+    return tuple(found)
+
+
+def _outcomes(
+    case: Case, axes: tuple[Axis, ...], asked: list[str] | None, faults: list[Fault]
+) -> tuple[Outcome, ...]:
+    names = (
+        {f"sweep.outcomes[{place}]": name for place, name in enumerate(asked)}
+        if asked is not None
+        else {f"sweep.outcomes ({name})": name for name in default_outcomes()}
+    )
+    for key, name in names.items():
+        if any(axis.path == name for axis in axes):
+            expected = "an outcome that is no axis"
+            faults.append(Fault(case.label, key, f"{name}, which is swept", expected))
+    try:
+        return find_outcomes(case, names)
+    except CaseError as error:
+        faults.extend(error.faults)
+        return ()
+
+
+def _check_size(plan: Plan, faults: list[Fault]) -> None:
+    numbers = plan.points * max(len(plan.outcomes), 1)
+    if numbers > LARGEST_RESULT:
+        found = f"{plan.points} grid points of {len(plan.outcomes)} outcomes"
+        expected = f"at most {LARGEST_RESULT} numbers; split the grid or ask for fewer outcomes"
+        faults.append(Fault(plan.case.label, "sweep.axes", found, expected))
+
+
+def _check_values(plan: Plan, place: int, faults: list[Fault]) -> None:
+    """Note if the case refuses an axis's smallest or largest value, whatever the others are.
+
+    What is refused only in between, or only together with values of other axes, is told as a
+    failed point.
+    """
+    axis = plan.axes[place]
+    alone = [path for path, leader in plan.followers if leader == place]
+    first = plan.changes(np.array([other.values[0] for other in plan.axes]))
+    for value in sorted({min(axis.values), max(axis.values)}):
+        changes = dict.fromkeys([axis.path, *alone], value)
+        refused = _refused(plan.case, changes)
+        if not refused or not _refused(plan.case, first | changes):
+            continue
+        for fault in refused:
+            known = fault.key == axis.path
+            found = fault.found if known else f"{value:.10g}: {fault.key} is {fault.found}"
+            faults.append(Fault(plan.case.label, _axis_key(axis.path), found, fault.expected))
+
+
+def _refused(case: Case, changes: Mapping[str, float]) -> tuple[Fault, ...]:
+    try:
+        case.replace_all(changes)
+    except CaseError as error:
+        return error.faults
+    return ()
