@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import tomllib
 from pathlib import Path
 
 import numpy as np
@@ -87,16 +88,19 @@ def test_modes_appear_at_their_cut_off(pol: int, m: int) -> None:
     assert modes.decay[modes.polarization == pol][-1, 0].real == pytest.approx(g, rel=1e-3)
 
 
-def test_plasmon_of_one_silver_interface() -> None:
-    """The value for silver (Rakic 1998) on n = 1.7 at 550 nm; eps from the model's formula."""
-    terms = [(0.845, 0.048, 0.0), (0.065, 3.886, 0.816), (0.124, 0.452, 4.481),
-             (0.011, 0.065, 8.185), (0.840, 0.916, 9.083), (5.646, 2.419, 20.29)]  # fmt: skip
+@pytest.mark.parametrize("row", published("modes_plasmon_interface.csv"), ids=lambda r: r["metal"])
+def test_plasmon_of_one_interface(row: dict[str, str]) -> None:
+    model = tomllib.loads((PUBLISHED / "nk_lorentz_drude.toml").read_text())[row["metal"]]
     w = 1239.841984 / 550.0
-    eps = 1 + sum(f * 9.01**2 / (w0 * w0 - w * w - 1j * w * g) for f, g, w0 in terms)
+    terms = [(model["f0"], model["gamma0_eV"], 0.0), *model["oscillators"]]
+    eps = 1 + sum(
+        f * model["plasma_eV"] ** 2 / (w0 * w0 - w * w - 1j * w * g) for f, g, w0 in terms
+    )
     film = 1.7**2
     modes = bound_modes(stack([film], [150.0], (eps, film)))
     assert indices(modes, P) == pytest.approx([np.sqrt(eps * film / (eps + film))], abs=1e-12)
-    assert indices(modes, P)[0] == pytest.approx(2.01050708 + 0.03406928j, abs=1e-8)
+    printed = complex(float(row["n_eff_real"]), float(row["n_eff_imag"]))
+    assert indices(modes, P)[0] == pytest.approx(printed, abs=1e-8)
     assert len(indices(modes, S)) == 0
 
 

@@ -1,0 +1,172 @@
+"""The modes command, its tables and its pictures."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import Any
+
+import pytest
+from click.testing import CliRunner, Result
+
+import optics
+from optics import cli
+from optics.outcome.modes import Modes
+from optics.present import pictures_modes
+from optics.present.modes import print_modes
+from optics.present.terminal import console
+
+CASE = """
+title = "a pixel, invented"
+[wavelength]
+values_nm = [520, 550, 580]
+[materials.host]
+n = 1.75
+[materials.conductor]
+n = 1.9
+k = 0.01
+[substrate]
+material = "bk7"
+thickness_mm = 0.7
+[[layers]]
+name = "TCO"
+material = "conductor"
+thickness_nm = 110
+[[layers]]
+name = "EML"
+material = "host"
+thickness_nm = 90
+[[layers]]
+name = "CAT"
+material = "al"
+thickness_nm = 100
+[[emitters]]
+name = "green"
+layer = "EML"
+spectrum = { peak_nm = 550, fwhm_nm = 30 }
+zone = { shape = "point", at = 0.3 }
+quantum_yield = 0.9
+"""
+
+
+@pytest.fixture(scope="module")
+def path(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    path = tmp_path_factory.mktemp("modes") / "case.toml"
+    path.write_text(CASE)
+    return path
+
+
+@pytest.fixture(scope="module")
+def found(path: Path) -> Modes:
+    return optics.modes(optics.read_case(path), leaky=True)
+
+
+def run(*arguments: object) -> Result:
+    return CliRunner().invoke(cli.main, ["modes", *(str(argument) for argument in arguments)])
+
+
+def printed(result: dict[str, Any], capsys: pytest.CaptureFixture[str], **options: bool) -> str:
+    print_modes(console(plain_width=180), result, **options)
+    return capsys.readouterr().out
+
+
+def test_json_is_the_result(path: Path, found: Modes) -> None:
+    result = run(path, "--json", "--leaky")
+    assert result.exit_code == 0
+    parsed = json.loads(result.stdout)
+    assert parsed["schema"] == "outcouple.modes/1"
+    shown = [line["name"] for line in parsed["emitters"][0]["modes"]]
+    assert shown == [line.name for line in found.emitters[0].lines]
+    leaky = [line for line in parsed["emitters"][0]["modes"] if line["leaky"]]
+    assert {line["share"] for line in leaky} == {None}
+
+
+def test_tables_name_modes_shares_and_films(
+    found: Modes, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = printed(found.to_dict(), capsys)
+    emitter = found.emitters[0]
+    te0 = emitter.lines[0]
+    assert "TE0   " in text
+    assert f"{100 * (te0.overall_share or 0.0):.2f}" in text
+    assert f"{100 * emitter.absorption.films['CAT']:.2f}" in text
+    assert "absorbed in TCO" in text
+    assert "absorbed in EML" not in text
+    assert "sum less 1" in text
+
+
+def test_faint_modes_are_hidden_until_asked_for(
+    found: Modes, capsys: pytest.CaptureFixture[str]
+) -> None:
+    result = found.to_dict()
+    faint = [line for line in result["emitters"][0]["modes"] if not line["leaky"]]
+    faint[-1]["share"] = 1e-7
+    short, full = printed(result, capsys), printed(result, capsys, every_mode=True)
+    assert "1 more with shares below 0.005 %: --all shows them" in short
+    assert "--all" not in full
+    assert len(full.splitlines()) == len(short.splitlines())  # a row instead of the remark
+
+
+def test_one_wavelength(path: Path) -> None:
+    result = run(path, "--wavelength", 550)
+    assert result.exit_code == 0
+    assert "emitter green, 550 nm" in result.stdout
+    result = run(path, "--wavelength", 551)
+    assert result.exit_code == 2
+    assert "found 551 nm; expected a wavelength of the case, 520 to 580 nm" in result.stderr
+
+
+@pytest.mark.parametrize("picture", pictures_modes.PICTURES)
+def test_pictures(picture: str, path: Path, found: Modes, tmp_path: Path) -> None:
+    figure = pictures_modes.draw(picture, optics.read_case(path), found)
+    file = tmp_path / "picture.svg"
+    figure.savefig(file)
+    text = file.read_text()
+    assert len(text) > 5000
+    words = {
+        text.get_text()
+        for axes in figure.axes
+        for text in (*axes.texts, axes.title, axes.get_yaxis().label, *axes.get_yticklabels())
+    } | {axes.get_title(loc="left") for axes in figure.axes}
+    expected = {
+        "dispersion": "TE0",
+        "fields": "TE0 (guided)",
+        "absorption": "absorbed in CAT",
+    }[picture]
+    assert any(word.startswith(expected) for word in words)
+
+
+def test_width_of_a_line_grows_with_its_share(path: Path, found: Modes) -> None:
+    figure = pictures_modes.draw("dispersion", optics.read_case(path), found)
+    segments = [line for line in figure.axes[0].lines if line.get_color() != "white"]
+    first, *_ = found.emitters[0].lines
+    faintest = min(line.get_linewidth() for line in segments)
+    widest = max(line.get_linewidth() for line in segments)
+    assert widest > faintest + 1.0
+    strongest = max(
+        (line for line in found.emitters[0].lines if line.overall_share),
+        key=lambda one: one.share[1],
+    )
+    heights = [y for line in segments if line.get_linewidth() == widest for y in line.get_ydata()]
+    assert min(abs(y - strongest.effective_index.real[1]) for y in heights) < 0.2
+    assert first.name == "TE0"
+
+
+def test_an_unknown_picture_is_refused(path: Path, found: Modes) -> None:
+    with pytest.raises(ValueError, match="expected one of dispersion, fields, absorption"):
+        pictures_modes.draw("chain", optics.read_case(path), found)
+
+
+def test_the_command_offers_the_pictures_there_are() -> None:
+    assert cli._MODE_PICTURES == pictures_modes.PICTURES
+
+
+def test_files(path: Path, tmp_path: Path) -> None:
+    files = [tmp_path / f"modes{suffix}" for suffix in (".json", ".csv", ".nc", ".png")]
+    result = run(path, *(part for file in files for part in ("-o", file)))
+    assert result.exit_code == 0
+    assert all(file.stat().st_size > 200 for file in files)
+    assert (tmp_path / "modes.csv").read_text().startswith("emitter,mode,polarization")
+    refused = run(path, "--picture", "fields")
+    assert refused.exit_code == 2
+    assert "needs a file" in refused.stderr
