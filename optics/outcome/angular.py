@@ -33,6 +33,7 @@ if TYPE_CHECKING:
 
 SCHEMA = "outcouple.angular/1"
 DEFAULT_ANGLES_DEG = tuple(float(angle) for angle in range(91))
+_FAINT_SHARE = 1e-3  # of the light that leaves: nobody rates the color of such a side
 _AMPERE_PER_M2 = 10.0  # one mA/cm2
 
 
@@ -219,6 +220,7 @@ def _blind(case: Case, emitting: Sequence[Source]) -> list[str]:
 
 def _about_sides(sides: Mapping[str, SideAngular]) -> list[str]:
     said = []
+    total = sum(side.external_quantum_efficiency for side in sides.values())
     for name, side in sides.items():
         if side.external_quantum_efficiency == 0.0:
             continue
@@ -236,8 +238,8 @@ def _about_sides(sides: Mapping[str, SideAngular]) -> list[str]:
                 f"side {name}: all media have one index, so radiance grows without bound toward "
                 "90 deg; its values there are null"
             )
-        duv = side.duv
-        if duv is not None and abs(duv) > ACCURATE_DUV and side.is_white:
+        duv, faint = side.duv, side.external_quantum_efficiency < _FAINT_SHARE * total
+        if duv is not None and abs(duv) > ACCURATE_DUV and side.is_white and not faint:
             said.append(
                 f"side {name}: the color lies {abs(duv):.4f} in u, v from a black body's, more "
                 f"than the {ACCURATE_DUV} that the color rendering index is made for"

@@ -32,10 +32,12 @@ SMALLEST_PURITY = 0.1
 #: Beyond this distance from the Planckian locus in CIE 1960 u, v a correlated color temperature
 #: has no meaning (CIE 15).
 LARGEST_DUV = 0.05
-#: Beyond this distance light is not white enough for a color rendering index (a choice).
-LARGEST_DUV_WHITE = 0.02
-#: Beyond this distance the index is less accurate (CIE 13.3, from memory).
+#: Beyond this distance a color rendering index is less accurate (CIE 13.3, from memory).
 ACCURATE_DUV = 5.4e-3
+#: Above this purity a color is that of a single wavelength and not of something that glows; black
+#: bodies reach it at 1450 K. And above this one it is too far from white to render colors (2100 K).
+#: Both are choices.
+LARGEST_PURITY_GLOWING, LARGEST_PURITY_WHITE = 0.95, 0.8
 #: Color temperatures that are looked for, in kelvin.
 COOLEST_K, HOTTEST_K = 1000.0, 25000.0
 

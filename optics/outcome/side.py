@@ -77,7 +77,7 @@ class SideAngular:
     dominant_wavelength_nm, excitation_purity : float or None
         Along the normal, against equal-energy white.
     correlated_color_temperature_K, duv : float or None
-        Along the normal; None far from black bodies.
+        Along the normal; None far from black bodies and for saturated colors.
     polarized : mapping
         Radiance and relative luminance of s and p apart, by key of the JSON result.
     normal_spectrum : tuple of two float arrays
@@ -129,8 +129,10 @@ class SideAngular:
 
     @property
     def is_white(self) -> bool:
-        """Whether the color along the normal lies so near a black body's that it renders colors."""
-        return self.duv is not None and abs(self.duv) <= color.LARGEST_DUV_WHITE
+        """Whether the color along the normal is near a black body's and not saturated."""
+        return self.duv is not None and (self.excitation_purity or 0.0) <= (
+            color.LARGEST_PURITY_WHITE
+        )
 
     @property
     def normal_is_dark(self) -> bool:
@@ -280,6 +282,8 @@ def _named_color(x: float | None, y: float | None, normal: float) -> dict[str, f
         hue, warmth, index = None, None, None
     else:
         hue, warmth = color.dominant((x, y)), color.temperature((x, y))
+        if hue is not None and hue.purity > color.LARGEST_PURITY_GLOWING:
+            warmth = None
         index = photometry.ratio(normal, y)
     return {
         "blue_index": index,

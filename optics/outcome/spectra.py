@@ -112,18 +112,19 @@ def angular_dataset(spectra: Spectra, head: Mapping[str, Any]) -> xarray.Dataset
     """Label the spectra; values per area only where a current density is stated."""
     import xarray
 
-    variables: dict[str, Any] = {
-        "spectral_radiance_W_sr_A_nm": (_DIMS, spectra.per_current, "per current"),
-    }
+    parts = {"spectral_radiance_W_sr_{}_nm": (_DIMS, spectra.per_current)}
     if spectra.line_nm.size:
-        variables["line_radiance_W_sr_A"] = (
-            _LINE_DIMS, spectra.line_per_current, "of spectral lines, per current",
-        )  # fmt: skip
-    if spectra.current_A_m2 is not None:
-        variables |= {
-            key.replace("_A", "_m2"): (dims, spectra.current_A_m2 * values, about.split(", per")[0])
-            for key, (dims, values, about) in variables.items()
-        }
+        parts["line_radiance_W_sr_{}"] = (_LINE_DIMS, spectra.line_per_current)
+    current = spectra.current_A_m2
+    variables: dict[str, Any] = {}
+    for name, (dims, values) in parts.items():
+        key, about = name.format("A"), name.split("_W")[0].replace("_", " ")
+        attrs = {"units": unit_of(key), "long_name": f"{about} per current density"}
+        variables[key] = (dims, values.copy(), attrs)
+        if current is not None:
+            key = name.format("m2")
+            attrs = {"units": unit_of(key), "long_name": about}
+            variables[key] = (dims, current * values, attrs)
     coords: dict[str, Any] = {
         "side": list(SIDES),
         "angle_deg": ("angle_deg", spectra.angle_deg, {"units": "degree"}),
@@ -132,14 +133,7 @@ def angular_dataset(spectra: Spectra, head: Mapping[str, Any]) -> xarray.Dataset
     }
     if spectra.line_nm.size:
         coords["line_nm"] = ("line_nm", spectra.line_nm, {"units": "nm"})
-    return xarray.Dataset(
-        {
-            key: (dims, values.copy(), {"units": unit_of(key), "long_name": f"radiance {about}"})
-            for key, (dims, values, about) in variables.items()
-        },
-        coords=coords,
-        attrs=dict(head),
-    )
+    return xarray.Dataset(variables, coords=coords, attrs=dict(head))
 
 
 def curves_dataset(sides: Mapping[str, Mapping[str, Any]]) -> xarray.Dataset:

@@ -1,19 +1,18 @@
-"""Emission against angle: identities, agreement with the budget, and what is said of darkness."""
+"""Emission against angle: identities, agreement with the budget, and what adds up."""
 
 from __future__ import annotations
 
-import json
-import math
 import tomllib
 from itertools import pairwise
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 import pytest
+from angular_devices import DEVICES, SIDES, driven, narrow, same, semitransparent
 from devices import case, emitter, pixel, tandem
 
 import optics
+from optics.device.case import case_from_dict
 from optics.outcome import color
 from optics.outcome.angular import angular
 from optics.outcome.color import observer_at
@@ -24,60 +23,10 @@ from optics.outcome.directional import (
     sources,
 )
 from optics.outcome.light import problem_of
-from optics.present.files import as_json
 
 PUBLISHED = tomllib.loads(
     (Path(__file__).parents[1] / "published" / "color_photometry.toml").read_text(encoding="utf-8")
 )
-SIDES = ("bottom", "top")
-
-
-def driven(document: dict[str, Any]) -> dict[str, Any]:
-    document["drive"] |= {"current_density_mA_cm2": 4.0, "voltage_V": 3.2}
-    return document
-
-
-def semitransparent(exit_: str = "planar") -> dict[str, Any]:
-    """Glass below in air, an absorbing polymer slab above in water, a thin metal between."""
-    document = driven(pixel())
-    document["materials"] |= {"water": {"n": 1.33}, "polymer": {"n": 1.65, "k": 1e-8}}
-    document["surroundings"] = {"top": "water"}
-    document["cover"] = {"material": "polymer", "thickness_mm": 0.5, "exit": exit_}
-    document["layers"][-1]["thickness_nm"] = 15
-    return document
-
-
-def without_slabs(bottom: str = "air") -> dict[str, Any]:
-    document = driven(pixel())
-    del document["substrate"]
-    document["surroundings"] = {"bottom": bottom}
-    document["layers"][-1]["thickness_nm"] = 15
-    return document
-
-
-DEVICES = {
-    "planar": lambda: driven(pixel()),
-    "matched, lines, two units": lambda: driven(tandem()),
-    "two slabs": semitransparent,
-    "two slabs, one matched": lambda: semitransparent("matched"),
-    "no slabs": without_slabs,
-    "on silicon": lambda: without_slabs("si"),
-}
-
-
-def same(found: Any, expected: Any) -> bool:
-    """Equal but for rounding; null only to null."""
-    if isinstance(expected, list):
-        return all(same(a, b) for a, b in zip(found, expected, strict=True))
-    if found is None or expected is None:
-        return found is expected
-    return bool(found == pytest.approx(expected, rel=1e-12))
-
-
-def narrow(document: dict[str, Any], *wavelengths_nm: float) -> dict[str, Any]:
-    """Few wavelengths, so that a test is quick."""
-    document["wavelength"] = {"values_nm": list(wavelengths_nm)}
-    return document
 
 
 @pytest.mark.parametrize("name", DEVICES)
@@ -249,7 +198,7 @@ def test_filter_and_polarizer_act_on_angles_and_not_on_the_budget(tmp_path: Path
     plain = angular(case(driven(pixel())), [0.0, 50.0])
     document = driven(pixel())
     document["sides"] = {"bottom": {"filter": "f.csv", "polarizer_transmittance": 0.43}}
-    filtered = angular(optics.device.case.case_from_dict(document, tmp_path), [0.0, 50.0])
+    filtered = angular(case_from_dict(document, tmp_path), [0.0, 50.0])
     key = "spectral_radiance_W_sr_m2_nm"
     at = plain.spectral["wavelength_nm"].to_numpy()
     passed = 0.43 * np.interp(at, [480.0, 560.0, 620.0], [0.0, 0.8, 0.5])
@@ -328,10 +277,28 @@ def test_white_is_rated_and_green_is_not() -> None:
     index = white.to_dict()["color_rendering_index"]
     assert index == color.rendering_index(*white.normal_spectrum)
     assert 0.0 < index < 100.0
+    assert not any("color rendering" in line for line in angular(optics.read_case(path)).warnings)
+    amber_path = path.with_name("flexible-pet-barrier.toml")
+    amber = angular(optics.read_case(amber_path), [0.0]).sides["bottom"]
+    assert amber.excitation_purity is not None
+    assert amber.excitation_purity > 0.95
+    assert amber.correlated_color_temperature_K is None
+    assert amber.color_rendering_index is None
     green = angular(case(pixel()), [0.0]).sides["bottom"]
     assert green.correlated_color_temperature_K is None
     assert green.color_rendering_index is None
     assert green.dominant_wavelength_nm is not None
+
+
+def test_a_white_off_the_black_bodies_is_rated_with_a_warning() -> None:
+    path = Path(__file__).parents[2] / "cases" / "white-lighting-panel.toml"
+    seen = angular(optics.read_case(path), [0.0])
+    side = seen.sides["bottom"]
+    assert side.duv is not None
+    assert abs(side.duv) > color.ACCURATE_DUV
+    assert side.color_rendering_index is not None
+    (said,) = [line for line in seen.warnings if "color rendering index" in line]
+    assert f"{abs(side.duv):.4f}" in said
 
 
 def test_a_single_wavelength_weighs_one() -> None:
@@ -340,160 +307,6 @@ def test_a_single_wavelength_weighs_one() -> None:
     one, other = (angular(case(d), [0.0, 30.0]).sides["bottom"] for d in (document, line))
     assert one.luminance_cd_m2 == pytest.approx(other.luminance_cd_m2, rel=1e-9)
     assert one.fwhm_nm_normal is None
-
-
-def test_vertical_dipoles_leave_the_normal_exactly_dark() -> None:
-    document = emitter(driven(pixel()), horizontal_fraction=0.0)
-    seen = angular(case(document), [0.0, 40.0, 90.0])
-    side = seen.sides["bottom"]
-    assert side.luminance_cd_m2 is not None
-    assert side.luminance_cd_m2[0] == 0.0
-    assert side.luminance_cd_m2[1] > 0.0  # type: ignore[operator]
-    assert side.relative_luminance == (None, None, None)
-    assert side.delta_uv == (None, None, None)
-    assert side.x[0] is None
-    assert side.x[1] is not None
-    for key in ("lambertian_ratio", "half_luminance_angle_deg", "blue_index", "peak_nm_normal"):
-        assert getattr(side, key) is None
-    assert any("no visible light along the normal" in line for line in seen.warnings)
-    no_constants(as_json(seen.to_dict(spectral=True, polarization=True)))
-
-
-def test_toward_90_deg_light_fades_with_the_cosine_and_is_gone_there() -> None:
-    side = angular(case(driven(pixel())), [89.999, 89.9999, 90.0]).sides["bottom"]
-    near, nearer, there = side.relative_luminance
-    assert nearer == pytest.approx(0.1 * near, rel=2e-3)  # type: ignore[operator]
-    assert there == 0.0
-    assert side.x[1] is not None
-    assert side.x[2] is None
-
-
-@pytest.mark.parametrize(
-    ("document", "dark"),
-    [
-        (emitter(driven(pixel()), quantum_yield=0.0), SIDES),
-        (emitter(driven(pixel()), exciton_fraction=0.0), SIDES),
-        (without_slabs("si"), ("bottom",)),
-    ],
-    ids=["no yield", "no excitons", "absorbing side"],
-)
-def test_darkness_is_zero_and_null_color(document: dict[str, Any], dark: tuple[str, ...]) -> None:
-    seen = angular(case(document), [0.0, 30.0, 90.0])
-    for name in dark:
-        side = seen.to_dict()["sides"][name]
-        for key in ("radiance_W_sr_m2", "luminance_cd_m2", "relative_luminance"):
-            assert side[key] == [0.0, 0.0, 0.0]
-        for key in ("x", "y", "u_prime", "v_prime", "delta_uv"):
-            assert side[key] == [None, None, None]
-        for key in ("current_efficiency_cd_A", "luminous_exitance_lm_m2", "luminous_efficacy_lm_W"):
-            assert side[key] == 0.0
-        for key in ("lambertian_ratio", "blue_index", "peak_nm_normal", "duv"):
-            assert side[key] is None
-    no_constants(as_json(seen.to_dict(spectral=True, polarization=True)))
-
-
-def test_invisible_light_has_radiance_and_no_luminance() -> None:
-    document = emitter(driven(pixel()), spectrum={"peak_nm": 900, "fwhm_nm": 20})
-    document["wavelength"] = {"start_nm": 850, "stop_nm": 950, "step_nm": 5}
-    seen = angular(case(document), [0.0, 30.0])
-    side = seen.sides["bottom"]
-    assert side.radiance_W_sr_m2 is not None
-    assert side.radiance_W_sr_m2[0] > 0.0  # type: ignore[operator]
-    assert side.luminance_cd_m2 == (0.0, 0.0)
-    assert side.x == (None, None)
-    assert side.fwhm_nm_normal is not None
-    assert any("outside 360 to 830 nm" in line for line in seen.warnings)
-
-
-def test_a_grid_too_narrow_for_the_spectrum_is_said() -> None:
-    document = pixel()
-    document["wavelength"] = {"start_nm": 545, "stop_nm": 610, "step_nm": 5}
-    seen = angular(case(document), [0.0])
-    assert seen.sides["bottom"].fwhm_nm_normal is None
-    assert any("has not fallen to half" in line for line in seen.warnings)
-    assert any("lies outside the wavelength grid" in line for line in seen.warnings)
-
-
-def test_nothing_around_gives_the_same_intensity_everywhere() -> None:
-    """In one medium without faces radiance is 1/(4 pi cos), unbounded at 90 deg."""
-    document = emitter(driven(pixel()), horizontal_fraction=2 / 3, quantum_yield=1.0)
-    document["materials"]["host"] = {"n": 1.5}
-    document["layers"] = [document["layers"][2]]
-    del document["substrate"]
-    document["surroundings"] = {"bottom": "host", "top": "host"}
-    device = case(narrow(document, 540.0, 550.0))
-    angles = np.array([0.0, 30.0, 60.0, 89.0])
-    (source,) = sources(device, optics.budget(device))
-    for side in range(2):
-        found = radiance_over_bulk(device, source, side, angles).sum(axis=2)
-        expected = 1.0 / (4.0 * np.pi * np.cos(np.deg2rad(angles)))
-        np.testing.assert_allclose(found, np.broadcast_to(expected, found.shape), rtol=1e-9)
-    seen = angular(device, [0.0, 60.0, 90.0])
-    bottom = seen.sides["bottom"]
-    assert bottom.relative_luminance[1] == pytest.approx(2.0, rel=1e-9)
-    assert bottom.relative_luminance[2] is None
-    assert bottom.half_luminance_angle_deg is None
-    assert bottom.lambertian_ratio == pytest.approx(2.0, rel=1e-6)
-    assert any("without bound" in line for line in seen.warnings)
-
-
-@pytest.mark.parametrize(
-    ("angles", "said"),
-    [
-        ([], "found none"),
-        ([-0.1, 10.0], "found -0.1"),
-        ([10.0, 90.5], "found 90.5"),
-        ([math.nan], "found nan"),
-        ([10.0, 20.0, 10.0], "found 10 twice"),
-    ],
-)
-def test_bad_angles(angles: list[float], said: str) -> None:
-    with pytest.raises(ValueError, match=said):
-        angular(case(pixel()), angles)
-
-
-def test_all_bad_angles_at_once() -> None:
-    with pytest.raises(ValueError, match=r"(?s)found 91.*found 95"):
-        angular(case(pixel()), [0.0, 91.0, 95.0])
-
-
-def test_result_is_plain_frozen_and_labelled() -> None:
-    seen = angular(case(driven(pixel())), [0.0, 30.0])
-    result = seen.to_dict()
-    assert result["schema"] == "outcouple.angular/1"
-    assert no_constants(json.dumps(result, allow_nan=False)) == result
-    with pytest.raises(AttributeError):
-        seen.title = "other"  # type: ignore[misc]
-    with pytest.raises(ValueError, match="read-only"):
-        seen.sides["bottom"].normal_spectrum[1][0] = 1.0
-    first = seen.spectral
-    first["spectral_radiance_W_sr_m2_nm"][:] = 0.0
-    assert float(seen.spectral["spectral_radiance_W_sr_m2_nm"].sum()) > 0.0
-    frame = seen.to_frame(polarization=True)
-    row = frame[(frame["side"] == "bottom") & (frame["quantity"] == "luminance_cd_m2")]
-    assert row["value"].to_list() == result["sides"]["bottom"]["luminance_cd_m2"]
-    assert set(row["unit"]) == {"cd m-2"}
-    units = dict(zip(frame["quantity"], frame["unit"], strict=True))
-    assert units["current_efficiency_cd_A"] == "cd A-1"
-    assert units["half_luminance_angle_deg"] == "degree"
-    assert units["lambertian_ratio"] == "1"
-    assert units["radiance_s_W_sr_m2"] == "W sr-1 m-2"
-    data = seen.to_dataset()
-    assert float(data["x"].sel(side="bottom", angle_deg=30.0)) == result["sides"]["bottom"]["x"][1]
-    assert data["fwhm_nm_normal"].attrs["units"] == "nm"
-
-
-def test_spectral_rows_of_the_table() -> None:
-    seen = angular(case(driven(tandem())), [0.0, 30.0])
-    frame = seen.to_frame(spectral=True)
-    here = frame[(frame["side"] == "bottom") & (frame["angle_deg"] == 30.0)]
-    spread = here[here["quantity"] == "spectral_radiance_p_W_sr_m2_nm"]
-    expected = seen.spectral["spectral_radiance_W_sr_m2_nm"].sel(
-        side="bottom", angle_deg=30.0, polarization="p"
-    )
-    assert spread["value"].to_numpy() == pytest.approx(expected.to_numpy())
-    line = here[here["quantity"] == "line_radiance_s_W_sr_m2"]
-    assert line["wavelength_nm"].to_list() == [601.5]
 
 
 def test_radiance_is_watts_per_current() -> None:
@@ -505,12 +318,3 @@ def test_radiance_is_watts_per_current() -> None:
     over_bulk = radiance_over_bulk(device, source, 0, np.array([20.0]))
     watts = radiance(device, source, 0, np.array([20.0]))
     np.testing.assert_allclose(watts, over_bulk * 1239.841984 / 550.0, rtol=1e-12)
-
-
-def no_constants(text: str) -> Any:
-    """Parse JSON that has no NaN and no Infinity."""
-
-    def refuse(word: str) -> None:
-        raise AssertionError(f"{word} in JSON")
-
-    return json.loads(text, parse_constant=refuse)
