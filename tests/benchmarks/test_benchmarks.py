@@ -1,0 +1,49 @@
+"""The benchmark itself works: tiny sizes, no word about time."""
+
+from __future__ import annotations
+
+import pytest
+from benchmarks.devices import device
+from benchmarks.measure import (
+    engine,
+    engine_errors,
+    points_for,
+    rival_errors,
+    truth,
+)
+from benchmarks.report import Plan, report
+
+pytestmark = pytest.mark.slow
+
+
+def test_rival_computes_the_same_quantities() -> None:
+    """On a fine grid it comes to the literal model's answers: it is no straw man."""
+    small = device(wavelengths=1)
+    truths = [truth(small, 0)]
+    coarse = rival_errors(small, 2_000, truths)[0]
+    fine = rival_errors(small, 200_000, truths)[0]
+    assert fine < 1e-4
+    assert fine < 0.1 * coarse
+    assert engine_errors(engine(small), truths)[0] < 1e-6
+
+
+@pytest.mark.parametrize("films", [3, 4, 6, 24])
+def test_devices_have_as_many_films_in_the_same_room(films: int) -> None:
+    made = device(wavelengths=2, films=films, positions=5)
+    assert made.eps.shape == (2, films)
+    assert made.thickness_nm[made.emitter] == 24.0
+    assert made.thickness_nm[made.emitter + 1 : -1].sum() in (0.0, pytest.approx(50.0))
+    assert engine(made).shares.shape[1] == 5
+
+
+def test_extrapolation_follows_the_power_law() -> None:
+    assert points_for(1e-8, (100, 10_000), (1e-2, 1e-4)) == pytest.approx(1e8)
+
+
+def test_report_is_written_from_measurements() -> None:
+    plan = Plan(wavelengths=2, samples=1, repeats=1, grids=(500, 1000), films=(3,), spectra=(1,),
+                zones=(1, 20))  # fmt: skip
+    text = report(plan)
+    for heading in ("Against the rival", "At equal accuracy", "Scaling", "Where the time goes"):
+        assert heading in text
+    assert "nan" not in text
