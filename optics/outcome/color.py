@@ -80,11 +80,20 @@ def observer() -> Floats:
     return table
 
 
+def library() -> Any:
+    """Load the colour-science library without what it does to the whole process.
+
+    It warns of optional parts that are not used here, and shortens every number that NumPy and
+    pandas print from then on, files included.
+    """
+    with warnings.catch_warnings(), np.printoptions():
+        warnings.simplefilter("ignore")
+        import colour
+    return colour
+
+
 def _read_observer() -> Floats:
-    with warnings.catch_warnings():
-        warnings.simplefilter("ignore")  # about optional parts that are not used here
-        from colour import MSDS_CMFS
-    functions = MSDS_CMFS[_OBSERVER]
+    functions = library().MSDS_CMFS[_OBSERVER]
     return np.column_stack([functions.wavelengths, functions.values])
 
 
@@ -236,9 +245,7 @@ def rendering_index(wavelength_nm: Floats, power: Floats) -> float | None:
         return None
     even = np.arange(360.0, 831.0, 1.0)
     values = np.interp(even, wavelength_nm, power / power.max(), left=0.0, right=0.0)
+    colour = library()
     with warnings.catch_warnings():
-        warnings.simplefilter("ignore")
-        from colour import SpectralDistribution, colour_rendering_index
-
-        found: Any = colour_rendering_index(SpectralDistribution(values, even))
-    return float(found)
+        warnings.simplefilter("ignore")  # that its own data must be interpolated
+        return float(colour.colour_rendering_index(colour.SpectralDistribution(values, even)))

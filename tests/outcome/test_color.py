@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
 import tomllib
 import warnings
 from pathlib import Path
@@ -18,16 +20,8 @@ PUBLISHED = tomllib.loads(
 HC_EV_NM = 1239.841984
 
 
-def library() -> Any:
-    """The color library, whose import warns of optional parts."""
-    with warnings.catch_warnings():
-        warnings.simplefilter("ignore")
-        import colour
-    return colour
-
-
 def illuminant(name: str) -> tuple[np.ndarray, np.ndarray]:
-    spectrum = library().SDS_ILLUMINANTS[name]
+    spectrum = color.library().SDS_ILLUMINANTS[name]
     return np.array(spectrum.wavelengths, float), np.array(spectrum.values, float)
 
 
@@ -134,7 +128,7 @@ def test_dominant_wavelength_against_the_library_which_steps_by_1_nm(
 ) -> None:
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
-        expected = float(library().dominant_wavelength(xy, color.WHITE_XY)[0])
+        expected = float(color.library().dominant_wavelength(xy, color.WHITE_XY)[0])
     found = color.dominant(xy)
     assert found is not None
     assert found.wavelength_nm == pytest.approx(expected, abs=1.0)
@@ -157,7 +151,7 @@ def test_a_black_body_has_its_own_temperature(kelvin: float) -> None:
 
 @pytest.mark.parametrize("xy", [(0.35, 0.38), (0.44, 0.39), (0.31, 0.31)])
 def test_temperature_and_distance_against_the_library(xy: tuple[float, float]) -> None:
-    colour = library()
+    colour = color.library()
     uv = colour.UCS_to_uv(colour.XYZ_to_UCS(colour.xy_to_XYZ(xy)))
     kelvin, duv = colour.temperature.uv_to_CCT_Ohno2013(uv)
     found = color.temperature(xy)
@@ -175,6 +169,19 @@ def test_far_from_black_bodies_there_is_no_temperature(xy: tuple[float, float]) 
 def test_rendering_of_fluorescent_standards(row: dict[str, Any]) -> None:
     found = color.rendering_index(*illuminant(row["name"]))
     assert found == pytest.approx(row["general_index"], abs=0.5)
+
+
+def test_the_library_leaves_numbers_as_they_print() -> None:
+    """In a process of its own, since it loads only once."""
+    script = (
+        "import numpy as np\n"
+        "from optics.outcome import color\n"
+        "before = np.get_printoptions()\n"
+        "color.library()\n"
+        "assert np.get_printoptions() == before\n"
+        "assert str(np.float64(0.1234567890123456)) == '0.1234567890123456'\n"
+    )
+    subprocess.run([sys.executable, "-c", script], check=True)
 
 
 def test_rendering_needs_a_spectrum() -> None:
