@@ -19,10 +19,11 @@ import numpy as np
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.halfstack import P, S, abs2
-from optics.kernels.modal_sheet import Films, film_matrix, normal_square, sheet, wronskian
+from optics.kernels.modal_sheet import Films, carried, normal_square, sheet, wronskian
 
 # Rows of `mode_content`.
 ELECTRIC, ABSORBED, FLOW = 0, 1, 2
+_CIRCLE = 24  # points around modes too close to tell apart
 _PANEL = 2.0  # largest |kz| times the length of a panel of Gauss nodes
 _X8 = (
     -0.9602898564975363, -0.7966664774136267, -0.525532409916329, -0.18343464249564978,
@@ -51,9 +52,9 @@ def step(
         return w, v, log
     sigma = sigma_of(films, pol, j)
     q = normal_square(films, pol, j, x)
-    c, t, _, grown = film_matrix(q, abs(d))
-    t = t if d > 0.0 else -t
-    w, v = c * w + sigma * t * v, c * v - q * t / sigma * w
+    way = 1.0 if d > 0.0 else -1.0
+    w, v, grown = carried(q, sigma, abs(d), w, way * v)
+    v *= way
     size = max(abs(w) + abs(v), 1e-300)
     return w / size, v / size, log + grown + math.log(size)
 
@@ -133,6 +134,7 @@ def residues(
     emitter: int,
     pol: int,
     s: complex,
+    radius: float,
     kz_positions: Floats,
     eps_e: float,
     bulk: Floats,
@@ -148,6 +150,9 @@ def residues(
     pol : int
     s : complex
         The mode's place on the sheet.
+    radius : float
+        0: closed form at one mode. Else: sum of the residues of all modes within this distance of
+        s, from the integral around them, which does not mind how close they are to each other.
     kz_positions : float (z,)
         k0 times the distance from the bottom face of the emitter film.
     eps_e : float
@@ -157,27 +162,50 @@ def residues(
     found : complex (3, z), output
         Channels vertical p, horizontal p, horizontal s.
     """
+    found[:, :] = 0.0
+    if radius == 0.0:
+        _, slope, log = wronskian(films, pol, s)
+        add_product(films, emitter, pol, s, 1.0 / slope, log, kz_positions, eps_e, bulk, found)
+        return
+    for i in range(_CIRCLE):
+        away = radius * cmath.exp(2j * math.pi * (i + 0.5) / _CIRCLE)
+        value, _, log = wronskian(films, pol, s + away)
+        share = away / (_CIRCLE * value)
+        add_product(films, emitter, pol, s + away, share, log, kz_positions, eps_e, bulk, found)
+
+
+@inline
+def add_product(
+    films: Films,
+    emitter: int,
+    pol: int,
+    s: complex,
+    factor: complex,
+    log: float,
+    kz_positions: Floats,
+    eps_e: float,
+    bulk: Floats,
+    found: Complexes,
+) -> None:
+    """Add the numerators of the dissipated power, per ds, times factor / exp(log)."""
     m = films.kd.size
     bottom, top, x = sheet(films, s)
-    _, slope, log = wronskian(films, pol, s)
-    states = make_states(m)
-    logs = make_logs(m)
+    states, logs = make_states(m), make_logs(m)
     at_faces(films, pol, s, states, logs)
-    found[:, :] = 0.0
-    # Of the last common factor: du/ds = gb gt / u.
-    common = -1.5j * bottom * top / slope
+    # du/ds = gb gt / u; the factor u is common to all channels.
+    common = -1.5j * bottom * top * factor
     for i in range(kz_positions.size):
         z = kz_positions[i]
         low = (states[0, 0, emitter], states[0, 1, emitter], logs[0, emitter])
         high = (states[1, 0, emitter + 1], states[1, 1, emitter + 1], logs[1, emitter + 1])
         wb, vb, lb = step(films, pol, emitter, x, z, low)
         wt, vt, lt = step(films, pol, emitter, x, z - films.kd[emitter], high)
-        factor = common * cmath.exp(lb + lt - log)
+        scale = common * cmath.exp(lb + lt - log)
         if pol == S:
-            found[2, i] = factor * wb * wt / bulk[1]
+            found[2, i] += scale * wb * wt / bulk[1]
         else:
-            found[0, i] = 2.0 * factor * x * wb * wt / (eps_e * eps_e * bulk[0])
-            found[1, i] = factor * vb * vt / bulk[1]
+            found[0, i] += 2.0 * scale * x * wb * wt / (eps_e * eps_e * bulk[0])
+            found[1, i] += scale * vb * vt / bulk[1]
 
 
 @inline

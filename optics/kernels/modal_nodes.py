@@ -27,6 +27,8 @@ _NARROW = 1e-9  # half width of lines that are left out
 _WINDOW = 1e-6  # half width of the window around them
 _LEAKY_WIDTH = 0.02  # of leaky modes that show as lines below the outer light lines
 _ROUNDS = 40
+_TWINS = 1e-7  # distance on the sheet below which modes count as twins
+_AROUND = 1e-4  # of the path around twins
 _EVENLY = 0.5  # longest first panel beyond the light lines
 
 #: From t to u and du/dt
@@ -63,16 +65,41 @@ def mode_powers(
     content : float (n, 3, m + 2)
     """
     source = problem.source
-    positions = source.kz_positions[row]
-    power = np.zeros(modes.s.size)
+    residue = np.zeros_like(modes.s)
     content = np.zeros((modes.s.size, 3, films.kd.size + 2))
-    found = np.zeros((3, positions.size), dtype=np.complex128)
+    found = np.zeros((3, source.kz_positions.shape[1]), dtype=np.complex128)
+
+    def weighted(pol: int, s: complex, radius: float) -> complex:
+        residues(
+            films, emitter, pol, s, radius, source.kz_positions[row], source.eps_e[row],
+            source.bulk[row], found,
+        )  # fmt: skip
+        return complex((found * weight[[0, 1, 1]]).sum())
+
     for i, (pol, s) in enumerate(zip(modes.polarization.tolist(), modes.s.tolist(), strict=True)):
         mode_content(films, pol, s, content[i])
-        residues(films, emitter, pol, s, positions, source.eps_e[row], source.bulk[row], found)
-        residue = (found * weight[[0, 1, 1]]).sum()
-        power[i] = direction(modes.u[i], content[i]) * (1j * math.pi * residue).real
-    return power, content
+        residue[i] = weighted(pol, s, 0.0)
+    for group in _twins(modes):
+        # Each on its own is a small difference; their sum is sound.
+        middle = complex(modes.s[group].mean())
+        together = weighted(int(modes.polarization[group[0]]), middle, _AROUND)
+        alone = residue[group].sum()
+        if alone != 0.0:
+            residue[group] *= together / alone
+    ways = [direction(u, held) for u, held in zip(modes.u.tolist(), content, strict=True)]
+    return np.array(ways) * (1j * math.pi * residue).real, content
+
+
+def _twins(modes: Modes) -> list[list[int]]:
+    """Groups of modes too close to each other to be told apart in double precision."""
+    groups: list[list[int]] = []
+    for i in range(modes.s.size):
+        same = modes.polarization == modes.polarization[i]
+        group = np.flatnonzero(same & (np.abs(modes.s - modes.s[i]) < _TWINS)).tolist()
+        others = same & (np.abs(modes.s - modes.s[i]) < 2.0 * _AROUND)
+        if len(group) > 1 and group not in groups and others.sum() == len(group):
+            groups.append(group)
+    return groups
 
 
 def direction(u: complex, content: Floats) -> float:

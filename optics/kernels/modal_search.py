@@ -22,6 +22,7 @@ _SMALL = 0.6  # longest side of a rectangle in which several are sought
 _POINT = 1e-7  # side of a rectangle whose zeros count as one multiple zero
 _ITERATIONS = 60
 _CONVERGED = 2e-15
+_SETTLED = 1e-11  # last step of zeros that count as found
 STACK = 400  # rectangles that may wait
 
 
@@ -101,8 +102,7 @@ def polish(films: Films, pol: int, n: int, box: Floats, found: Complexes) -> boo
             largest = max(largest, abs(step))
         if largest < _CONVERGED * (1.0 + abs(middle)):
             break
-    # Near-degenerate zeros settle at the rounding of their distance, no better.
-    good = largest < (1e-11 if n == 1 else 1e-8)
+    good = largest < _SETTLED
     for i in range(n):
         inside = box[0] <= found[i].real <= box[1] and box[2] <= found[i].imag <= box[3]
         good = good and inside

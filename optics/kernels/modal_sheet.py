@@ -20,6 +20,8 @@ from optics.kernels.halfstack import P, abs2, sqrt_upper
 
 # Below this |kz^2 d^2| a film's matrix comes from its series, with terms to the sixth power.
 _SERIES = 0.1
+# From this exponent on growing and decaying waves are carried apart.
+_GROWS = 1.0
 
 
 class Films(NamedTuple):
@@ -79,6 +81,72 @@ def film_matrix(q: complex, d: float) -> tuple[complex, complex, complex, float]
 
 
 @inline
+def growing_part(q: complex, d: float) -> tuple[complex, complex, complex, float]:
+    """Decay constant g = -i kz, factors of the growing and the decaying wave over exp(x), and x."""
+    k = sqrt_upper(q)
+    x = k.imag * d
+    return -1j * k, turn(-k.real * d), turn(k.real * d) * decay(2.0 * x), x
+
+
+@inline
+def carried(
+    q: complex, sigma: complex, d: float, w: complex, v: complex
+) -> tuple[complex, complex, float]:
+    """Fields a way d > 0 up in a film, psi and v, both over exp(third result).
+
+    Where waves grow much they are carried apart: what grows out of the small difference of psi
+    and v must be rounded once, not in either of them, or modes of far guides would smear.
+    """
+    if sqrt_upper(q).imag * d < _GROWS:
+        c, t, _, x = film_matrix(q, d)
+        return c * w + sigma * t * v, c * v - q * t / sigma * w, x
+    g, up, down, x = growing_part(q, d)
+    grows, decays = 0.5 * (w + sigma * v / g) * up, 0.5 * (w - sigma * v / g) * down
+    return grows + decays, g / sigma * (grows - decays), x
+
+
+@inline
+def carried_slope(
+    q: complex,
+    dq: complex,
+    sigma: complex,
+    d: float,
+    state: tuple[complex, complex, complex, complex],
+) -> tuple[complex, complex, complex, complex, float]:
+    """As `carried`, with slopes: from psi, v, psi', v' at the bottom to those at the top.
+
+    dq : slope of q = kz^2.
+    """
+    w, v, dw, dv = state
+    if sqrt_upper(q).imag * d < _GROWS:
+        c, t, dt, x = film_matrix(q, d)
+        dc = -0.5 * d * t * dq
+        dt *= dq
+        lower, d_lower = -q * t / sigma, -(dq * t + q * dt) / sigma
+        return (
+            c * w + sigma * t * v,
+            lower * w + c * v,
+            dc * w + sigma * dt * v + c * dw + sigma * t * dv,
+            d_lower * w + dc * v + lower * dw + c * dv,
+            x,
+        )
+    g, up, down, x = growing_part(q, d)
+    dg = -0.5 * dq / g
+    part, d_part = sigma * v / g, sigma * (dv - v * dg / g) / g
+    grows, decays = 0.5 * (w + part) * up, 0.5 * (w - part) * down
+    d_grows = 0.5 * (dw + d_part) * up + grows * d * dg
+    d_decays = 0.5 * (dw - d_part) * down - decays * d * dg
+    y = g / sigma
+    return (
+        grows + decays,
+        y * (grows - decays),
+        d_grows + d_decays,
+        dg / sigma * (grows - decays) + y * (d_grows - d_decays),
+        x,
+    )
+
+
+@inline
 def wronskian(films: Films, pol: int, s: complex) -> tuple[complex, complex, float]:
     """Value and slope in s of the Wronskian, both over exp(third result).
 
@@ -97,15 +165,7 @@ def wronskian(films: Films, pol: int, s: complex) -> tuple[complex, complex, flo
         sigma = films.eps_o[j] if pol == P else 1.0 + 0j
         ratio = sigma / films.eps_e[j] if pol == P else 1.0 + 0j
         q, dq = normal_square(films, pol, j, x), -ratio * dx
-        c, t, dt, shrink = film_matrix(q, films.kd[j])
-        dc = -0.5 * films.kd[j] * t * dq
-        dt *= dq
-        lower, d_lower = -q * t / sigma, -(dq * t + q * dt) / sigma
-        dw, dv = (
-            dc * w + sigma * dt * v + c * dw + sigma * t * dv,
-            d_lower * w + dc * v + lower * dw + c * dv,
-        )
-        w, v = c * w + sigma * t * v, lower * w + c * v
+        w, v, dw, dv, shrink = carried_slope(q, dq, sigma, films.kd[j], (w, v, dw, dv))
         size = abs(w) + abs(v)
         w, v, dw, dv = w / size, v / size, dw / size, dv / size
         log += shrink + cmath.log(size).real

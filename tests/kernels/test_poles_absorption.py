@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from stacks import Film, Slab, film, metal, problem_of, slab, solved
 
-from optics.kernels.budget import ABSORBED, AIR_BOTTOM, AIR_TOP, COVER, SUBSTRATE
+from optics.kernels.budget import ABSORBED, AIR_BOTTOM, AIR_TOP, COVER, GUIDED, SUBSTRATE
 from optics.kernels.modal_absorption import FILMS, LEAVES, SLAB, SURROUNDINGS, TRAPPED
 from optics.kernels.modal_nodes import Account, account
 
@@ -107,3 +107,17 @@ def test_splitting_a_film_splits_its_absorption() -> None:
     for one, two in zip(accounts(whole), accounts(parts), strict=True):
         assert two.by_place[-2:].sum() == pytest.approx(one.by_place[-1], abs=1e-7)
         assert two.by_place[:-2] == pytest.approx(one.by_place[:-1], abs=1e-7)
+
+
+@pytest.mark.parametrize("apart_nm", [1000.0, 2000.0, 6000.0])
+@pytest.mark.parametrize("detuning_nm", [0.0, 1e-9])
+def test_twin_guides_share_what_they_guide(apart_nm: float, detuning_nm: float) -> None:
+    """Pairs of modes as close as 1e-7 down to rounding: their powers still sum to the budget's."""
+    films = [film(2.0, 300), film(1.5, apart_nm), film(2.0, 300 + detuning_nm)]
+    stack = Stack(550.0, films, 1.5**2, 1.5**2, 0, 100.0)
+    shares = solved(stack, 1e-8).shares[0, 0]
+    for orientation, found in enumerate(accounts(stack)):
+        assert len(found.modes.u) == 8
+        guided = shares[orientation, GUIDED]
+        assert found.power.sum() == pytest.approx(guided, abs=1e-8)
+        assert found.stays_guided == pytest.approx(guided, abs=1e-8)

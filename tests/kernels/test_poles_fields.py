@@ -42,7 +42,7 @@ def mode_powers(problem: Problem, stack: Stack) -> tuple[Films, Modes, np.ndarra
     source = problem.source
     for i, (pol, s) in enumerate(zip(modes.polarization, modes.s, strict=True)):
         found = np.zeros((3, 1), complex)
-        residues(films, stack.emitter, pol, s, source.kz_positions[0], source.eps_e[0],
+        residues(films, stack.emitter, pol, s, 0.0, source.kz_positions[0], source.eps_e[0],
                  source.bulk[0], found)  # fmt: skip
         forward = modes.u[i].imag or content_of(films, pol, s)[FLOW].sum()
         powers[i] = np.sign(forward) * (1j * np.pi * found[:, 0]).real
