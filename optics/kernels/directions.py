@@ -9,6 +9,7 @@ import numpy as np
 from optics.kernels.arrays import Floats
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.elementary import exp_i
+from optics.kernels.exits import ABSORBING
 from optics.kernels.halfstack import abs2, outward, reciprocal, waves
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.problem import Problem, Sides, work_space
@@ -17,7 +18,7 @@ from optics.kernels.source import (
     channel,
     outgoing_factor,
     solve_half,
-    stack_from_both_sides,
+    stack_from_outside,
 )
 
 # Stands for u = 0, where the power per du over u is 0/0. Its square vanishes beside every
@@ -116,6 +117,14 @@ def lit_from_outside(problem: Problem, u: Floats, powers: Floats) -> None:
             for pol in range(2):
                 for i in range(min(NODES, n - start)):
                     phase = exp_i(work_up.kz[pol, 0, i] * source.kd)
-                    found = stack_from_both_sides(sides, work_up, work_down, phase, pol, i)
+                    found = stack_from_outside(
+                        sides.kind[0] != ABSORBING,
+                        sides.kind[1] != ABSORBING,
+                        work_up,
+                        work_down,
+                        phase,
+                        pol,
+                        i,
+                    )
                     for k in range(5):
                         powers[w, pol, start + i, k] = found[k]

@@ -118,12 +118,10 @@ def absorbed_cross(
 
 
 @inline
-def sum_films(a_in: Floats, a_out: Floats, a_cross: Complexes, form: Complexes) -> None:
-    """Add up the films of a half stack: form (3, 2, n) with rows inside, outside, cross."""
-    form[:, :, :] = 0.0
+def sum_films(a: Floats | Complexes, total: Complexes) -> None:
+    """Add up the films of a half stack: total (2, n) from a (2, m, n)."""
+    total[:, :] = 0.0
     for pol in range(2):
-        for j in range(1, a_in.shape[1] - 1):
-            for i in range(a_in.shape[2]):
-                form[0, pol, i] += a_in[pol, j, i]
-                form[1, pol, i] += a_out[pol, j, i]
-                form[2, pol, i] += a_cross[pol, j, i]
+        for j in range(1, a.shape[1] - 1):
+            for i in range(a.shape[2]):
+                total[pol, i] += a[pol, j, i]

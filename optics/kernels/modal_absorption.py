@@ -29,7 +29,7 @@ from optics.kernels.source import (
     light_returns,
     outgoing_factor,
     solve_half,
-    stack_from_both_sides,
+    stack_from_outside,
 )
 
 # Columns in front of those of the films: dissipated power; then bottom, top of each: leaves the
@@ -178,7 +178,15 @@ def power_by_film(
                 returns = some_returns and light_returns(sides, at)
                 stack = (0.0, 0.0, 0.0, 0.0, 0.0)
                 if returns:
-                    stack = stack_from_both_sides(sides, work_up, work_down, phase, pol, i)
+                    stack = stack_from_outside(
+                        sides.kind[0] != ABSORBING,
+                        sides.kind[1] != ABSORBING,
+                        work_up,
+                        work_down,
+                        phase,
+                        pol,
+                        i,
+                    )
                 back_b, back_t = outside(sides, pol, at, p_b, p_t, stack, row)
                 if returns and back_b > 0.0 and flux_b > 0.0:
                     lit_films(

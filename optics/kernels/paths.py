@@ -8,6 +8,7 @@ import math
 
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
+from optics.kernels.elementary import turn
 from optics.kernels.rules import LAST, NODES, SECOND, WEIGHT, X
 
 # Kinds of path, with their three parameters. Square roots of the integrand lie at light lines.
@@ -36,30 +37,33 @@ def place(
     The derivative includes (b - a)/2, so that sum(weight * f(u) * du) is the integral.
     """
     half = 0.5 * (b - a)
+    span = hi - lo
     for i in range(NODES):
         theta = a + half * (X[stage * NODES + i] + 1.0)
-        if kind == REAL:
-            s = math.sin(0.5 * math.pi * theta)
-            u[i] = lo + (hi - lo) * s * s
-            du[i] = (hi - lo) * 0.5 * math.pi * math.sin(math.pi * theta) * half
-        elif kind == REAL_FROM_ZERO:
-            u[i] = lo + (hi - lo) * math.sin(0.5 * math.pi * theta)
-            du[i] = (hi - lo) * 0.5 * math.pi * math.cos(0.5 * math.pi * theta) * half
-        elif kind == TAIL:
+        if kind == TAIL:
             u[i] = lo + depth * theta / (1.0 - theta)
             du[i] = depth / (1.0 - theta) ** 2 * half
+            continue
+        # All other paths run on the circle; half angles, so that nothing cancels at the ends.
+        quarter = turn(0.5 * math.pi * theta)
+        if kind == REAL:
+            u[i] = lo + span * quarter.imag**2
+            du[i] = span * math.pi * quarter.imag * quarter.real * half
+        elif kind == REAL_FROM_ZERO:
+            u[i] = lo + span * quarter.imag
+            du[i] = span * 0.5 * math.pi * quarter.real * half
         else:
-            t, dt = math.pi * theta, math.pi
+            speed = math.pi * half
             if kind == ARC_FROM_LINE:
-                t, dt = math.pi * theta * theta, 2.0 * math.pi * theta
+                quarter = turn(0.5 * math.pi * theta * theta)
+                speed *= 2.0 * theta
             elif kind == ARC_BETWEEN_LINES:
-                s = math.sin(0.5 * math.pi * theta)
-                t, dt = math.pi * s * s, 0.5 * math.pi**2 * math.sin(math.pi * theta)
-            radius = 0.5 * (hi - lo)
-            # 1 - cos t written so that nothing cancels next to the branch point.
-            s = math.sin(0.5 * t)
-            u[i] = complex(lo + 2.0 * radius * s * s, -depth * math.sin(t))
-            du[i] = complex(radius * math.sin(t), -depth * math.cos(t)) * dt * half
+                speed *= math.pi * quarter.imag * quarter.real
+                quarter = turn(0.5 * math.pi * quarter.imag**2)
+            sine = 2.0 * quarter.imag * quarter.real
+            cosine = quarter.real**2 - quarter.imag**2
+            u[i] = complex(lo + span * quarter.imag**2, -depth * sine)
+            du[i] = complex(0.5 * span * sine, -depth * cosine) * speed
 
 
 @inline

@@ -145,40 +145,43 @@ def solve_half(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> 
         absorbed_cross(
             work.e, work.r_far, work.f, work.r_near, work.g, work.alpha, work.beta, work.a_cross
         )
-    sum_films(work.a_in, work.a_out, work.a_cross, work.form)
+        sum_films(work.a_out, work.form[1])
+        sum_films(work.a_cross, work.form[2])
+    sum_films(work.a_in, work.form[0])
 
 
 @inline
-def stack_from_both_sides(
-    sides: Sides, work_up: Work, work_down: Work, phase: complex, pol: int, i: int
+def stack_from_outside(
+    from_bottom: bool,
+    from_top: bool,
+    work_up: Work,
+    work_down: Work,
+    phase: complex,
+    pol: int,
+    i: int,
 ) -> StackPowers:
-    """Solve the whole stack at one node: (R_b, R_t, T, A_b, A_t)."""
+    """Solve the whole stack at one node, lit from either side: (R_b, R_t, T, A_b, A_t).
+
+    A side that light does not come from stands as R = 1, A = 0. T is the same both ways between
+    transparent media; from an absorbing one no light comes.
+    """
     flux_t, flux_b = work_up.y[pol, -1, i].real, work_down.y[pol, -1, i].real
     r_a, r_b = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
-    ports_up = (work_up.t[pol, i], work_up.g[pol, 0, i], work_up.r_out[pol, i])
-    ports_down = (work_down.t[pol, i], work_down.g[pol, 0, i], work_down.r_out[pol, i])
-    form_up = (
-        work_up.form[0, pol, i].real,
-        work_up.form[1, pol, i].real,
-        work_up.form[2, pol, i],
-    )
-    form_down = (
-        work_down.form[0, pol, i].real,
-        work_down.form[1, pol, i].real,
-        work_down.form[2, pol, i],
-    )
+    out_up, out_down = work_up.t[pol, i], work_down.t[pol, i]
+    ports_up = (out_up, work_up.g[pol, 0, i], work_up.r_out[pol, i])
+    ports_down = (out_down, work_down.g[pol, 0, i], work_down.r_out[pol, i])
+    in_up, in_down = work_up.form[0, pol, i].real, work_down.form[0, pol, i].real
+    form_up = (in_up, work_up.form[1, pol, i].real, work_up.form[2, pol, i])
+    form_down = (in_down, work_down.form[1, pol, i].real, work_down.form[2, pol, i])
     rb, rt, through, ab, at = 1.0, 1.0, 0.0, 0.0, 0.0
-    if flux_b > 0.0:
+    if from_top and flux_t > 0.0:
+        rt, through, at = whole_stack(
+            phase, r_b, r_a, (flux_b, flux_t), out_down, ports_up, in_down, form_up
+        )
+    if from_bottom and flux_b > 0.0:
         rb, through, ab = whole_stack(
-            phase, r_a, r_b, (flux_t, flux_b), ports_up[0], ports_down, form_up[0], form_down
+            phase, r_a, r_b, (flux_t, flux_b), out_up, ports_down, in_up, form_down
         )
-    if flux_t > 0.0:
-        rt, downward, at = whole_stack(
-            phase, r_b, r_a, (flux_b, flux_t), ports_down[0], ports_up, form_down[0], form_up
-        )
-        # T is the same both ways between transparent media; no light returns from an absorber.
-        if sides.kind[0] == ABSORBING:
-            through = downward
     return rb, rt, through, ab, at
 
 
@@ -264,8 +267,10 @@ def radiated(
     """
     positions = source.kz_positions.size
     any_return = light_returns(sides, u[0].real) or light_returns(sides, u[-1].real)
-    solve_half(up, work_up, u, any_return)
-    solve_half(down, work_down, u, any_return)
+    from_bottom = any_return and sides.kind[0] == PLANAR
+    from_top = any_return and sides.kind[1] == PLANAR
+    solve_half(up, work_up, u, from_top)
+    solve_half(down, work_down, u, from_bottom)
     shares = scratch.shares
     values[:, :] = 0.0
     for pol in range(2):
@@ -277,7 +282,7 @@ def radiated(
             inv = reciprocal(1.0 - a_face * b_face * phase * phase)
             stack = (0.0, 0.0, 0.0, 0.0, 0.0)
             if any_return and light_returns(sides, u[i].real):
-                stack = stack_from_both_sides(sides, work_up, work_down, phase, pol, i)
+                stack = stack_from_outside(from_bottom, from_top, work_up, work_down, phase, pol, i)
             shares[:, :] = 0.0
             shares[0, ABSORBED] = work_down.form[0, pol, i].real
             shares[1, ABSORBED] = work_up.form[0, pol, i].real
