@@ -14,7 +14,7 @@ from stacks import HORIZONTAL, VERTICAL, answers
 from optics.kernels.budget import Budget, light_budget
 from optics.kernels.rules import NODES
 
-from . import rival
+from . import rival, rival_plain
 from .devices import Device
 
 TOLERANCE = 1e-6  # the default of the package
@@ -46,10 +46,13 @@ def engine(device: Device, tolerance: float = TOLERANCE) -> Budget:
     return light_budget(device.problem(), tolerance)
 
 
-def run_rival(device: Device, points: int = RIVAL_POINTS) -> list[dict[str, dict[str, float]]]:
-    """All wavelengths, one after the other."""
+def run_rival(
+    device: Device, points: int = RIVAL_POINTS, spared: bool = True
+) -> list[dict[str, dict[str, float]]]:
+    """All wavelengths, one after the other; spared: with every saving, see `rival`."""
+    solve = rival.destinations if spared else rival_plain.destinations
     stacks = range(device.wavelength_nm.size)
-    return [rival.destinations(device.plain(w), points, device.end(w)) for w in stacks]
+    return [solve(device.plain(w), points, device.end(w)) for w in stacks]
 
 
 @dataclass(frozen=True, slots=True)

@@ -9,6 +9,7 @@ from benchmarks.measure import (
     engine_errors,
     points_for,
     rival_errors,
+    run_rival,
     truth,
 )
 from benchmarks.report import Plan, report
@@ -47,3 +48,14 @@ def test_report_is_written_from_measurements() -> None:
     for heading in ("Against the rival", "At equal accuracy", "Scaling", "Where the time goes"):
         assert heading in text
     assert "nan" not in text
+
+
+def test_both_rivals_give_the_same_answers() -> None:
+    """The straight one takes every saving of the other back; only the cost may differ."""
+    small = device(wavelengths=3)
+    for spared, straight in zip(
+        run_rival(small, 500), run_rival(small, 500, spared=False), strict=True
+    ):
+        for orientation, destinations in straight.items():
+            for name, value in destinations.items():
+                assert value == pytest.approx(spared[orientation][name], rel=1e-12, abs=1e-15)
