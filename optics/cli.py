@@ -412,7 +412,10 @@ def modes(
     every_mode: bool,
     picture: str | None,
 ) -> None:
-    """Show guided modes one by one, and the power absorbed in each film."""
+    """Show guided modes one by one, and the power absorbed in each film.
+
+    CASE is a case file; see docs/modes.md for what the words and numbers mean.
+    """
     from optics.present import files
 
     files.check_targets(outputs, (".json", ".csv", ".nc", *pictures.SUFFIXES))
@@ -421,12 +424,13 @@ def modes(
         raise click.UsageError(f"--picture {picture} needs a file: give -o with .png, .svg or .pdf")
 
     import optics
-    from optics.kernels.compiled import cache_is_warm
+    from optics.kernels.compiled import cache_is_warm, mark_cache_warm
     from optics.present.terminal import compiling_notice
 
     device = optics.read_case(case)
-    with compiling_notice(needed=not cache_is_warm()):
+    with compiling_notice(needed=not cache_is_warm("modes")):
         outcome = optics.modes(device, wavelength_nm, leaky=leaky)
+    mark_cache_warm("modes")
     result = outcome.to_dict()
     writers: dict[str, files.Writer] = {
         ".json": lambda path: files.write_json(result, path),

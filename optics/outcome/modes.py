@@ -100,7 +100,7 @@ class EmitterModes:
         """Entry of ``emitters`` in the JSON result."""
         return {
             "name": self.name,
-            "wavelength_nm": self.wavelength_nm,
+            "wavelength_nm": self.wavelength_nm.tolist(),
             "modes": [line.to_dict(self.media) for line in self.lines],
             "trapped": {key: part.to_dict() for key, part in self.trapped.items()},
             "absorption": self.absorption.to_dict(),
@@ -168,7 +168,7 @@ class Modes:
     warnings: tuple[str, ...]
 
     def to_dict(self) -> dict[str, Any]:
-        """Build the JSON result, ``outcouple.modes/1``."""
+        """Build the JSON result, ``outcouple.modes/1``: plain types only."""
         return {
             "schema": SCHEMA,
             "version": VERSION,

@@ -96,23 +96,30 @@ class ModeLine:
         return int(self.contribution.argmax())
 
     def to_dict(self, media: Sequence[str]) -> dict[str, Any]:
-        """Entry of the JSON result; null for infinite lengths and shares of leaky modes."""
+        """Entry of the JSON result; None for infinite lengths and where there is no share."""
         return {
             "name": self.name,
             "polarization": self.polarization,
             "leaky": self.leaky,
             "share": self.overall_share,
-            "wavelength_nm": self.wavelength_nm,
-            "effective_index": self.effective_index.real,
-            "effective_index_imaginary": self.effective_index.imag,
-            "attenuation_length_um": self.attenuation_length_um,
-            "direction": self.direction,
-            "kind": self.kind,
-            "destination": self.destination,
-            "share_at_wavelength": self.share,
-            "contribution": self.contribution,
-            "confinement": dict(zip(media, self.confinement.T, strict=True)),
+            "wavelength_nm": plain(self.wavelength_nm),
+            "effective_index": plain(self.effective_index.real),
+            "effective_index_imaginary": plain(self.effective_index.imag),
+            "attenuation_length_um": plain(self.attenuation_length_um),
+            "direction": list(self.direction),
+            "kind": list(self.kind),
+            "destination": list(self.destination),
+            "share_at_wavelength": plain(self.share),
+            "contribution": plain(self.contribution),
+            "confinement": {
+                name: plain(part) for name, part in zip(media, self.confinement.T, strict=True)
+            },
         }
+
+
+def plain(values: NDArray[np.float64]) -> list[float | None]:
+    """Numbers as JSON knows them: None for what is not finite."""
+    return [value if np.isfinite(value) else None for value in values.tolist()]
 
 
 def join(

@@ -37,7 +37,7 @@ def modes_view(result: Mapping[str, Any], *, every_mode: bool = False) -> Render
     Parameters
     ----------
     result : mapping
-        As ``modes --json`` writes it, arrays allowed.
+        As ``modes --json`` writes it.
     every_mode : bool
         Show modes that take next to nothing too.
 
@@ -91,7 +91,7 @@ def _mode_table(lines: Sequence[Mapping[str, Any]]) -> Table:
         kind = line["kind"][at]
         backward = line["direction"][at] == "backward"
         index = complex(line["effective_index"][at], line["effective_index_imaginary"][at])
-        length = float(line["attenuation_length_um"][at])
+        length = line["attenuation_length_um"][at]
         table.add_row(
             line["name"],
             f"{kind}, backward" if backward else kind,
@@ -99,7 +99,7 @@ def _mode_table(lines: Sequence[Mapping[str, Any]]) -> Table:
             _span(line["wavelength_nm"]).removesuffix(" nm"),
             f"{line['wavelength_nm'][at]:g}",
             f"{index.real:.4f}{index.imag:+.4f}i",
-            "lossless" if length == float("inf") else f"{length:.3g}",
+            "lossless" if length is None else f"{length:.3g}",
             _mostly_in(line["confinement"], at),
         )
     return table

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from typing import Any
 
 import devices
@@ -181,6 +182,7 @@ def test_every_emitter_has_its_modes_and_the_device_their_mean() -> None:
 
 def test_results_in_plain_types_tables_and_arrays(pixel: Modes) -> None:
     result = pixel.to_dict()
+    assert json.loads(json.dumps(result, allow_nan=False)) == result
     assert result["schema"] == "outcouple.modes/1"
     entry = result["emitters"][0]["modes"][0]
     assert entry["name"] == "TE0"
