@@ -131,7 +131,9 @@ def bound_modes(films: Films) -> Modes:
             zeros = np.where(np.abs(zeros.imag) < _REAL, zeros.real, zeros)
         decay, index = place_on_sheet(films, zeros)
         limit = np.maximum(_OVERDAMPED * largest_index(films), index.real)
+        # Between metals waves below cut-off have Re u = 0: they carry nothing anywhere.
         bound = (decay.real > 0.0).all(axis=1) & (np.abs(index.imag) <= limit)
+        bound &= index.real > _NEAREST
         found.append((pol, zeros[bound], index[bound], decay[bound]))
     return _sorted(found, missing)
 

@@ -197,3 +197,29 @@ def test_leaky_modes_of_a_cavity_radiate_outward() -> None:
         assert abs((r * np.exp(1j * h * kd)) ** 2 - 1) < 1e-9
         assert u.imag > 0
         assert k_out.imag < 0
+
+
+@pytest.mark.parametrize(
+    ("films", "ends"),
+    [
+        ([2.25], (2.25, 2.25)),
+        ([4.0], (2.25, 1.0)),
+        ([2.25, -2.25], (2.25, 1.0)),
+        ([2.25], (-10, -10)),
+    ],
+    ids=["no contrast", "zero thickness", "plasma resonance without loss", "lossless metal guide"],
+)
+def test_odd_stacks_are_ordinary_input(films: list[complex], ends: tuple[complex, complex]) -> None:
+    thickness = [0.0] if films == [4.0] else [200.0, 20.0][: len(films)]
+    modes = bound_modes(stack(films, thickness, ends))
+    assert modes.missing == 0
+    assert (modes.u.real > 0.0).all()
+    if ends != (-10, -10):
+        assert len(modes.u) == (2 if -2.25 in films else 0)
+        return
+    # Between lossless metals: h d = m pi + 2 atan(f g/h), all real.
+    for pol, u in zip(modes.polarization, modes.u.real, strict=True):
+        h, g = np.emath.sqrt(2.25 - u * u), np.sqrt(u * u + 10)
+        f = -0.225 if pol == P else 1.0
+        turn = np.exp(2j * h * 2 * np.pi / 550 * 200.0)
+        assert turn * ((h - 1j * f * g) / (h + 1j * f * g)) ** 2 == pytest.approx(1, abs=1e-9)
