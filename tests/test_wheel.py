@@ -58,7 +58,7 @@ def test_the_wheel_runs_without_the_checkout(wheel: Path, tmp_path: Path) -> Non
     )
     assert Path(where.strip()).is_relative_to(site)
     # Installing compiles to byte code: a first start without it takes seconds.
-    assert list((site / "optics" / "__pycache__").glob("cli.*.pyc"))
+    assert list((site / "optics" / "cli" / "__pycache__").glob("budget.*.pyc"))
     case = ROOT / "cases" / "green-bottom-pixel.toml"
     command = ("-m", "optics.cli", "budget", case, "--json")
     inside = json.loads(run(*command, folder=tmp_path, PYTHONPATH=str(site)))

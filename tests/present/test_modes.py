@@ -158,7 +158,7 @@ def test_an_unknown_picture_is_refused(path: Path, found: Modes) -> None:
 
 
 def test_the_command_offers_the_pictures_there_are() -> None:
-    assert cli._MODE_PICTURES == pictures_modes.PICTURES
+    assert cli.modes.PICTURES == pictures_modes.PICTURES
 
 
 def test_files(path: Path, tmp_path: Path) -> None:

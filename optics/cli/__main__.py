@@ -1,0 +1,5 @@
+"""`python -m optics.cli`."""
+
+from optics.cli import main
+
+main()
