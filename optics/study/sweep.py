@@ -12,6 +12,8 @@ from optics._version import VERSION
 from optics.outcome.budget import DEFAULT_TOLERANCE
 from optics.study.executor import completed, cores, executor_or_threads
 from optics.study.store import Store, content_key
+from optics.study.sweep_blocks import blocks, combines
+from optics.study.sweep_combined import compute_block
 from optics.study.sweep_plan import Plan, plan_sweep
 from optics.study.sweep_points import TRUST, Batch, Found, compute_batch
 
@@ -147,13 +149,24 @@ def _compute(
 
     if progress is not None:
         progress(int(known.sum()), plan.points)
+    if combines(plan):
+        compute, batches = compute_block, _blocks(plan, known)
+    else:
+        compute, batches = compute_batch, _batches(plan, known)
     with (
         executor_or_threads(executor) as pool,
-        closing(completed(pool, compute_batch, _batches(plan, known))) as results,
+        closing(completed(pool, compute, batches)) as results,
     ):
         for found in results:
             take(found)
     return values, failed
+
+
+def _blocks(plan: Plan, known: NDArray[np.bool_]) -> Iterator[Batch]:
+    """Blocks that are not known whole; the others again, so that they keep their numbers."""
+    for places in blocks(plan):
+        if not known[places].all():
+            yield Batch(plan, places)
 
 
 def _batches(plan: Plan, known: NDArray[np.bool_]) -> Iterator[Batch]:
