@@ -11,6 +11,7 @@ from optics._version import VERSION as __version__
 if TYPE_CHECKING:
     from optics.device.case import Case, read_case
     from optics.device.errors import CaseError
+    from optics.outcome.ambient import Ambient, ambient
     from optics.outcome.angular import Angular, angular
     from optics.outcome.budget import Budget, budget
     from optics.outcome.modes import Modes, modes
@@ -18,12 +19,14 @@ if TYPE_CHECKING:
     from optics.study.sweep import sweep
 
 _HOMES = {
+    "Ambient": "optics.outcome.ambient",
     "Angular": "optics.outcome.angular",
     "Budget": "optics.outcome.budget",
     "Case": "optics.device.case",
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
     "Modes": "optics.outcome.modes",
+    "ambient": "optics.outcome.ambient",
     "angular": "optics.outcome.angular",
     "budget": "optics.outcome.budget",
     "check": "optics.study.check",
@@ -33,6 +36,7 @@ _HOMES = {
 }
 
 __all__ = [
+    "Ambient",
     "Angular",
     "Budget",
     "Case",
@@ -40,6 +44,7 @@ __all__ = [
     "Check",
     "Modes",
     "__version__",
+    "ambient",
     "angular",
     "budget",
     "check",

@@ -38,6 +38,7 @@ if TYPE_CHECKING:
 
     from optics.device.case import Case
     from optics.device.materials import Material, TableUse
+    from optics.outcome.angular import Angular
 
     Floats = NDArray[np.float64]
 
@@ -69,6 +70,8 @@ class Ambient:
         Share of D65 daylight, weighted by the eye, outside the wavelengths.
     warnings : tuple of str
     tables : tuple of TableUse
+    emission : Angular or None
+        The device's own light that the contrast is made with.
     """
 
     title: str
@@ -81,6 +84,7 @@ class Ambient:
     lost_share: float
     warnings: tuple[str, ...]
     tables: tuple[TableUse, ...]
+    emission: Angular | None
 
     def to_dict(self, *, spectral: bool = False) -> dict[str, Any]:
         """Build the JSON result, ``outcouple.ambient/1``: plain types only.
@@ -157,8 +161,7 @@ def ambient(
     ValueError
         If an angle, a wavelength or the illuminance cannot be.
     """
-    faults = faults_of_angles(angles_deg) + _faults_of_light(illuminance_lx, wavelength_nm)
-    if faults:
+    if faults := faults_of_question(illuminance_lx, angles_deg, wavelength_nm):
         raise ValueError("\n".join(faults))
     angle = np.abs(np.array(angles_deg, dtype=np.float64))  # -0 is 0
     grid = _grid(case) if wavelength_nm is None else np.array(wavelength_nm, dtype=np.float64)
@@ -189,13 +192,17 @@ def ambient(
         lost_share=lost,
         warnings=(() if seen is None else seen.warnings) + tuple(_warnings(case, grid, lost)),
         tables=all_tables(_materials(case)) if seen is None else seen.tables,
+        emission=seen,
     )
 
 
-def _faults_of_light(
-    illuminance_lx: float | None, wavelength_nm: Sequence[float] | None
+def faults_of_question(
+    illuminance_lx: float | None,
+    angles_deg: Sequence[float],
+    wavelength_nm: Sequence[float] | None,
 ) -> list[str]:
-    faults = []
+    """What is wrong with what `ambient` is asked for, one line each; empty if nothing is."""
+    faults = faults_of_angles(angles_deg)
     if illuminance_lx is not None and not 0.0 < illuminance_lx < np.inf:
         faults.append(f"illuminance: found {illuminance_lx:g}; expected lux above 0")
     if wavelength_nm is not None:
