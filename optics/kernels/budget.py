@@ -112,10 +112,9 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     total, near, scale, miss_total, miss_near = _total_and_scale(
         problem, arc, tail, per_panel, batches
     )
-    kind = np.where(start > trapped, ARC, ARC_FROM_LINE)
     ranges = (
         along_arcs(rows, ARC_FROM_LINE, trapped, start, _FLATNESS).nonempty(),
-        along_arcs(rows, kind, start, far, _FLATNESS),
+        along_arcs(rows, ARC_FROM_LINE, start, far, _FLATNESS),
     )
     (guided, miss_guided), (beyond, miss_beyond) = (
         dissipated_power(problem, tasks, scale, per_panel, batches) for tasks in ranges

@@ -8,7 +8,7 @@ import numpy as np
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
-from optics.kernels.paths import TAIL, panel_error, panel_sum, place
+from optics.kernels.paths import ARC, REAL_FROM_ZERO, TAIL, panel_error, panel_sum, place
 from optics.kernels.problem import (
     Half,
     Problem,
@@ -90,6 +90,9 @@ def integrate(
         kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
         ends[0, 0], ends[1, 0] = 0.0, 1.0
         waiting, count = 1, 0
+        if kind in (ARC, REAL_FROM_ZERO):  # long paths, which one panel hardly ever resolves
+            ends[1, 0], ends[0, 1], ends[1, 1] = 0.5, 0.5, 1.0
+            waiting = 2
         while waiting > 0:
             waiting -= 1
             a, b = ends[0, waiting], ends[1, waiting]
