@@ -11,21 +11,24 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from optics.device.address import ORIENTATION_KEYS
-from optics.device.door import shown
 from optics.device.draft import Draft, grid_text
 from optics.device.drive import ByUnit, Drive, Side, Sides
 from optics.device.emission import make_emitters
 from optics.device.emitter import ISOTROPIC_FRACTION, Emitter, horizontal_fraction_from
-from optics.device.errors import CaseError, nearest
+from optics.device.errors import CaseError
 from optics.device.layering import make_stack
 from optics.device.loader import Files, table_use
 from optics.device.materials import TableUse, span_text
-from optics.device.schema import DEFAULT_UNIT, CaseModel, SideModel
+from optics.device.salvage import known, plain_types
+from optics.device.schema import DEFAULT_UNIT, SideModel
 from optics.device.stack import Stack
 from optics.device.studies import check_studies
+from optics.device.units import check_charge_balance
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
+
+    from optics.device.tables import Curve
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -70,17 +73,16 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
         With every fault.
     """
     draft = Draft.start(document, files, label)
-    stack = make_stack(draft)
-    emitters = make_emitters(draft, stack)
+    stack, outline = make_stack(draft)
+    emitters = make_emitters(draft, stack, outline)
     drive = _drive(draft)
     sides = _sides(draft)
-    resolved = _resolved(draft.model) if draft.model else None
+    resolved = _resolved(draft)
     check_studies(draft, resolved)
     if draft.faults.found:
         raise CaseError(dict.fromkeys(draft.faults.found))
     # Without a fault all of these are there; the checker cannot know.
     assert draft.model is not None
-    assert resolved is not None
     assert draft.grid_nm is not None
     assert draft.every_nm is not None
     assert stack is not None
@@ -102,20 +104,16 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
 
 
 def _drive(draft: Draft) -> Drive | None:
+    """Electrical side; None if the document is at fault."""
+    check_charge_balance(draft)
     part = draft.parts.drive
-    if part is None:
+    if part is None or draft.model is None:
         return None
-    units = tuple(
-        dict.fromkeys(str(raw.get("unit", DEFAULT_UNIT)) for raw in draft.raw("emitters"))
-    )
+    units = dict.fromkeys(emitter.unit for emitter in draft.model.emitters)
     balance = part.charge_balance
-    if isinstance(balance, dict):
-        _check_units(draft, balance, units)
-        by_unit = ByUnit(tuple((unit, balance[unit]) for unit in units if unit in balance))
-    else:
-        by_unit = ByUnit(tuple((unit, balance) for unit in units))
+    pairs = ((unit, balance.get(unit) if isinstance(balance, dict) else balance) for unit in units)
     return Drive(
-        charge_balance=by_unit,
+        charge_balance=ByUnit(tuple((unit, value) for unit, value in pairs if value is not None)),
         current_density_mA_cm2=part.current_density_mA_cm2,
         voltage_V=part.voltage_V,
         aperture_ratio=part.aperture_ratio,
@@ -123,31 +121,22 @@ def _drive(draft: Draft) -> Drive | None:
     )
 
 
-def _check_units(draft: Draft, balance: Mapping[str, float], units: tuple[str, ...]) -> None:
-    """Check that a charge balance by unit names every unit of the emitters and no other."""
-    key = "drive.charge_balance"
-    for unit in balance:
-        if unit not in units:
-            expected = f"a unit of the emitters: {', '.join(units)}"
-            found = f"a value for {shown(unit)}, no such unit"
-            draft.faults.add(f"{key}.{unit}", found, expected, nearest(unit, units))
-    for unit in units:
-        if unit not in balance:
-            draft.faults.add(f"{key}.{unit}", "nothing", "a charge balance for every unit")
-
-
 def _sides(draft: Draft) -> Sides:
     part = draft.parts.sides
-    if part is None:
-        return Sides()
-    return Sides(_side(draft, "bottom", part.bottom), _side(draft, "top", part.top))
+    return Sides(
+        _side(draft, "bottom", known(part, "bottom")), _side(draft, "top", known(part, "top"))
+    )
 
 
-def _side(draft: Draft, name: str, part: SideModel) -> Side:
-    if part.filter is None:
-        return Side(None, part.polarizer_transmittance)
-    key = f"sides.{name}.filter"
-    curve = draft.files.curve(part.filter, "transmittance", key, draft.faults, "wavelength_nm")
+def _side(draft: Draft, name: str, part: SideModel | None) -> Side:
+    path, transmittance = known(part, "filter"), known(part, "polarizer_transmittance")
+    curve = None if path is None else _filter(draft, f"sides.{name}.filter", path)
+    # Where the transmittance is not known the document is at fault and no side comes of it.
+    return Side(curve, 1.0 if transmittance is None else transmittance)
+
+
+def _filter(draft: Draft, key: str, path: str) -> Curve | None:
+    curve = draft.files.curve(path, "transmittance", key, draft.faults, "wavelength_nm")
     if curve is not None:
         draft.tables.append(table_use(curve))
         if curve.y.max() > 1:
@@ -157,12 +146,17 @@ def _side(draft: Draft, name: str, part: SideModel) -> Side:
             found = f"a table from {span_text((float(curve.x[0]), float(curve.x[-1])))}"
             expected = f"a table over every wavelength of the case, {grid_text(every)}"
             draft.faults.add(key, found, expected)
-    return Side(curve, part.polarizer_transmittance)
+    return curve
 
 
-def _resolved(model: CaseModel) -> dict[str, Any]:
-    """Document with every default filled in."""
-    document = model.model_dump(by_alias=True, exclude_none=True)
+def _resolved(draft: Draft) -> dict[str, Any]:
+    """Document with every default filled in; of a document at fault what can be used."""
+    if draft.model is not None:
+        document = draft.model.model_dump(by_alias=True, exclude_none=True)
+    else:
+        document = {"emitters": [], "drive": {}, **plain_types(draft.salvaged)}
+        for emitter in document["emitters"]:
+            emitter.setdefault("unit", DEFAULT_UNIT)
     for emitter in document["emitters"]:
         if not any(key in emitter for key in ORIENTATION_KEYS):
             emitter["horizontal_fraction"] = ISOTROPIC_FRACTION

@@ -7,7 +7,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Annotated, Any, Union, get_args, get_origin
 
-from pydantic import BaseModel, TypeAdapter, ValidationError
+from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
 
 from optics.device.errors import Fault, nearest
@@ -84,41 +84,13 @@ def entry_key(document: Mapping[str, Any], section: str, index: int) -> str:
 
 
 def parse(document: Mapping[str, Any], faults: Faults) -> CaseModel | None:
-    """Parse a document; on faults note them all and return None (see `parse_part`)."""
+    """Parse a document; on faults note them all and return None (see `salvage`)."""
     try:
         return CaseModel.model_validate(dict(document))
     except ValidationError as error:
         for details in error.errors(include_url=False):
             _note(details, document, faults)
         return None
-
-
-def parse_part(section: str, value: Any) -> Any:
-    """One section of a faulty document, parsed by itself.
-
-    Its faults are already noted by `parse`, so a section at fault is just None.
-    """
-    try:
-        return _part_adapter(section).validate_python(value)
-    except ValidationError:
-        return None
-
-
-_ADAPTERS: dict[str, Any] = {}
-
-
-def _part_adapter(section: str) -> Any:
-    """Make, once, the validator of one section, of one list entry, or of one entry by name."""
-    if section not in _ADAPTERS:
-        info = CaseModel.model_fields[section]
-        kind: Any = info.annotation
-        if get_origin(kind) in (list, dict):
-            kind = get_args(kind)[-1]
-        # pydantic takes the discriminator of a union out of the annotation into the field.
-        if info.discriminator is not None:
-            kind = Annotated[kind, info.discriminator]
-        _ADAPTERS[section] = TypeAdapter(kind)
-    return _ADAPTERS[section]
 
 
 def _note(details: ErrorDetails, document: Mapping[str, Any], faults: Faults) -> None:

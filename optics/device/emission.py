@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Mapping, Sequence
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -13,73 +11,84 @@ from optics.device.door import shown
 from optics.device.draft import Draft, grid_text
 from optics.device.emitter import ISOTROPIC_FRACTION, Emitter, horizontal_fraction_from
 from optics.device.errors import nearest
+from optics.device.layering import Outline
 from optics.device.loader import table_use
+from optics.device.salvage import known, stated
 from optics.device.schema import (
-    DEFAULT_UNIT,
     EmitterModel,
-    ExponentialZoneModel,
     GaussianSpectrumModel,
-    GaussianZoneModel,
     LineSpectrumModel,
-    PointZoneModel,
-    TableZoneModel,
+    TableSpectrumModel,
 )
 from optics.device.spectrum import GaussianSpectrum, LineSpectrum, Spectrum, TableSpectrum
-from optics.device.zone import (
-    EmptyZoneError,
-    ExponentialZone,
-    GaussianZone,
-    PointZone,
-    TableZone,
-    UniformZone,
-    Zone,
-    absorber_distances,
-    unbounded_faces,
-    zone_interval,
-    zone_quadrature,
-)
+from optics.device.units import check_shares
+from optics.device.zoning import check_reach, make_zone, warn_of_bare_absorbers
 
 if TYPE_CHECKING:
     from optics.device.stack import Stack
+    from optics.device.zone import Zone
 
-# Shares are typed as decimals: their sum may miss 1 by rounding only.
-SHARE_SUM_SLACK = 1e-9
 LOST_SHARE_WARNING = 1e-3
 
 
-def make_emitters(draft: Draft, stack: Stack | None) -> tuple[Emitter, ...]:
-    """Emitters without fault, in the order of the file; faults are noted in the draft."""
+def make_emitters(draft: Draft, stack: Stack | None, outline: Outline) -> tuple[Emitter, ...]:
+    """Emitters in the order of the file; every check runs for which enough of the draft is known.
+
+    Parameters
+    ----------
+    draft : Draft
+        The case in the making; faults are noted in it.
+    stack : Stack or None
+        The stack if it has no fault.
+    outline : Outline
+        What is certain of the stack.
+
+    Returns
+    -------
+    tuple of Emitter
+        Those without fault.
+    """
     draft.check_names("emitters")
-    _check_shares(draft)
-    made = []
-    for index, part in enumerate(draft.parts.emitters):
-        if part is not None:
-            made.append(_emitter(draft, stack, index, part))
-        else:
-            _check_faulty(draft, index)
+    check_shares(draft)
+    made = [
+        _emitter(draft, stack, outline, index, part)
+        for index, part in enumerate(draft.parts.emitters)
+        if part is not None
+    ]
     return tuple(emitter for emitter in made if emitter is not None)
 
 
-def _check_faulty(draft: Draft, index: int) -> None:
-    """Check what can be of an emitter that has other faults, so that all come to light."""
-    raw = draft.raw("emitters")[index]
+def _emitter(
+    draft: Draft, stack: Stack | None, outline: Outline, index: int, part: EmitterModel
+) -> Emitter | None:
     key = draft.key("emitters", index)
-    if isinstance(raw.get("layer"), str):
-        _film_index(draft, key, raw["layer"], str(raw.get("name", "an emitter")))
-    given = [name for name in ORIENTATION_KEYS if name in raw]
-    _one_orientation(draft, key, given, raw)
-
-
-def _emitter(draft: Draft, stack: Stack | None, index: int, part: EmitterModel) -> Emitter | None:
-    key = draft.key("emitters", index)
-    film_index = _film_index(draft, key, part.layer, part.name)
-    horizontal = _horizontal_fraction(draft, key, part)
+    film_index = _film_index(draft, key, part)
+    is_oriented = _has_one_orientation(draft, key, part)
     spectrum = _spectrum(draft, key, part)
-    thickness = _thickness_nm(draft, film_index)
-    zone = _zone(draft, key, part, thickness)
-    if film_index is None or horizontal is None or spectrum is None or zone is None:
+    thickness = None if film_index is None else outline.thickness_nm[film_index]
+    zone = make_zone(draft, key, part, thickness)
+    if film_index is not None:
+        _check_host(draft, key, part.layer, outline, film_index)
+        if zone is not None:
+            closest = known(part, "closest_approach_nm")
+            check_reach(draft, key, outline, film_index, zone, closest)
+    if draft.model is None or film_index is None or spectrum is None or zone is None:
         return None
-    emitter = Emitter(
+    if not is_oriented:
+        return None
+    emitter = _assembled(part, film_index, spectrum, zone)
+    if stack is not None:
+        warn_of_bare_absorbers(draft, key, stack, emitter)
+    return emitter
+
+
+def _assembled(part: EmitterModel, film_index: int, spectrum: Spectrum, zone: Zone) -> Emitter:
+    """Emitter of a part without fault."""
+    given = stated(part, *ORIENTATION_KEYS)
+    horizontal = (
+        horizontal_fraction_from(given[0], getattr(part, given[0])) if given else ISOTROPIC_FRACTION
+    )
+    return Emitter(
         name=part.name,
         layer=part.layer,
         film_index=film_index,
@@ -92,79 +101,94 @@ def _emitter(draft: Draft, stack: Stack | None, index: int, part: EmitterModel) 
         exciton_fraction=part.exciton_fraction,
         share=part.share,
     )
-    if stack is not None:
-        _check_host(draft, key, stack, emitter)
-        if thickness:
-            _check_reach(draft, key, stack, emitter)
-    return emitter
 
 
-def _film_index(draft: Draft, key: str, layer: str, emitter: str) -> int | None:
+def _film_index(draft: Draft, key: str, part: EmitterModel) -> int | None:
+    """Index of the emitter's film; None where it is not certain which one is meant."""
+    layer = known(part, "layer")
     names = draft.names("layers")
+    if layer is None or not any(names):
+        return None
     if layer not in names:
-        known = [name for name in names if name]
-        if not known:  # which is a fault of its own
-            return None
-        found = f"{shown(layer)}, no such layer"
-        expected = f"the name of a layer: {', '.join(known)}"
-        draft.faults.add(f"{key}.layer", found, expected, nearest(layer, known))
+        known_names = [name for name in names if name]
+        near = nearest(layer, known_names)
+        # A layer at fault in its own name may be the one, unless the name looks like another's.
+        if draft.has_sure_names("layers") or (None not in names and _is_sure(draft, near)):
+            found = f"{shown(layer)}, no such layer"
+            expected = f"the name of a layer: {', '.join(known_names)}"
+            draft.faults.add(f"{key}.layer", found, expected, near)
+        return None
+    if names.count(layer) > 1:
         return None
     index = names.index(layer)
-    if _thickness_nm(draft, index) == 0:
+    if known(draft.parts.layers[index], "thickness_nm") == 0:
         layer_key = f"{draft.key('layers', index)}.thickness_nm"
+        emitter = known(part, "name") or "an emitter"
         draft.faults.add(layer_key, "0", f"above 0 nm, since {emitter} emits in this layer")
-        return None
     return index
 
 
-def _thickness_nm(draft: Draft, film_index: int | None) -> float | None:
-    layer = draft.parts.layers[film_index] if film_index is not None else None
-    return layer.thickness_nm if layer else None
+def _is_sure(draft: Draft, name: str | None) -> bool:
+    """Whether exactly one layer has the name, and the name has no fault."""
+    return [known(layer, "name") for layer in draft.parts.layers].count(name) == 1
 
 
-def _horizontal_fraction(draft: Draft, key: str, part: EmitterModel) -> float | None:
-    given = [name for name in ORIENTATION_KEYS if getattr(part, name) is not None]
-    if not given:
-        return ISOTROPIC_FRACTION
-    if not _one_orientation(draft, key, given, part.model_dump()):
-        return None
-    return horizontal_fraction_from(given[0], getattr(part, given[0]))
-
-
-def _one_orientation(
-    draft: Draft, key: str, given: Sequence[str], values: Mapping[str, Any]
-) -> bool:
+def _has_one_orientation(draft: Draft, key: str, part: EmitterModel) -> bool:
+    """Check that an orientation is told once, whatever the values."""
+    given = stated(part, *ORIENTATION_KEYS)
     if len(given) > 1:
+        value = _raw_orientation(draft, part, given[1])
         draft.faults.add(
             f"{key}.{given[1]}",
-            f"{shown(values[given[1]])} beside {given[0]}",
+            f"{shown(value)} beside {given[0]}",
             f"one of {', '.join(ORIENTATION_KEYS)}",
         )
     return len(given) <= 1
 
 
+def _raw_orientation(draft: Draft, part: EmitterModel, name: str) -> object:
+    """Orientation number as the document has it, even where it is at fault."""
+    index = next(i for i, other in enumerate(draft.parts.emitters) if other is part)
+    return draft.raw("emitters")[index].get(name)
+
+
 def _spectrum(draft: Draft, key: str, part: EmitterModel) -> Spectrum | None:
-    described = part.spectrum
-    spectrum: Spectrum
+    """Spectrum, None if it is not known or at fault."""
+    described = known(part, "spectrum")
     if isinstance(described, LineSpectrumModel):
-        return LineSpectrum(described.line_nm)
+        line = known(described, "line_nm")
+        return None if line is None else LineSpectrum(line)
     if isinstance(described, GaussianSpectrumModel):
-        spectrum = GaussianSpectrum(described.peak_nm, described.fwhm_nm)
-    else:
-        curve_key = f"{key}.spectrum.table"
-        curve = draft.files.spectrum(described.table, curve_key, draft.faults)
-        if curve is None:
+        peak, width = known(described, "peak_nm"), known(described, "fwhm_nm")
+        if peak is None or width is None:
             return None
-        draft.tables.append(table_use(curve))
-        stated = curve.header.get("quantity", described.quantity)
-        if stated != described.quantity:
-            found = f"{shown(described.quantity)}, while the table says {stated}"
-            draft.faults.add(f"{key}.spectrum.quantity", found, "what the table says")
-            return None
-        if not curve.y.max() > 0:
-            draft.faults.add(curve_key, "a spectrum that is zero everywhere", "some light")
-            return None
-        spectrum = TableSpectrum.from_table(curve.x, curve.y, described.quantity)
+        spectrum = GaussianSpectrum(peak, width)
+        return spectrum if _fits_grid(draft, key, spectrum) else None
+    if isinstance(described, TableSpectrumModel):
+        return _table_spectrum(draft, key, described)
+    return None
+
+
+def _table_spectrum(draft: Draft, key: str, described: TableSpectrumModel) -> Spectrum | None:
+    path, quantity = known(described, "table"), known(described, "quantity")
+    curve_key = f"{key}.spectrum.table"
+    curve = None if path is None else draft.files.spectrum(path, curve_key, draft.faults)
+    if curve is None:
+        return None
+    draft.tables.append(table_use(curve))
+    stated_there = curve.header.get("quantity", quantity)
+    if quantity is not None and stated_there != quantity:
+        found = f"{shown(quantity)}, while the table says {stated_there}"
+        draft.faults.add(f"{key}.spectrum.quantity", found, "what the table says")
+        quantity = None
+    if not curve.y.max() > 0:
+        draft.faults.add(curve_key, "a spectrum that is zero everywhere", "some light")
+        return None
+    if quantity is None:
+        # Power or photons, it is dark at the same wavelengths.
+        _has_light(draft, key, TableSpectrum.from_table(curve.x, curve.y, "photons"))
+        return None
+    spectrum = TableSpectrum.from_table(curve.x, curve.y, quantity)
     return spectrum if _fits_grid(draft, key, spectrum) else None
 
 
@@ -179,162 +203,52 @@ def _fits_grid(draft: Draft, key: str, spectrum: Spectrum) -> bool:
             f"{100 * share:.3g} % of the peak at its {end}, inside the grid of {grid_text(grid)}",
             "under 1 % of the peak at an end that the grid goes beyond",
         )
-    if cut:
+    if cut or not _has_light(draft, key, spectrum):
         return False
     lost = spectrum.lost_share(grid)
-    if grid.size > 1 and not np.any(spectrum.photons(grid) > 0):
-        draft.faults.add(
-            f"{key}.spectrum",
-            f"no light at any wavelength of the grid of {grid_text(grid)}",
-            "a spectrum that overlaps the grid",
-        )
-        return False
     if lost > LOST_SHARE_WARNING:
         draft.warnings.append(
-            f"{key}: {100 * lost:.2g} % of the spectrum lies outside the wavelength grid of "
+            f"{key}: {_percent(lost)} of the spectrum lies outside the wavelength grid of "
             f"{grid_text(grid)}"
         )
     return True
 
 
-def _zone(draft: Draft, key: str, part: EmitterModel, thickness_nm: float | None) -> Zone | None:
-    described = part.zone
-    key = f"{key}.zone"
-    if isinstance(described, PointZoneModel):
-        return _point(draft, key, described, thickness_nm)
-    if isinstance(described, ExponentialZoneModel):
-        return ExponentialZone(described.start, described.decay_nm)
-    if isinstance(described, GaussianZoneModel):
-        return GaussianZone(described.at, described.width_nm)
-    if isinstance(described, TableZoneModel):
-        return _table_zone(draft, key, described, thickness_nm)
-    return UniformZone()
-
-
-def _point(
-    draft: Draft, key: str, described: PointZoneModel, thickness_nm: float | None
-) -> PointZone | None:
-    given = [name for name in ("at", "at_nm") if getattr(described, name) is not None]
-    if len(given) != 1:
-        found = "at and at_nm" if given else "neither at nor at_nm"
-        draft.faults.add(key, found, "either at, or at_nm with from")
-        return None
-    if (described.at_nm is None) != (described.start is None):
-        found = "from without at_nm" if described.at_nm is None else "at_nm without from"
-        draft.faults.add(key, found, "either at, or at_nm with from")
-        return None
-    if described.at_nm is not None and thickness_nm and described.at_nm > thickness_nm:
-        expected = f"a position inside its film, 0 to {thickness_nm:.10g}"
-        draft.faults.add(f"{key}.at_nm", shown(described.at_nm), expected)
-        return None
-    return PointZone(described.at, described.at_nm, described.start or "bottom")
-
-
-def _table_zone(
-    draft: Draft, key: str, described: TableZoneModel, thickness_nm: float | None
-) -> TableZone | None:
-    key = f"{key}.table"
-    curve = draft.files.curve(
-        described.table, "density", key, draft.faults, "position", "position_nm"
+def _has_light(draft: Draft, key: str, spectrum: Spectrum) -> bool:
+    grid = draft.grid_nm
+    if grid is None or not draft.grid_is_whole or grid.size == 1:
+        return True
+    if np.any(spectrum.photons(grid) > 0):
+        return True
+    draft.faults.add(
+        f"{key}.spectrum",
+        f"no light at any wavelength of the grid of {grid_text(grid)}",
+        "a spectrum that overlaps the grid",
     )
-    if curve is None:
-        return None
-    draft.tables.append(table_use(curve))
-    relative = curve.coordinate == "position"
-    if relative and (curve.x[0] < 0 or curve.x[-1] > 1):
-        found = f"positions from {curve.x[0]:.6g} to {curve.x[-1]:.6g}"
-        draft.faults.add(key, found, "positions from 0 (bottom face) to 1")
-        return None
-    if not curve.y.max() > 0:
-        draft.faults.add(key, "a density that is zero everywhere", "some excitons")
-        return None
-    zone = TableZone.from_table(curve.x, curve.y, relative=relative)
-    if thickness_nm:
-        low, high = zone.support_nm(thickness_nm, (0.0, thickness_nm))
-        if not high > low:
-            expected = f"some density inside its film, 0 to {thickness_nm:.10g} nm"
-            draft.faults.add(key, f"density from {curve.x[0]:.6g} nm on", expected)
-            return None
-    return zone
+    return False
 
 
-def _check_host(draft: Draft, key: str, stack: Stack, emitter: Emitter) -> None:
+def _percent(share: float) -> str:
+    """Write a share in percent with two digits, and more than that only close to all of it."""
+    percent = 100 * share
+    if percent < 10:
+        return f"{percent:.2g} %"
+    return f"{percent:.0f} %" if percent < 99.5 else "more than 99 %"
+
+
+def _check_host(draft: Draft, key: str, layer: str, outline: Outline, film_index: int) -> None:
     """Check that the emitter film is a dielectric at every wavelength of the case."""
-    if draft.every_nm is None:
+    material = outline.materials[film_index]
+    if material is None:
         return
-    material = stack.films[emitter.film_index].material
-    for axis, eps in zip(
-        ("ordinary", "extraordinary"), material.permittivity(draft.every_nm), strict=True
-    ):
-        metallic = draft.every_nm[eps.real <= 0]
+    wavelength_nm, *permittivities = draft.permittivity(material)
+    for axis, eps in zip(("ordinary", "extraordinary"), permittivities, strict=True):
+        metallic = wavelength_nm[eps.real <= 0]
         if metallic.size:
             which = "" if material.isotropic else f"{axis} "
             draft.faults.add(
                 f"{key}.layer",
-                f"{shown(emitter.layer)} of {material.name}, a metal at {metallic[0]:.6g} nm",
+                f"{shown(layer)} of {material.name}, a metal at {metallic[0]:.6g} nm",
                 f"a layer whose {which}permittivity has a real part above 0",
             )
             return
-
-
-def _check_reach(draft: Draft, key: str, stack: Stack, emitter: Emitter) -> None:
-    """Nearness of the zone to absorbers."""
-    if draft.every_nm is None:
-        return
-    thickness = stack.films[emitter.film_index].thickness_nm
-    zone = emitter.zone
-    if isinstance(zone, PointZone):
-        below, above = absorber_distances(stack, emitter.film_index, draft.every_nm)
-        position = zone.position_nm(thickness)
-        distance = min(below + position, above + thickness - position)
-        _check_point(draft, key, emitter, distance)
-        return
-    interval = zone_interval(stack, emitter, draft.every_nm)
-    try:
-        zone_quadrature(zone, thickness, interval, order=2)
-    except EmptyZoneError:
-        draft.faults.add(
-            f"{key}.zone",
-            f"nothing left of it beyond closest_approach_nm = {emitter.closest_approach_nm:.10g} "
-            "from the absorbers around",
-            f"a zone with a part farther away in its film of {thickness:.10g} nm",
-        )
-        return
-    for face in unbounded_faces(stack, emitter, draft.every_nm):
-        draft.warnings.append(
-            f"{key}: closest_approach_nm is 0 and the zone reaches an absorber at the {face} face "
-            "of its film, where the dissipated power has no bound: purcell_factor and, unless "
-            "quantum_yield is 0, decay_rate_ratio are left out"
-        )
-
-
-def _check_point(draft: Draft, key: str, emitter: Emitter, distance_nm: float) -> None:
-    if distance_nm <= 0:
-        draft.faults.add(
-            f"{key}.zone", "a point on the face of an absorber", "a point at some distance from it"
-        )
-    elif distance_nm < emitter.closest_approach_nm:
-        draft.warnings.append(
-            f"{key}: the point lies {distance_nm:.3g} nm from an absorber, nearer than "
-            f"closest_approach_nm = {emitter.closest_approach_nm:.3g}"
-        )
-
-
-def _check_shares(draft: Draft) -> None:
-    """Check that the shares of the emitters of a unit sum to 1."""
-    units: dict[Any, list[Mapping[str, Any]]] = {}
-    for raw in draft.raw("emitters"):
-        share = raw.get("share", 1.0)
-        if isinstance(share, bool) or not isinstance(share, int | float) or not 0 <= share <= 1:
-            return  # noted before
-        units.setdefault(str(raw.get("unit", DEFAULT_UNIT)), []).append({**raw, "share": share})
-    for unit, members in units.items():
-        total = math.fsum(member["share"] for member in members)
-        if not abs(total - 1) <= SHARE_SUM_SLACK:
-            listed = " + ".join(f"{member['share']:.10g}" for member in members)
-            names = ", ".join(str(member.get("name", "?")) for member in members)
-            draft.faults.add(
-                "emitters",
-                f"shares {listed} = {total:.10g} in unit {unit} ({names})",
-                "shares that sum to 1 within each unit",
-            )

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field, replace
 from pathlib import Path
 
@@ -22,6 +22,7 @@ from optics.device.material_schema import (
     TableModel,
 )
 from optics.device.materials import Material, TableUse
+from optics.device.salvage import intact, known
 from optics.device.tables import Curve, IndexTable, read_curve, read_index_table
 
 
@@ -119,11 +120,12 @@ class Materials:
 
     Attributes
     ----------
-    parts : mapping of str to parsed material or None
-        Local materials; None where the description itself is at fault.
+    parts : mapping of str to parsed or salvaged material or None
+        Local materials; None where nothing of a description is of use, or if [materials] itself
+        is at fault: then no name can be called unknown.
     """
 
-    parts: Mapping[str, MaterialModel | None]
+    parts: Mapping[str, MaterialModel | None] | None
     files: Files
     faults: Faults
     _made: dict[str, Material | None] = field(default_factory=dict)
@@ -138,21 +140,22 @@ class Materials:
             cycle = " → ".join([*self._open[self._open.index(name) :], name])
             self.faults.add(key, f"the cycle {cycle}", "materials that do not contain themselves")
             return None
-        if name in self.parts:
+        if name in (self.parts or {}):
             if name not in self._made:
                 self._open.append(name)
                 self._made[name] = self._make(name)
                 self._open.pop()
             return self._made[name]
-        if name not in catalogue.names():
-            known = [*self.parts, *catalogue.names()]
+        if name in catalogue.names():
+            return catalogue.load(name)
+        if self.parts is not None:
             expected = "a material of [materials] or of the catalogue"
-            self.faults.add(key, f'"{name}", no such material', expected, nearest(name, known))
-            return None
-        return catalogue.load(name)
+            near = _nearest_material(name, self.parts)
+            self.faults.add(key, f'"{name}", no such material', expected, near)
+        return None
 
     def _make(self, name: str) -> Material | None:
-        part = self.parts[name]
+        part = self.parts[name] if self.parts else None
         key = f"materials.{name}"
         if part is None:
             return None
@@ -166,6 +169,14 @@ class Materials:
 
     def _construct(self, name: str, key: str, part: MaterialModel) -> Material | None:
         match part:
+            case TableModel():
+                return self._table(name, key, part)
+            case PairModel():
+                return self._pair(name, key, part)
+            case MixModel():
+                return self._mix(name, key, part)
+            case _ if not intact(part):
+                return None  # noted before, and nothing in it leads elsewhere
             case ConstantModel():
                 return models.constant(name, part.n, part.k)
             case BirefringentModel():
@@ -182,39 +193,66 @@ class Materials:
                 return models.lorentz_drude(
                     name, terms.plasma_eV, terms.f0, terms.gamma0_eV, terms.oscillators
                 )
-            case TableModel():
-                table = self.files.index_table(part.table, f"{key}.table", self.faults)
-                return models.tabulated(name, table) if table else None
-            case PairModel():
-                return self._pair(name, key, part)
-            case MixModel():
-                return self._mix(name, key, part)
+
+    def _table(self, name: str, key: str, part: TableModel) -> Material | None:
+        path = known(part, "table")
+        table = self.files.index_table(path, f"{key}.table", self.faults) if path else None
+        return models.tabulated(name, table) if table else None
 
     def _pair(self, name: str, key: str, part: PairModel) -> Material | None:
-        ordinary = self.get(part.ordinary, f"{key}.ordinary")
-        extraordinary = self.get(part.extraordinary, f"{key}.extraordinary")
-        if ordinary is None or extraordinary is None:
+        axes = {axis: known(part, axis) for axis in ("ordinary", "extraordinary")}
+        made = {axis: self.get(of, f"{key}.{axis}") for axis, of in axes.items() if of is not None}
+        present = {axis: material for axis, material in made.items() if material is not None}
+        if len(present) < len(axes):
+            for axis, material in present.items():
+                self._check_isotropic(f"{key}.{axis}", material.name, material)
             return None
-        return models.pair(name, ordinary, extraordinary)
+        return models.pair(name, present["ordinary"], present["extraordinary"])
 
     def _mix(self, name: str, key: str, part: MixModel) -> Material | None:
-        components = [
-            (self.get(component, f"{key}.mix.{component}"), fraction)
-            for component, fraction in part.mix.items()
-        ]
-        present = [(material, fraction) for material, fraction in components if material]
-        if len(present) < len(components):
-            self._check_sum(f"{key}.mix", part)
-            return None
+        fractions: Mapping[str, float | None] = known(part, "mix") or {}
+        made = {component: self.get(component, f"{key}.mix.{component}") for component in fractions}
         # Faults of a mixture name its components as the case file does.
         named = [
             (replace(material, name=component), fraction)
-            for (material, fraction), component in zip(present, part.mix, strict=True)
+            for component, fraction in fractions.items()
+            if (material := made[component]) is not None and fraction is not None
         ]
-        return models.mix(name, named, part.rule)
+        if len(named) == len(fractions) and intact(part):
+            return models.mix(name, named, part.rule)
+        for component, material in made.items():
+            if material is not None:
+                self._check_isotropic(f"{key}.mix.{component}", component, material)
+        self._check_sum(f"{key}.mix", fractions)
+        return None
 
-    def _check_sum(self, key: str, part: MixModel) -> None:
-        """Check the fractions of a mixture that cannot be made for other reasons."""
-        total = math.fsum(part.mix.values())
-        if abs(total - 1) > models.FRACTION_SUM_SLACK:
+    def _check_isotropic(self, key: str, name: str, material: Material) -> None:
+        """Check a component of a material that cannot be made for other reasons."""
+        if not material.isotropic:
+            self.faults.add(key, f"{name}, which is birefringent", "an isotropic material")
+
+    def _check_sum(self, key: str, fractions: Mapping[str, float | None]) -> None:
+        """Check the fractions of a mixture that cannot be made for other reasons.
+
+        Fractions at fault can only add to the others.
+        """
+        total = math.fsum(fraction for fraction in fractions.values() if fraction is not None)
+        lacking = bool(fractions) and None not in fractions.values()
+        slack = models.FRACTION_SUM_SLACK
+        if total > 1 + slack or (lacking and total < 1 - slack):
             self.faults.add(key, f"fractions that sum to {total:.10g}", "a sum of 1")
+
+
+def _nearest_material(name: str, local: Iterable[str]) -> str | None:
+    """Name that was probably meant: one spelled alike, or that of a material described so.
+
+    Descriptions count as a whole and by their last word, the noun: crystalline silicon.
+    """
+    meant = {spelled: spelled for spelled in (*local, *catalogue.names())}
+    for entry in catalogue.entries():
+        for alias in entry.aliases[:1]:
+            title = entry.title.lower()
+            for words in (title, title.split()[-1]):
+                meant.setdefault(words, alias)
+    near = nearest(name, meant)
+    return None if near is None else meant[near]

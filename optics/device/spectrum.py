@@ -208,7 +208,10 @@ class GaussianSpectrum(Spectrum):
         Relative to the largest value on the grid, since far from the peak the plain Gaussian
         would vanish in rounding and leave nothing to normalize.
         """
-        exponent = ((wavelength_nm - self.center_nm) / self.sigma_nm) ** 2 / 2
+        with np.errstate(over="ignore"):
+            exponent = ((wavelength_nm - self.center_nm) / self.sigma_nm) ** 2 / 2
+        if exponent.min() == np.inf:  # too far off for any number: no light
+            return np.zeros(wavelength_nm.shape)
         return np.asarray(np.exp(exponent.min() - exponent))
 
     def lost_share(self, wavelength_nm: NDArray[np.float64]) -> float:

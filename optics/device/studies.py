@@ -10,28 +10,30 @@ from pydantic import BaseModel
 from optics.device.address import orientation_group, value_at
 from optics.device.door import shown
 from optics.device.draft import MOST_WAVELENGTHS, STEP_SLACK, Draft
-from optics.device.errors import CaseError
+from optics.device.errors import CaseError, Fault
+from optics.device.salvage import doubtful, known, stated
 from optics.device.study_schema import (
     AxisModel,
-    LimitModel,
     ObjectiveModel,
     OptimizeModel,
     SweepModel,
     ToleranceModel,
 )
+from optics.device.units import unit_names
 
 Path = tuple[str, str]  # key in the case file, address it holds
 
 
-def check_studies(draft: Draft, resolved: Mapping[str, Any] | None) -> None:
+def check_studies(draft: Draft, resolved: Mapping[str, Any]) -> None:
     """Note faults of the sweep, optimize and tolerance tables.
 
     Parameters
     ----------
     draft : Draft
         The case in the making.
-    resolved : mapping or None
-        Resolved document, in which addresses are looked up; None if the document is at fault.
+    resolved : mapping
+        Resolved document, in which addresses are looked up; of a document at fault what can be
+        used.
     """
     parts = draft.parts
     studies: list[list[Path]] = []
@@ -43,91 +45,117 @@ def check_studies(draft: Draft, resolved: Mapping[str, Any] | None) -> None:
         studies.append(_tolerance(draft, parts.tolerance))
     for paths in studies:
         _check_orientations(draft, paths)
-        if resolved is not None:
-            _check_paths(draft, resolved, paths)
+        _check_paths(draft, resolved, paths)
 
 
 def _quoted(prefix: str, path: str) -> str:
     return f'{prefix}."{path}"' if "." in path else f"{prefix}.{path}"
 
 
-def _linked(prefix: str, linked: Mapping[str, str]) -> list[Path]:
+def _paths(prefix: str, table: Mapping[str, Any] | None) -> list[Path]:
+    """Addresses that are the keys of a table, if that is known."""
+    return [(_quoted(prefix, path), path) for path in table or {}]
+
+
+def _linked(prefix: str, study: BaseModel) -> list[Path]:
     key = f"{prefix}.linked"
-    return [(_quoted(key, path), path) for path in linked] + [
-        (_quoted(key, path), other) for path, other in linked.items()
-    ]
+    linked: Mapping[str, str | None] = known(study, "linked") or {}
+    others = [(_quoted(key, path), other) for path, other in linked.items() if other is not None]
+    return _paths(key, linked) + others
+
+
+def _entries(study: BaseModel, name: str) -> list[tuple[str, Any]]:
+    """Entries of a table of tables by path, those of no use left out."""
+    table: Mapping[str, Any] = known(study, name) or {}
+    return [(path, entry) for path, entry in table.items() if entry is not None]
 
 
 def _sweep(draft: Draft, study: SweepModel) -> list[Path]:
-    for path, axis in study.axes.items():
+    for path, axis in _entries(study, "axes"):
         _check_axis(draft, _quoted("sweep.axes", path), axis)
-    axes = [(_quoted("sweep.axes", path), path) for path in study.axes]
-    return axes + _linked("sweep", study.linked)
+    return _paths("sweep.axes", known(study, "axes")) + _linked("sweep", study)
 
 
 def _check_axis(draft: Draft, key: str, axis: AxisModel) -> None:
-    stepped = [name for name in ("start", "stop", "step") if getattr(axis, name) is not None]
-    if (axis.values is None) == (not stepped) or len(stepped) not in (0, 3):
-        found = ", ".join([*stepped, *([] if axis.values is None else ["values"])]) or "nothing"
-        draft.faults.add(key, found, "either start, stop and step, or values")
+    stepped = stated(axis, "start", "stop", "step")
+    given = stepped + stated(axis, "values")
+    lacking = not doubtful(axis, *AxisModel.model_fields) and len(stepped) not in (0, 3)
+    if (stepped and given != stepped) or lacking or not (given or doubtful(axis, "values")):
+        draft.faults.add(
+            key, ", ".join(given) or "nothing", "either start, stop and step, or values"
+        )
         return
-    if axis.start is None or axis.stop is None or axis.step is None:
+    start, stop, step = (known(axis, name) for name in ("start", "stop", "step"))
+    if start is None or stop is None:
         return
-    if not axis.stop > axis.start:
-        draft.faults.add(f"{key}.stop", shown(axis.stop), f"above start = {axis.start:.10g}")
-        return
-    steps = (axis.stop - axis.start) / axis.step
+    if not stop > start:
+        draft.faults.add(f"{key}.stop", shown(stop), f"above start = {start:.10g}")
+    elif step is not None:
+        _check_step(draft, f"{key}.step", stop - start, step)
+
+
+def _check_step(draft: Draft, key: str, span: float, step: float) -> None:
+    steps = span / step
     if steps > MOST_WAVELENGTHS:
-        draft.faults.add(f"{key}.step", shown(axis.step), f"at most {MOST_WAVELENGTHS} values")
+        draft.faults.add(key, shown(step), f"at most {MOST_WAVELENGTHS} values")
     elif abs(steps - round(steps)) > STEP_SLACK * max(steps, 1) or round(steps) < 1:
-        span = axis.stop - axis.start
-        draft.faults.add(f"{key}.step", shown(axis.step), f"a step that divides {span:.10g}")
+        draft.faults.add(key, shown(step), f"a step that divides {span:.10g}")
 
 
 def _optimize(draft: Draft, study: OptimizeModel) -> list[Path]:
-    kinds = ("maximize", "minimize", "objectives")
-    _exactly_one(draft, "optimize", study, kinds)
-    for index, objective in enumerate(study.objectives or []):
-        key = f"optimize.objectives[{index}]"
-        _exactly_one(draft, key, objective, tuple(ObjectiveModel.model_fields))
-    for path, bounds in study.variables.items():
-        if not bounds.max > bounds.min:
+    _exactly_one(draft, "optimize", study, ("maximize", "minimize", "objectives"))
+    for index, objective in enumerate(known(study, "objectives") or []):
+        if objective is not None:
+            key = f"optimize.objectives[{index}]"
+            _exactly_one(draft, key, objective, tuple(ObjectiveModel.model_fields))
+    for path, bounds in _entries(study, "variables"):
+        low, high = known(bounds, "min"), known(bounds, "max")
+        if None not in (low, high) and not high > low:
             key = f"{_quoted('optimize.variables', path)}.max"
-            draft.faults.add(key, shown(bounds.max), f"above min = {bounds.min:.10g}")
-    _check_limits(draft, "optimize.constraints", study.constraints)
-    variables = [(_quoted("optimize.variables", path), path) for path in study.variables]
-    return variables + _linked("optimize", study.linked)
+            draft.faults.add(key, shown(high), f"above min = {low:.10g}")
+    _check_limits(draft, "optimize", study, "constraints")
+    return _paths("optimize.variables", known(study, "variables")) + _linked("optimize", study)
 
 
 def _tolerance(draft: Draft, study: ToleranceModel) -> list[Path]:
-    for path, spread in study.spread.items():
+    for path, spread in _entries(study, "spread"):
         key = _quoted("tolerance.spread", path)
         _exactly_one(draft, key, spread, ("relative_sd", "sd", "half_width"))
-    _check_limits(draft, "tolerance.limits", study.limits)
-    for index, group in enumerate(study.groups):
-        for position, path in enumerate(group.paths):
-            key = f"tolerance.groups[{index}].paths[{position}]"
-            if path not in study.spread:
-                draft.faults.add(key, f"{shown(path)} without spread", "a path of tolerance.spread")
-            elif path in group.paths[:position]:
-                draft.faults.add(key, f"{shown(path)} again", "each path once")
-    spread_paths = [(_quoted("tolerance.spread", path), path) for path in study.spread]
-    return spread_paths + _linked("tolerance", study.linked)
+    _check_limits(draft, "tolerance", study, "limits")
+    for index, group in enumerate(known(study, "groups") or []):
+        _check_group(draft, f"tolerance.groups[{index}]", known(group, "paths"), study)
+    return _paths("tolerance.spread", known(study, "spread")) + _linked("tolerance", study)
 
 
-def _check_limits(draft: Draft, prefix: str, limits: Mapping[str, LimitModel]) -> None:
-    for name, limit in limits.items():
-        key = _quoted(prefix, name)
-        if limit.min is None and limit.max is None:
-            draft.faults.add(key, "nothing", "min, max or both")
-        elif limit.min is not None and limit.max is not None and limit.min > limit.max:
-            found = f"min = {limit.min:.10g} above max = {limit.max:.10g}"
+def _check_group(
+    draft: Draft, key: str, paths: list[str | None] | None, study: ToleranceModel
+) -> None:
+    spread = known(study, "spread")
+    for position, path in enumerate(paths or []):
+        if path is None:
+            continue
+        place = f"{key}.paths[{position}]"
+        if spread and path not in spread:
+            draft.faults.add(place, f"{shown(path)} without spread", "a path of tolerance.spread")
+        elif paths and path in paths[:position]:
+            draft.faults.add(place, f"{shown(path)} again", "each path once")
+
+
+def _check_limits(draft: Draft, study_name: str, study: BaseModel, table: str) -> None:
+    for name, limit in _entries(study, table):
+        key = _quoted(f"{study_name}.{table}", name)
+        low, high = known(limit, "min"), known(limit, "max")
+        if not stated(limit, "min", "max"):
+            if not doubtful(limit, "min", "max"):
+                draft.faults.add(key, "nothing", "min, max or both")
+        elif None not in (low, high) and low > high:
+            found = f"min = {low:.10g} above max = {high:.10g}"
             draft.faults.add(key, found, "min at most max")
 
 
 def _exactly_one(draft: Draft, key: str, part: BaseModel, names: tuple[str, ...]) -> None:
-    given = [name for name in names if getattr(part, name) is not None]
-    if len(given) != 1:
+    given = stated(part, *names)
+    if len(given) > 1 or not (given or doubtful(part, *names)):
         found = " and ".join(given) or "none of them"
         draft.faults.add(key, found, f"exactly one of {', '.join(names)}")
 
@@ -135,6 +163,8 @@ def _exactly_one(draft: Draft, key: str, part: BaseModel, names: tuple[str, ...]
 def _check_paths(draft: Draft, resolved: Mapping[str, Any], paths: Iterable[Path]) -> None:
     """Every address of a study leads to a number."""
     for key, path in paths:
+        if _is_unsettled(draft, path):
+            continue
         try:
             value = value_at(resolved, path, draft.faults.where)
         except CaseError as error:
@@ -143,6 +173,23 @@ def _check_paths(draft: Draft, resolved: Mapping[str, Any], paths: Iterable[Path
             continue
         if isinstance(value, bool) or not isinstance(value, int | float):
             draft.faults.add(key, f"{shown(path)}, {shown(value)}", "the address of a number")
+
+
+def _is_unsettled(draft: Draft, path: str) -> bool:
+    """Whether the place an address leads to is itself at fault, so that nothing can be said."""
+    if path.startswith("drive.charge_balance.") and None in unit_names(draft):
+        return True
+    section, name = (*path.split("."), "", "")[:2]
+    if section in ("layers", "emitters") and not draft.has_sure_names(section):
+        return name not in draft.names(section)
+    return any(_covers(fault, path) for fault in draft.shape_faults)
+
+
+def _covers(fault: Fault, path: str) -> bool:
+    """Whether a fault lies at or above an address, or may have meant a key there."""
+    table = fault.key.rpartition(".")[0]
+    meant = f"{table}.{fault.near}" if table else str(fault.near)
+    return any(path == key or path.startswith(f"{key}.") for key in (fault.key, meant))
 
 
 def _check_orientations(draft: Draft, paths: Iterable[Path]) -> None:

@@ -6,6 +6,7 @@ Positions are in nm from the bottom face of the emitter film.
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from functools import lru_cache
 from itertools import pairwise
 from typing import TYPE_CHECKING
@@ -37,6 +38,8 @@ __all__ = [
     "UniformZone",
     "Zone",
     "absorber_distances",
+    "distances_to_absorbers",
+    "interval_between",
     "unbounded_faces",
     "zone_interval",
     "zone_quadrature",
@@ -201,24 +204,50 @@ def absorber_distances(
         Through lossless films; 0 = adjacent, inf = none.
     """
     films, (bottom, top) = stack.absorbing(wavelength_nm)
-    below = range(film_index - 1, -1, -1)
-    above = range(film_index + 1, len(stack.films))
-    return (
-        _distance(stack, below, films, bottom and stack.substrate is None),
-        _distance(stack, above, films, top and stack.cover is None),
+    ends = (bottom and stack.substrate is None, top and stack.cover is None)
+    thickness = [film.thickness_nm for film in stack.films]
+    return distances_to_absorbers(thickness, films.tolist(), ends, film_index)
+
+
+def distances_to_absorbers(
+    thickness_nm: Sequence[float],
+    absorbing: Sequence[bool],
+    ends: tuple[bool, bool],
+    film_index: int,
+) -> tuple[float, float]:
+    """Distance from each face of a film to the nearest absorber, from plain numbers.
+
+    Parameters
+    ----------
+    thickness_nm, absorbing : sequences, shape (n_film,)
+        Thickness in nm and whether it absorbs, of every film from the bottom.
+    ends : (bool, bool)
+        Whether an absorber stands directly below and above the films.
+    film_index : int
+        The emitter film, counted from the bottom.
+
+    Returns
+    -------
+    below_nm, above_nm : float
+        As `absorber_distances`.
+    """
+    orders = (range(film_index - 1, -1, -1), range(film_index + 1, len(thickness_nm)))
+    below, above = (
+        _distance(thickness_nm, order, absorbing, end)
+        for order, end in zip(orders, ends, strict=True)
     )
+    return below, above
 
 
 def _distance(
-    stack: Stack, order: range, absorbing: NDArray[np.bool_], absorbing_end: bool
+    thickness_nm: Sequence[float], order: range, absorbing: Sequence[bool], absorbing_end: bool
 ) -> float:
     """Thickness of the lossless films in front of the first absorber, in the order given."""
     distance = 0.0
     for index in order:
-        thickness = stack.films[index].thickness_nm
-        if absorbing[index] and thickness > 0:
+        if absorbing[index] and thickness_nm[index] > 0:
             return distance
-        distance += thickness
+        distance += thickness_nm[index]
     return distance if absorbing_end else math.inf
 
 
@@ -243,10 +272,21 @@ def zone_interval(
     low_nm, high_nm : float
         In nm from the bottom face; empty if ``high_nm <= low_nm``.
     """
-    below, above = absorber_distances(stack, emitter.film_index, wavelength_nm)
+    distances = absorber_distances(stack, emitter.film_index, wavelength_nm)
     thickness = stack.films[emitter.film_index].thickness_nm
-    low = max(0.0, emitter.closest_approach_nm - below)
-    high = thickness - max(0.0, emitter.closest_approach_nm - above)
+    return interval_between(distances, thickness, emitter.closest_approach_nm)
+
+
+def interval_between(
+    distances_nm: tuple[float, float], thickness_nm: float, closest_approach_nm: float
+) -> tuple[float, float]:
+    """Where a continuous zone may be nonzero between absorbers at given distances from its film.
+
+    Lengths in nm, from and to the bottom face; as `zone_interval`.
+    """
+    below, above = distances_nm
+    low = max(0.0, closest_approach_nm - below)
+    high = thickness_nm - max(0.0, closest_approach_nm - above)
     return low, high
 
 

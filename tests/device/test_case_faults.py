@@ -26,6 +26,8 @@ def test_many_faults_come_out_together() -> None:
     document["sweep"]["axes"]["layers.HTL.thickness_nm"] = {"start": 1}
     keys = [line.split(": ")[1] for line in faults_of(document)]
     assert sorted(keys) == [
+        "drive.charge_balance.device",
+        "drive.charge_balance.upper",
         "drive.charge_balance.upper",
         "emitters.green.horizontal_fraction",
         "emitters.green.layer",
@@ -109,6 +111,15 @@ def test_spectrum_cut_by_the_grid_is_a_warning() -> None:
     )
 
 
+@pytest.mark.parametrize(
+    ("peak_nm", "said"), [(690, "34 %"), (702.5, "54 %"), (900, "more than 99 %")]
+)
+def test_a_large_lost_share_is_said_in_plain_numbers(peak_nm: float, said: str) -> None:
+    document = changed("emitters/0/spectrum", {"peak_nm": peak_nm, "fwhm_nm": 58})
+    (warning,) = case_from_dict(document).warnings
+    assert warning.startswith(f"emitters.green: {said} of the spectrum lies outside")
+
+
 def write(folder: Path, name: str, text: str) -> None:
     (folder / name).write_text(text)
 
@@ -117,9 +128,11 @@ def test_table_that_does_not_cover_the_wavelengths(tmp_path: Path) -> None:
     write(tmp_path, "etl.csv", "wavelength_nm,n,k\n460,1.7,0\n650,1.7,0\n")
     document = changed("materials/etl", {"table": "etl.csv"})
     document["layers"][3]["material"] = document["layers"][1]["material"] = "etl"
+    document["surroundings"] = {"top": "etl"}
     assert faults_of(document, tmp_path) == [
-        'my.toml: layers.HTL.material: found "etl", known from 460 to 650 nm; expected a material '
-        "known at every wavelength of the case, 450 to 700 nm"
+        f'my.toml: {key}: found "etl", known from 460 to 650 nm; expected a material known at '
+        "every wavelength of the case, 450 to 700 nm"
+        for key in ("layers.HTL.material", "layers.ETL.material", "surroundings.top")
     ]
 
 
@@ -257,11 +270,6 @@ def test_nonsense_never_escapes_as_another_error(section: str, value: Any) -> No
             "layers.ITO.thickness_nm: found 10000... of 401 digits; expected a number",
         ),
         (
-            "wavelength",
-            {"start_nm": 1, "stop_nm": 1e308, "step_nm": 1e-300},
-            "wavelength.step_nm: found 1e-300; expected at most 1000000 wavelengths",
-        ),
-        (
             "layers/0/thickness_nm",
             date(2020, 1, 1),
             "layers.ITO.thickness_nm: found the date 2020-01-01; expected a number",
@@ -281,6 +289,15 @@ def test_nonsense_never_escapes_as_another_error(section: str, value: Any) -> No
 )
 def test_strange_values(path: str, value: Any, line: str) -> None:
     assert faults_of(changed(path, value)) == [f"my.toml: {line}"]
+
+
+def test_wavelengths_beyond_all_reason() -> None:
+    wavelength = {"start_nm": 1, "stop_nm": 1e308, "step_nm": 1e-300}
+    assert faults_of(changed("wavelength", wavelength)) == [
+        "my.toml: wavelength.step_nm: found 1e-300; expected at most 1000000 wavelengths",
+        'my.toml: substrate.material: found "silica" with no passive permittivity at 1e+308 nm; '
+        "expected finite, nonzero, Im ε ≥ 0",
+    ]
 
 
 def test_keys_that_are_no_text() -> None:

@@ -8,6 +8,8 @@ from typing import Any
 import pytest
 from case_examples import changed, faults_of
 
+from optics.device.catalogue import spectra_names
+
 # path of the change, new value (None removes), the one line that has to come of it
 ONE_FAULT: list[tuple[str, Any, str]] = [
     # layers
@@ -88,7 +90,7 @@ ONE_FAULT: list[tuple[str, Any, str]] = [
     ),
     (
         "emitters/0/spectrum",
-        {"table": "f.csv"},
+        {"table": spectra_names()[0]},
         'emitters.green.spectrum.quantity: found nothing; expected "photons" or "power", per nm',
     ),
     (
