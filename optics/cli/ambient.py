@@ -75,6 +75,7 @@ def ambient(
         raise click.UsageError("--picture contrast needs --illuminance")
 
     import optics
+    from optics.kernels.angles import angles_are_compiled
     from optics.kernels.compiled import cache_is_warm, mark_cache_warm
     from optics.outcome.ambient import DEFAULT_ANGLES_DEG, faults_of_question
     from optics.present.terminal import compiling_notice
@@ -83,9 +84,13 @@ def ambient(
     if faults := faults_of_question(illuminance_lx, asked, wavelengths):
         raise click.UsageError("\n".join(faults))
     device = optics.read_case(case)
-    with compiling_notice(needed=not cache_is_warm("ambient")):
+    shines = illuminance_lx is not None
+    warm = cache_is_warm("ambient") and (angles_are_compiled() or not shines)
+    with compiling_notice(needed=not warm):
         outcome = optics.ambient(device, illuminance_lx, asked, wavelengths)
     mark_cache_warm("ambient")
+    if shines:
+        mark_cache_warm()
     result = outcome.to_dict(spectral=spectral)
     writers: dict[str, Writer] = {
         ".csv": lambda path: outcome.to_frame(spectral=spectral).to_csv(path, index=False),

@@ -3,6 +3,10 @@
 from __future__ import annotations
 
 import json
+import os
+import subprocess
+import sys
+from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -77,6 +81,27 @@ def test_against_tmm_with_incoherent_slabs(name: str, side: str) -> None:
                 expected = by_tmm(given, side, angle, nm, pol)
                 # Slab faces use Re n here and n + ik there: k = 1e-8 of the polymer.
                 assert response.powers[w, k, i] == pytest.approx(expected, abs=1e-7)
+
+
+def test_without_the_compiler_the_numbers_are_the_same() -> None:
+    script = """
+from angular_devices import semitransparent
+from devices import case
+from optics.outcome.ambient import ambient
+sides = ambient(case(semitransparent()), None, [0, 60], [500.0, 600.0]).sides
+print(*(repr(float(x)) for side in sides.values() for x in side.powers.ravel()))
+"""
+    environment = {**os.environ, "PYTHONPATH": str(Path(__file__).parent)}
+    runs = [
+        subprocess.run(
+            [sys.executable, "-c", script], env={**environment, **more}, check=True,
+            capture_output=True, text=True,
+        ).stdout.split()
+        for more in ({}, {"NUMBA_DISABLE_JIT": "1"})
+    ]  # fmt: skip
+    compiled, plain = ([float(word) for word in words] for words in runs)
+    assert len(plain) == 2 * 2 * 2 * 2 * 3
+    assert compiled == pytest.approx(plain, rel=1e-12, abs=1e-14)
 
 
 @pytest.mark.parametrize("exit_", ["planar", "matched"])
