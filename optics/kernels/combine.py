@@ -56,11 +56,13 @@ def emitter_kz(source: Source, pol: int, u: complex) -> complex:
 
 
 @inline
-def resonance(a: complex, b: Floats, turn: complex, g: Floats, t: Floats, bg: Floats) -> None:
-    """Fill g = 1 / (1 - a b P), t = a b P g and b g for lower halves b (2, l); all (2, l)."""
+def resonance(
+    a: complex, b: Floats, low: int, turn: complex, g: Floats, t: Floats, bg: Floats
+) -> None:
+    """Fill g = 1 / (1 - a b P), t = a b P g and b g, all (2, l), for halves b (2, v) from low."""
     x, y = (a * turn).real, (a * turn).imag
-    for p in range(b.shape[1]):
-        br, bi = b[0, p], b[1, p]
+    for p in range(g.shape[1]):
+        br, bi = b[0, low + p], b[1, low + p]
         xr, xi = x * br - y * bi, x * bi + y * br
         dr = 1.0 - xr
         m = 1.0 / (dr * dr + xi * xi)
@@ -80,15 +82,69 @@ def add_moments(v: Floats, weight: float, last: float, second: float, moments: F
 
 
 @inline
-def add_misses(moments: Floats, misses: Floats) -> None:
-    """Add a panel's estimated error, as of `paths.panel_error`, and start anew."""
-    for p in range(misses.size):
+def add_misses(moments: Floats, misses: Floats, begin: int) -> None:
+    """Add a panel's estimated error, as of `paths.panel_error`, from begin on, and start anew."""
+    for p in range(moments.shape[1]):
         size = 0.5 * moments[0, p] + 1e-300
         unresolved = max(abs(moments[1, p]), abs(moments[2, p]))
-        misses[p] += 2.0 * unresolved * np.sqrt(min(1.0, unresolved / size))
-        moments[0, p] = 0.0
-        moments[1, p] = 0.0
-        moments[2, p] = 0.0
+        misses[begin + p] += 2.0 * unresolved * np.sqrt(min(1.0, unresolved / size))
+
+
+@inline
+def fill_ways(
+    source: Source, kz: complex, sign: float, to_top: Complexes, to_bottom: Complexes
+) -> None:
+    """Sign times the phase factors (z,) from each dipole to a face of its film and back."""
+    for q in range(source.kz_positions.size):
+        to_bottom[q] = sign * exp_i(2.0 * kz * source.kz_positions[q])
+        to_top[q] = sign * exp_i(2.0 * kz * (source.kd - source.kz_positions[q]))
+
+
+@inline
+def add_waves(
+    factor: complex,
+    bulk: float,
+    a: complex,
+    to_top: Complexes,
+    to_bottom: Complexes,
+    zone: Floats,
+    rule: tuple[float, float, float],
+    g: Floats,
+    t: Floats,
+    bg: Floats,
+    v: Floats,
+    target: Floats,
+    begin: int,
+    moments: Floats,
+) -> None:
+    """Add a node's dissipated power to target (z, p) from begin on, and to its moments (3, l).
+
+    Parameters
+    ----------
+    factor : complex
+        G; to_top and to_bottom carry the channel's sign.
+    bulk : float
+        Re G, or 0 where the bulk term is left out.
+    rule : (float, float, float)
+        The node's weight and rows for the last two Legendre coefficients.
+    g, t, bg, v : float (2, l)
+        From `resonance`; v is work space.
+    """
+    weight, last, second = rule
+    points = v.shape[1]
+    fr, fi = 2.0 * factor.real, 2.0 * factor.imag
+    x, y = factor * a * (zone * to_top).sum(), factor * (zone * to_bottom).sum()
+    xr, xi, yr, yi = x.real, x.imag, y.real, y.imag
+    for p in range(points):
+        v[0, p] = bulk + fr * t[0, p] - fi * t[1, p]
+        v[1, p] = v[0, p] + xr * g[0, p] - xi * g[1, p] + yr * bg[0, p] - yi * bg[1, p]
+    add_moments(v[1], weight, last, second, moments)
+    for q in range(target.shape[0]):
+        x, y = weight * factor * a * to_top[q], weight * factor * to_bottom[q]
+        xr, xi, yr, yi = x.real, x.imag, y.real, y.imag
+        for p in range(points):
+            new = weight * v[0, p] + xr * g[0, p] - xi * g[1, p]
+            target[q, begin + p] += new + yr * bg[0, p] - yi * bg[1, p]
 
 
 @kernel
@@ -121,57 +177,33 @@ def combine_dissipated(
         Estimated errors, added to.
     """
     z = source.kz_positions.size
-    widest = (rows.last - rows.first).max()
-    space, moments = np.zeros((4, 2, widest)), np.zeros((3, 3, widest))
     to_top, to_bottom = np.zeros(z, dtype=np.complex128), np.zeros(z, dtype=np.complex128)
     for k in range(nodes.part.size):
-        part = nodes.part[k]
-        begin = 0
+        part, begin = nodes.part[k], 0
         for row in range(rows.up.size):
-            low, high = rows.first[row], rows.last[row]
-            end = begin + high - low
-            g, t = space[0, :, : high - low], space[1, :, : high - low]
-            bg, v = space[2, :, : high - low], space[3, :, : high - low]
+            low, points = rows.first[row], rows.last[row] - rows.first[row]
+            # Of exactly this length, so that loops over them vectorize.
+            g, t = np.zeros((2, points)), np.zeros((2, points))
+            bg, v = np.zeros((2, points)), np.zeros((2, points))
+            moments = np.zeros((3, 3, points))
             for n in range(nodes.first[k], nodes.first[k + 1]):
-                weight = nodes.weight[n]
-                if weight == 0.0:
+                rule = (nodes.weight[n], nodes.last[n], nodes.second[n])
+                if rule[0] == 0.0:
                     continue
                 for pol in range(2):
                     kz = emitter_kz(source, pol, complex(nodes.u[n]))
-                    turn = exp_i(kz * float(source.kd))
-                    turn *= turn
-                    for q in range(z):
-                        to_bottom[q] = exp_i(2.0 * kz * source.kz_positions[q])
-                        to_top[q] = exp_i(2.0 * kz * (source.kd - source.kz_positions[q]))
-                    mean_t, mean_b = (zone * to_top).sum(), (zone * to_bottom).sum()
+                    turn = exp_i(2.0 * kz * float(source.kd))
                     a = complex(r_up[n, pol, 0, rows.up[row]], r_up[n, pol, 1, rows.up[row]])
-                    resonance(a, r_down[n, pol, :, low:high], turn, g, t, bg)
-                    for c in range(3):
-                        of_pol, sign = channel(c)
-                        if of_pol != pol:
-                            continue
-                        factor = dissipated_factor(c, source, nodes.u[n], kz) * nodes.du[n]
+                    resonance(a, r_down[n, pol], low, turn, g, t, bg)
+                    for c in range(0 if pol == P else 2, 2 if pol == P else 3):
+                        sign = channel(c)[1]
+                        fill_ways(source, kz, sign, to_top, to_bottom)
+                        factor = dissipated_factor(c, source, complex(nodes.u[n]), kz) * nodes.du[n]
                         bulk = 0.0 if part == NEAR_PART else factor.real
-                        x, y = sign * factor * a * mean_t, sign * factor * mean_b
-                        for p in range(high - low):
-                            v[0, p] = bulk + 2.0 * (factor.real * t[0, p] - factor.imag * t[1, p])
-                            v[1, p] = (
-                                v[0, p] + x.real * g[0, p] - x.imag * g[1, p]
-                                + y.real * bg[0, p] - y.imag * bg[1, p]
-                            )  # fmt: skip
-                        add_moments(
-                            v[1], weight, nodes.last[n], nodes.second[n],
-                            moments[c, :, : high - low],
+                        add_waves(
+                            factor, bulk, a, to_top, to_bottom, zone, rule, g, t, bg, v,
+                            value[part, c], begin, moments[c],
                         )  # fmt: skip
-                        for q in range(z):
-                            x, y = factor * a * to_top[q], factor * to_bottom[q]
-                            x, y = sign * weight * x, sign * weight * y
-                            target = value[part, c, q, begin:end]
-                            for p in range(high - low):
-                                target[p] += (
-                                    weight * v[0, p] + x.real * g[0, p] - x.imag * g[1, p]
-                                    + y.real * bg[0, p] - y.imag * bg[1, p]
-                                )  # fmt: skip
             for c in range(3):
-                add_misses(moments[c, :, : high - low], misses[part, c, begin:end])
-            begin = end
+                add_misses(moments[c], misses[part, c], begin)
+            begin += points

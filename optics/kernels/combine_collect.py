@@ -15,7 +15,6 @@ from optics.kernels.exits import (
     MATCHED_BOTTOM,
     MATCHED_TOP,
     SUBSTRATE,
-    TOTAL,
 )
 
 _SMALLEST_SCALE = 1e-5  # as in `budget`
@@ -77,10 +76,11 @@ def collect(
                 out[7, p] = free[o, MATCHED_BOTTOM, q, p]
                 out[8, p] = free[o, MATCHED_TOP, q, p]
                 out[9, p], out[10, p] = near, total + near
-                gap = abs(total - free[o, TOTAL, q, p] - guided - tail)
-                error[p] = max(error[p], gap / max(abs(total + near), _SMALLEST_SCALE))
                 known = out[0, p] + out[1, p] + out[2, p] + out[3, p] + out[4, p]
                 known += out[5, p] + out[6, p]
+                # The total comes from a path of its own.
+                gap = abs(total + near - known)
+                error[p] = max(error[p], gap / max(abs(total + near), _SMALLEST_SCALE))
                 balance[p] = max(balance[p], abs(known / (total + near) - 1.0))
                 mean[p] += zone[q] * (total + near)
         for p in range(points):

@@ -5,7 +5,7 @@ See `combine` for the formulas and the order of loops.
 
 import numpy as np
 
-from optics.kernels.arrays import Complexes, Floats
+from optics.kernels.arrays import Floats
 from optics.kernels.combine import (
     Nodes,
     Rows,
@@ -18,10 +18,10 @@ from optics.kernels.combine_outside import first_arrivals
 from optics.kernels.combine_tables import HalfTable
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.elementary import exp_i
-from optics.kernels.exits import COLUMNS, TOTAL
+from optics.kernels.exits import COLUMNS
 from optics.kernels.halfstack import P, abs2
 from optics.kernels.problem import Sides, Source
-from optics.kernels.source import channel, dissipated_factor, outgoing_factor
+from optics.kernels.source import channel, outgoing_factor
 
 
 @inline
@@ -49,9 +49,9 @@ def directions_of(
 
 @inline
 def sent_up(
-    source: Source, kz: complex, sign: float, b: Floats, carried: Floats, parts: Floats
+    source: Source, kz: complex, sign: float, b: Floats, low: int, carried: Floats, parts: Floats
 ) -> None:
-    """Power sent up as parts[0] + parts[1] basis[1] + parts[2] basis[2]; parts (3, l).
+    """Power sent up as parts[0] + parts[1] basis[1] + parts[2] basis[2], for halves b from low.
 
     From |to_t|^2 |1 + s b to_b^2|^2 with kz real, where |to_t| = 1, or imaginary, where to_b and
     to_t are real and |to_b to_t|^2 is the same everywhere.
@@ -59,7 +59,7 @@ def sent_up(
     oscillates = abs(kz.real) >= abs(kz.imag)
     turn = abs2(exp_i(kz * float(source.kd)))
     for p in range(carried.size):
-        br, bi = b[0, p], b[1, p]
+        br, bi = b[0, low + p], b[1, low + p]
         size = carried[p] * (br * br + bi * bi)
         if oscillates:
             parts[0, p] = carried[p] + size
@@ -72,37 +72,12 @@ def sent_up(
 
 
 @inline
-def add_total(
-    factor: complex,
-    sign: float,
-    a: complex,
-    to_top: Complexes,
-    to_bottom: Complexes,
-    zone: Floats,
-    rule: tuple[float, float, float],
-    arrays: tuple[Floats, Floats, Floats, Floats],
-    target: Floats,
-    moments: Floats,
-) -> None:
-    """Add a node's dissipated power to target (z, l) and its moments (3, l).
-
-    arrays: g, t, b g of `resonance` and work space, all (2, l).
-    """
-    g, t, bg, v = arrays
-    weight, last, second = rule
-    x, y = sign * factor * a * (zone * to_top).sum(), sign * factor * (zone * to_bottom).sum()
-    for p in range(target.shape[1]):
-        v[0, p] = factor.real + 2.0 * (factor.real * t[0, p] - factor.imag * t[1, p])
-        v[1, p] = v[0, p] + x.real * g[0, p] - x.imag * g[1, p]
-        v[1, p] += y.real * bg[0, p] - y.imag * bg[1, p]
-    add_moments(v[1], weight, last, second, moments)
-    for q in range(target.shape[0]):
-        x, y = sign * weight * factor * a * to_top[q], sign * weight * factor * to_bottom[q]
-        for p in range(target.shape[1]):
-            target[q, p] += (
-                weight * v[0, p] + x.real * g[0, p] - x.imag * g[1, p]
-                + y.real * bg[0, p] - y.imag * bg[1, p]
-            )  # fmt: skip
+def any_goes(to_down: Floats, to_up: Floats) -> bool:
+    """Whether anything goes to a destination; mostly the first point tells."""
+    p = 0
+    while p < to_down.size and to_down[p] == 0.0 and to_up[p] == 0.0:
+        p += 1
+    return p < to_down.size
 
 
 @inline
@@ -112,29 +87,32 @@ def add_destination(
     carried: Floats,
     sent: Floats,
     basis: Floats,
-    means: tuple[float, float, float],
+    zone: Floats,
     rule: tuple[float, float, float],
     v: Floats,
     target: Floats,
+    begin: int,
     moments: Floats,
 ) -> None:
-    """Add what goes to one destination to target (z, l) and its moments (3, l).
+    """Add what goes to one destination to target (z, p) from begin on, and its moments (3, l).
 
     to_down, to_up (l,): share of what is sent down, up; sent (3, l) of `sent_up`; basis (3, z) of
-    `directions_of` and its averages; v (5, l) work space.
+    `directions_of`; v (5, l) work space.
     """
     weight, last, second = rule
+    m0, m1, m2 = (zone * basis[0]).sum(), (zone * basis[1]).sum(), (zone * basis[2]).sum()
     for p in range(carried.size):
         v[0, p] = carried[p] * to_down[p]
         v[1, p] = sent[0, p] * to_up[p]
         v[2, p] = sent[1, p] * to_up[p]
         v[3, p] = sent[2, p] * to_up[p]
-        v[4, p] = means[0] * v[0, p] + v[1, p] + means[1] * v[2, p] + means[2] * v[3, p]
+        v[4, p] = m0 * v[0, p] + v[1, p] + m1 * v[2, p] + m2 * v[3, p]
     add_moments(v[4], weight, last, second, moments)
     for q in range(target.shape[0]):
         x0, x1, x2 = weight * basis[0, q], weight * basis[1, q], weight * basis[2, q]
         for p in range(carried.size):
-            target[q, p] += x0 * v[0, p] + weight * v[1, p] + x1 * v[2, p] + x2 * v[3, p]
+            new = x0 * v[0, p] + weight * v[1, p]
+            target[q, begin + p] += new + x1 * v[2, p] + x2 * v[3, p]
 
 
 @kernel
@@ -149,7 +127,7 @@ def combine_radiated(
     value: Floats,
     misses: Floats,
 ) -> None:
-    """Dissipated power and all destinations of every point below the outer light lines.
+    """All destinations of every point below the outer light lines.
 
     Parameters
     ----------
@@ -164,27 +142,22 @@ def combine_radiated(
     zone : float (z,)
         Weights of the average whose error is estimated.
     value : float (2, COLUMNS, z, p), output
-        By orientation and destination, as of `source.radiated`; added to.
+        By orientation and destination, as of `source.radiated`, but for the total, which
+        `collect` compares with their sum; added to.
     misses : float (2, COLUMNS, p), output
         Estimated errors, added to.
     """
     z = source.kz_positions.size
-    widest = (rows.last - rows.first).max()
-    space, work = np.zeros((4, 2, widest)), np.zeros((9, widest))
-    moments = np.zeros((2, COLUMNS, 3, widest))
-    shares, per_row = np.zeros((2, COLUMNS, widest)), np.zeros((2, COLUMNS))
-    basis = np.zeros((3, z))
-    to_top, to_bottom = np.zeros(z, dtype=np.complex128), np.zeros(z, dtype=np.complex128)
+    per_row, basis = np.zeros((2, COLUMNS)), np.zeros((3, z))
     for k in range(nodes.part.size):
         begin = 0
         for row in range(rows.up.size):
-            low, high, iu = rows.first[row], rows.last[row], rows.up[row]
-            points = high - low
-            end = begin + points
-            g, t = space[0, :, :points], space[1, :, :points]
-            bg, v = space[2, :, :points], space[3, :, :points]
-            carried, sent, more = work[0, :points], work[1:4, :points], work[4:9, :points]
-            here = shares[:, :, :points]
+            low, iu = rows.first[row], rows.up[row]
+            points = rows.last[row] - low
+            # Of exactly this length, so that loops over them vectorize.
+            g, t, bg = np.zeros((2, points)), np.zeros((2, points)), np.zeros((2, points))
+            carried, sent, more = np.zeros(points), np.zeros((3, points)), np.zeros((5, points))
+            shares, moments = np.zeros((2, COLUMNS, points)), np.zeros((2, COLUMNS, 3, points))
             for n in range(nodes.first[k], nodes.first[k + 1]):
                 rule, u = (nodes.weight[n], nodes.last[n], nodes.second[n]), nodes.u[n].real
                 if rule[0] == 0.0:
@@ -192,38 +165,24 @@ def combine_radiated(
                 for pol in range(2):
                     kz = emitter_kz(source, pol, complex(nodes.u[n]))
                     phase = exp_i(kz * float(source.kd))
-                    for q in range(z):
-                        to_bottom[q] = exp_i(2.0 * kz * source.kz_positions[q])
-                        to_top[q] = exp_i(2.0 * kz * (source.kd - source.kz_positions[q]))
                     a = complex(up.r[n, pol, 0, iu], up.r[n, pol, 1, iu])
-                    b = down.r[n, pol, :, low:high]
-                    resonance(a, b, phase * phase, g, t, bg)
-                    first_arrivals(sides, pol, u, up, down, n, iu, low, a, phase, per_row, here)
+                    b = down.r[n, pol]
+                    resonance(a, b, low, phase * phase, g, t, bg)
+                    first_arrivals(sides, pol, u, up, down, n, iu, low, a, phase, per_row, shares)
                     for c in range(0 if pol == P else 2, 2 if pol == P else 3):
                         o, sign = min(c, 1), channel(c)[1]
-                        factor = dissipated_factor(c, source, complex(nodes.u[n]), kz) * nodes.du[n]
-                        add_total(
-                            factor, sign, a, to_top, to_bottom, zone, rule, (g, t, bg, v),
-                            value[o, TOTAL, :, begin:end], moments[o, TOTAL, :, :points],
-                        )  # fmt: skip
                         outgoing = outgoing_factor(c, source, u, kz) * nodes.du[n].real
                         for p in range(points):
                             carried[p] = outgoing * (g[0, p] * g[0, p] + g[1, p] * g[1, p])
                         directions_of(source, u, kz, sign, a, basis)
-                        sent_up(source, kz, sign, b, carried, sent)
-                        means = (
-                            (zone * basis[0]).sum(), (zone * basis[1]).sum(),
-                            (zone * basis[2]).sum(),
-                        )  # fmt: skip
+                        sent_up(source, kz, sign, b, low, carried, sent)
                         for column in range(1, COLUMNS):
-                            to_down, to_up = here[0, column], here[1, column]
-                            if to_down.max() == 0.0 and to_up.max() == 0.0:
-                                continue
-                            add_destination(
-                                to_down, to_up, carried, sent, basis, means, rule, more,
-                                value[o, column, :, begin:end], moments[o, column, :, :points],
-                            )  # fmt: skip
+                            if any_goes(shares[0, column], shares[1, column]):
+                                add_destination(
+                                    shares[0, column], shares[1, column], carried, sent, basis,
+                                    zone, rule, more, value[o, column], begin, moments[o, column],
+                                )  # fmt: skip
             for o in range(2):
                 for column in range(COLUMNS):
-                    add_misses(moments[o, column, :, :points], misses[o, column, begin:end])
-            begin = end
+                    add_misses(moments[o, column], misses[o, column], begin)
+            begin += points

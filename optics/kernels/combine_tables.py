@@ -31,9 +31,9 @@ class HalfTable(NamedTuple):
     r: Floats  # (n, 2, 2, v) reflection seen from the emitter film; s, p; real, imaginary
     out: Floats  # (n, 2, v) flux carried out per |amplitude|^2 sent from the emitter film
     loss: Floats  # (n, 2, v) absorbed, likewise
-    # Lit from outside; filled at nodes where a slab sends light back.
     flux: Floats  # (n, 2, v) Re Y of the outer medium
-    ports: Complexes  # (n, 2, 3, v) t outward, t inward, reflection from outside
+    ports: Complexes  # (n, 2, 3, v) t outward; and lit from outside: t inward, reflection,
+    # filled, as what follows, at nodes where this side's slab sends light back.
     outside: Floats  # (n, 2, v) absorbed per |amplitude|^2 sent from outside
     cross: Complexes  # (n, 2, v) cross term of both
 
@@ -102,8 +102,9 @@ def tabulate_half(
                     table.out[n, pol, j] = abs2(work.t[pol, i]) * flux
                     table.loss[n, pol, j] = work.form[0, pol, i].real
                     table.flux[n, pol, j] = flux
+                    # Light that comes back from the other side leaves through this half too.
+                    table.ports[n, pol, 0, j] = work.t[pol, i]
                     if some:
-                        table.ports[n, pol, 0, j] = work.t[pol, i]
                         table.ports[n, pol, 1, j] = work.g[pol, 0, i]
                         table.ports[n, pol, 2, j] = work.r_out[pol, i]
                         table.outside[n, pol, j] = work.form[1, pol, i].real

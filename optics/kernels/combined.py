@@ -51,6 +51,7 @@ _SMALLEST_SCALE = 1e-5
 _MOST_LEAVES = 400
 _ATTEMPTS = 4  # to find nodes for all devices at a wavelength,
 _MORE_PROBES = 4  # each time with the panels of so many that have missed the tolerance
+_STRICTER = 0.1  # by so much stricter
 _FREE = -1  # in the place of a part: the real axis below the outer light lines
 
 
@@ -112,7 +113,8 @@ def combined_budget(
             balance[left[good]] = np.maximum(balance[left[good]], found.balance[good])
             if good.all():
                 break
-            panels = _refined(family, w, panels, left, found, tolerance)
+            stricter = tolerance * _STRICTER ** (attempt + 1)
+            panels = _refined(family, w, panels, left, found, tolerance, stricter)
             left = left[~good]
     mark_cache_warm("combined")
     sums = sums[:, _MIRRORED] if mirrored else sums
@@ -192,9 +194,18 @@ def _first_panels(family: Family, probes: Integers, tolerance: float) -> Iterato
 
 
 def _refined(
-    family: Family, w: int, panels: _Panels, places: Integers, found: _Found, tolerance: float
+    family: Family,
+    w: int,
+    panels: _Panels,
+    places: Integers,
+    found: _Found,
+    tolerance: float,
+    stricter: float,
 ) -> _Panels:
-    """Panels that also suit some of the devices that missed the tolerance, the worst among them."""
+    """Panels that also suit some of the devices that missed the tolerance, the worst among them.
+
+    Stricter than the tolerance, because panels cut for others are cut elsewhere than one's own.
+    """
     missed = np.flatnonzero(~(found.error <= tolerance))
     ranked = missed[np.argsort(-found.error[missed], kind="stable")]
     chosen = ranked[np.unique(np.linspace(0, ranked.size - 1, _MORE_PROBES).astype(int))]
@@ -203,7 +214,7 @@ def _refined(
         device = _device(family, family.pairs[places[place]])
         scale = np.abs(found.power[:, KNOWN - 1, :, place])
         for i, (part, path) in enumerate(zip(panels.part, panels.paths, strict=True)):
-            better[i] = finest([better[i], _leaves(device, w, part, path, scale, tolerance)])
+            better[i] = finest([better[i], _leaves(device, w, part, path, scale, stricter)])
     return panels._replace(panels=better)
 
 
