@@ -67,7 +67,7 @@ def electrical(case: Case, positions: int) -> Handed:
         for name, data in tables.items()
     }
     sentence = "; ".join(
-        f"{name}: {one['positions']} positions from {one['first_nm']:.4g} to {one['last_nm']:.4g} "
+        f"{name}: {one['positions']} cells from {one['first_nm']:.4g} to {one['last_nm']:.4g} "
         f"nm, {one['wavelengths']} wavelengths"
         for name, one in emitters.items()
     )
