@@ -25,7 +25,7 @@ if TYPE_CHECKING:
 
 FILM, SOURCE, OTHER = "film", "source", "other"
 # Films of one block at most, so that progress shows and memory stays small ...
-_MOST_FILMS = 2048
+_MOST_FILMS = 1700
 # ... and points; fewer than this are as quick one by one.
 _MOST_POINTS = 20_000
 FEWEST_POINTS = 6
