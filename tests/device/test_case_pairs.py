@@ -360,8 +360,11 @@ def places(value: Any, path: tuple[Any, ...] = ()) -> Iterator[tuple[Any, ...]]:
     """Paths of every value inside a document."""
     if path:
         yield path
-    entries = value.items() if isinstance(value, dict) else enumerate(value)
-    for key, inner in entries if isinstance(value, dict | list) else ():
+    if isinstance(value, dict):
+        entries = list(value.items())
+    else:
+        entries = list(enumerate(value)) if isinstance(value, list) else []
+    for key, inner in entries:
         yield from places(inner, (*path, key))
 
 
