@@ -91,22 +91,32 @@ def add_misses(moments: Floats, misses: Floats, begin: int) -> None:
 
 
 @inline
-def fill_ways(
-    source: Source, kz: complex, sign: float, to_top: Complexes, to_bottom: Complexes
-) -> None:
-    """Sign times the phase factors (z,) from each dipole to a face of its film and back."""
-    for q in range(source.kz_positions.size):
-        to_bottom[q] = sign * exp_i(2.0 * kz * source.kz_positions[q])
-        to_top[q] = sign * exp_i(2.0 * kz * (source.kd - source.kz_positions[q]))
+def ways_of(source: Source, nodes: Nodes, k: int) -> Complexes:
+    """Phase factors from each dipole to a face of its film and back, at a panel's nodes.
+
+    Returns
+    -------
+    complex (nodes, 2, 2, z)
+        By polarization; to the top face, to the bottom face.
+    """
+    first, end, z = nodes.first[k], nodes.first[k + 1], source.kz_positions.size
+    ways = np.zeros((end - first, 2, 2, z), dtype=np.complex128)
+    for n in range(first, end):
+        for pol in range(2):
+            kz = 2.0 * emitter_kz(source, pol, complex(nodes.u[n]))
+            for q in range(z):
+                ways[n - first, pol, 0, q] = exp_i(kz * (source.kd - source.kz_positions[q]))
+                ways[n - first, pol, 1, q] = exp_i(kz * source.kz_positions[q])
+    return ways
 
 
 @inline
 def add_waves(
     factor: complex,
+    sign: float,
     bulk: float,
     a: complex,
-    to_top: Complexes,
-    to_bottom: Complexes,
+    ways: Complexes,
     zone: Floats,
     rule: tuple[float, float, float],
     g: Floats,
@@ -121,8 +131,8 @@ def add_waves(
 
     Parameters
     ----------
-    factor : complex
-        G; to_top and to_bottom carry the channel's sign.
+    factor, sign : complex, float
+        G and s of the channel.
     bulk : float
         Re G, or 0 where the bulk term is left out.
     rule : (float, float, float)
@@ -133,6 +143,8 @@ def add_waves(
     weight, last, second = rule
     points = v.shape[1]
     fr, fi = 2.0 * factor.real, 2.0 * factor.imag
+    to_top, to_bottom = ways[0], ways[1]
+    factor = sign * factor
     x, y = factor * a * (zone * to_top).sum(), factor * (zone * to_bottom).sum()
     xr, xi, yr, yi = x.real, x.imag, y.real, y.imag
     for p in range(points):
@@ -176,10 +188,9 @@ def combine_dissipated(
     misses : float (PARTS, 3, p), output
         Estimated errors, added to.
     """
-    z = source.kz_positions.size
-    to_top, to_bottom = np.zeros(z, dtype=np.complex128), np.zeros(z, dtype=np.complex128)
     for k in range(nodes.part.size):
         part, begin = nodes.part[k], 0
+        ways = ways_of(source, nodes, k)
         for row in range(rows.up.size):
             low, points = rows.first[row], rows.last[row] - rows.first[row]
             # Of exactly this length, so that loops over them vectorize.
@@ -197,12 +208,11 @@ def combine_dissipated(
                     resonance(a, r_down[n, pol], low, turn, g, t, bg)
                     for c in range(0 if pol == P else 2, 2 if pol == P else 3):
                         sign = channel(c)[1]
-                        fill_ways(source, kz, sign, to_top, to_bottom)
                         factor = dissipated_factor(c, source, complex(nodes.u[n]), kz) * nodes.du[n]
                         bulk = 0.0 if part == NEAR_PART else factor.real
                         add_waves(
-                            factor, bulk, a, to_top, to_bottom, zone, rule, g, t, bg, v,
-                            value[part, c], begin, moments[c],
+                            factor, sign, bulk, a, ways[n - nodes.first[k], pol], zone, rule,
+                            g, t, bg, v, value[part, c], begin, moments[c],
                         )  # fmt: skip
             for c in range(3):
                 add_misses(moments[c], misses[part, c], begin)

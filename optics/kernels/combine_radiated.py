@@ -3,9 +3,11 @@
 See `combine` for the formulas and the order of loops.
 """
 
+import math
+
 import numpy as np
 
-from optics.kernels.arrays import Floats
+from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.combine import (
     Nodes,
     Rows,
@@ -13,6 +15,7 @@ from optics.kernels.combine import (
     add_moments,
     emitter_kz,
     resonance,
+    ways_of,
 )
 from optics.kernels.combine_outside import first_arrivals
 from optics.kernels.combine_tables import HalfTable
@@ -26,25 +29,27 @@ from optics.kernels.source import channel, outgoing_factor
 
 @inline
 def directions_of(
-    source: Source, u: float, kz: complex, sign: float, a: complex, basis: Floats
+    source: Source, ways: Complexes, kz: complex, sign: float, a: complex, basis: Floats
 ) -> None:
     """What sent-down and sent-up power are made of at every position.
 
     Parameters
     ----------
+    ways : complex (2, z)
+        From `ways_of`: to the top face, to the bottom face, and back.
     basis : float (3, z), output
         Row 0, power sent down per (K |g|^2); rows 1 and 2, factors of what `sent_up` says.
     """
     oscillates = abs(kz.real) >= abs(kz.imag)
     turn = abs2(exp_i(kz * float(source.kd)))
-    for q in range(source.kz_positions.size):
-        to_b = exp_i(kz * source.kz_positions[q])
-        to_t = exp_i(kz * (source.kd - source.kz_positions[q]))
-        basis[0, q] = abs2(to_b) * abs2(1.0 + sign * a * to_t * to_t)
+    for q in range(ways.shape[1]):
+        to_top, to_bottom = ways[0, q], ways[1, q]
+        size = math.sqrt(abs2(to_bottom))
+        basis[0, q] = size * abs2(1.0 + sign * a * to_top)
         if oscillates:
-            basis[1, q], basis[2, q] = (to_b * to_b).real, (to_b * to_b).imag
+            basis[1, q], basis[2, q] = to_bottom.real, to_bottom.imag
         else:
-            basis[1, q], basis[2, q] = abs2(to_t), turn * abs2(to_b)
+            basis[1, q], basis[2, q] = math.sqrt(abs2(to_top)), turn * size
 
 
 @inline
@@ -150,7 +155,7 @@ def combine_radiated(
     z = source.kz_positions.size
     per_row, basis = np.zeros((2, COLUMNS)), np.zeros((3, z))
     for k in range(nodes.part.size):
-        begin = 0
+        begin, ways = 0, ways_of(source, nodes, k)
         for row in range(rows.up.size):
             low, iu = rows.first[row], rows.up[row]
             points = rows.last[row] - low
@@ -174,7 +179,7 @@ def combine_radiated(
                         outgoing = outgoing_factor(c, source, u, kz) * nodes.du[n].real
                         for p in range(points):
                             carried[p] = outgoing * (g[0, p] * g[0, p] + g[1, p] * g[1, p])
-                        directions_of(source, u, kz, sign, a, basis)
+                        directions_of(source, ways[n - nodes.first[k], pol], kz, sign, a, basis)
                         sent_up(source, kz, sign, b, low, carried, sent)
                         for column in range(1, COLUMNS):
                             if any_goes(shares[0, column], shares[1, column]):
