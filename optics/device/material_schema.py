@@ -6,7 +6,7 @@ from typing import Annotated, Literal
 
 from pydantic import Field, Tag
 
-from optics.device.schema_parts import AtLeastZero, Part, Share, kinds
+from optics.device.schema_parts import AtLeastZero, ModelNumber, Part, Share, kinds
 
 
 class ConstantModel(Part):
@@ -61,10 +61,10 @@ class SellmeierModel(Part):
 class LorentzDrudeTerms(Part):
     """Free and bound electrons."""
 
-    plasma_eV: AtLeastZero = Field(description="plasma energy in eV")
-    f0: AtLeastZero = Field(description="strength of the free electrons")
-    gamma0_eV: AtLeastZero = Field(description="damping of the free electrons in eV")
-    oscillators: list[Annotated[list[AtLeastZero], Field(min_length=3, max_length=3)]] = Field(
+    plasma_eV: ModelNumber = Field(description="plasma energy in eV")
+    f0: ModelNumber = Field(description="strength of the free electrons")
+    gamma0_eV: ModelNumber = Field(description="damping of the free electrons in eV")
+    oscillators: list[Annotated[list[ModelNumber], Field(min_length=3, max_length=3)]] = Field(
         default=[], description="a list of [f, Γ in eV, ω in eV]"
     )
 

@@ -12,6 +12,8 @@ TAG_MARK = "kind:"
 Name = Annotated[str, Field(pattern=NAME_PATTERN)]
 Positive = Annotated[float, Field(gt=0)]
 AtLeastZero = Annotated[float, Field(ge=0)]
+# Energies in eV and strengths of oscillators; squares of far larger ones would overflow.
+ModelNumber = Annotated[float, Field(ge=0, le=1e6)]
 # Beyond a centimeter a film is no coherent film any more; below a millionth of a nanometer a zone
 # is a point.
 Thickness = Annotated[float, Field(ge=0, le=1e7)]
