@@ -189,7 +189,9 @@ def _multiples(found: xarray.Dataset) -> tuple[Figure, str]:
         for j, column in enumerate(columns):
             at = {across: column} | ({} if down is None or row is None else {down: row})
             panels.append(data.sel(at))
-            grid[i, j].set_title(spot(found, at).replace(", ", "\n"), fontsize=SMALL_SIZE, color=INK)
+            grid[i, j].set_title(
+                spot(found, at).replace(", ", "\n"), fontsize=SMALL_SIZE, color=INK
+            )
             if best is not None and all(best[path] == value for path, value in at.items()):
                 _star(grid[i, j], found, best)
     _map(figure, list(grid.flat), panels, f"{name}{f' ({unit})' if unit else ''}")
