@@ -57,6 +57,8 @@ _SMALLEST_SCALE = 1e-5  # errors are relative to the dissipated power, but not b
 # Of the arcs that parts of the total run on; other than the total's own, so that a pole that one
 # of them passes under shows.
 _FLATNESS = 0.7
+# Of the wanted accuracy: parts that differ from the total by more hide something narrow.
+_SUSPICIOUS = 0.1
 _PANEL_SHARE = 0.05  # of the wanted accuracy, allowed to one panel
 
 
@@ -124,8 +126,10 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
 
     parts = Parts(by_orientation(total), free, guided, beyond, near)
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
-    error = np.maximum(error, _disagreement(parts, scale))
-    careful = ~(error <= tolerance) | backward_modes_possible(problem)
+    gap = _disagreement(parts, scale)
+    careful = ~(error <= tolerance) | ~(gap <= _SUSPICIOUS * tolerance)
+    careful |= backward_modes_possible(problem)
+    error = np.maximum(error, gap)
     for row in np.flatnonzero(careful).tolist():
         error[row] = _settle(
             problem, row, lines[row], start[row], far[row], scale, per_panel, parts

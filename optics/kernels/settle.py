@@ -10,6 +10,8 @@ negative, so of the arcs below and above the axis the one that finds more has mi
 axis itself has no say there: next to a narrow pole its nodes may find far too much.
 """
 
+from itertools import pairwise
+
 import numpy as np
 
 from optics.kernels.arrays import Floats
@@ -25,6 +27,7 @@ _NARROW_FREE = 1e-6
 _MOST_INTERVALS = 300  # at one level; more are taken as they are, with their disagreement
 _POINT = 1e-11  # width at which an unresolved resonance counts as located
 _AGREEMENT = 3.0  # two panels' worth of error and a margin
+_SHORTEST = 1e-13  # distance at which two light lines are one
 _FAR_OCTAVES = 5  # beyond the start of the near field, looked at one by one
 
 
@@ -43,8 +46,9 @@ class Careful:
         """Dissipated power (3, z) from lo to hi, both beyond the outer light lines."""
         z = self._scale.shape[2]
         found, error = np.zeros((3, z)), 0.0
-        intervals = np.array([[lo, hi]])
-        if np.isinf(hi):
+        if np.isfinite(hi):
+            intervals = _graded(lo, hi)
+        else:
             octaves = lo * 2.0 ** np.arange(_FAR_OCTAVES + 1)
             intervals = np.column_stack([octaves[:-1], octaves[1:]])
             tail = Tasks.on(np.array([self._row]), TAIL, octaves[-1:], hi, octaves[-1:])
@@ -74,8 +78,8 @@ class Careful:
         """
         z = self._scale.shape[2]
         found, error = np.zeros((2, COLUMNS, z)), 0.0
-        intervals = np.column_stack([lines[:-1], lines[1:]])
-        intervals = intervals[intervals[:, 1] - intervals[:, 0] > 1e-13]
+        pairs = [(lo, hi) for lo, hi in pairwise(lines.tolist()) if hi - lo > _SHORTEST]
+        intervals = np.concatenate([_graded(lo, hi) for lo, hi in pairs])
         while intervals.size:
             straight, miss = self._destinations(intervals)
             lack = self._lack(straight, self._on_arc(intervals, 1.0))
@@ -145,6 +149,18 @@ class Careful:
         shares = here / np.where(known > 0.0, known, 1.0)[:, None]
         shares[:, TOTAL] = 1.0
         return shares * lack[:, None]
+
+
+def _graded(lo: float, hi: float) -> Floats:
+    """Intervals (t, 2) from lo to hi that shrink toward both ends.
+
+    A mode next to its cut-off changes the integrand within so little of a light line that no
+    node of a long panel falls there.
+    """
+    near = 0.5 * np.append(0.0, 10.0 ** np.arange(-10.0, 1.0, 2.0))
+    edges = lo + (hi - lo) * np.append(near, 1.0 - near[-2::-1])
+    pairs = np.column_stack([edges[:-1], edges[1:]])
+    return pairs[pairs[:, 1] > pairs[:, 0]]
 
 
 def _halved(intervals: Floats) -> Floats:

@@ -15,6 +15,7 @@ import reference_fields as fields
 import reference_paths as paths
 from reference import Reference, Result
 from reference_cases import load
+from scipy.optimize import brentq
 from stacks import (
     DESTINATIONS,
     HORIZONTAL,
@@ -166,3 +167,50 @@ def test_a_mirror_without_loss_or_end_is_told_and_not_waited_for() -> None:
     found = solved(Reference(600.0, [film(1.5, 80.0)], 1e10j, 1.5**2 + 0j, 0, 40.0))
     assert np.isfinite(found.shares).all()
     assert found.error[0] > PROMISE
+
+
+def guided_te(thickness_nm: float, part: float) -> float:
+    """Guided TE power of a horizontal dipole in the slab 1.8 between 1.5 and air, closed form.
+
+    Item 4 of the published values: derived, recomputed; modes by bisection.
+    """
+    core, below, above, k0 = 1.8, 1.5, 1.0, 2 * np.pi / 550.0
+    power = 0.0
+    for m in range(3):
+
+        def phase(n: float, m: int = m) -> float:
+            h = np.sqrt(core**2 - n * n)
+            bent = np.arctan(np.sqrt(max(n * n - below**2, 0.0)) / h)
+            bent += np.arctan(np.sqrt(n * n - above**2) / h)
+            return float(k0 * h * thickness_nm - bent - m * np.pi)
+
+        if phase(below) <= 0.0:
+            continue
+        n = brentq(phase, below, core - 1e-12, xtol=1e-16, rtol=1e-15)
+        h, g_b, g_t = (k0 * np.sqrt(abs(n * n - x * x)) for x in (core, below, above))
+        extent = thickness_nm + 1 / g_b + 1 / g_t
+        angle = h * part * thickness_nm - np.arctan2(g_b, h)
+        power += 3 * np.pi / (4 * k0 * core) * 2 / extent * np.cos(angle) ** 2
+    return power
+
+
+@pytest.mark.parametrize("off", [-1e-5, -1e-6, 1e-6, 3e-6, 1e-5])
+def test_a_mode_at_its_cut_off_is_not_overlooked(off: float) -> None:
+    """Once wrong by 5e-6: TE1 within 1e-5 of its cut-off changes all within 1e-11 of a light line.
+
+    TM0 is far from cut-off, so guided power less that of the TE modes hardly changes.
+    """
+    k0 = 2 * np.pi / 550.0
+    h = k0 * np.sqrt(1.8**2 - 1.5**2)
+    cut_off = (np.pi + np.arctan(k0 * np.sqrt(1.5**2 - 1.0) / h)) / h
+
+    def rest(thickness_nm: float) -> float:
+        part = 0.3
+        films = [film(1.8, thickness_nm)]
+        found = solved(Reference(550.0, films, 2.25 + 0j, 1.0 + 0j, 0, part * thickness_nm))
+        guided = float(found.shares[0, 0, HORIZONTAL, engine.GUIDED])
+        return guided - guided_te(thickness_nm, part)
+
+    far = rest(cut_off * (1 + 1e-3))
+    # The TM0 share itself turns by 2e-7 over this range.
+    assert rest(cut_off * (1 + off)) == pytest.approx(far, abs=PROMISE)
