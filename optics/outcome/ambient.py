@@ -325,7 +325,7 @@ def _warnings(case: Case, grid: Floats, lost: float) -> list[str]:
     said = []
     if lost > _LARGE_LOST_SHARE:
         said.append(
-            f"{100.0 * lost:.2g} % of daylight, as the eye weighs it, lies outside {grid[0]:g} to "
+            f"{100.0 * lost:.3g} % of daylight, as the eye weighs it, lies outside {grid[0]:g} to "
             f"{grid[-1]:g} nm, where optical constants or filters end; luminous values leave it out"
         )
     stack = case.stack

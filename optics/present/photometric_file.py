@@ -27,7 +27,7 @@ if TYPE_CHECKING:
 
     Floats = NDArray[np.float64]
 
-LONGEST_LINE = 256
+LONGEST_LINE = 254  # 256 with the two characters that end it
 #: Largest difference between what the file integrates to and the luminous flux.
 FLUX_TOLERANCE = 1e-3
 # Angles get closer until the difference is a tenth of what is allowed.
@@ -130,10 +130,11 @@ def _at_step(case: Case, size_mm: tuple[float, float], side: str | None, step_de
     if side not in exitance:
         raise ValueError(f"side: found {side!r}; expected bottom or top")
     if not exitance[side] > 0.0:
-        raise ValueError(f"side {side}: found no visible light; expected some to hand on")
+        raise CaseError([Fault(case.label, f"side {side}", "no visible light", "some to hand on")])
     luminance = seen.sides[side].luminance_cd_m2 or ()
     if any(one is None for one in luminance):
-        raise ValueError(f"side {side}: radiance grows without bound toward 90 deg")
+        found = "radiance that grows without bound toward 90 deg"
+        raise CaseError([Fault(case.label, f"side {side}", found, "a face that turns it back")])
     area_m2 = size_mm[0] * size_mm[1] / _MM_PER_M**2
     cosine = np.cos(np.deg2rad(angle))
     cosine[-1] = 0.0

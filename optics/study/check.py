@@ -13,6 +13,7 @@ from optics.kernels import budget as engine
 from optics.outcome.budget import DEFAULT_TOLERANCE, budget
 from optics.outcome.light import problem_of
 from optics.study.check_averages import average_rows
+from optics.study.check_directions import direction_rows
 from optics.study.check_fields import far_field_rows, outside_rows
 from optics.study.check_powers import QUANTITIES, powers
 from optics.study.check_rows import KINDS, Place, Row, compared, not_checked
@@ -113,7 +114,8 @@ def check(
     """Recompute a case by independent means and compare.
 
     Far field by reciprocity and light from outside through a general thin-film library, all
-    destinations by quadrature on the real axis, the energy balance, and the averages. At the
+    destinations by quadrature on the real axis, the energy balance, light added up over all
+    directions, and the averages. At the
     first, middle and last position of each emitter's zone.
 
     Parameters
@@ -137,11 +139,15 @@ def check(
     _refuse(case, wavelengths_nm, angles_deg)
     outcome = budget(case)
     rows: list[Row] = []
+    looked_at: dict[str, list[float]] = {}
     for emitter in case.emitters:
         data = outcome.spectral[emitter.name]
-        for index in _wavelengths(data, wavelengths_nm):
+        picked = _wavelengths(data, wavelengths_nm)
+        looked_at[emitter.name] = data["wavelength_nm"].to_numpy()[picked].tolist()
+        for index in picked:
             rows += _point_rows(case, emitter, data.isel(wavelength_nm=index), angles_deg)
         rows += _energy_rows(emitter, data)
+    rows += direction_rows(case, outcome, looked_at)
     result = outcome.to_dict()
     rows += _chain_rows(result)
     rows += average_rows(case, result, outcome.spectral)

@@ -28,6 +28,10 @@ KINDS: dict[str, tuple[str, str]] = {
         "the dissipated power (of a chain: the charge injected)",
         "accuracy asked of the engine: absorption comes from fields, the total from its own path",
     ),
+    "all directions": (
+        "the power of the same excitons in the bulk medium",
+        "accuracy asked of the engine; the integral over angles is refined until it stands still",
+    ),
     "average": (
         "the value, or 1 where it is smaller",
         "the same sums in another order: rounding only",

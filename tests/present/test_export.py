@@ -169,7 +169,7 @@ def test_panels_without_light_or_drive_are_refused() -> None:
     with pytest.raises(ValueError, match="size: found 0 x 10 mm; expected two lengths above 0"):
         panel(case(driven(pixel())), (0.0, 10.0))
     on_silicon = case(DEVICES["on silicon"]())
-    with pytest.raises(ValueError, match="side bottom: found no visible light"):
+    with pytest.raises(CaseError, match="side bottom: found no visible light"):
         panel(on_silicon, (10.0, 10.0), "bottom")
 
 
