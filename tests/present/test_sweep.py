@@ -260,10 +260,20 @@ def test_ctrl_c_keeps_what_is_done(tmp_path: Path) -> None:
     case.write_text(CASE + many)
     command = [sys.executable, "-m", "optics.cli", "sweep", str(case)]
     environment = {"XDG_CACHE_HOME": str(tmp_path), "PATH": "", "PYTHONUNBUFFERED": "1"}
-    with subprocess.Popen(command, stderr=subprocess.PIPE, text=True, env=environment) as process:
+    with subprocess.Popen(
+        command,
+        stderr=subprocess.PIPE,
+        text=True,
+        env=environment,
+        # A test run in the background inherits deafness to Ctrl-C.
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
+    ) as process:
         deadline = time.monotonic() + 300
         kept = tmp_path / "outcouple" / "studies"
-        while not list(kept.glob("sweep-*.part")) and time.monotonic() < deadline:
+        seen: set[int] = set()
+        # Once the file has grown there are points to keep.
+        while len(seen) < 2 and time.monotonic() < deadline:
+            seen |= {part.stat().st_size for part in kept.glob("sweep-*.part")}
             time.sleep(0.1)
         process.send_signal(signal.SIGINT)
         _, said = process.communicate(timeout=60)
