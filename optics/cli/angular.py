@@ -61,7 +61,6 @@ def angular(
 
     import optics
     from optics.kernels.angles import angles_are_compiled
-    from optics.kernels.compiled import mark_cache_warm
     from optics.outcome.angular import DEFAULT_ANGLES_DEG, faults_of_angles
     from optics.present.cautions import brightest_cd_m2, cautions
     from optics.present.terminal import compiling_notice
@@ -72,7 +71,6 @@ def angular(
     device = optics.read_case(case)
     with compiling_notice(needed=not angles_are_compiled()):
         outcome = optics.angular(device, asked)
-    mark_cache_warm()
     result = outcome.to_dict(spectral=spectral, polarization=polarization)
     choice = {"spectral": spectral, "polarization": polarization}
     writers: dict[str, Writer] = {

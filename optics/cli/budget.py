@@ -50,13 +50,12 @@ def budget(
 
     device = optics.read_case(case)
 
-    from optics.kernels.compiled import cache_is_warm, mark_cache_warm
+    from optics.kernels.compiled import cache_is_warm
     from optics.present.cautions import cautions
     from optics.present.terminal import compiling_notice
 
     with compiling_notice(needed=not cache_is_warm()):
         outcome = optics.budget(device, tolerance=tolerance)
-    mark_cache_warm()
     result = outcome.to_dict()
     writers: dict[str, Writer] = {
         ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
