@@ -119,10 +119,14 @@ def run(
 
 
 def _check_shown(plan: Plan, shown: Sequence[str]) -> None:
-    names = [outcome.name for outcome in plan.outcomes]
+    names = [outcome.name for outcome in plan.question.outcomes]
     faults = [
         Fault(
-            plan.case.label, "--outcome", name, f"one of {', '.join(names)}", nearest(name, names)
+            plan.question.case.label,
+            "--outcome",
+            name,
+            f"one of {', '.join(names)}",
+            nearest(name, names),
         )
         for name in shown
         if name not in names
@@ -137,7 +141,7 @@ def _say_compiling(plan: Plan) -> None:
     from optics.kernels.compiled import cache_is_warm
     from optics.present.terminal import COMPILING
 
-    by_angle = any(outcome.needs_angular for outcome in plan.outcomes)
+    by_angle = any(outcome.needs_angular for outcome in plan.question.outcomes)
     if not cache_is_warm() or (by_angle and not angles_are_compiled()):
         print(COMPILING, file=sys.stderr)
 

@@ -2,20 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
-from contextlib import closing
+from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from optics._version import VERSION
 from optics.outcome.budget import DEFAULT_TOLERANCE
-from optics.study.executor import completed, cores, executor_or_threads
-from optics.study.store import Store, content_key
+from optics.study import evaluate
+from optics.study.evaluate import TRUST, Progress, compute_batch, gather, small_parts
 from optics.study.sweep_blocks import blocks, combines
-from optics.study.sweep_combined import compute_block
+from optics.study.sweep_combined import Block, compute_block
 from optics.study.sweep_plan import Plan, plan_sweep
-from optics.study.sweep_points import TRUST, Batch, Found, compute_batch
 
 if TYPE_CHECKING:
     from concurrent.futures import Executor
@@ -25,14 +23,11 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from optics.device.case import Case
+    from optics.study.store import Store
 
     Floats = NDArray[np.float64]
-    Integers = NDArray[np.int64]
 
 SCHEMA = "outcouple.sweep/1"
-Progress = Callable[[int, int], object]
-# Points of one task at most: a stop loses no more than those of the running tasks.
-_LARGEST_BATCH = 8
 _LARGE_NEAR_FIELD = 0.01
 _MOST_NAMED = 20
 
@@ -113,67 +108,39 @@ def store_for(plan: Plan, folder: Path) -> Store:
     folder : Path
         Need not exist yet.
     """
-    from optics.kernels.compiled import CACHE_FOLDER
-
-    content = {
-        "case": plan.case.sha256,
-        "axes": [[axis.path, *axis.values] for axis in plan.axes],
-        "followers": [list(pair) for pair in plan.followers],
-        "outcomes": [outcome.name for outcome in plan.outcomes],
-        "tolerance": plan.tolerance,
-        "version": VERSION,
-        "kernels": CACHE_FOLDER.name,
-    }
-    width = len(plan.outcomes) + len(TRUST)
-    return Store(folder / f"sweep-{content_key(content)}.part", width, plan.points)
+    axes = [[axis.path, *axis.values] for axis in plan.axes]
+    return evaluate.store_for(plan.question, folder, "sweep", {"axes": axes}, plan.points)
 
 
 def _compute(
     plan: Plan, executor: Executor | None, progress: Progress | None, store: Store | None
 ) -> tuple[Floats, dict[int, str]]:
     """Values (points, outcomes + TRUST) of the whole grid, and the reasons of failed points."""
-    values = np.full((plan.points, len(plan.outcomes) + len(TRUST)), np.nan)
-    known = np.zeros(plan.points, dtype=np.bool_)
-    if store is not None:
-        places, kept = store.load()
-        values[places], known[places] = kept, True
-    failed: dict[int, str] = {}
-
-    def take(found: Found) -> None:
-        values[found.places], known[found.places] = found.values, True
-        failed.update(found.failed)
-        if store is not None:
-            store.add(found.places, found.values)
-        if progress is not None:
-            progress(int(known.sum()) + len(failed), plan.points)
-
-    if progress is not None:
-        progress(int(known.sum()), plan.points)
+    values = np.full((plan.points, plan.question.width), np.nan)
     if combines(plan):
-        compute, batches = compute_block, _blocks(plan, known)
-    else:
-        compute, batches = compute_batch, _batches(plan, known)
-    with (
-        executor_or_threads(executor) as pool,
-        closing(completed(pool, compute, batches)) as results,
-    ):
-        for found in results:
-            take(found)
-    return values, failed
+        return gather(
+            compute_block,
+            lambda known: _blocks(plan, known),
+            values,
+            executor=executor,
+            progress=progress,
+            store=store,
+        )
+    return gather(
+        compute_batch,
+        lambda known: map(plan.batch, small_parts(np.flatnonzero(~known))),
+        values,
+        executor=executor,
+        progress=progress,
+        store=store,
+    )
 
 
-def _blocks(plan: Plan, known: NDArray[np.bool_]) -> Iterator[Batch]:
+def _blocks(plan: Plan, known: NDArray[np.bool_]) -> Iterator[Block]:
     """Blocks that are not known whole; the others again, so that they keep their numbers."""
     for places in blocks(plan):
         if not known[places].all():
-            yield Batch(plan, places)
-
-
-def _batches(plan: Plan, known: NDArray[np.bool_]) -> Iterator[Batch]:
-    left = np.flatnonzero(~known)
-    size = max(1, min(_LARGEST_BATCH, left.size // (4 * cores())))
-    for start in range(0, left.size, size):
-        yield Batch(plan, left[start : start + size])
+            yield Block(plan, places)
 
 
 def _dataset(plan: Plan, values: Floats, failed: dict[int, str], said: list[str]) -> xarray.Dataset:
@@ -186,12 +153,12 @@ def _dataset(plan: Plan, values: Floats, failed: dict[int, str], said: list[str]
             values[:, place].reshape(plan.shape),
             {"units": outcome.units, "long_name": ".".join(outcome.keys)},
         )
-        for place, outcome in enumerate(plan.outcomes)
+        for place, outcome in enumerate(plan.question.outcomes)
     }
     coords: dict[str, Any] = {
         axis.path: (axis.path, np.array(axis.values), {"units": axis.units}) for axis in plan.axes
     }
-    for path, place in plan.followers:
+    for path, place in plan.question.followers:
         leader = plan.axes[place]
         about = {"units": leader.units, "long_name": f"follows {leader.path}"}
         coords[path] = (leader.path, np.array(leader.values), about)
@@ -202,14 +169,14 @@ def _dataset(plan: Plan, values: Floats, failed: dict[int, str], said: list[str]
         attrs={
             "schema": SCHEMA,
             "version": VERSION,
-            "title": plan.case.title,
-            "case_sha256": plan.case.sha256,
-            "tolerance": plan.tolerance,
+            "title": plan.question.case.title,
+            "case_sha256": plan.question.case.sha256,
+            "tolerance": plan.question.tolerance,
             **{
-                key: _largest(values[:, len(plan.outcomes) + place])
+                key: _largest(values[:, len(plan.question.outcomes) + place])
                 for place, key in enumerate(TRUST)
             },
-            "warnings": "\n".join([*plan.case.warnings, *said, *_doubts(plan, values)]),
+            "warnings": "\n".join([*plan.question.case.warnings, *said, *_doubts(plan, values)]),
             "failed": "\n".join(names),
         },
     )
@@ -222,8 +189,14 @@ def _largest(column: Floats) -> float:
 
 def _doubts(plan: Plan, values: Floats) -> Iterator[str]:
     """What is to be known about points although they did not fail."""
-    limits = dict(zip(TRUST, (plan.tolerance, plan.tolerance, _LARGE_NEAR_FIELD), strict=True))
-    for place, (key, limit) in enumerate(limits.items(), len(plan.outcomes)):
+    limits = dict(
+        zip(
+            TRUST,
+            (plan.question.tolerance, plan.question.tolerance, _LARGE_NEAR_FIELD),
+            strict=True,
+        )
+    )
+    for place, (key, limit) in enumerate(limits.items(), len(plan.question.outcomes)):
         column = values[:, place]
         # Written so that a value that is no number is told too, but not a point that failed.
         beyond = np.flatnonzero(np.isinf(column) | (column > limit))

@@ -47,7 +47,7 @@ class Kinds:
 
 def kinds_of(plan: Plan) -> Kinds:
     """Sort the axes of a plan; an axis whose followers are of another kind is `other`."""
-    emitting = {emitter.layer for emitter in plan.case.emitters}
+    emitting = {emitter.layer for emitter in plan.question.case.emitters}
 
     def kind(path: str) -> str:
         film = _FILM.fullmatch(path)
@@ -57,7 +57,7 @@ def kinds_of(plan: Plan) -> Kinds:
 
     found: dict[str, list[int]] = {FILM: [], SOURCE: [], OTHER: []}
     for place, axis in enumerate(plan.axes):
-        paths = [axis.path, *(path for path, leader in plan.followers if leader == place)]
+        paths = [axis.path, *(path for path, leader in plan.question.followers if leader == place)]
         kinds = {kind(path) for path in paths}
         found[kinds.pop() if len(kinds) == 1 else OTHER].append(place)
     return Kinds(tuple(found[FILM]), tuple(found[SOURCE]), tuple(found[OTHER]))
@@ -65,7 +65,7 @@ def kinds_of(plan: Plan) -> Kinds:
 
 def combines(plan: Plan) -> bool:
     """Whether a plan gains from half stacks that are shared: emission against angle does not."""
-    if any(outcome.needs_angular for outcome in plan.outcomes):
+    if any(outcome.needs_angular for outcome in plan.question.outcomes):
         return False
     kinds = kinds_of(plan)
     shared = [plan.shape[place] for place in (*kinds.film, *kinds.source)]

@@ -10,9 +10,9 @@ from optics.device.zone import zone_interval
 from optics.kernels.combined import Combined, Family, combined_budget
 from optics.kernels.geometry import backward_modes_possible
 from optics.outcome.light import problem_of, quadrature
+from optics.study.evaluate import Found, compute_batch
 from optics.study.sweep_blocks import FEWEST_POINTS, kinds_of
 from optics.study.sweep_outcomes import Source, emitter_averages, outcome_values
-from optics.study.sweep_points import Batch, Found, compute_batch
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -30,7 +30,14 @@ if TYPE_CHECKING:
 _MOST_PROBES = 9
 
 
-class _Block(NamedTuple):
+class Block(NamedTuple):
+    """A block of `sweep_blocks.blocks`, to be computed in one task."""
+
+    plan: Plan
+    places: Integers  # (n,) in its grid
+
+
+class _Grid(NamedTuple):
     """A block's grid: points are films times sources."""
 
     plan: Plan
@@ -40,36 +47,38 @@ class _Block(NamedTuple):
     sources: Sequence[Case]  # (s,) the same films
 
 
-def compute_block(batch: Batch) -> Found:
-    """Compute a block of `sweep_blocks.blocks`; points that miss the tolerance one by one.
+def compute_block(block: Block) -> Found:
+    """Compute a block; points that miss the tolerance one by one.
 
     Stacks that may carry backward modes are left to the careful way of single points, and so is
     every point that this way cannot place: those are the ones whose failures are to be named.
     """
-    plan = batch.plan
-    if batch.places.size < FEWEST_POINTS:
-        return compute_batch(batch)
-    block = _block(plan, batch.places)
-    if block is None:
-        return compute_batch(batch)
-    emitters = [_Light(block, index) for index in range(len(block.thinnest.emitters))]
+    plan = block.plan
+    if block.places.size < FEWEST_POINTS:
+        return compute_batch(plan.batch(block.places))
+    grid = _grid(plan, block.places)
+    if grid is None:
+        return compute_batch(plan.batch(block.places))
+    emitters = [_Light(grid, index) for index in range(len(grid.thinnest.emitters))]
     if any(light.is_hard for light in emitters):
-        return compute_batch(batch)
+        return compute_batch(plan.batch(block.places))
     combined = [light.compute() for light in emitters]
     error = np.max([one.error for one in combined], axis=0)
     balance = np.max([one.balance for one in combined], axis=0)
     places, values = [], []
-    for number, case in enumerate(block.sources):
+    for number, case in enumerate(grid.sources):
         averages = [
             emitter_averages(light.source(number), one.sums)
             for light, one in zip(emitters, combined, strict=True)
         ]
         near = np.max([one.near_field_share for one in averages], axis=0)
-        found = outcome_values(case, averages, plan.outcomes, error, balance)
-        places.append(block.places[:, number])
+        found = outcome_values(case, averages, plan.question.outcomes, error, balance)
+        places.append(grid.places[:, number])
         values.append(np.column_stack([*found, balance, error, near]))
     every, numbers = np.concatenate(places), np.concatenate(values)
-    trusted = np.tile((error <= plan.tolerance) & (balance <= plan.tolerance), len(block.sources))
+    trusted = np.tile(
+        (error <= plan.question.tolerance) & (balance <= plan.question.tolerance), len(grid.sources)
+    )
     return _completed(plan, every, numbers, trusted)
 
 
@@ -77,7 +86,7 @@ def _completed(plan: Plan, places: Integers, values: Floats, trusted: NDArray[np
     """Add the points that are to be computed one by one."""
     if trusted.all():
         return Found(places, values, ())
-    again = compute_batch(Batch(plan, places[~trusted]))
+    again = compute_batch(plan.batch(places[~trusted]))
     return Found(
         np.concatenate([places[trusted], again.places]),
         np.concatenate([values[trusted], again.values]),
@@ -85,7 +94,7 @@ def _completed(plan: Plan, places: Integers, values: Floats, trusted: NDArray[np
     )
 
 
-def _block(plan: Plan, places: Integers) -> _Block | None:
+def _grid(plan: Plan, places: Integers) -> _Grid | None:
     """Cases of a block; None if the case refuses any of them, or zones depend on the films."""
     from optics.device.errors import CaseError
 
@@ -98,12 +107,12 @@ def _block(plan: Plan, places: Integers) -> _Block | None:
     for place in kinds.film:
         ends[0][place], ends[1][place] = films[:, place].min(), films[:, place].max()
     try:
-        thick = plan.case.replace_all(plan.changes(ends[1]))
+        thick = plan.question.case.replace_all(plan.question.changes(ends[1]))
         cases = []
         for source in values[0]:
             chosen = ends[0].copy()
             chosen[list(kinds.source)] = source[list(kinds.source)]
-            cases.append(plan.case.replace_all(plan.changes(chosen)))
+            cases.append(plan.question.case.replace_all(plan.question.changes(chosen)))
     except CaseError:
         return None
     for emitter in cases[0].emitters:
@@ -114,13 +123,15 @@ def _block(plan: Plan, places: Integers) -> _Block | None:
         if len(intervals) > 1:
             # A film between zone and absorber is thinner than the closest approach, here or there.
             return None
-    return _Block(plan, grid, _thicknesses(plan, cases[0], films), cases[0], cases)
+    return _Grid(plan, grid, _thicknesses(plan, cases[0], films), cases[0], cases)
 
 
 def _thicknesses(plan: Plan, case: Case, films: Floats) -> Floats:
     """Thickness of every film (f, films) at each combination of values."""
     thickness = np.tile(case.stack.thickness_nm, (len(films), 1))
-    leaders = {axis.path: place for place, axis in enumerate(plan.axes)} | dict(plan.followers)
+    leaders = {axis.path: place for place, axis in enumerate(plan.axes)} | dict(
+        plan.question.followers
+    )
     for path, place in leaders.items():
         section, name, *rest = path.split(".")
         if section == "layers" and rest == ["thickness_nm"]:
@@ -131,17 +142,17 @@ def _thicknesses(plan: Plan, case: Case, films: Floats) -> Floats:
 class _Light:
     """One emitter's light in all points of a block."""
 
-    def __init__(self, block: _Block, index: int) -> None:
-        self._block = block
-        first = block.thinnest.emitters[index]
-        self._emitters: list[Emitter] = [case.emitters[index] for case in block.sources]
-        self._wavelength_nm = first.spectrum.grid_nm(block.thinnest.wavelength_nm)
+    def __init__(self, grid: _Grid, index: int) -> None:
+        self._grid = grid
+        first = grid.thinnest.emitters[index]
+        self._emitters: list[Emitter] = [case.emitters[index] for case in grid.sources]
+        self._wavelength_nm = first.spectrum.grid_nm(grid.thinnest.wavelength_nm)
         self._zones: list[tuple[Floats, Floats]] = []
         self._zone_of: list[int] = []
         self._theta_of: list[int] = []
         thetas: list[float] = []
         known: dict[bytes, int] = {}
-        for case, emitter in zip(block.sources, self._emitters, strict=True):
+        for case, emitter in zip(grid.sources, self._emitters, strict=True):
             zone = quadrature(case, emitter, self._wavelength_nm)
             key = np.concatenate(zone).tobytes()
             if known.setdefault(key, len(self._zones)) == len(self._zones):
@@ -152,7 +163,7 @@ class _Light:
             self._theta_of.append(thetas.index(emitter.horizontal_fraction))
         positions = np.concatenate([position for position, _ in self._zones])
         self._weights = np.concatenate([weight for _, weight in self._zones]) / len(self._zones)
-        self._problem: Problem = problem_of(block.thinnest, first, self._wavelength_nm, positions)
+        self._problem: Problem = problem_of(grid.thinnest, first, self._wavelength_nm, positions)
         self._thetas = np.array(thetas)
 
     @property
@@ -163,7 +174,7 @@ class _Light:
     def compute(self) -> Combined:
         """Spectral averages at every position, one for each orientation that occurs."""
         film = self._emitters[0].film_index
-        thickness = self._block.thickness_nm
+        thickness = self._grid.thickness_nm
         up, of_up = np.unique(thickness[:, film + 1 :], axis=0, return_inverse=True)
         down, of_down = np.unique(thickness[:, :film][:, ::-1], axis=0, return_inverse=True)
         k0_nm = 2.0 * np.pi / self._wavelength_nm
@@ -171,7 +182,7 @@ class _Light:
         pairs = np.stack([of_up.ravel(), of_down.ravel()], axis=1)
         family = Family(self._problem, kd[0], kd[1], pairs)
         return combined_budget(
-            family, _probes(pairs), self._weights, self._mix(), self._block.plan.tolerance
+            family, _probes(pairs), self._weights, self._mix(), self._grid.plan.question.tolerance
         )
 
     def source(self, number: int) -> Source:

@@ -10,6 +10,8 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from optics.device.errors import CaseError, Fault
+from optics.study.evaluate import Batch, Question
+from optics.study.linked import Varied, find_followers
 from optics.study.outcomes import Outcome, default_outcomes, find_outcomes
 
 if TYPE_CHECKING:
@@ -50,21 +52,14 @@ class Plan:
 
     Attributes
     ----------
-    case : Case
+    question : Question
+        Varies the axes.
     axes : tuple of Axis
         The last one varies fastest.
-    followers : tuple of (str, int)
-        Linked paths, each with the axis whose value it takes.
-    outcomes : tuple of Outcome
-    tolerance : float
-        Wanted accuracy of every destination, as a fraction of the dissipated power.
     """
 
-    case: Case
+    question: Question
     axes: tuple[Axis, ...]
-    followers: tuple[tuple[str, int], ...]
-    outcomes: tuple[Outcome, ...]
-    tolerance: float
 
     @property
     def shape(self) -> tuple[int, ...]:
@@ -82,16 +77,13 @@ class Plan:
         columns = [np.array(axis.values)[i] for axis, i in zip(self.axes, indices, strict=True)]
         return np.stack(columns, axis=-1)
 
-    def changes(self, values: Floats) -> dict[str, float]:
-        """Values by path of one grid point (axes,), followers included."""
-        every = {axis.path: float(v) for axis, v in zip(self.axes, values, strict=True)}
-        return every | {path: float(values[place]) for path, place in self.followers}
-
     def name_of(self, place: int) -> str:
         """Name a grid point for people, such as ``layers.HTL.thickness_nm = 40``."""
-        values = self.values_at(np.array([place]))[0]
-        pairs = zip(self.axes, values, strict=True)
-        return ", ".join(f"{axis.path} = {value:.10g}" for axis, value in pairs)
+        return self.question.name_of(self.values_at(np.array([place]))[0])
+
+    def batch(self, places: Integers) -> Batch:
+        """Grid points as points of their own."""
+        return Batch(self.question, places, self.values_at(places))
 
 
 def plan_sweep(case: Case, tolerance: float) -> Plan:
@@ -108,9 +100,11 @@ def plan_sweep(case: Case, tolerance: float) -> Plan:
         raise CaseError([Fault(case.label, "sweep", "no such table", "a table with sweep.axes")])
     axes = tuple(Axis(path, _values(entry)) for path, entry in study["axes"].items())
     faults: list[Fault] = []
-    followers = _followers(case, axes, study.get("linked", {}), faults)
+    paths = tuple(axis.path for axis in axes)
+    varied = Varied("sweep", "axes", "swept", paths)
+    followers = find_followers(case, varied, study.get("linked", {}), faults)
     outcomes = _outcomes(case, axes, study.get("outcomes"), faults)
-    plan = Plan(case, axes, followers, outcomes, tolerance)
+    plan = Plan(Question(case, paths, followers, outcomes, tolerance), axes)
     _check_size(plan, faults)
     for place, axis in enumerate(axes):
         twice = sorted({value for value in axis.values if axis.values.count(value) > 1})
@@ -135,33 +129,6 @@ def _values(entry: Mapping[str, Any]) -> tuple[float, ...]:
     return tuple(float(f"{start + (stop - start) * i / count:.12g}") for i in range(count + 1))
 
 
-def _followers(
-    case: Case, axes: tuple[Axis, ...], linked: Mapping[str, str], faults: list[Fault]
-) -> tuple[tuple[str, int], ...]:
-    """Follow every link to the axis at its end."""
-    places = {axis.path: place for place, axis in enumerate(axes)}
-    found: list[tuple[str, int]] = []
-    for path, leader in linked.items():
-        key = f'sweep.linked."{path}"'
-        if path in places:
-            expected = "a path that is no axis of its own"
-            faults.append(Fault(case.label, key, f"{path}, which is swept itself", expected))
-            continue
-        seen = [path]
-        while leader in linked and leader not in seen:
-            seen.append(leader)
-            leader = linked[leader]
-        if leader in seen:
-            circle = " follows ".join([*seen, leader])
-            faults.append(Fault(case.label, key, circle, "links that end at an axis"))
-        elif leader not in places:
-            expected = f"a path of sweep.axes: {', '.join(places)}"
-            faults.append(Fault(case.label, key, f"{leader}, which is not swept", expected))
-        else:
-            found.append((path, places[leader]))
-    return tuple(found)
-
-
 def _outcomes(
     case: Case, axes: tuple[Axis, ...], asked: list[str] | None, faults: list[Fault]
 ) -> tuple[Outcome, ...]:
@@ -182,11 +149,11 @@ def _outcomes(
 
 
 def _check_size(plan: Plan, faults: list[Fault]) -> None:
-    numbers = plan.points * max(len(plan.outcomes), 1)
+    numbers = plan.points * max(len(plan.question.outcomes), 1)
     if numbers > LARGEST_RESULT:
-        found = f"{plan.points} grid points of {len(plan.outcomes)} outcomes"
+        found = f"{plan.points} grid points of {len(plan.question.outcomes)} outcomes"
         expected = f"at most {LARGEST_RESULT} numbers; split the grid or ask for fewer outcomes"
-        faults.append(Fault(plan.case.label, "sweep.axes", found, expected))
+        faults.append(Fault(plan.question.case.label, "sweep.axes", found, expected))
 
 
 def _check_values(plan: Plan, place: int, faults: list[Fault]) -> None:
@@ -196,17 +163,19 @@ def _check_values(plan: Plan, place: int, faults: list[Fault]) -> None:
     failed point.
     """
     axis = plan.axes[place]
-    alone = [path for path, leader in plan.followers if leader == place]
-    first = plan.changes(np.array([other.values[0] for other in plan.axes]))
+    alone = [path for path, leader in plan.question.followers if leader == place]
+    first = plan.question.changes(np.array([other.values[0] for other in plan.axes]))
     for value in sorted({min(axis.values), max(axis.values)}):
         changes = dict.fromkeys([axis.path, *alone], value)
-        refused = _refused(plan.case, changes)
-        if not refused or not _refused(plan.case, first | changes):
+        refused = _refused(plan.question.case, changes)
+        if not refused or not _refused(plan.question.case, first | changes):
             continue
         for fault in refused:
             known = fault.key == axis.path
             found = fault.found if known else f"{value:.10g}: {fault.key} is {fault.found}"
-            faults.append(Fault(plan.case.label, _axis_key(axis.path), found, fault.expected))
+            faults.append(
+                Fault(plan.question.case.label, _axis_key(axis.path), found, fault.expected)
+            )
 
 
 def _refused(case: Case, changes: Mapping[str, float]) -> tuple[Fault, ...]:

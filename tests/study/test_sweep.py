@@ -15,7 +15,7 @@ from sweep_devices import EQE, ETL, HTL, coarse, swept, two_emitters
 import optics
 from optics.device.case import Case
 from optics.device.errors import CaseError
-from optics.study import sweep_points
+from optics.study import evaluate
 from optics.study.sweep_plan import plan_sweep
 
 AXES = {HTL: {"values": [40, 60]}, ETL: {"start": 30, "stop": 70, "step": 20}}
@@ -112,13 +112,13 @@ def test_angles_are_computed_only_if_an_outcome_needs_them(
     monkeypatch: pytest.MonkeyPatch,
 ) -> None:
     asked: list[Any] = []
-    real = sweep_points.angular
+    real = evaluate.angular
 
     def counted(*arguments: Any) -> optics.Angular:
         asked.append(arguments[1])
         return real(*arguments)
 
-    monkeypatch.setattr(sweep_points, "angular", counted)
+    monkeypatch.setattr(evaluate, "angular", counted)
     optics.sweep(swept(AXES, outcomes=[EQE]))
     assert asked == []
     names = ["bottom.current_efficiency_cd_A", "bottom.delta_uv_30"]
@@ -141,7 +141,7 @@ def test_faults_of_the_table_come_all_at_once() -> None:
     )
     assert said == [
         f'my.toml: sweep.linked."{ETL}": found {ETL}, which is swept itself; expected a path that '
-        "is no axis of its own",
+        "is not itself swept",
         "my.toml: sweep.outcomes[0]: found destinations.giuded, no such outcome; expected the name "
         "of an outcome (did you mean destinations.guided?)",
         "my.toml: sweep.outcomes[1]: found guided, which may mean several; expected one of "

@@ -11,11 +11,11 @@ from sweep_devices import EQE, ETL, HTL, coarse, swept, two_emitters
 from optics.device.case import Case
 from optics.kernels.combined import Combined
 from optics.study import sweep_combined
+from optics.study.evaluate import TRUST, Batch, Found, compute_batch
 from optics.study.outcomes import _single_numbers
 from optics.study.sweep_blocks import FEWEST_POINTS, blocks, combines, kinds_of
-from optics.study.sweep_combined import compute_block
+from optics.study.sweep_combined import Block, compute_block
 from optics.study.sweep_plan import Plan, plan_sweep
-from optics.study.sweep_points import TRUST, Batch, Found, compute_batch
 
 EML = "layers.EML.thickness_nm"
 FILMS = {HTL: {"values": [30, 60, 90]}, ETL: {"values": [30, 60]}}
@@ -50,21 +50,21 @@ def assert_same(plan: Plan) -> None:
     with pytest.MonkeyPatch.context() as patch:
         if min(part.size for part in parts) >= FEWEST_POINTS:
             patch.setattr(sweep_combined, "compute_batch", not_single)
-        whole = [compute_block(Batch(plan, places)) for places in parts]
+        whole = [compute_block(Block(plan, places)) for places in parts]
     places = np.concatenate([one.places for one in whole])
     assert sorted(places) == list(range(plan.points))
     found = np.concatenate([one.values for one in whole])[np.argsort(places)]
-    single = compute_batch(Batch(plan, np.arange(plan.points)))
+    single = compute_batch(plan.batch(np.arange(plan.points)))
     expected = in_order(single)
     assert single.failed == ()
-    for column, outcome in enumerate(plan.outcomes):
+    for column, outcome in enumerate(plan.question.outcomes):
         if outcome.keys[0] == "accuracy":
             assert found[:, column].max() <= 1e-6
         else:
             assert found[:, column] == pytest.approx(expected[:, column], abs=2e-6, nan_ok=True), (
                 outcome.name
             )
-    near = len(plan.outcomes) + TRUST.index("near_field_share")
+    near = len(plan.question.outcomes) + TRUST.index("near_field_share")
     assert found[:, near] == pytest.approx(expected[:, near], abs=2e-6)
 
 
@@ -147,7 +147,7 @@ def test_half_stacks_are_solved_once(monkeypatch: pytest.MonkeyPatch) -> None:
     axes = {**FILMS, ZONE: {"values": [0.2, 0.5, 0.8]}, Q: {"values": [0.5, 0.9]}}
     plan = planned(axes)
     (places,) = blocks(plan)
-    assert compute_block(Batch(plan, places)).places.size == 36
+    assert compute_block(Block(plan, places)).places.size == 36
     # Neither positions nor yields ask for anything anew.
     assert asked == [(2, 3, 6)]
 
@@ -181,8 +181,8 @@ def test_backward_modes_are_left_to_single_points(monkeypatch: pytest.MonkeyPatc
     plan = plan_sweep(swept(FILMS, document=document, outcomes=[EQE]), 1e-6)
     (places,) = blocks(plan)
     monkeypatch.setattr(sweep_combined, "combined_budget", refused)
-    found = in_order(compute_block(Batch(plan, places)))
-    assert found.tobytes() == in_order(compute_batch(Batch(plan, places))).tobytes()
+    found = in_order(compute_block(Block(plan, places)))
+    assert found.tobytes() == in_order(compute_batch(plan.batch(places))).tobytes()
 
 
 def test_zones_that_depend_on_the_films_are_left_to_single_points(
@@ -194,7 +194,7 @@ def test_zones_that_depend_on_the_films_are_left_to_single_points(
     plan = plan_sweep(swept(axes, document=document, outcomes=[EQE]), 1e-6)
     monkeypatch.setattr(sweep_combined, "combined_budget", refused)
     for places in blocks(plan):
-        assert compute_block(Batch(plan, places)).failed == ()
+        assert compute_block(Block(plan, places)).failed == ()
 
 
 def test_points_that_miss_the_tolerance_are_computed_anew(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -208,8 +208,8 @@ def test_points_that_miss_the_tolerance_are_computed_anew(monkeypatch: pytest.Mo
     plan = plan_sweep(swept(FILMS, outcomes=["destinations.guided", "purcell_factor"]), 1e-6)
     (places,) = blocks(plan)
     monkeypatch.setattr(sweep_combined, "combined_budget", spoiled)
-    found = compute_block(Batch(plan, places))
-    alone = compute_batch(Batch(plan, places))
+    found = compute_block(Block(plan, places))
+    alone = compute_batch(plan.batch(places))
     again = np.isin(found.places, places[[2, 4]])
     assert again.sum() == 2
     factor = found.values[np.argsort(found.places), 1] / in_order(alone)[:, 1]

@@ -1,0 +1,296 @@
+"""Outcomes at any points of a case's varied numbers: what every study asks again and again.
+
+A question says what is varied and what is to be known; a point is one value for each of its
+paths. Each point is a case of its own, computed by the ordinary engine.
+"""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Callable, Iterable, Iterator, Mapping
+from contextlib import closing
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, NamedTuple, TypeVar
+
+import numpy as np
+
+from optics._version import VERSION
+from optics.device.errors import CaseError
+from optics.outcome.angular import angular
+from optics.outcome.budget import budget
+from optics.study.executor import completed, cores, executor_or_threads
+from optics.study.outcomes import Outcome, angles_needed, read_outcome
+from optics.study.store import Store, content_key
+
+if TYPE_CHECKING:
+    from concurrent.futures import Executor
+    from pathlib import Path
+
+    from numpy.typing import NDArray
+
+    from optics.device.case import Case
+
+    Floats = NDArray[np.float64]
+    Integers = NDArray[np.int64]
+    Flags = NDArray[np.bool_]
+
+Progress = Callable[[int, int], object]
+#: What is known of every point beside its outcomes, in this order after them.
+TRUST = ("energy_balance", "integration_error", "near_field_share")
+# Points of one task at most: a stop loses no more than those of the running tasks.
+_LARGEST_BATCH = 8
+_Task = TypeVar("_Task")
+
+
+@dataclass(frozen=True, slots=True)
+class Question:
+    """What is varied and what is to be known.
+
+    Attributes
+    ----------
+    case : Case
+    paths : tuple of str
+        Of the numbers that are varied.
+    followers : tuple of (str, int)
+        Linked paths, each with the place in `paths` of the one whose value it takes.
+    outcomes : tuple of Outcome
+    tolerance : float
+        Wanted accuracy of every destination, as a fraction of the dissipated power.
+    """
+
+    case: Case
+    paths: tuple[str, ...]
+    followers: tuple[tuple[str, int], ...]
+    outcomes: tuple[Outcome, ...]
+    tolerance: float
+
+    @property
+    def width(self) -> int:
+        """Numbers of one answer: the outcomes, then `TRUST`."""
+        return len(self.outcomes) + len(TRUST)
+
+    def changes(self, values: Iterable[float]) -> dict[str, float]:
+        """Values by path of one point (paths,), followers included."""
+        given = [float(value) for value in values]
+        every = dict(zip(self.paths, given, strict=True))
+        return every | {path: given[place] for path, place in self.followers}
+
+    def case_at(self, values: Iterable[float]) -> Case:
+        """Case of one point (paths,).
+
+        Raises
+        ------
+        CaseError
+            If there is no such device.
+        """
+        return self.case.replace_all(self.changes(values))
+
+    def name_of(self, values: Iterable[float]) -> str:
+        """Name a point (paths,) for people, such as ``layers.HTL.thickness_nm = 40``."""
+        pairs = zip(self.paths, values, strict=True)
+        return ", ".join(f"{path} = {value:.10g}" for path, value in pairs)
+
+
+class Batch(NamedTuple):
+    """Points to be computed in one task."""
+
+    question: Question
+    places: Integers  # (n,) among all points
+    points: Floats  # (n, paths)
+
+
+class Found(NamedTuple):
+    """What became of some points."""
+
+    places: Integers  # (n,) those that were computed
+    values: Floats  # (n, outcomes + TRUST); NaN where an outcome is undefined
+    failed: tuple[tuple[int, str], ...]  # place and reason of those that were not
+
+
+def answer(question: Question, values: Iterable[float]) -> Floats:
+    """Compute one point.
+
+    Parameters
+    ----------
+    question : Question
+    values : float (paths,)
+
+    Returns
+    -------
+    float (outcomes + TRUST,)
+        NaN where an outcome is undefined.
+
+    Raises
+    ------
+    CaseError
+        If there is no such device.
+    """
+    return _answer_case(question, question.case_at(values))
+
+
+def answers(
+    question: Question,
+    points: Floats,
+    *,
+    executor: Executor | None = None,
+    progress: Progress | None = None,
+    store: Store | None = None,
+) -> tuple[Floats, dict[int, str]]:
+    """Compute many points in parallel; one that fails does not touch the others.
+
+    Parameters
+    ----------
+    question : Question
+    points : float (n, paths)
+    executor : concurrent.futures.Executor, optional
+        Takes the work; threads on all cores if not given. It stays open.
+    progress : callable, optional
+        Called with the number of points that are done and of all, as they come.
+    store : Store, optional
+        From `store_for`: points found there are not computed again. The caller discards it.
+
+    Returns
+    -------
+    values : float (n, outcomes + TRUST)
+        NaN where an outcome is undefined, and at points that failed.
+    failed : dict of int to str
+        Reason by place of those.
+    """
+
+    def batches(known: Flags) -> Iterator[Batch]:
+        for places in small_parts(np.flatnonzero(~known)):
+            yield Batch(question, places, points[places])
+
+    return gather(
+        compute_batch,
+        batches,
+        np.full((len(points), question.width), np.nan),
+        executor=executor,
+        progress=progress,
+        store=store,
+    )
+
+
+def gather(
+    compute: Callable[[_Task], Found],
+    tasks: Callable[[Flags], Iterable[_Task]],
+    values: Floats,
+    *,
+    executor: Executor | None = None,
+    progress: Progress | None = None,
+    store: Store | None = None,
+) -> tuple[Floats, dict[int, str]]:
+    """Hand out tasks and fill in what they find; as `answers`, for points in any arrangement.
+
+    Parameters
+    ----------
+    compute : callable
+        Picklable; takes a task.
+    tasks : callable
+        From which points are known already (n,) to the tasks that find the others.
+    values : float (n, width)
+        Filled in; NaN at first.
+    """
+    known = np.zeros(len(values), dtype=np.bool_)
+    if store is not None:
+        places, kept = store.load()
+        values[places], known[places] = kept, True
+    failed: dict[int, str] = {}
+    if progress is not None:
+        progress(int(known.sum()), known.size)
+    with (
+        executor_or_threads(executor) as pool,
+        closing(completed(pool, compute, tasks(known.copy()))) as results,
+    ):
+        for found in results:
+            values[found.places], known[found.places] = found.values, True
+            failed.update(found.failed)
+            if store is not None:
+                store.add(found.places, found.values)
+            if progress is not None:
+                progress(int(known.sum()) + len(failed), known.size)
+    return values, failed
+
+
+def store_for(
+    question: Question, folder: Path, study: str, layout: Mapping[str, Any], places: int
+) -> Store:
+    """Open the file in which the finished points of this very study are kept.
+
+    Parameters
+    ----------
+    question : Question
+    folder : Path
+        Need not exist yet.
+    study : str
+        Begins the name of the file.
+    layout : mapping
+        Plain content that says which point is at which place, such as `layout_of` says.
+    places : int
+        Number of points.
+    """
+    from optics.kernels.compiled import CACHE_FOLDER
+
+    content = {
+        "case": question.case.sha256,
+        "paths": list(question.paths),
+        "followers": [list(pair) for pair in question.followers],
+        "outcomes": [outcome.name for outcome in question.outcomes],
+        "tolerance": question.tolerance,
+        "layout": dict(layout),
+        "version": VERSION,
+        "kernels": CACHE_FOLDER.name,
+    }
+    return Store(folder / f"{study}-{content_key(content)}.part", question.width, places)
+
+
+def layout_of(points: Floats) -> dict[str, str]:
+    """Layout of listed points (n, paths), for `store_for`."""
+    shape = "x".join(str(size) for size in points.shape)
+    return {"points": f"{shape} {hashlib.sha256(points.tobytes()).hexdigest()}"}
+
+
+def small_parts(places: Integers) -> Iterator[Integers]:
+    """Cut places into tasks that keep all cores busy to the end."""
+    size = max(1, min(_LARGEST_BATCH, places.size // (4 * cores())))
+    for start in range(0, places.size, size):
+        yield places[start : start + size]
+
+
+def compute_batch(batch: Batch) -> Found:
+    """Compute points one by one; one that fails does not touch the others."""
+    places, rows, failed = [], [], []
+    for place, values in zip(batch.places.tolist(), batch.points, strict=True):
+        try:
+            rows.append(answer(batch.question, values))
+            places.append(place)
+        except CaseError as error:
+            failed.append((place, "; ".join(str(fault) for fault in error.faults)))
+        except Exception as error:  # one point of many: told by name, the others go on
+            failed.append((place, f"{type(error).__name__}: {error}"))
+    return Found(
+        np.array(places, dtype=np.int64),
+        np.array(rows, dtype=np.float64).reshape(-1, batch.question.width),
+        tuple(failed),
+    )
+
+
+def _answer_case(question: Question, case: Case) -> Floats:
+    """Outcomes of one case and how far they can be trusted.
+
+    Emission against angle is computed only if an outcome needs it.
+    """
+    seen = None
+    if any(outcome.needs_angular for outcome in question.outcomes):
+        angles = angles_needed(question.outcomes) or (0.0,)
+        seen = angular(case, angles, question.tolerance)
+        found = seen.budget
+    else:
+        found = budget(case, question.tolerance)
+    values = [read_outcome(outcome, found, seen) for outcome in question.outcomes]
+    trust = (
+        found.accuracy.energy_balance,
+        found.accuracy.integration_error,
+        max(emitter.near_field_share for emitter in found.emitters),
+    )
+    return np.array([np.nan if value is None else value for value in (*values, *trust)])
