@@ -64,7 +64,7 @@ def test_kept_points_are_not_computed_again(question: Question, tmp_path: Path) 
 
 
 def test_other_points_are_kept_in_another_file(question: Question, tmp_path: Path) -> None:
-    moved = POINTS + [1e-9, 0.0]
+    moved = POINTS + np.array([1e-9, 0.0])
     one, other = (
         store_for(question, tmp_path, "listed", layout_of(points), len(points)).path
         for points in (POINTS, moved)
