@@ -40,6 +40,7 @@ __all__ = [
     "absorber_distances",
     "distances_to_absorbers",
     "interval_between",
+    "smooth_stretches",
     "unbounded_faces",
     "zone_interval",
     "zone_quadrature",
@@ -106,10 +107,7 @@ def zone_quadrature(
     """
     if isinstance(zone, PointZone):
         return np.array([zone.position_nm(thickness_nm)]), np.ones(1)
-    low, high = zone.support_nm(thickness_nm, interval_nm)
-    if not high > low:
-        raise EmptyZoneError
-    edges = _edges(zone.kinks_nm(thickness_nm), low, high)
+    edges = smooth_stretches(zone, thickness_nm, interval_nm)
     longest = min(scale_nm, zone.longest_panel_nm(thickness_nm, interval_nm))
     positions, weights = [], []
     for start, stop in pairwise(edges):
@@ -125,12 +123,33 @@ def zone_quadrature(
     return position, weight / total
 
 
-def _edges(kinks_nm: tuple[float, ...], low: float, high: float) -> list[float]:
-    """List the ends of the smooth stretches between `low` and `high`.
+def smooth_stretches(
+    zone: Zone, thickness_nm: float, interval_nm: tuple[float, float]
+) -> list[float]:
+    """List the ends of the stretches over which a zone's density is smooth.
 
     Kinks nearer than rounding to an end or to each other are left out: nodes of a stretch of no
     length would fall on the face itself.
+
+    Parameters
+    ----------
+    zone, thickness_nm, interval_nm
+        As of `zone_quadrature`; not a point zone.
+
+    Returns
+    -------
+    list of float
+        Ascending positions in nm from the bottom face.
+
+    Raises
+    ------
+    EmptyZoneError
+        If the interval is empty.
     """
+    kinks_nm = zone.kinks_nm(thickness_nm)
+    low, high = zone.support_nm(thickness_nm, interval_nm)
+    if not high > low:
+        raise EmptyZoneError
     gap = _SMALLEST_STRETCH * (high - low)
     edges = [low]
     for kink in sorted(kinks_nm):

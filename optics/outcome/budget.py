@@ -12,6 +12,7 @@ from optics._version import VERSION
 from optics.device.zone import unbounded_faces
 from optics.kernels import budget as engine
 from optics.outcome import cautions
+from optics.outcome.dual import plain
 from optics.outcome.efficiency import (
     DESTINATIONS,
     Emission,
@@ -213,9 +214,7 @@ def budget(case: Case, tolerance: float = DEFAULT_TOLERANCE) -> Budget:
         raise ValueError(f"tolerance: found {tolerance!r}; expected a number from 1e-12 to 0.1")
     lights = {emitter.name: emitter_light(case, emitter, tolerance) for emitter in case.emitters}
     emissions = {emitter.name: emission(emitter, lights[emitter.name]) for emitter in case.emitters}
-    emitters = tuple(
-        _emitter_budget(case, emitter, emissions[emitter.name]) for emitter in case.emitters
-    )
+    numbers = budget_numbers(case, emissions)
     accuracy = Accuracy(
         max(energy_balance(light) for light in lights.values()),
         max(float(light.engine.error.max()) for light in lights.values()),
@@ -223,10 +222,8 @@ def budget(case: Case, tolerance: float = DEFAULT_TOLERANCE) -> Budget:
     return Budget(
         title=case.title,
         case_sha256=case.sha256,
-        emitters=emitters,
-        chain=tuple(_chain(case, unit, emitters) for unit in case.units),
         accuracy=accuracy,
-        warnings=tuple(_warnings(case, emitters, emissions, accuracy, tolerance)),
+        warnings=tuple(_warnings(case, numbers["emitters"], emissions, accuracy, tolerance)),
         tables=case.tables,
         spectral=Spectral(
             {
@@ -234,8 +231,24 @@ def budget(case: Case, tolerance: float = DEFAULT_TOLERANCE) -> Budget:
                 for emitter in case.emitters
             }
         ),
-        **_device(case, emitters),
+        **numbers,
     )
+
+
+def budget_numbers(case: Case, emissions: Mapping[str, Emission]) -> dict[str, Any]:
+    """Fields of `Budget` that follow from what becomes of each emitter's excitons.
+
+    Numbers of the case and of the emissions may carry rates (`outcome.dual.Dual`); so do the
+    results then.
+    """
+    emitters = tuple(
+        _emitter_budget(case, emitter, emissions[emitter.name]) for emitter in case.emitters
+    )
+    return {
+        "emitters": emitters,
+        "chain": tuple(_chain(case, unit, emitters) for unit in case.units),
+        **_device(case, emitters),
+    }
 
 
 def _emitter_budget(case: Case, emitter: Emitter, found: Emission) -> EmitterBudget:
@@ -262,13 +275,13 @@ def _emitter_budget(case: Case, emitter: Emitter, found: Emission) -> EmitterBud
         horizontal_fraction=emitter.horizontal_fraction,
         vertical_fraction=emitter.vertical_fraction,
         order_parameter=emitter.order_parameter,
-        near_field_share=float(found.shares[engine.NEAR_FIELD]),
+        near_field_share=plain(found.shares[engine.NEAR_FIELD]),
         lost_share=emitter.spectrum.lost_share(case.wavelength_nm),
         destinations=MappingProxyType(shares),
         external_quantum_efficiency=generated * outcoupling,
         matched=(
-            None if slabs[0] is None else float(matched[0]),
-            None if slabs[1] is None else float(matched[1]),
+            None if slabs[0] is None else plain(matched[0]),
+            None if slabs[1] is None else plain(matched[1]),
         ),
         generated=generated,
     )

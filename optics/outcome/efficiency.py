@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from optics.kernels import budget as engine
+from optics.outcome.dual import plain
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -62,10 +63,18 @@ def orientation_average(
     -------
     float (w, z, ...)
     """
-    rate = bulk * np.array([1.0 - horizontal_fraction, horizontal_fraction])
-    rate /= rate.sum(axis=1, keepdims=True)
+    rate = orientation_shares(bulk, horizontal_fraction)
     average: NDArray[np.float64] = np.einsum("wo,wzo...->wz...", rate, values)
     return average
+
+
+def orientation_shares(
+    bulk: NDArray[np.float64], horizontal_fraction: float
+) -> NDArray[np.float64]:
+    """Share (w, 2) of the vertical and the horizontal dipoles in the bulk rate (w, 2)."""
+    rate = bulk * np.stack([1.0 - horizontal_fraction, horizontal_fraction])
+    shares: NDArray[np.float64] = rate / rate.sum(axis=1, keepdims=True)
+    return shares
 
 
 def emission(emitter: Emitter, light: Light) -> Emission:
@@ -86,9 +95,9 @@ def emission(emitter: Emitter, light: Light) -> Emission:
     leaving = light.zone_weight * (shares[:, engine.AIR_BOTTOM] + shares[:, engine.AIR_TOP]) / decay
     total = leaving.sum()
     return Emission(
-        purcell_factor=float(light.zone_weight @ dissipated),
-        decay_rate_ratio=float(light.zone_weight @ decay),
-        radiative_efficiency=float(q * radiating.sum()),
+        purcell_factor=plain(light.zone_weight @ dissipated),
+        decay_rate_ratio=plain(light.zone_weight @ decay),
+        radiative_efficiency=plain(q * radiating.sum()),
         shares=(light.zone_weight / decay) @ shares / radiating.sum(),
         emitted_profile=leaving / total if total > 0.0 else np.zeros_like(leaving),
         spectrum_weight=spectrum_weight,
@@ -97,7 +106,7 @@ def emission(emitter: Emitter, light: Light) -> Emission:
 
 def destinations(shares: NDArray[np.float64]) -> dict[str, float]:
     """Name the destinations among an engine's outcomes (engine.OUTCOMES,)."""
-    return {name: float(shares[place]) for name, place in DESTINATIONS.items()}
+    return {name: plain(shares[place]) for name, place in DESTINATIONS.items()}
 
 
 def energy_balance(light: Light) -> float:
