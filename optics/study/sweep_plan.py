@@ -13,6 +13,7 @@ from optics.device.errors import CaseError, Fault
 from optics.study.evaluate import Batch, Question
 from optics.study.linked import Varied, find_followers
 from optics.study.outcomes import Outcome, default_outcomes, find_outcomes
+from optics.study.varied import path_unit, refused
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -24,13 +25,6 @@ if TYPE_CHECKING:
 
 # Numbers of one result, so that it stays well below a gigabyte.
 LARGEST_RESULT = 40_000_000
-_UNITS = {
-    "_nm": "nm",
-    "_mm": "mm",
-    "_eV": "eV",
-    "_V": "V",
-    "_mA_cm2": "mA/cm2",
-}
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,7 +37,7 @@ class Axis:
     @property
     def units(self) -> str:
         """Unit by the end of the path; 1 for ratios."""
-        return next((unit for end, unit in _UNITS.items() if self.path.endswith(end)), "1")
+        return path_unit(self.path)
 
 
 @dataclass(frozen=True, slots=True)
@@ -167,8 +161,8 @@ def _check_values(plan: Plan, place: int, faults: list[Fault]) -> None:
     first = plan.question.changes(np.array([other.values[0] for other in plan.axes]))
     for value in sorted({min(axis.values), max(axis.values)}):
         changes = dict.fromkeys([axis.path, *alone], value)
-        refused = _refused(plan.question.case, changes)
-        if not refused or not _refused(plan.question.case, first | changes):
+        refused = refused(plan.question.case, changes)
+        if not refused or not refused(plan.question.case, first | changes):
             continue
         for fault in refused:
             known = fault.key == axis.path
@@ -176,11 +170,3 @@ def _check_values(plan: Plan, place: int, faults: list[Fault]) -> None:
             faults.append(
                 Fault(plan.question.case.label, _axis_key(axis.path), found, fault.expected)
             )
-
-
-def _refused(case: Case, changes: Mapping[str, float]) -> tuple[Fault, ...]:
-    try:
-        case.replace_all(changes)
-    except CaseError as error:
-        return error.faults
-    return ()
