@@ -79,7 +79,7 @@ def value_at(document: Mapping[str, Any], path: str, where: str) -> Any:
 
 
 def changed(document: Mapping[str, Any], path: str, value: Any, where: str) -> dict[str, Any]:
-    """Copy of a resolved document with another value at an address.
+    """Copy of a resolved document with another value at an address; the rest is shared.
 
     Parameters
     ----------
@@ -93,12 +93,24 @@ def changed(document: Mapping[str, Any], path: str, value: Any, where: str) -> d
     CaseError
         If there is no such address; the message names the nearest one.
     """
-    copied = copy.deepcopy(_opened(document, path))
+    opened = _opened(document, path)
+    _locate(opened, path, where)  # raises if there is no such address
+    copied = _copied_along(opened, path)
     container, key = _locate(copied, path, where)
     if isinstance(container, dict) and key in ORIENTATION_KEYS:
         for other in ORIENTATION_KEYS:
             container.pop(other, None)
     container[key] = value.item() if hasattr(value, "item") else value
+    return copied
+
+
+def _copied_along(document: dict[str, Any], path: str) -> dict[str, Any]:
+    """Copy in which the tables and lists on the way to an address are new, all others shared."""
+    copied = container = dict(document)
+    for key in path.split(".")[:-1]:
+        step: Any = _step(container, key)
+        container[step] = copy.copy(container[step])
+        container = container[step]
     return copied
 
 

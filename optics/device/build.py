@@ -6,6 +6,7 @@ import hashlib
 import json
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -31,7 +32,7 @@ if TYPE_CHECKING:
     from optics.device.tables import Curve
 
 
-@dataclass(frozen=True, slots=True, eq=False)
+@dataclass(frozen=True, eq=False)  # without slots, so that the hash is made when it is asked for
 class Built:
     """Everything that follows from a document; the attributes are those of `Case`."""
 
@@ -45,14 +46,21 @@ class Built:
     tables: tuple[TableUse, ...]
     warnings: tuple[str, ...]
     document: Mapping[str, Any]
-    sha256: str
+    files: Files
 
-    def __setstate__(self, state: list[Any]) -> None:
+    @cached_property
+    def sha256(self) -> str:
+        """Hash of the resolved case and of the bytes of every table used."""
+        return _sha256(
+            self.document, self.wavelength_nm, self.drive, self.files.hashes(), self.tables
+        )
+
+    def __setstate__(self, state: dict[str, Any]) -> None:
         """Restore from a pickle; arrays are read-only again."""
-        for name, value in zip(self.__dataclass_fields__, state, strict=True):
+        for value in state.values():
             if isinstance(value, np.ndarray):
                 value.setflags(write=False)
-            object.__setattr__(self, name, value)
+        self.__dict__.update(state)
 
 
 def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
@@ -87,7 +95,6 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
     assert draft.every_nm is not None
     assert stack is not None
     assert drive is not None
-    tables = tuple(dict.fromkeys(draft.tables))
     return Built(
         title=draft.model.title,
         wavelength_nm=draft.grid_nm,
@@ -96,10 +103,10 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
         emitters=emitters,
         drive=drive,
         sides=sides,
-        tables=tables,
+        tables=tuple(dict.fromkeys(draft.tables)),
         warnings=tuple(draft.warnings),
         document=resolved,
-        sha256=_sha256(resolved, draft.grid_nm, drive, files.hashes(), tables),
+        files=files,
     )
 
 

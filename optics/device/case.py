@@ -43,7 +43,6 @@ class Case:
     label: str
     source_path: Path | None
     _built: Built
-    _files: Files
 
     @property
     def title(self) -> str:
@@ -146,8 +145,7 @@ class Case:
         document = self._built.document
         for path, value in values.items():
             document = changed(document, path, value, self.label)
-        built = build(document, self._files, self.label)
-        return Case(self.label, self.source_path, built, self._files)
+        return Case(self.label, self.source_path, build(document, self._built.files, self.label))
 
 
 def read_case(path: str | Path) -> Case:
@@ -182,7 +180,7 @@ def read_case(path: str | Path) -> Case:
     except tomllib.TOMLDecodeError as error:
         raise CaseError([_syntax_fault(label, str(error), text)]) from None
     files = Files(file.parent)
-    return Case(label, file, build(document, files, label), files)
+    return Case(label, file, build(document, files, label))
 
 
 def case_from_dict(
@@ -205,7 +203,7 @@ def case_from_dict(
         With every fault.
     """
     files = Files(Path(base_folder))
-    return Case(label, None, build(document, files, label), files)
+    return Case(label, None, build(document, files, label))
 
 
 def _neighbors(file: Path) -> list[str]:

@@ -25,6 +25,9 @@ from optics.device.materials import Material, TableUse
 from optics.device.salvage import intact, known
 from optics.device.tables import Curve, IndexTable, read_curve, read_index_table
 
+# Of changed copies of a case; those of studies that vary materials are not worth keeping.
+_MOST_MATERIALS = 64
+
 
 @dataclass(slots=True)
 class Files:
@@ -42,6 +45,20 @@ class Files:
     folder: Path
     _read: dict[tuple[str, str], IndexTable | Curve] = field(default_factory=dict)
     _names: dict[str, str] = field(default_factory=dict)
+    _materials: dict[tuple[object, ...], Material] = field(default_factory=dict)
+
+    def kept(self, said: tuple[object, ...], make: Callable[[], Material]) -> Material:
+        """Material that was made of the same words before, or else a new one.
+
+        What is known of a material at the wavelengths of a case is known of the copies too.
+        """
+        material = self._materials.get(said)
+        if material is None:
+            material = make()
+            if len(self._materials) >= _MOST_MATERIALS:
+                self._materials.clear()
+            self._materials[said] = material
+        return material
 
     def index_table(self, path: str, key: str, faults: Faults) -> IndexTable | None:
         """Table of optical constants; faults are noted under `key`."""
@@ -177,27 +194,16 @@ class Materials:
                 return self._mix(name, key, part)
             case _ if not intact(part):
                 return None  # noted before, and nothing in it leads elsewhere
-            case ConstantModel():
-                return models.constant(name, part.n, part.k)
-            case BirefringentModel():
-                return models.birefringent(
-                    name, part.n_ordinary, part.n_extraordinary, part.k_ordinary,
-                    part.k_extraordinary,
-                )  # fmt: skip
-            case CauchyModel():
-                return models.cauchy(name, part.cauchy_nm, part.k)
-            case SellmeierModel():
-                return models.sellmeier(name, part.sellmeier.b, part.sellmeier.c_um2)
-            case LorentzDrudeModel():
-                terms = part.lorentz_drude
-                return models.lorentz_drude(
-                    name, terms.plasma_eV, terms.f0, terms.gamma0_eV, terms.oscillators
-                )
+            case _:
+                said = (name, part.model_dump_json())
+                return self.files.kept(said, lambda: _from_numbers(name, part))
 
     def _table(self, name: str, key: str, part: TableModel) -> Material | None:
         path = known(part, "table")
         table = self.files.index_table(path, f"{key}.table", self.faults) if path else None
-        return models.tabulated(name, table) if table else None
+        if table is None:
+            return None
+        return self.files.kept((name, "table", path), lambda: models.tabulated(name, table))
 
     def _pair(self, name: str, key: str, part: PairModel) -> Material | None:
         axes = {axis: known(part, axis) for axis in ("ordinary", "extraordinary")}
@@ -207,19 +213,28 @@ class Materials:
             for axis, material in present.items():
                 self._check_isotropic(f"{key}.{axis}", material.name, material)
             return None
-        return models.pair(name, present["ordinary"], present["extraordinary"])
+        return self.files.kept(
+            (name, "pair", *present.values()),
+            lambda: models.pair(name, present["ordinary"], present["extraordinary"]),
+        )
 
     def _mix(self, name: str, key: str, part: MixModel) -> Material | None:
         fractions: Mapping[str, float | None] = known(part, "mix") or {}
         made = {component: self.get(component, f"{key}.mix.{component}") for component in fractions}
-        # Faults of a mixture name its components as the case file does.
-        named = [
-            (replace(material, name=component), fraction)
+        whole = [
+            (component, material, fraction)
             for component, fraction in fractions.items()
             if (material := made[component]) is not None and fraction is not None
         ]
-        if len(named) == len(fractions) and intact(part):
-            return models.mix(name, named, part.rule)
+        if len(whole) == len(fractions) and intact(part):
+            # Faults of a mixture name its components as the case file does.
+            return self.files.kept(
+                (name, part.rule, *whole),
+                lambda: models.mix(
+                    name, [(replace(of, name=called), share) for called, of, share in whole],
+                    part.rule,
+                ),
+            )  # fmt: skip
         for component, material in made.items():
             if material is not None:
                 self._check_isotropic(f"{key}.mix.{component}", component, material)
@@ -241,6 +256,27 @@ class Materials:
         slack = models.FRACTION_SUM_SLACK
         if total > 1 + slack or (lacking and total < 1 - slack):
             self.faults.add(key, f"fractions that sum to {total:.10g}", "a sum of 1")
+
+
+def _from_numbers(name: str, part: MaterialModel) -> Material:
+    """Material that numbers alone describe."""
+    match part:
+        case ConstantModel():
+            return models.constant(name, part.n, part.k)
+        case BirefringentModel():
+            return models.birefringent(
+                name, part.n_ordinary, part.n_extraordinary, part.k_ordinary, part.k_extraordinary
+            )
+        case CauchyModel():
+            return models.cauchy(name, part.cauchy_nm, part.k)
+        case SellmeierModel():
+            return models.sellmeier(name, part.sellmeier.b, part.sellmeier.c_um2)
+        case LorentzDrudeModel():
+            terms = part.lorentz_drude
+            return models.lorentz_drude(
+                name, terms.plasma_eV, terms.f0, terms.gamma0_eV, terms.oscillators
+            )
+    raise AssertionError(f"{type(part).__name__} is made of other materials or of a table")
 
 
 def _nearest_material(name: str, local: Iterable[str]) -> str | None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass, field
+from functools import lru_cache
 from typing import Protocol
 
 import numpy as np
@@ -17,6 +18,8 @@ ComplexArray = npt.NDArray[np.complex128]
 UNLIMITED_NM = (0.0, float("inf"))
 # Room for the rounding of a unit conversion at a table's ends; not an extrapolation.
 RANGE_SLACK = 1e-9
+# Permittivities at more wavelengths than this are worth their memory only once.
+_MOST_KEPT = 4096
 
 
 @dataclass(frozen=True, slots=True)
@@ -104,7 +107,7 @@ class Material:
         Returns
         -------
         ordinary, extraordinary : ndarray of complex128, shape (n,)
-            In the film plane and along its normal; equal for an isotropic material.
+            In the film plane and along its normal; equal for an isotropic material. Read-only.
 
         Raises
         ------
@@ -114,6 +117,11 @@ class Material:
             When the argument is not a list of wavelengths at all.
         """
         wanted = np.asarray(wavelength_nm, dtype=float)
+        if wanted.size > _MOST_KEPT:
+            return self._evaluated(wanted)
+        return _kept_permittivity(self, wanted.tobytes(), wanted.shape)
+
+    def _evaluated(self, wanted: FloatArray) -> tuple[ComplexArray, ComplexArray]:
         if wanted.ndim != 1 or not np.all(np.isfinite(wanted)) or np.any(wanted <= 0.0):
             raise ValueError(f"wavelength_nm: found {wanted}; expected 1-D, positive and finite")
         outside = _outside(wanted, self.range_nm)
@@ -131,6 +139,8 @@ class Material:
         if np.any(bad):
             nothing = UndefinedError(bad, "no passive permittivity", "finite, nonzero, Im ε ≥ 0")
             raise self._undefined_error(wanted, nothing)
+        for eps in (ordinary, extraordinary):
+            eps.setflags(write=False)
         return ordinary, extraordinary
 
     def _range_error(self, wanted: FloatArray) -> RangeError:
@@ -157,6 +167,14 @@ class Material:
             expected=undefined.expected,
         )
         return RangeError([fault], self.name, self.range_nm, span)
+
+
+# Studies ask again and again for the same materials at the same wavelengths.
+@lru_cache(maxsize=512)
+def _kept_permittivity(
+    material: Material, wavelength_nm: bytes, shape: tuple[int, ...]
+) -> tuple[ComplexArray, ComplexArray]:
+    return material._evaluated(np.frombuffer(wavelength_nm, dtype=np.float64).reshape(shape))
 
 
 def span_text(range_nm: tuple[float, float]) -> str:

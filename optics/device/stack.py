@@ -6,6 +6,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -148,7 +149,12 @@ class Stack:
 
 def absorbs(material: Material, wavelength_nm: NDArray[np.float64]) -> bool:
     """Whether a material has k > 0, ordinary or extraordinary, at any of the wavelengths in nm."""
-    index = [np.sqrt(eps) for eps in material.permittivity(wavelength_nm)]
+    return _absorbs(material, np.asarray(wavelength_nm, dtype=np.float64).tobytes())
+
+
+@lru_cache(maxsize=512)
+def _absorbs(material: Material, wavelength_nm: bytes) -> bool:
+    index = [np.sqrt(eps) for eps in material.permittivity(np.frombuffer(wavelength_nm))]
     return any(bool(np.any(n.imag > _ROUNDING * np.abs(n))) for n in index)
 
 
