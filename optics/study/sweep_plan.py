@@ -161,10 +161,10 @@ def _check_values(plan: Plan, place: int, faults: list[Fault]) -> None:
     first = plan.question.changes(np.array([other.values[0] for other in plan.axes]))
     for value in sorted({min(axis.values), max(axis.values)}):
         changes = dict.fromkeys([axis.path, *alone], value)
-        refused = refused(plan.question.case, changes)
-        if not refused or not refused(plan.question.case, first | changes):
+        faulty = refused(plan.question.case, changes)
+        if not faulty or not refused(plan.question.case, first | changes):
             continue
-        for fault in refused:
+        for fault in faulty:
             known = fault.key == axis.path
             found = fault.found if known else f"{value:.10g}: {fault.key} is {fault.found}"
             faults.append(
