@@ -5,7 +5,7 @@ from __future__ import annotations
 import copy
 import tomllib
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -63,6 +63,11 @@ class Case:
     def stack(self) -> Stack:
         """Films, slabs and surroundings."""
         return self._built.stack
+
+    @property
+    def local_materials(self) -> frozenset[str]:
+        """Names of the case's own materials, which stand before bundled ones."""
+        return frozenset(self._built.document.get("materials", {}))
 
     @property
     def emitters(self) -> tuple[Emitter, ...]:
@@ -146,6 +151,18 @@ class Case:
         for path, value in values.items():
             document = changed(document, path, value, self.label)
         return Case(self.label, self.source_path, build(document, self._built.files, self.label))
+
+
+def exchanged(case: Case, **parts: Any) -> Case:
+    """Copy of a case with some of its checked objects exchanged; nothing is checked again.
+
+    Parameters
+    ----------
+    case : Case
+    **parts
+        Attributes of `Case` by name: ``emitters``, ``drive``, ``sides``.
+    """
+    return Case(case.label, case.source_path, replace(case._built, **parts), case._files)
 
 
 def read_case(path: str | Path) -> Case:

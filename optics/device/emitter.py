@@ -11,6 +11,12 @@ if TYPE_CHECKING:
 
 #: Share of the squared transition dipole moment in the film plane of isotropic emitters.
 ISOTROPIC_FRACTION = 2 / 3
+#: Change of Θ per unit of each of the three ways to state an orientation.
+HORIZONTAL_PER = {
+    "horizontal_fraction": 1.0,
+    "vertical_fraction": -1.0,
+    "order_parameter": -1 / 1.5,
+}
 
 
 @dataclass(frozen=True, slots=True)

@@ -17,7 +17,7 @@ Quantity = Literal["photons", "power"]
 #: Beyond a spectrum table the spectrum counts as zero if that end is under this share of the peak.
 END_SHARE = 0.01
 
-_FWHM_PER_SIGMA = 2 * math.sqrt(2 * math.log(2))
+FWHM_PER_SIGMA = 2 * math.sqrt(2 * math.log(2))
 
 
 def trapezoid_weights(x: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -200,7 +200,7 @@ class GaussianSpectrum(Spectrum):
     @property
     def sigma_nm(self) -> float:
         """Standard deviation in nm."""
-        return self.fwhm_nm / _FWHM_PER_SIGMA
+        return self.fwhm_nm / FWHM_PER_SIGMA
 
     def photons(self, wavelength_nm: NDArray[np.float64]) -> NDArray[np.float64]:
         """Photons per nm, 1 at the largest value among `wavelength_nm`.

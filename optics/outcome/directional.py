@@ -15,17 +15,20 @@ import numpy as np
 from optics.device.constants import HC_EV_NM
 from optics.device.spectrum import trapezoid_weights
 from optics.kernels.angles import leaving
-from optics.outcome.efficiency import orientation_average
+from optics.kernels.budget import AIR_BOTTOM, AIR_TOP
+from optics.outcome.efficiency import orientation_average, orientation_shares
+from optics.outcome.labelled import light_behind
 from optics.outcome.light import problem_of
 
 if TYPE_CHECKING:
-    import xarray
     from numpy.typing import NDArray
 
     from optics.device.case import Case
     from optics.device.emitter import Emitter
     from optics.kernels.problem import Problem
     from optics.outcome.budget import Budget
+    from optics.outcome.efficiency import Emission
+    from optics.outcome.light import Light
 
     Floats = NDArray[np.float64]
 
@@ -64,36 +67,34 @@ def sources(case: Case, outcome: Budget) -> tuple[Source, ...]:
         angles is the light budget's own.
     """
     return tuple(
-        _source(case, emitter, outcome.spectral[emitter.name]) for emitter in case.emitters
+        source_of(case, emitter, *light_behind(outcome.spectral, emitter.name))
+        for emitter in case.emitters
     )
 
 
-def _source(case: Case, emitter: Emitter, data: xarray.Dataset) -> Source:
-    wavelength_nm = data["wavelength_nm"].to_numpy()
-    position_nm = data["position_nm"].to_numpy()
-    bulk = problem_of(case, emitter, wavelength_nm, position_nm).source.bulk
+def source_of(case: Case, emitter: Emitter, light: Light, found: Emission) -> Source:
+    """Light of one emitter, ready to be sent into directions; its numbers may carry rates."""
     theta, q = emitter.horizontal_fraction, emitter.quantum_yield
-    average = data["spectrum_weight"].to_numpy() @ orientation_average(
-        data["F"].to_numpy(), bulk, theta
+    average = found.spectrum_weight @ orientation_average(
+        light.engine.dissipation, light.bulk, theta
     )
-    radiating = data["zone_weight"].to_numpy() * q / (1.0 - q + q * average)
+    radiating = light.zone_weight * q / (1.0 - q + q * average)
     leaves = [
-        orientation_average(data[f"air_{side}"].to_numpy(), bulk, theta) @ radiating
-        for side in SIDES
+        orientation_average(light.engine.shares[..., place], light.bulk, theta) @ radiating
+        for place in (AIR_BOTTOM, AIR_TOP)
     ]
-    rate = bulk * np.array([1.0 - theta, theta])
-    step_nm = trapezoid_weights(wavelength_nm)
+    step_nm = trapezoid_weights(light.wavelength_nm)
     excitons = case.drive.charge_balance[emitter.unit] * emitter.share * emitter.exciton_fraction
     # The weights hold density times step; a line's density has no unit and its step is 1.
-    photons = data["spectrum_weight"].to_numpy() / step_nm
+    photons = found.spectrum_weight / step_nm
     return Source(
         emitter,
-        wavelength_nm,
+        light.wavelength_nm,
         step_nm,
-        rate / rate.sum(axis=1, keepdims=True),
-        position_nm,
+        orientation_shares(light.bulk, theta),
+        light.position_nm,
         radiating,
-        excitons * photons * HC_EV_NM / wavelength_nm,
+        excitons * photons * HC_EV_NM / light.wavelength_nm,
         np.stack(leaves, axis=1),
     )
 
@@ -101,10 +102,10 @@ def _source(case: Case, emitter: Emitter, data: xarray.Dataset) -> Source:
 def transmitted(case: Case, side: int, wavelength_nm: Floats) -> Floats:
     """Share (w,) that filter and polarizer outside one side let through."""
     outside = (case.sides.bottom, case.sides.top)[side]
-    share = np.full(wavelength_nm.shape, outside.polarizer_transmittance)
+    share = np.ones(wavelength_nm.shape)
     if outside.filter is not None:
         share *= np.interp(wavelength_nm, outside.filter.x, outside.filter.y)
-    return share
+    return share * outside.polarizer_transmittance
 
 
 def exitance(case: Case, source: Source, side: int) -> Floats:

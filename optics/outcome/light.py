@@ -25,7 +25,7 @@ if TYPE_CHECKING:
 
 # Fewer wavelengths than this are not worth a second thread.
 _SMALLEST_CHUNK = 4
-_NM_PER_MM = 1e6
+NM_PER_MM = 1e6
 
 
 class Light(NamedTuple):
@@ -124,24 +124,29 @@ def _side(
             return _Outside(ABSORBING, beyond**2, beyond.real, nothing)
         return _Outside(OPEN, (beyond.real**2).astype(np.complex128), beyond.real, nothing)
     index = np.sqrt(slab.material.permittivity(wavelength_nm)[0])
-    loss = 4.0 * np.pi * index.imag * slab.thickness_mm * _NM_PER_MM / wavelength_nm
+    loss = 4.0 * np.pi * index.imag * slab.thickness_mm * NM_PER_MM / wavelength_nm
     kind = MATCHED if slab.exit == "matched" else PLANAR
     return _Outside(kind, (index.real**2).astype(np.complex128), beyond.real, loss)
 
 
 def _in_chunks(problem: Problem, tolerance: float) -> EngineBudget:
     """Run the engine over all wavelengths, on as many threads as there are cores."""
-    wavelengths = problem.source.eps_o.size
-    workers = min(_cores(), max(1, wavelengths // _SMALLEST_CHUNK))
+    chunks, workers = chunks_of(problem)
     if workers == 1:
         return light_budget(problem, tolerance)
-    chunks = np.array_split(np.arange(wavelengths), 2 * workers)
     with ThreadPoolExecutor(workers) as pool:
-        found = list(pool.map(lambda rows: light_budget(_at(problem, rows), tolerance), chunks))
+        found = list(pool.map(lambda rows: light_budget(at_rows(problem, rows), tolerance), chunks))
     return EngineBudget(*(np.concatenate(parts) for parts in zip(*found, strict=True)))
 
 
-def _at(problem: Problem, rows: NDArray[np.int64]) -> Problem:
+def chunks_of(problem: Problem) -> tuple[list[NDArray[np.int64]], int]:
+    """Neighboring wavelengths to be computed together, and the number of threads for them."""
+    rows = np.arange(problem.source.eps_o.size)
+    workers = min(_cores(), max(1, rows.size // _SMALLEST_CHUNK))
+    return ([rows] if workers == 1 else np.array_split(rows, 2 * workers)), workers
+
+
+def at_rows(problem: Problem, rows: NDArray[np.int64]) -> Problem:
     """The same problem at some of its wavelengths."""
     first, last = rows[0], rows[-1] + 1
     source, sides, up, down = problem

@@ -117,8 +117,10 @@ def angles_needed(outcomes: Iterable[Outcome]) -> tuple[float, ...]:
     return tuple(sorted({one.angle_deg for one in outcomes if one.angle_deg is not None}))
 
 
-def read_outcome(outcome: Outcome, budget: Budget, angular: Angular | None = None) -> float | None:
-    """Take one outcome from a result; None where it is undefined.
+def read_outcome(outcome: Outcome, budget: Budget, angular: Angular | None = None) -> Any:
+    """Take one outcome from a result: a float, None where it is undefined.
+
+    From results whose numbers carry rates, `optics.outcome.dual.Dual`, it takes such a number.
 
     Parameters
     ----------
@@ -127,6 +129,8 @@ def read_outcome(outcome: Outcome, budget: Budget, angular: Angular | None = Non
     angular : Angular, optional
         Needed if `outcome.needs_angular`; computed at its angle among others.
     """
+    from optics.outcome.dual import plain
+
     first, *rest = outcome.keys
     if outcome.needs_angular:
         assert angular is not None, outcome.name
@@ -141,7 +145,7 @@ def read_outcome(outcome: Outcome, budget: Budget, angular: Angular | None = Non
         value = next(unit for unit in budget.chain if unit["unit"] == rest[0])[rest[1]]
     else:
         value = _inside(budget, outcome.keys)
-    return None if value is None else float(value)
+    return None if value is None else plain(value)
 
 
 def _inside(result: Any, keys: Sequence[str]) -> Any:
