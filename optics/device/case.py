@@ -162,7 +162,7 @@ def exchanged(case: Case, **parts: Any) -> Case:
     **parts
         Attributes of `Case` by name: ``emitters``, ``drive``, ``sides``.
     """
-    return Case(case.label, case.source_path, replace(case._built, **parts), case._files)
+    return Case(case.label, case.source_path, replace(case._built, **parts))
 
 
 def read_case(path: str | Path) -> Case:
