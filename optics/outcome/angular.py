@@ -14,7 +14,7 @@ from optics._version import VERSION
 from optics.outcome.budget import DEFAULT_TOLERANCE, Accuracy, Budget, budget
 from optics.outcome.color import ACCURATE_DUV, observer_at
 from optics.outcome.directional import SIDES, Source, sources
-from optics.outcome.side import Outside, SideAngular, observed
+from optics.outcome.side import SideAngular, side_angular
 from optics.outcome.spectra import (
     Spectra,
     angular_dataset,
@@ -23,6 +23,7 @@ from optics.outcome.spectra import (
     gather,
     spectra_dict,
 )
+from optics.outcome.view import View
 
 if TYPE_CHECKING:
     import pandas
@@ -34,7 +35,6 @@ if TYPE_CHECKING:
 SCHEMA = "outcouple.angular/1"
 DEFAULT_ANGLES_DEG = tuple(float(angle) for angle in range(91))
 _FAINT_SHARE = 1e-3  # of the light that leaves: nobody rates the color of such a side
-_AMPERE_PER_M2 = 10.0  # one mA/cm2
 
 
 @dataclass(frozen=True, slots=True)
@@ -150,10 +150,9 @@ def angular(
     """
     angles = _checked(angles_deg)
     outcome = budget(case, tolerance)
-    emitting = sources(case, outcome)
-    outside = _outside(case)
-    pairs = [observed(case, emitting, side, angles, outside) for side in range(2)]
-    sides = {name: seen for name, (seen, _) in zip(SIDES, pairs, strict=True)}
+    emitting = sources(case, outcome.lit)
+    views = [View(case, emitting, side, angles, thorough=True) for side in range(2)]
+    sides = {name: side_angular(view) for name, view in zip(SIDES, views, strict=True)}
     return Angular(
         title=case.title,
         case_sha256=case.sha256,
@@ -162,7 +161,7 @@ def angular(
         warnings=outcome.warnings + tuple(_warnings(case, emitting, sides)),
         tables=outcome.tables,
         budget=outcome,
-        _spectra=gather(case, emitting, angles, [rays for _, rays in pairs], outside),
+        _spectra=gather(case, emitting, angles, views),
     )
 
 
@@ -185,16 +184,6 @@ def _checked(angles_deg: Sequence[float]) -> np.ndarray[Any, np.dtype[np.float64
     if faults:
         raise ValueError("\n".join(faults))
     return np.abs(np.array(angles_deg, dtype=np.float64))  # -0 is 0
-
-
-def _outside(case: Case) -> Outside:
-    drive = case.drive
-    current = drive.current_density_mA_cm2
-    return Outside(
-        current_A_m2=None if current is None else _AMPERE_PER_M2 * current,
-        voltage_V=drive.voltage_V,
-        lit_share=drive.aperture_ratio * drive.duty,
-    )
 
 
 def _warnings(

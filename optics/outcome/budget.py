@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import partial
 from types import MappingProxyType
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 from optics._version import VERSION
 from optics.device.zone import unbounded_faces
@@ -21,7 +21,7 @@ from optics.outcome.efficiency import (
     energy_balance,
 )
 from optics.outcome.labelled import Spectral, budget_frame, budget_tree
-from optics.outcome.light import emitter_light
+from optics.outcome.light import Light, emitter_light
 
 if TYPE_CHECKING:
     import pandas
@@ -33,6 +33,14 @@ if TYPE_CHECKING:
 
 SCHEMA = "outcouple.budget/1"
 DEFAULT_TOLERANCE = 1e-6
+
+
+class Lit(NamedTuple):
+    """One emitter's light and its averages."""
+
+    emitter: Emitter
+    light: Light
+    emission: Emission
 
 
 @dataclass(frozen=True, slots=True)
@@ -138,6 +146,8 @@ class Budget:
         Tables of optical constants and spectra behind the numbers.
     spectral : mapping of str to xarray.Dataset
         By emitter: F and every destination against wavelength, position and orientation.
+    lit : tuple of Lit
+        The same as plain arrays, for what is computed further.
     """
 
     title: str
@@ -154,6 +164,7 @@ class Budget:
     warnings: tuple[str, ...]
     tables: tuple[TableUse, ...]
     spectral: Mapping[str, xarray.Dataset]
+    lit: tuple[Lit, ...]
 
     def to_dict(self) -> dict[str, Any]:
         """Build the JSON result, ``outcouple.budget/1``: plain types only."""
@@ -210,28 +221,52 @@ def budget(case: Case, tolerance: float = DEFAULT_TOLERANCE) -> Budget:
     >>> result = optics.budget(optics.read_case("cases/green-bottom-pixel.toml"))
     >>> result.external_quantum_efficiency  # doctest: +SKIP
     """
-    if not 1e-12 <= tolerance <= 0.1:
-        raise ValueError(f"tolerance: found {tolerance!r}; expected a number from 1e-12 to 0.1")
-    lights = {emitter.name: emitter_light(case, emitter, tolerance) for emitter in case.emitters}
-    emissions = {emitter.name: emission(emitter, lights[emitter.name]) for emitter in case.emitters}
+    lit = shine(case, tolerance)
+    emissions = {one.emitter.name: one.emission for one in lit}
     numbers = budget_numbers(case, emissions)
-    accuracy = Accuracy(
-        max(energy_balance(light) for light in lights.values()),
-        max(float(light.engine.error.max()) for light in lights.values()),
-    )
+    accuracy = accuracy_of(lit)
     return Budget(
         title=case.title,
         case_sha256=case.sha256,
         accuracy=accuracy,
         warnings=tuple(_warnings(case, numbers["emitters"], emissions, accuracy, tolerance)),
         tables=case.tables,
-        spectral=Spectral(
-            {
-                emitter.name: (emitter, lights[emitter.name], emissions[emitter.name])
-                for emitter in case.emitters
-            }
-        ),
+        spectral=Spectral({one.emitter.name: one for one in lit}),
+        lit=lit,
         **numbers,
+    )
+
+
+def shine(case: Case, tolerance: float, threads: int | None = None) -> tuple[Lit, ...]:
+    """Compute the light of every emitter of a case and its averages.
+
+    Parameters
+    ----------
+    case : Case
+    tolerance : float
+        As of `budget`.
+    threads : int, optional
+        At most so many; as many as there are cores if not given. No number depends on it.
+
+    Raises
+    ------
+    ValueError
+        If the tolerance is not between 1e-12 and 0.1.
+    """
+    if not 1e-12 <= tolerance <= 0.1:
+        raise ValueError(f"tolerance: found {tolerance!r}; expected a number from 1e-12 to 0.1")
+    lights = [emitter_light(case, emitter, tolerance, threads) for emitter in case.emitters]
+    return tuple(
+        Lit(emitter, light, emission(emitter, light))
+        for emitter, light in zip(case.emitters, lights, strict=True)
+    )
+
+
+def accuracy_of(lit: Sequence[Lit]) -> Accuracy:
+    """Accuracy of the worst emitter."""
+    return Accuracy(
+        max(energy_balance(one.light) for one in lit),
+        max(float(one.light.engine.error.max()) for one in lit),
     )
 
 

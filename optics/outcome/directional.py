@@ -6,7 +6,7 @@ radiance in W/(sr A nm), exitance in W/(A nm).
 
 from __future__ import annotations
 
-import os
+from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
 from typing import TYPE_CHECKING, NamedTuple
 
@@ -17,8 +17,7 @@ from optics.device.spectrum import trapezoid_weights
 from optics.kernels.angles import leaving
 from optics.kernels.budget import AIR_BOTTOM, AIR_TOP
 from optics.outcome.efficiency import orientation_average, orientation_shares
-from optics.outcome.labelled import light_behind
-from optics.outcome.light import problem_of
+from optics.outcome.light import at_rows, cores, problem_of
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -26,11 +25,12 @@ if TYPE_CHECKING:
     from optics.device.case import Case
     from optics.device.emitter import Emitter
     from optics.kernels.problem import Problem
-    from optics.outcome.budget import Budget
+    from optics.outcome.budget import Lit
     from optics.outcome.efficiency import Emission
     from optics.outcome.light import Light
 
     Floats = NDArray[np.float64]
+    Rows = NDArray[np.int64]
 
 SIDES = ("bottom", "top")
 POLARIZATIONS = ("s", "p")
@@ -56,20 +56,17 @@ class Source(NamedTuple):
         return self.emitter.spectrum.line_nm is not None
 
 
-def sources(case: Case, outcome: Budget) -> tuple[Source, ...]:
+def sources(case: Case, lit: Sequence[Lit]) -> tuple[Source, ...]:
     """Gather the light of all emitters of a case.
 
     Parameters
     ----------
     case : Case
-    outcome : Budget
-        Of this case: its F and its light by side are used, so that what is integrated over
-        angles is the light budget's own.
+    lit : sequence of Lit
+        Of this case's budget: its F and its light by side are used, so that what is integrated
+        over angles is the light budget's own.
     """
-    return tuple(
-        source_of(case, emitter, *light_behind(outcome.spectral, emitter.name))
-        for emitter in case.emitters
-    )
+    return tuple(source_of(case, *one) for one in lit)
 
 
 def source_of(case: Case, emitter: Emitter, light: Light, found: Emission) -> Source:
@@ -115,44 +112,55 @@ def exitance(case: Case, source: Source, side: int) -> Floats:
     return result
 
 
-def radiance(case: Case, source: Source, side: int, angle_deg: Floats) -> Floats:
+def radiance(
+    case: Case, source: Source, side: int, angle_deg: Floats, threads: int | None = None
+) -> Floats:
     """Spectral radiance of one emitter in W/(sr A nm), after filter and polarizer.
 
     Parameters
     ----------
     angle_deg : float (n,)
         0 to 90 in the medium outside: surroundings, or the slab of a matched exit.
+    threads : int, optional
+        At most so many; as many as there are cores if not given. No number depends on it.
 
     Returns
     -------
     float (w, n, 2)
         Polarizations s, p.
     """
-    emitted = radiance_over_bulk(case, source, side, angle_deg)
+    emitted = radiance_over_bulk(case, source, side, angle_deg, threads)
     factor = source.watts * transmitted(case, side, source.wavelength_nm)
     result: Floats = emitted * factor[:, None, None]
     return result
 
 
-def radiance_over_bulk(case: Case, source: Source, side: int, angle_deg: Floats) -> Floats:
+def radiance_over_bulk(
+    case: Case, source: Source, side: int, angle_deg: Floats, threads: int | None = None
+) -> Floats:
     """Integral of zone * q / (1 - q + q F) * u / cos(angle) over the zone (w, n, 2), s and p.
 
     u: photons per solid angle relative to the bulk rate. Where the side's surroundings absorb
     nothing leaves.
     """
-    starts = range(0, source.wavelength_nm.size, _TOGETHER)
+    problem = problem_of(case, source.emitter, source.wavelength_nm, source.position_nm)
+    rows = np.arange(source.wavelength_nm.size)
+    parts = [rows[start : start + _TOGETHER] for start in range(0, rows.size, _TOGETHER)]
 
-    def some(start: int) -> Floats:
-        return _some_wavelengths(case, source, side, angle_deg, slice(start, start + _TOGETHER))
+    def some(part: Rows) -> Floats:
+        return _some_wavelengths(case, source, problem, side, angle_deg, part)
 
-    with ThreadPoolExecutor(min(os.cpu_count() or 1, len(starts))) as pool:
-        return np.concatenate(list(pool.map(some, starts)))
+    workers = min(threads or cores(), len(parts))
+    if workers == 1:
+        return np.concatenate([some(part) for part in parts])
+    with ThreadPoolExecutor(workers) as pool:
+        return np.concatenate(list(pool.map(some, parts)))
 
 
 def _some_wavelengths(
-    case: Case, source: Source, side: int, angle_deg: Floats, rows: slice
+    case: Case, source: Source, problem: Problem, side: int, angle_deg: Floats, rows: Rows
 ) -> Floats:
-    problem = problem_of(case, source.emitter, source.wavelength_nm[rows], source.position_nm)
+    problem = at_rows(problem, rows)
     n = index_outside(case, problem, side)
     u = np.ascontiguousarray(n[:, None] * np.sin(np.deg2rad(angle_deg)))
     channels = leaving(problem, u, side) @ source.radiating

@@ -99,12 +99,6 @@ class Spectral(Mapping[str, "xarray.Dataset"]):
         return len(self._parts)
 
 
-def light_behind(spectral: Mapping[str, xarray.Dataset], name: str) -> tuple[Light, Emission]:
-    """Return the plain arrays behind one emitter's dataset of a budget."""
-    assert isinstance(spectral, Spectral)
-    return spectral._parts[name][1:]
-
-
 def budget_frame(result: Mapping[str, Any]) -> pandas.DataFrame:
     """Long table of a budget's JSON result: columns scope, name, quantity, value, unit."""
     import pandas

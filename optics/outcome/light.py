@@ -38,18 +38,22 @@ class Light(NamedTuple):
     engine: EngineBudget
 
 
-def emitter_light(case: Case, emitter: Emitter, tolerance: float) -> Light:
+def emitter_light(
+    case: Case, emitter: Emitter, tolerance: float, threads: int | None = None
+) -> Light:
     """Run the engine for one emitter of a case.
 
     Parameters
     ----------
     tolerance : float
         Wanted accuracy of every destination as a fraction of the dissipated power.
+    threads : int, optional
+        At most so many; as many as there are cores if not given. No number depends on it.
     """
     wavelength_nm = emitter.spectrum.grid_nm(case.wavelength_nm)
     position_nm, zone_weight = quadrature(case, emitter, wavelength_nm)
     problem = problem_of(case, emitter, wavelength_nm, position_nm)
-    engine = _in_chunks(problem, tolerance)
+    engine = _in_chunks(problem, tolerance, threads)
     return Light(wavelength_nm, position_nm, zone_weight, problem.source.bulk, engine)
 
 
@@ -129,9 +133,9 @@ def _side(
     return _Outside(kind, (index.real**2).astype(np.complex128), beyond.real, loss)
 
 
-def _in_chunks(problem: Problem, tolerance: float) -> EngineBudget:
-    """Run the engine over all wavelengths, on as many threads as there are cores."""
-    chunks, workers = chunks_of(problem)
+def _in_chunks(problem: Problem, tolerance: float, threads: int | None) -> EngineBudget:
+    """Run the engine over all wavelengths."""
+    chunks, workers = chunks_of(problem, threads)
     if workers == 1:
         return light_budget(problem, tolerance)
     with ThreadPoolExecutor(workers) as pool:
@@ -139,15 +143,15 @@ def _in_chunks(problem: Problem, tolerance: float) -> EngineBudget:
     return EngineBudget(*(np.concatenate(parts) for parts in zip(*found, strict=True)))
 
 
-def chunks_of(problem: Problem) -> tuple[list[NDArray[np.int64]], int]:
+def chunks_of(problem: Problem, threads: int | None = None) -> tuple[list[NDArray[np.int64]], int]:
     """Neighboring wavelengths to be computed together, and the number of threads for them."""
     rows = np.arange(problem.source.eps_o.size)
-    workers = min(_cores(), max(1, rows.size // _SMALLEST_CHUNK))
+    workers = min(threads or cores(), max(1, rows.size // _SMALLEST_CHUNK))
     return ([rows] if workers == 1 else np.array_split(rows, 2 * workers)), workers
 
 
 def at_rows(problem: Problem, rows: NDArray[np.int64]) -> Problem:
-    """The same problem at some of its wavelengths."""
+    """The same problem at some of its wavelengths, neighbors of each other."""
     first, last = rows[0], rows[-1] + 1
     source, sides, up, down = problem
     return Problem(
@@ -160,7 +164,7 @@ def at_rows(problem: Problem, rows: NDArray[np.int64]) -> Problem:
     )
 
 
-def _cores() -> int:
+def cores() -> int:
     """Cores that this process may use."""
     if hasattr(os, "sched_getaffinity"):
         return len(os.sched_getaffinity(0))

@@ -1,42 +1,25 @@
-"""What is seen of a device from one side: radiance, luminance, color and their summary."""
+"""What is seen of a device from one side, complete: every number of its `View`."""
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, fields
 from types import MappingProxyType
-from typing import TYPE_CHECKING, Any, NamedTuple
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from optics.device.constants import HC_EV_NM
 from optics.outcome import color, photometry
-from optics.outcome.directional import (
-    POLARIZATIONS,
-    Source,
-    exitance,
-    radiance,
-    unbounded_at_grazing,
-)
+from optics.outcome.directional import POLARIZATIONS
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
-    from optics.device.case import Case
+    from optics.outcome.view import View
 
     Floats = NDArray[np.float64]
 
 Curve = tuple[float | None, ...]
-# Where the luminance is looked at for its half angle before that is refined.
-_EVERY_DEGREE = np.arange(0.0, 91.0)
-
-
-class Outside(NamedTuple):
-    """What turns light per current into light."""
-
-    current_A_m2: float | None
-    voltage_V: float | None
-    lit_share: float  # aperture ratio times duty
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -130,9 +113,7 @@ class SideAngular:
     @property
     def is_white(self) -> bool:
         """Whether the color along the normal is near a black body's and not saturated."""
-        return self.duv is not None and (self.excitation_purity or 0.0) <= (
-            color.LARGEST_PURITY_WHITE
-        )
+        return _is_white(self.duv, self.excitation_purity)
 
     @property
     def normal_is_dark(self) -> bool:
@@ -166,182 +147,92 @@ class SideAngular:
         return {key: list(v) if isinstance(v, tuple) else v for key, v in entry.items()}
 
 
-def observed(
-    case: Case, emitting: Sequence[Source], side: int, angle_deg: Floats, outside: Outside
-) -> tuple[SideAngular, list[Floats]]:
-    """Look at a device from one side.
-
-    Returns
-    -------
-    SideAngular
-    list of float (w, n, 2)
-        Spectral radiance of every emitter in W/(sr A nm) at the angles asked for, s and p.
-    """
-    unbounded = any(unbounded_at_grazing(case, source, side) for source in emitting)
-    every = np.union1d(angle_deg, _EVERY_DEGREE)
-    rays = [radiance(case, source, side, every) for source in emitting]
-    asked = np.searchsorted(every, angle_deg)
-    seen = _add_up(emitting, rays)
-    if unbounded:  # the last one is 90 deg
-        seen = _Seen(*(part[:-1] for part in seen))
-    at_all = _summary(case, emitting, side, outside, _luminance(seen)[0])
-
-    def luminance(inner_deg: Floats) -> Floats:
-        inner = [radiance(case, source, side, inner_deg) for source in emitting]
-        return _luminance(_add_up(emitting, inner))
-
-    half = photometry.half_angle_deg(every[: len(seen.xyz)], _luminance(seen), luminance)
-    spectrum = _normal_spectrum(emitting, rays)
-    top = _peak(emitting, rays, spectrum)
-    result = SideAngular(
-        angle_deg=tuple(angle_deg.tolist()),
-        half_luminance_angle_deg=half,
-        peak_nm_normal=top.wavelength_nm,
-        fwhm_nm_normal=top.fwhm_nm,
-        normal_spectrum=spectrum,
-        grazing_is_unbounded=unbounded,
-        **_curves(seen, asked, outside.current_A_m2),
-        **at_all,
-    )
-    return result, [ray[:, asked] for ray in rays]
-
-
-class _Seen(NamedTuple):
-    """Sums over emitters and wavelengths, per current: W/(sr A)."""
-
-    watts: Floats  # (n, 2) radiance, s and p
-    xyz: Floats  # (n, 2, 3) radiance weighted by the observer
-
-
-def _add_up(emitting: Sequence[Source], rays: Sequence[Floats]) -> _Seen:
-    watts, xyz = 0.0, 0.0
-    for source, ray in zip(emitting, rays, strict=True):
-        watts = watts + np.einsum("w,wnp->np", source.step_nm, ray)
-        weight = source.step_nm[:, None] * color.observer_at(source.wavelength_nm)
-        xyz = xyz + np.einsum("wk,wnp->npk", weight, ray)
-    return _Seen(np.asarray(watts), np.asarray(xyz))
-
-
-def _luminance(seen: _Seen) -> Floats:
-    """Luminance over current density (n,), cd/A."""
-    result: Floats = photometry.LUMENS_PER_WATT * seen.xyz[:, :, 1].sum(axis=1)
-    return result
-
-
-def _curves(seen: _Seen, asked: NDArray[np.int64], current: float | None) -> dict[str, Any]:
-    """Everything by angle, and the color along the normal."""
-    luminance, normal = _luminance(seen), float(_luminance(seen)[0])
-    xyz = seen.xyz.sum(axis=1)
-    xy, uv = color.chromaticity(xyz)
-    distance = np.hypot(*(uv - uv[0]).T)
-
-    def curve(values: Floats) -> Curve:
-        """Values at the angles asked for; None for NaN and where there is no limit."""
-        known = [float(values[at]) if at < len(values) else np.nan for at in asked]
-        return tuple(value if np.isfinite(value) else None for value in known)
-
-    def relative(values: Floats) -> Curve:
-        if normal > 0.0:
-            return curve(values / normal)
-        return curve(values if not luminance.any() else np.full_like(values, np.nan))
-
-    def absolute(values: Floats) -> Curve | None:
-        return None if current is None else curve(current * values)
-
-    normal_color = [float(v) if np.isfinite(v) else None for v in (*xy[0], *uv[0])]
-    polarized: dict[str, Curve | None] = {}
+def _polarized(view: View) -> Mapping[str, Curve | None]:
+    found: dict[str, Curve | None] = {}
     for place, name in enumerate(POLARIZATIONS):
-        visible = photometry.LUMENS_PER_WATT * seen.xyz[:, place, 1]
-        polarized[f"radiance_{name}_W_sr_m2"] = absolute(seen.watts[:, place])
-        polarized[f"luminance_{name}_cd_m2"] = absolute(visible)
-        polarized[f"relative_luminance_{name}"] = relative(visible)
-    return {
-        "radiance_W_sr_m2": absolute(seen.watts.sum(axis=1)),
-        "luminance_cd_m2": absolute(luminance),
-        "relative_luminance": relative(luminance),
-        "x": curve(xy[:, 0]),
-        "y": curve(xy[:, 1]),
-        "u_prime": curve(uv[:, 0]),
-        "v_prime": curve(uv[:, 1]),
-        "delta_uv": curve(distance),
-        **dict(
-            zip(
-                ("x_normal", "y_normal", "u_prime_normal", "v_prime_normal"),
-                normal_color,
-                strict=True,
-            )
+        visible = photometry.LUMENS_PER_WATT * view.seen.xyz[:, place, 1]
+        found[f"radiance_{name}_W_sr_m2"] = view.absolute(view.seen.watts[:, place])
+        found[f"luminance_{name}_cd_m2"] = view.absolute(visible)
+        found[f"relative_luminance_{name}"] = view.relative(visible)
+    return MappingProxyType(found)
+
+
+def _times(value: float, factor: float | None) -> float | None:
+    return None if factor is None else value * factor
+
+
+def _over(value: float, divisor: float | None) -> float | None:
+    return None if divisor is None else value / divisor
+
+
+def _peak_luminance(view: View) -> float | None:
+    average, drive = _times(view.normal, view.current), view.drive
+    return None if average is None else average / (drive.aperture_ratio * drive.duty)
+
+
+def _blue_index(view: View) -> float | None:
+    y = view.normal_color[1]
+    return None if y is None else photometry.ratio(view.normal, y)
+
+
+def _rendering_index(view: View) -> float | None:
+    duv, purity = (NUMBERS[key](view) for key in ("duv", "excitation_purity"))
+    return color.rendering_index(*view.normal_spectrum) if _is_white(duv, purity) else None
+
+
+def _is_white(duv: float | None, purity: float | None) -> bool:
+    return duv is not None and (purity or 0.0) <= color.LARGEST_PURITY_WHITE
+
+
+#: How each number of a side is read from a view of it.
+NUMBERS: Mapping[str, Callable[[View], Any]] = MappingProxyType(
+    {
+        "angle_deg": lambda view: view.angle_deg,
+        "radiance_W_sr_m2": lambda view: view.absolute(view.seen.watts.sum(axis=1)),
+        "luminance_cd_m2": lambda view: view.absolute(view.seen.luminance),
+        "relative_luminance": lambda view: view.relative(view.seen.luminance),
+        "x": lambda view: view.curve(view.chromaticity[0][:, 0]),
+        "y": lambda view: view.curve(view.chromaticity[0][:, 1]),
+        "u_prime": lambda view: view.curve(view.chromaticity[1][:, 0]),
+        "v_prime": lambda view: view.curve(view.chromaticity[1][:, 1]),
+        "delta_uv": lambda view: view.curve(view.delta_uv),
+        "luminance_normal_cd_m2": lambda view: _times(view.normal, view.current),
+        "peak_luminance_normal_cd_m2": _peak_luminance,
+        "current_efficiency_cd_A": lambda view: view.normal,
+        "luminous_exitance_lm_m2": lambda view: _times(view.totals.lumens, view.current),
+        "radiant_exitance_W_m2": lambda view: _times(view.totals.watts, view.current),
+        "luminous_efficacy_lm_W": lambda view: _over(view.totals.lumens, view.drive.voltage_V),
+        "radiant_efficiency_W_W": lambda view: _over(view.totals.watts, view.drive.voltage_V),
+        "luminous_efficacy_of_radiation_lm_W": lambda view: photometry.ratio(
+            view.totals.lumens, view.totals.watts
         ),
-        **_named_color(normal_color[0], normal_color[1], normal),
-        "polarized": MappingProxyType(polarized),
+        "external_quantum_efficiency": lambda view: view.totals.photons,
+        "lambertian_ratio": lambda view: photometry.ratio(view.totals.lumens, np.pi * view.normal),
+        "half_luminance_angle_deg": lambda view: view.half_angle_deg,
+        "blue_index": _blue_index,
+        "peak_nm_normal": lambda view: view.peak.wavelength_nm,
+        "fwhm_nm_normal": lambda view: view.peak.fwhm_nm,
+        "x_normal": lambda view: view.normal_color[0],
+        "y_normal": lambda view: view.normal_color[1],
+        "u_prime_normal": lambda view: view.normal_color[2],
+        "v_prime_normal": lambda view: view.normal_color[3],
+        "dominant_wavelength_nm": lambda view: view.hue and view.hue.wavelength_nm,
+        "excitation_purity": lambda view: view.hue and view.hue.purity,
+        "correlated_color_temperature_K": lambda view: view.warmth and view.warmth.kelvin,
+        "duv": lambda view: view.warmth and view.warmth.duv,
+        "color_rendering_index": _rendering_index,
+        "polarized": _polarized,
+        "normal_spectrum": lambda view: view.normal_spectrum,
+        "grazing_is_unbounded": lambda view: view.grazing_is_unbounded,
     }
+)
 
 
-def _named_color(x: float | None, y: float | None, normal: float) -> dict[str, float | None]:
-    """What a color along the normal is called, where that means something."""
-    if x is None or y is None:
-        hue, warmth, index = None, None, None
-    else:
-        hue, warmth = color.dominant((x, y)), color.temperature((x, y))
-        if hue is not None and hue.purity > color.LARGEST_PURITY_GLOWING:
-            warmth = None
-        index = photometry.ratio(normal, y)
-    return {
-        "blue_index": index,
-        "dominant_wavelength_nm": None if hue is None else hue.wavelength_nm,
-        "excitation_purity": None if hue is None else hue.purity,
-        "correlated_color_temperature_K": None if warmth is None else warmth.kelvin,
-        "duv": None if warmth is None else warmth.duv,
-    }
+def side_angular(view: View) -> SideAngular:
+    """Read everything that a side is known by from a view of it."""
+    return SideAngular(**{field.name: NUMBERS[field.name](view) for field in fields(SideAngular)})
 
 
-def _summary(
-    case: Case, emitting: Sequence[Source], side: int, outside: Outside, normal: np.float64
-) -> dict[str, Any]:
-    """Numbers of the whole side; integrals over angle are the light budget's own."""
-    watts, lumens, photons = 0.0, 0.0, 0.0
-    for source in emitting:
-        power = source.step_nm * exitance(case, source, side)
-        watts += float(power.sum())
-        visible = power @ color.observer_at(source.wavelength_nm)[:, 1]
-        lumens += photometry.LUMENS_PER_WATT * float(visible)
-        photons += float(power @ source.wavelength_nm) / HC_EV_NM
-    current, voltage = outside.current_A_m2, outside.voltage_V
-    average = None if current is None else float(normal) * current
-    return {
-        "luminance_normal_cd_m2": average,
-        "peak_luminance_normal_cd_m2": None if average is None else average / outside.lit_share,
-        "current_efficiency_cd_A": float(normal),
-        "luminous_exitance_lm_m2": None if current is None else lumens * current,
-        "radiant_exitance_W_m2": None if current is None else watts * current,
-        "luminous_efficacy_lm_W": None if voltage is None else lumens / voltage,
-        "radiant_efficiency_W_W": None if voltage is None else watts / voltage,
-        "luminous_efficacy_of_radiation_lm_W": photometry.ratio(lumens, watts),
-        "external_quantum_efficiency": photons,
-        "lambertian_ratio": photometry.ratio(lumens, np.pi * float(normal)),
-    }
-
-
-def _normal_spectrum(emitting: Sequence[Source], rays: Sequence[Floats]) -> tuple[Floats, Floats]:
-    """Spectral radiance along the normal, if all light is spread over the grid."""
-    if any(source.is_line for source in emitting) or emitting[0].wavelength_nm.size < 2:
-        return np.zeros(0), np.zeros(0)
-    total = np.sum([ray[:, 0].sum(axis=1) for ray in rays], axis=0)
-    total.setflags(write=False)
-    return emitting[0].wavelength_nm, total
-
-
-def _peak(
-    emitting: Sequence[Source], rays: Sequence[Floats], spectrum: tuple[Floats, Floats]
-) -> photometry.Peak:
-    """Peak along the normal: of what is per nm, or else the strongest line."""
-    spread = [ray[:, 0].sum(axis=1) for source, ray in zip(emitting, rays, strict=True)
-              if not source.is_line]  # fmt: skip
-    if spread:
-        grid = next(source.wavelength_nm for source in emitting if not source.is_line)
-        found = photometry.peak(grid, np.sum(spread, axis=0))
-        if found.wavelength_nm is not None:
-            return found
-    lines = [(float(ray[0, 0].sum()), float(source.wavelength_nm[0]))
-             for source, ray in zip(emitting, rays, strict=True) if source.is_line]  # fmt: skip
-    power, at = max(lines, default=(0.0, 0.0))
-    return photometry.Peak(at if power > 0.0 else None, None)
+def side_number(side: SideAngular | View, key: str) -> Any:
+    """One number or curve of a side."""
+    return getattr(side, key) if isinstance(side, SideAngular) else NUMBERS[key](side)

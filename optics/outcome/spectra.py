@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from optics.device.case import Case
-    from optics.outcome.side import Outside
+    from optics.outcome.view import View
 
     Floats = NDArray[np.float64]
 
@@ -55,21 +55,14 @@ def gather(
     case: Case,
     emitting: Sequence[Source],
     angle_deg: Floats,
-    by_side: Sequence[Sequence[Floats]],
-    outside: Outside,
+    views: Sequence[View],
 ) -> Spectra:
-    """Add up the emitters: those per nm on the case's grid, lines by their wavelength.
-
-    Parameters
-    ----------
-    by_side : for each side a sequence of float (w, n, 2)
-        Spectral radiance of every emitter, s and p.
-    """
+    """Add up the emitters: those per nm on the case's grid, lines by their wavelength."""
     grid, n = case.wavelength_nm, angle_deg.size
     lines = np.array(sorted({float(one.wavelength_nm[0]) for one in emitting if one.is_line}))
     spread, apart = np.zeros((2, n, grid.size, 2)), np.zeros((2, n, lines.size, 2))
-    for side, rays in enumerate(by_side):
-        for source, ray in zip(emitting, rays, strict=True):
+    for side, view in enumerate(views):
+        for source, ray in zip(emitting, view.rays, strict=True):
             if source.is_line:
                 place = int(np.searchsorted(lines, source.wavelength_nm[0]))
                 apart[side, :, place] += ray[0]
@@ -77,7 +70,7 @@ def gather(
                 spread[side] += ray.transpose(1, 0, 2)
     for values in (angle_deg, spread, lines, apart):
         values.setflags(write=False)
-    return Spectra(angle_deg, grid, spread, lines, apart, outside.current_A_m2)
+    return Spectra(angle_deg, grid, spread, lines, apart, views[0].current)
 
 
 def unit_of(key: str) -> str:

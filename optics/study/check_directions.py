@@ -40,7 +40,7 @@ def direction_rows(
     wavelengths_nm : mapping of emitter to wavelengths
         Those of the emitter's own grid that are looked at.
     """
-    for source in sources(case, outcome):
+    for source in sources(case, outcome.lit):
         for at_nm in wavelengths_nm[source.emitter.name]:
             row = int(np.flatnonzero(source.wavelength_nm == at_nm)[0])
             for side in range(2):

@@ -16,9 +16,12 @@ import numpy as np
 
 from optics._version import VERSION
 from optics.device.errors import CaseError
-from optics.outcome.angular import angular
-from optics.outcome.budget import budget
-from optics.study.executor import completed, cores, executor_or_threads
+from optics.kernels.budget import NEAR_FIELD
+from optics.outcome.budget import accuracy_of, budget_numbers, shine
+from optics.outcome.directional import SIDES, sources
+from optics.outcome.light import cores
+from optics.outcome.view import View
+from optics.study.executor import completed, executor_or_threads
 from optics.study.outcomes import Outcome, angles_needed, read_outcome
 from optics.study.store import Store, content_key
 
@@ -107,13 +110,15 @@ class Found(NamedTuple):
     failed: tuple[tuple[int, str], ...]  # place and reason of those that were not
 
 
-def answer(question: Question, values: Iterable[float]) -> Floats:
+def answer(question: Question, values: Iterable[float], threads: int | None = None) -> Floats:
     """Compute one point.
 
     Parameters
     ----------
     question : Question
     values : float (paths,)
+    threads : int, optional
+        At most so many; as many as there are cores if not given. No number depends on it.
 
     Returns
     -------
@@ -125,7 +130,7 @@ def answer(question: Question, values: Iterable[float]) -> Floats:
     CaseError
         If there is no such device.
     """
-    return _answer_case(question, question.case_at(values))
+    return _answer_case(question, question.case_at(values), threads)
 
 
 def answers(
@@ -262,7 +267,7 @@ def compute_batch(batch: Batch) -> Found:
     places, rows, failed = [], [], []
     for place, values in zip(batch.places.tolist(), batch.points, strict=True):
         try:
-            rows.append(answer(batch.question, values))
+            rows.append(answer(batch.question, values, threads=1))
             places.append(place)
         except CaseError as error:
             failed.append((place, "; ".join(str(fault) for fault in error.faults)))
@@ -275,22 +280,23 @@ def compute_batch(batch: Batch) -> Found:
     )
 
 
-def _answer_case(question: Question, case: Case) -> Floats:
-    """Outcomes of one case and how far they can be trusted.
-
-    Emission against angle is computed only if an outcome needs it.
-    """
-    seen = None
-    if any(outcome.needs_angular for outcome in question.outcomes):
-        angles = angles_needed(question.outcomes) or (0.0,)
-        seen = angular(case, angles, question.tolerance)
-        found = seen.budget
-    else:
-        found = budget(case, question.tolerance)
-    values = [read_outcome(outcome, found, seen) for outcome in question.outcomes]
-    trust = (
-        found.accuracy.energy_balance,
-        found.accuracy.integration_error,
-        max(emitter.near_field_share for emitter in found.emitters),
-    )
+def _answer_case(question: Question, case: Case, threads: int | None) -> Floats:
+    """Outcomes of one case and how far they can be trusted; nothing else is computed."""
+    lit = shine(case, question.tolerance, threads)
+    accuracy = accuracy_of(lit)
+    numbers = budget_numbers(case, {one.emitter.name: one.emission for one in lit})
+    numbers["accuracy"] = accuracy
+    asked = {one.keys[0] for one in question.outcomes if one.needs_angular}
+    sides: dict[str, View] = {}
+    if asked:
+        angles = np.array(angles_needed(question.outcomes))
+        emitting = sources(case, lit)
+        sides = {
+            name: View(case, emitting, place, angles, threads=threads)
+            for place, name in enumerate(SIDES)
+            if name in asked
+        }
+    values = [read_outcome(outcome, numbers, sides) for outcome in question.outcomes]
+    near = max(float(one.emission.shares[NEAR_FIELD]) for one in lit)
+    trust = (accuracy.energy_balance, accuracy.integration_error, near)
     return np.array([np.nan if value is None else value for value in (*values, *trust)])

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Callable, Generator, Iterable, Iterator
 from concurrent.futures import FIRST_COMPLETED, Executor, Future, ThreadPoolExecutor, wait
 from contextlib import contextmanager
 from importlib import import_module
 from typing import TypeVar
+
+from optics.outcome.light import cores
 
 _Item = TypeVar("_Item")
 _Result = TypeVar("_Result")
@@ -15,13 +16,6 @@ _Result = TypeVar("_Result")
 # Tasks handed out ahead of those that are done: enough for many workers, little to hold.
 _IN_FLIGHT = 64
 _PATIENCE = "10s"  # for a scheduler to answer
-
-
-def cores() -> int:
-    """Cores that this process may use."""
-    if hasattr(os, "sched_getaffinity"):
-        return len(os.sched_getaffinity(0))
-    return os.cpu_count() or 1
 
 
 @contextmanager

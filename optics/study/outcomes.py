@@ -16,8 +16,9 @@ from optics.device.errors import CaseError, Fault, nearest
 
 if TYPE_CHECKING:
     from optics.device.case import Case
-    from optics.outcome.angular import Angular
     from optics.outcome.budget import Budget
+    from optics.outcome.side import SideAngular
+    from optics.outcome.view import View
 
 SIDES = ("bottom", "top")
 _DEVICE = (
@@ -117,7 +118,11 @@ def angles_needed(outcomes: Iterable[Outcome]) -> tuple[float, ...]:
     return tuple(sorted({one.angle_deg for one in outcomes if one.angle_deg is not None}))
 
 
-def read_outcome(outcome: Outcome, budget: Budget, angular: Angular | None = None) -> Any:
+def read_outcome(
+    outcome: Outcome,
+    budget: Budget | Mapping[str, Any],
+    sides: Mapping[str, SideAngular | View] | None = None,
+) -> Any:
     """Take one outcome from a result: a float, None where it is undefined.
 
     From results whose numbers carry rates, `optics.outcome.dual.Dual`, it takes such a number.
@@ -125,24 +130,30 @@ def read_outcome(outcome: Outcome, budget: Budget, angular: Angular | None = Non
     Parameters
     ----------
     outcome : Outcome
-    budget : Budget
-    angular : Angular, optional
-        Needed if `outcome.needs_angular`; computed at its angle among others.
+    budget : Budget or mapping
+        The result, or some of its fields by name.
+    sides : mapping, optional
+        ``Angular.sides``, or views by name of the side. Needed if `outcome.needs_angular`;
+        computed at its angle among others.
     """
     from optics.outcome.dual import plain
 
     first, *rest = outcome.keys
     if outcome.needs_angular:
-        assert angular is not None, outcome.name
-        side = angular.sides[first]
-        value: Any = getattr(side, rest[0])
+        assert sides is not None, outcome.name
+        from optics.outcome.side import side_number
+
+        side = sides[first]
+        value: Any = side_number(side, rest[0])
         if outcome.angle_deg is not None and value is not None:
             value = value[side.angle_deg.index(outcome.angle_deg)]
     elif first == "emitters":
-        emitter = next(one for one in budget.emitters if one.name == rest[0])
+        emitter = next(one for one in _inside(budget, ["emitters"]) if one.name == rest[0])
         value = _inside(emitter, rest[1:])
     elif first == "chain":
-        value = next(unit for unit in budget.chain if unit["unit"] == rest[0])[rest[1]]
+        value = next(unit for unit in _inside(budget, ["chain"]) if unit["unit"] == rest[0])[
+            rest[1]
+        ]
     else:
         value = _inside(budget, outcome.keys)
     return None if value is None else plain(value)

@@ -34,7 +34,7 @@ def test_directions_add_up_to_the_budget(name: str) -> None:
     """2 pi int u sin d(angle) = U by Gauss panels that nobody told of the engine's nodes."""
     device = case(narrow(DEVICES[name](), 520.0, 560.0))
     node, weight = np.polynomial.legendre.leggauss(240)
-    for source in sources(device, optics.budget(device)):
+    for source in sources(device, optics.budget(device).lit):
         problem = problem_of(device, source.emitter, source.wavelength_nm, source.position_nm)
         for side in range(2):
             n = float(index_outside(device, problem, side)[0])
@@ -315,7 +315,7 @@ def test_radiance_is_watts_per_current() -> None:
     document = emitter(pixel(), quantum_yield=1.0, exciton_fraction=1.0)
     document["drive"] = {"charge_balance": 1.0}
     device = case(narrow(document, 550.0))
-    (source,) = sources(device, optics.budget(device))
+    (source,) = sources(device, optics.budget(device).lit)
     over_bulk = radiance_over_bulk(device, source, 0, np.array([20.0]))
     watts = radiance(device, source, 0, np.array([20.0]))
     np.testing.assert_allclose(watts, over_bulk * 1239.841984 / 550.0, rtol=1e-12)

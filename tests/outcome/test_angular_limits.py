@@ -98,7 +98,7 @@ def test_nothing_around_gives_the_same_intensity_everywhere() -> None:
     document["surroundings"] = {"bottom": "host", "top": "host"}
     device = case(narrow(document, 540.0, 550.0))
     angles = np.array([0.0, 30.0, 60.0, 89.0])
-    (source,) = sources(device, optics.budget(device))
+    (source,) = sources(device, optics.budget(device).lit)
     for side in range(2):
         found = radiance_over_bulk(device, source, side, angles).sum(axis=2)
         expected = 1.0 / (4.0 * np.pi * np.cos(np.deg2rad(angles)))

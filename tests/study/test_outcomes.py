@@ -104,7 +104,7 @@ def test_values_are_those_of_the_results() -> None:
         "bottom.luminance_cd_m2_37.5": None,
     }
     found = find_outcomes(device, {name: name for name in expected})
-    assert {one.name: read_outcome(one, seen.budget, seen) for one in found} == expected
+    assert {one.name: read_outcome(one, seen.budget, seen.sides) for one in found} == expected
 
 
 def test_by_default_the_eqe_and_where_all_light_goes() -> None:
