@@ -18,7 +18,7 @@ S, P = 0, 1
 
 # Below this |kz^2| a film counts as exactly at its light line. kz = 0 would give 0/0 between
 # admittances; films are even in kz, so the replacement changes results by 1e-12 only.
-_LIGHT_LINE = 1e-12
+NEXT_TO_LIGHT_LINE = 1e-12
 
 
 @inline
@@ -27,10 +27,10 @@ def sqrt_upper(z: complex) -> complex:
     x, y = z.real, z.imag
     m = math.sqrt(x * x + y * y)
     # Choices rather than branches, so that loops vectorize.
-    at_line = m < _LIGHT_LINE
-    x = _LIGHT_LINE if at_line else x
+    at_line = m < NEXT_TO_LIGHT_LINE
+    x = NEXT_TO_LIGHT_LINE if at_line else x
     y = 0.0 if at_line else y
-    m = _LIGHT_LINE if at_line else m
+    m = NEXT_TO_LIGHT_LINE if at_line else m
     large = math.sqrt(0.5 * (m + abs(x)))
     small = 0.5 * y / large
     a = large if x >= 0.0 else small

@@ -35,6 +35,8 @@ from optics.kernels.source import (
 # Columns in front of those of the films: dissipated power; then bottom, top of each: leaves the
 # device, stays in the slab, absorbed in the slab, enters absorbing surroundings.
 DISSIPATED, LEAVES, TRAPPED, SLAB, SURROUNDINGS, FILMS = 0, 1, 3, 5, 7, 9
+_ROUNDING = 2.3e-16
+_WANTED = 1e-8  # relative accuracy of 1 - R
 
 
 @inline
@@ -85,6 +87,23 @@ def outside(
     row[SURROUNDINGS if kind_b == ABSORBING else SLAB] += i_b * lost_b
     row[(SURROUNDINGS if kind_t == ABSORBING else SLAB) + 1] += i_t * lost_t
     return i_b * back_b, i_t * back_t
+
+
+@inline
+def without_lost_digits(stack: StackPowers, resonance: complex) -> StackPowers:
+    """Give R as 1 - T - A where rounding has spoiled it.
+
+    resonance : 1 / (1 - r r' exp(2 i kz d)) of the emitter film, which magnifies rounding. Light
+    that a slab keeps sending back asks for 1 - R, which next to a guide that leaks by tunneling
+    only is as small as what is left of it; T and A are sums without cancellation.
+    """
+    r_b, r_t, through, a_b, a_t = stack
+    spoiled = _ROUNDING * max(1.0, abs2(resonance) ** 0.5) / _WANTED
+    if r_b < 1.0 and 1.0 - r_b < spoiled:
+        r_b = 1.0 - through - a_b
+    if r_t < 1.0 and 1.0 - r_t < spoiled:
+        r_t = 1.0 - through - a_t
+    return r_b, r_t, through, a_b, a_t
 
 
 @inline
@@ -187,6 +206,8 @@ def power_by_film(
                         pol,
                         i,
                     )
+                    twice = work_up.r_far[pol, 0, i] * work_down.r_far[pol, 0, i] * phase * phase
+                    stack = without_lost_digits(stack, reciprocal(1.0 - twice))
                 back_b, back_t = outside(sides, pol, at, p_b, p_t, stack, row)
                 if returns and back_b > 0.0 and flux_b > 0.0:
                     lit_films(

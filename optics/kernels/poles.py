@@ -141,8 +141,8 @@ def bound_modes(films: Films) -> Modes:
 def leaky_modes(films: Films, largest_loss: float = 0.3) -> Modes:
     """Modes that lose power by radiation into an outer medium: Re g < 0 on one side or both.
 
-    Only those whose radiation runs away from the stack: their wavevector along it lies below
-    the light line of each side they leak to, and Im u > 0.
+    Only those whose radiation runs away from the stack on every side that it reaches, and that
+    fade on their way, Im u > 0.
 
     Parameters
     ----------
@@ -150,6 +150,37 @@ def leaky_modes(films: Films, largest_loss: float = 0.3) -> Modes:
     largest_loss : float
         Largest Im u; the list has no natural end.
     """
+    every = zeros_on_all_sheets(films, largest_loss)
+    # By tunneling only, Re g and Im u are rounding.
+    clear = np.array([films.bottom, films.top]).imag == 0.0
+    below = every.u.real[:, None] < _light_lines(films)
+    leaks = (every.decay.real < 0.0) | (clear & below)
+    kept = leaks.any(axis=1) & touch_axis(films, every) & (every.u.imag > -_REAL)
+    found = chosen(every, kept)
+    return found._replace(u=found.u.real + 1j * np.maximum(found.u.imag, 0.0))
+
+
+def touch_axis(films: Films, modes: Modes) -> NDArray[np.bool_]:
+    """Tell which zeros (n,) lie on the sheets that the real axis borders on next to them.
+
+    There, waves run away from the stack on a side whose light line lies beyond u, and decay on
+    one whose line lies below. A zero elsewhere may decay on a side beyond whose line it lies
+    and yet draw its power in from there.
+    """
+    lines = _light_lines(films)
+    radiates = modes.u.real[:, None] < lines
+    fits = np.where(radiates, modes.decay.imag < 0.0, modes.decay.real > 0.0)
+    return np.asarray(fits.all(axis=1))
+
+
+def _light_lines(films: Films) -> Floats:
+    """Index of the bottom and the top medium (2,); 0 of a metal."""
+    outer = np.array([films.bottom, films.top])
+    return np.where(outer.real > 0.0, np.sqrt(outer).real, 0.0)
+
+
+def zeros_on_all_sheets(films: Films, largest_loss: float) -> Modes:
+    """Zeros of the modes' function on all four sheets, with |Im u| up to a largest one."""
     films = without_hidden_depth(films)
     found, missing = [], 0
     reach = 2.2 * math.hypot(largest_index(films), largest_loss)
@@ -164,13 +195,15 @@ def leaky_modes(films: Films, largest_loss: float = 0.3) -> Modes:
             missing += lost
         zeros = np.concatenate(parts)
         decay, index = place_on_sheet(films, zeros)
-        lines = np.sqrt(np.array([films.bottom, films.top])).real
-        leaks = decay.real < 0.0
-        outward = ~leaks | ((decay.imag < 0.0) & (index.real[:, None] < lines))
-        kept = leaks.any(axis=1) & outward.all(axis=1)
-        kept &= (index.imag > 0.0) & (index.imag <= largest_loss) & (index.real > 0.0)
+        kept = (np.abs(index.imag) <= largest_loss) & (index.real > 0.0)
         found.append((pol, zeros[kept], index[kept], decay[kept]))
     return _sorted(found, missing)
+
+
+def chosen(modes: Modes, kept: NDArray[np.bool_]) -> Modes:
+    """Those for which kept (n,) is true."""
+    return Modes(modes.s[kept], modes.polarization[kept], modes.u[kept], modes.decay[kept],
+                 modes.missing)  # fmt: skip
 
 
 def _sorted(found: list[tuple[int, Complexes, Complexes, Complexes]], missing: int) -> Modes:

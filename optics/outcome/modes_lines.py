@@ -11,7 +11,7 @@ import numpy as np
 from optics.kernels.halfstack import P
 from optics.kernels.modal_fields import ELECTRIC, mode_profile
 from optics.kernels.modal_follow import follow
-from optics.kernels.modal_nodes import direction
+from optics.kernels.modal_power import direction
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray

@@ -12,7 +12,7 @@ from scipy.optimize import brentq
 
 from optics.kernels.halfstack import P, S
 from optics.kernels.modal_sheet import Films
-from optics.kernels.poles import Modes, bound_modes, leaky_modes
+from optics.kernels.poles import Modes, bound_modes, leaky_modes, zeros_on_all_sheets
 
 PUBLISHED = Path(__file__).parent.parent / "published"
 
@@ -197,6 +197,40 @@ def test_leaky_modes_of_a_cavity_radiate_outward() -> None:
         assert abs((r * np.exp(1j * h * kd)) ** 2 - 1) < 1e-9
         assert u.imag > 0
         assert k_out.imag < 0
+
+
+def test_a_leaky_mode_draws_nothing_in_from_the_other_side() -> None:
+    """Waves below a light line run away from the stack on that side, leaking or not.
+
+    A stack between glass and a polymer with a thin metal; its function has a zero that decays
+    toward the glass, fed from there, and leaks into the polymer.
+    """
+    metal = (0.06 + 3.5j) ** 2
+    films = stack([1.9**2 + 0.05j, 3.1, metal, 3.2], [150, 90, 12, 60], (1.52**2, 1.7**2), 540.0)
+    every = zeros_on_all_sheets(films, 0.3)
+    lines = np.array([1.52, 1.7])
+    below = every.u.real[:, None] < lines
+    incoming = below & (every.decay.imag > 0.0)
+    decays = every.decay.real > 0.0
+    drawn = (incoming & decays).any(axis=1) & (every.decay.real < 0.0).any(axis=1)
+    assert drawn.any()
+    leaky = leaky_modes(films, 0.3)
+    assert len(leaky.u) > 0
+    below = leaky.u.real[:, None] < lines
+    assert (leaky.decay.imag[below] < 0.0).all()
+    assert (leaky.decay.real[~below] > 0.0).all()
+
+
+def test_a_mode_that_leaks_by_less_than_rounding_is_still_leaky() -> None:
+    films = stack([1.4**2, 1.8**2], [6000, 400], (1.9**2, 1.0), 560.0)
+    held = bound_modes(stack([1.4**2, 1.8**2], [6000, 400], (1.4**2, 1.0), 560.0))
+    leaky = leaky_modes(films, 1e-6)
+    # All but the one that is held by grazing incidence alone.
+    deep = held.u.real > 1.42
+    assert deep.sum() >= 4
+    for pol, u in zip(held.polarization[deep], held.u[deep], strict=True):
+        assert np.abs(indices(leaky, pol) - u).min() < 1e-12
+    assert len(bound_modes(films).u) == 0
 
 
 @pytest.mark.parametrize(

@@ -16,7 +16,7 @@ from numpy.random import Generator, default_rng
 
 from optics.kernels.halfstack import P, S
 from optics.kernels.modal_sheet import Films
-from optics.kernels.poles import Modes, bound_modes
+from optics.kernels.poles import Modes, bound_modes, zeros_on_all_sheets
 
 SEED = 4001
 NEAR = 1e-4  # left edge of the contour: smallest decay constant that is counted
@@ -161,27 +161,30 @@ def with_metal(films: Films, j: int, eps: complex, kd: float) -> Films:
 
 
 def coupled_guides(rng: Generator) -> Films:
-    """Two guides, nearly or exactly alike, far apart."""
+    """Two guides, nearly or exactly alike, with what surrounds them, far apart."""
     guide, barrier = rng.uniform(1.9, 2.3) ** 2, rng.uniform(1.4, 1.6) ** 2
     side = rng.uniform(1.3, 1.6) ** 2
     width = rng.uniform(0.8, 4.0)
-    apart = rng.uniform(3.0, 14.0)
-    detuning = 10 ** rng.uniform(-12, -2) if rng.random() < 0.6 else 0.0
+    apart = rng.uniform(9.0, 26.0)
+    detuning = 10 ** rng.uniform(-12, -4) if rng.random() < 0.6 else 0.0
     loss = 0.0 if rng.random() < 0.5 else 10 ** rng.uniform(-8, -2)
     eps = complex(guide, loss)
-    outermost = [side, side] if rng.random() < 0.7 else [side, barrier]
+    outermost = [side, side * (1 + detuning)]
     return stack([eps, barrier, eps], [width, apart, width * (1 + detuning)], *outermost)
 
 
-def near_cutoff(rng: Generator) -> Films:
-    """A mode within 1e-4 of the larger outer index, on either side of it, or lossy there."""
+def near_cutoff(rng: Generator, decay: float = 1.0) -> Films:
+    """A mode within 1e-4 of the larger outer index; with -1, one that is not yet bound."""
     bottom, top = outer(rng)
     line = np.sqrt(max(bottom, top))
-    u = line + rng.uniform(-1e-4, 1e-4)
+    u = line + 10 ** rng.uniform(-8, -4.01)
     eps = [rng.uniform(line + 0.1, 2.4) ** 2, rng.uniform(line + 0.2, 2.5) ** 2]
     cover = rng.uniform(0.3, 2.0)
     kz = [np.sqrt(complex(e - u * u)) for e in (bottom, *eps, top)]
     kz = [-k if k.imag < 0 else k for k in kz]
+    for i, e in ((0, bottom), (3, top)):
+        # Growing instead of decaying in the medium whose light line it is.
+        kz[i] *= decay if e == max(bottom, top) else 1.0
     pol = int(rng.integers(2))
     y = [k / e for k, e in zip(kz, (bottom, *eps, top), strict=True)] if pol == P else kz
 
@@ -193,8 +196,12 @@ def near_cutoff(rng: Generator) -> Films:
     turn = np.angle(below * r(2, 3))
     width = (2 * np.pi * int(rng.integers(1, 3)) - turn) / (2 * kz[2].real)
     if rng.random() < 0.3:
-        eps[0] = complex(eps[0], 10 ** rng.uniform(-8, -4))
+        eps[0] = complex(eps[0], 10 ** rng.uniform(-8, -5))
     return stack([complex(eps[0]), complex(eps[1])], [cover, float(width)], bottom, top)
+
+
+def not_yet_bound(rng: Generator) -> Films:
+    return near_cutoff(rng, -1.0)
 
 
 FAMILIES: dict[str, tuple[Callable[[Generator], Films], int]] = {
@@ -203,6 +210,7 @@ FAMILIES: dict[str, tuple[Callable[[Generator], Films], int]] = {
     "soft metal": (soft_metal, 20),
     "coupled guides": (coupled_guides, 40),
     "near cut-off": (near_cutoff, 40),
+    "not yet bound": (not_yet_bound, 20),
 }
 ALL = [(name, i) for name, (_, number) in FAMILIES.items() for i in range(number)]
 
@@ -212,16 +220,36 @@ def made(name: str, i: int) -> Films:
 
 
 @pytest.mark.parametrize(("name", "i"), ALL)
-def test_all_modes_of_two_hundred_random_stacks_are_found(name: str, i: int) -> None:
+def test_all_modes_of_more_than_two_hundred_random_stacks_are_found(name: str, i: int) -> None:
     check(made(name, i))
 
 
+def nearest_to_line(films: Films, modes: Modes) -> float:
+    """Distance of a mode's index from the larger outer index; 1 without any."""
+    line = np.sqrt(max(films.bottom.real, films.top.real))
+    return float(np.abs(modes.u - line).min(initial=1.0))
+
+
+def closest_pair(films: Films) -> float:
+    """Smallest distance of two modes of one polarization; 1 if there are not two."""
+    modes = bound_modes(films)
+    apart = np.abs(modes.u[:, None] - modes.u[None, :])
+    same = modes.polarization[:, None] == modes.polarization[None, :]
+    return float(np.where(same & ~np.eye(modes.u.size, dtype=bool), apart, 1.0).min(initial=1.0))
+
+
 def test_the_families_hold_what_they_promise() -> None:
-    assert len(ALL) == 200
-    close = 0
-    for i in range(FAMILIES["near cut-off"][1]):
-        films = made("near cut-off", i)
-        modes = bound_modes(films)
-        line = np.sqrt(max(films.bottom.real, films.top.real))
-        close += bool((np.abs(modes.u.real - line) < 1.0001e-4).any())
-    assert close > 10  # the others lie just beyond their cut-off: nothing to find there
+    every = {name: [made(name, i) for i in range(number)] for name, (_, number) in FAMILIES.items()}
+    assert sum(map(len, every.values())) >= 200
+    metals = [films for name in ("thin metal", "soft metal") for films in every[name]]
+    assert sum(bool((films.kd[films.eps_o.real < 0] <= 0.6).any()) for films in metals) >= 60
+    soft = [(films.eps_o.real > -10) & (films.eps_o.real < -1) for films in metals]
+    assert sum(bool(one.any()) for one in soft) >= 20
+    pairs = np.array([closest_pair(films) for films in every["coupled guides"]])
+    assert (pairs < 1e-3).sum() >= 40
+    assert (pairs < 1e-8).sum() >= 10
+    bound = [nearest_to_line(films, bound_modes(films)) for films in every["near cut-off"]]
+    assert (np.array(bound) < 1e-4).sum() >= 40
+    for films in every["not yet bound"]:
+        assert nearest_to_line(films, bound_modes(films)) > 1e-4
+        assert nearest_to_line(films, zeros_on_all_sheets(films, 1e-3)) < 1e-4
