@@ -17,6 +17,8 @@ if TYPE_CHECKING:
     from optics.outcome.modes import Modes, modes
     from optics.study.check import Check, check
     from optics.study.sweep import sweep
+    from optics.study.tolerance import tolerance
+    from optics.study.tolerance_result import Tolerance
 
 _HOMES = {
     "Ambient": "optics.outcome.ambient",
@@ -26,6 +28,7 @@ _HOMES = {
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
     "Modes": "optics.outcome.modes",
+    "Tolerance": "optics.study.tolerance_result",
     "ambient": "optics.outcome.ambient",
     "angular": "optics.outcome.angular",
     "budget": "optics.outcome.budget",
@@ -33,6 +36,7 @@ _HOMES = {
     "modes": "optics.outcome.modes",
     "read_case": "optics.device.case",
     "sweep": "optics.study.sweep",
+    "tolerance": "optics.study.tolerance",
 }
 
 __all__ = [
@@ -43,6 +47,7 @@ __all__ = [
     "CaseError",
     "Check",
     "Modes",
+    "Tolerance",
     "__version__",
     "ambient",
     "angular",
@@ -51,6 +56,7 @@ __all__ = [
     "modes",
     "read_case",
     "sweep",
+    "tolerance",
 ]
 
 

@@ -91,6 +91,24 @@ def tolerance_option(command: _Command) -> _Command:
     return option(command)
 
 
+def shown_option(command: _Command) -> _Command:
+    """Take --outcome, any number of times."""
+    option = click.option(
+        "--outcome",
+        "shown",
+        multiple=True,
+        metavar="NAME",
+        help="Outcome that pictures show, all if not said; may be given several times.",
+    )
+    return option(command)
+
+
+def cluster_option(command: _Command) -> _Command:
+    """Take --cluster."""
+    text = "Dask scheduler that takes the work."
+    return click.option("--cluster", metavar="ADDRESS", help=text)(command)
+
+
 def check_outputs(
     outputs: tuple[Path, ...], suffixes: tuple[str, ...], picture: str | None
 ) -> bool:

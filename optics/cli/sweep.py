@@ -8,9 +8,11 @@ import click
 
 from optics.cli.options import (
     case_argument,
+    cluster_option,
     json_option,
     output_option,
     say_written,
+    shown_option,
     tolerance_option,
     traceback_option,
 )
@@ -21,15 +23,9 @@ from optics.cli.roof import FAILED, main
 @case_argument
 @json_option
 @output_option(".json, .csv, .nc, .png, .svg or .pdf")
-@click.option(
-    "--outcome",
-    "shown",
-    multiple=True,
-    metavar="NAME",
-    help="Outcome that pictures show, all if not said; may be given several times.",
-)
+@shown_option
 @tolerance_option
-@click.option("--cluster", metavar="ADDRESS", help="Dask scheduler that takes the work.")
+@cluster_option
 @traceback_option
 def sweep(
     case: Path,

@@ -122,14 +122,22 @@ def _tolerance(draft: Draft, study: ToleranceModel) -> list[Path]:
         key = _quoted("tolerance.spread", path)
         _exactly_one(draft, key, spread, ("relative_sd", "sd", "half_width"))
     _check_limits(draft, "tolerance", study, "limits")
+    seen: list[str] = []
     for index, group in enumerate(known(study, "groups") or []):
-        _check_group(draft, f"tolerance.groups[{index}]", known(group, "paths"), study)
+        paths = known(group, "paths")
+        _check_group(draft, f"tolerance.groups[{index}]", paths, study, seen)
+        seen += [path for path in paths or [] if path is not None]
     return _paths("tolerance.spread", known(study, "spread")) + _linked("tolerance", study)
 
 
 def _check_group(
-    draft: Draft, key: str, paths: list[str | None] | None, study: ToleranceModel
+    draft: Draft,
+    key: str,
+    paths: list[str | None] | None,
+    study: ToleranceModel,
+    seen: list[str],
 ) -> None:
+    """Note paths without spread, given twice, or among those of an earlier group."""
     spread = known(study, "spread")
     for position, path in enumerate(paths or []):
         if path is None:
@@ -139,6 +147,9 @@ def _check_group(
             draft.faults.add(place, f"{shown(path)} without spread", "a path of tolerance.spread")
         elif paths and path in paths[:position]:
             draft.faults.add(place, f"{shown(path)} again", "each path once")
+        elif path in seen:
+            found = f"{shown(path)}, which is in another group"
+            draft.faults.add(place, found, "each path in one group")
 
 
 def _check_limits(draft: Draft, study_name: str, study: BaseModel, table: str) -> None:

@@ -70,11 +70,11 @@ class OptimizeModel(ObjectiveModel):
 class SpreadModel(Part):
     """One of `relative_sd`, `sd` and `half_width` (uniform)."""
 
-    relative_sd: Annotated[float, Field(ge=0)] | None = Field(
+    relative_sd: Annotated[float, Field(gt=0)] | None = Field(
         default=None, description="standard deviation over the nominal value"
     )
-    sd: Annotated[float, Field(ge=0)] | None = Field(default=None, description="standard deviation")
-    half_width: Annotated[float, Field(ge=0)] | None = Field(
+    sd: Annotated[float, Field(gt=0)] | None = Field(default=None, description="standard deviation")
+    half_width: Annotated[float, Field(gt=0)] | None = Field(
         default=None, description="half width of a uniform distribution"
     )
 
@@ -91,6 +91,9 @@ class ToleranceModel(Part):
 
     samples: int = Field(default=1000, ge=1, description="number of samples")
     seed: int = Field(default=0, ge=0, description="seed of the random numbers")
+    outcomes: Annotated[list[str], Field(min_length=1)] | None = Field(
+        default=None, description="names of outcomes beside those with limits"
+    )
     groups: list[GroupModel] = Field(default=[], description="correlated numbers")
     spread: dict[str, SpreadModel] = Field(min_length=1, description="spread by path of the number")
     limits: dict[str, LimitModel] = Field(default={}, description="limits by outcome")

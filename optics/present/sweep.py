@@ -151,7 +151,9 @@ def _whole(found: xarray.Dataset) -> RenderableType:
 def _ranges(found: xarray.Dataset) -> RenderableType:
     from optics.present.tables import plain_table
 
-    table = plain_table("outcome", "unit", "smallest", "largest", "best", *map(_short, found.sizes))
+    table = plain_table(
+        "outcome", "unit", "smallest", "largest", "best", *map(short_name, found.sizes)
+    )
     for name, data in found.data_vars.items():
         best = best_point(data)
         at = (MISSING,) * (1 + len(found.sizes))
@@ -168,10 +170,10 @@ def _ranges(found: xarray.Dataset) -> RenderableType:
 
 def with_unit(name: str, unit: str) -> str:
     """Name with its unit in parentheses, unless it is a ratio or the name ends in the unit."""
-    return name if unit == "1" else f"{_short(name)} ({unit})"
+    return name if unit == "1" else f"{short_name(name)} ({unit})"
 
 
-def _short(path: object) -> str:
+def short_name(path: object) -> str:
     """Path without the first part and without the unit, for heads: ``HTL thickness``."""
     words = str(path).split(".")
     last = words[-1]
@@ -185,7 +187,7 @@ def spot(found: xarray.Dataset, at: Mapping[str, float]) -> str:
     words = []
     for path, value in at.items():
         unit = found[path].attrs["units"]
-        words.append(f"{_short(path)} {value:.6g}{'' if unit == '1' else f' {unit}'}")
+        words.append(f"{short_name(path)} {value:.6g}{'' if unit == '1' else f' {unit}'}")
     return ", ".join(words)
 
 

@@ -10,10 +10,11 @@ import numpy as np
 from optics._version import VERSION
 from optics.outcome.budget import DEFAULT_TOLERANCE
 from optics.study import evaluate
-from optics.study.evaluate import TRUST, Progress, compute_batch, gather, small_parts
+from optics.study.evaluate import Progress, compute_batch, gather, small_parts
 from optics.study.sweep_blocks import blocks, combines
 from optics.study.sweep_combined import Block, compute_block
 from optics.study.sweep_plan import Plan, plan_sweep
+from optics.study.trust import doubts, largest_errors, unkept
 
 if TYPE_CHECKING:
     from concurrent.futures import Executor
@@ -28,8 +29,6 @@ if TYPE_CHECKING:
     Floats = NDArray[np.float64]
 
 SCHEMA = "outcouple.sweep/1"
-_LARGE_NEAR_FIELD = 0.01
-_MOST_NAMED = 20
 
 
 def sweep(
@@ -95,7 +94,7 @@ def run_sweep(
 ) -> xarray.Dataset:
     """Compute a checked sweep; as `sweep`, but the caller discards the store."""
     values, failed = _compute(plan, executor, progress, store)
-    said = [] if store is None or store.trouble is None else [_unkept(store.trouble)]
+    said = [] if store is None or store.trouble is None else [unkept(store.trouble)]
     return _dataset(plan, values, failed, said)
 
 
@@ -172,42 +171,14 @@ def _dataset(plan: Plan, values: Floats, failed: dict[int, str], said: list[str]
             "title": plan.question.case.title,
             "case_sha256": plan.question.case.sha256,
             "tolerance": plan.question.tolerance,
-            **{
-                key: _largest(values[:, len(plan.question.outcomes) + place])
-                for place, key in enumerate(TRUST)
-            },
-            "warnings": "\n".join([*plan.question.case.warnings, *said, *_doubts(plan, values)]),
+            **largest_errors(plan.question, values),
+            "warnings": "\n".join(
+                [
+                    *plan.question.case.warnings,
+                    *said,
+                    *doubts(plan.question, values, plan.name_of),
+                ]
+            ),
             "failed": "\n".join(names),
         },
     )
-
-
-def _largest(column: Floats) -> float:
-    known = column[np.isfinite(column)]
-    return float(known.max()) if known.size else np.nan
-
-
-def _doubts(plan: Plan, values: Floats) -> Iterator[str]:
-    """What is to be known about points although they did not fail."""
-    limits = dict(
-        zip(
-            TRUST,
-            (plan.question.tolerance, plan.question.tolerance, _LARGE_NEAR_FIELD),
-            strict=True,
-        )
-    )
-    for place, (key, limit) in enumerate(limits.items(), len(plan.question.outcomes)):
-        column = values[:, place]
-        # Written so that a value that is no number is told too, but not a point that failed.
-        beyond = np.flatnonzero(np.isinf(column) | (column > limit))
-        if beyond.size == 0:
-            continue
-        worst = int(beyond[column[beyond].argmax()])
-        yield (
-            f"at {beyond.size} of {plan.points} points the {key.replace('_', ' ')} is above "
-            f"{limit:.1e}; the largest, {column[worst]:.1e}, at {plan.name_of(worst)}"
-        )
-
-
-def _unkept(trouble: str) -> str:
-    return f"progress could not be kept ({trouble}); the sweep went on without"
