@@ -34,8 +34,8 @@ if TYPE_CHECKING:
 
 SIDES = ("bottom", "top")
 POLARIZATIONS = ("s", "p")
-# Wavelengths that are computed together: what their directions take of memory stays small.
-_TOGETHER = 8
+# Wavelengths times angles that are computed together: what they take of memory stays small.
+_TOGETHER = 1000
 
 
 class Source(NamedTuple):
@@ -145,7 +145,7 @@ def radiance_over_bulk(
     """
     problem = problem_of(case, source.emitter, source.wavelength_nm, source.position_nm)
     rows = np.arange(source.wavelength_nm.size)
-    parts = [rows[start : start + _TOGETHER] for start in range(0, rows.size, _TOGETHER)]
+    parts = np.array_split(rows, -(-rows.size * angle_deg.size // _TOGETHER))
 
     def some(part: Rows) -> Floats:
         return _some_wavelengths(case, source, problem, side, angle_deg, part)
