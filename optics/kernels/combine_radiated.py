@@ -4,120 +4,182 @@ See `combine` for the formulas and the order of loops.
 """
 
 import math
+from typing import NamedTuple
 
 import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.combine import (
+    BLOCK,
+    Blocks,
     Nodes,
-    Rows,
     add_misses,
     add_moments,
+    add_product,
     emitter_kz,
-    resonance,
+    film_waves,
     ways_of,
 )
-from optics.kernels.combine_outside import first_arrivals
-from optics.kernels.combine_tables import HalfTable
+from optics.kernels.combine_outside import Outsides, first_arrivals, outsides
+from optics.kernels.combine_tables import KNOWN_OF_HALF, R_IM, R_RE
 from optics.kernels.compiled import inline, kernel
-from optics.kernels.elementary import exp_i
 from optics.kernels.exits import COLUMNS
 from optics.kernels.halfstack import P, abs2
 from optics.kernels.problem import Sides, Source
 from optics.kernels.source import channel, outgoing_factor
 
 
+class _Work(NamedTuple):
+    """What is known of a block at one node."""
+
+    half: Floats  # (KNOWN_OF_HALF, BLOCK)
+    stack: Floats  # (5, BLOCK)
+    sent: Floats  # (4, BLOCK)
+    shares: Floats  # (2, COLUMNS, BLOCK)
+
+
 @inline
-def directions_of(
-    source: Source, ways: Complexes, kz: complex, sign: float, a: complex, basis: Floats
+def _weigh_sent(
+    source: Source,
+    nodes: Nodes,
+    k: int,
+    c: int,
+    a: Floats,
+    ways: Complexes,
+    zone: Floats,
+    mean: Floats,
+    weights: Floats,
 ) -> None:
-    """What sent-down and sent-up power are made of at every position.
+    """Fill what multiplies the light of a channel, for one upper half.
+
+    Sent down goes K |g|^2 |to_b|^2 |1 + s a to_t^2|^2; sent up K |g|^2 |to_t|^2 |1 + s b to_b^2|^2
+    with kz real, where |to_t| = 1, or imaginary, where to_b and to_t are real and |to_b to_t|^2
+    is the same everywhere.
 
     Parameters
     ----------
-    ways : complex (2, z)
-        From `ways_of`: to the top face, to the bottom face, and back.
-    basis : float (3, z), output
-        Row 0, power sent down per (K |g|^2); rows 1 and 2, factors of what `sent_up` says.
+    a : float (n, 2, KNOWN_OF_HALF)
+        From its table.
+    ways : complex (nodes, 2, 2, z)
+        From `ways_of`.
+    mean : float (nodes, 4), output
+        Factors of the rows that `_fill_light` fills, averaged over positions.
+    weights : float (z, 4 * nodes), output
+        The same at every position, times the weight of the node.
     """
-    oscillates = abs(kz.real) >= abs(kz.imag)
-    turn = abs2(exp_i(kz * float(source.kd)))
-    for q in range(ways.shape[1]):
-        to_top, to_bottom = ways[0, q], ways[1, q]
-        size = math.sqrt(abs2(to_bottom))
-        basis[0, q] = size * abs2(1.0 + sign * a * to_top)
-        if oscillates:
-            basis[1, q], basis[2, q] = to_bottom.real, to_bottom.imag
-        else:
-            basis[1, q], basis[2, q] = math.sqrt(abs2(to_top)), turn * size
+    first = nodes.first[k]
+    pol, sign = channel(c)
+    for i in range(mean.shape[0]):
+        n = first + i
+        u, w = complex(nodes.u[n]), nodes.weight[n]
+        kz = emitter_kz(source, pol, u)
+        carried = outgoing_factor(c, source, u.real, kz) * nodes.du[n].real
+        above = sign * complex(a[n, pol, R_RE], a[n, pol, R_IM])
+        mean[i, :] = 0.0
+        for q in range(zone.size):
+            to_top, to_bottom = ways[i, pol, 0, q], ways[i, pol, 1, q]
+            down = math.sqrt(abs2(to_bottom)) * abs2(1.0 + above * to_top)
+            if oscillates(kz):
+                sent = (down, 1.0, sign * to_bottom.real, -sign * to_bottom.imag)
+            else:
+                sent = (down, math.sqrt(abs2(to_top)), sign, math.sqrt(abs2(to_bottom)))
+            for j in range(4):
+                mean[i, j] += zone[q] * carried * sent[j]
+                weights[q, 4 * i + j] = w * carried * sent[j]
 
 
 @inline
-def sent_up(
-    source: Source, kz: complex, sign: float, b: Floats, low: int, carried: Floats, parts: Floats
-) -> None:
-    """Power sent up as parts[0] + parts[1] basis[1] + parts[2] basis[2], for halves b from low.
+def oscillates(kz: complex) -> bool:
+    """Whether kz is real."""
+    return abs(kz.real) >= abs(kz.imag)
 
-    From |to_t|^2 |1 + s b to_b^2|^2 with kz real, where |to_t| = 1, or imaginary, where to_b and
-    to_t are real and |to_b to_t|^2 is the same everywhere.
+
+@inline
+def _cut_out(down: Floats, low: int, known: int, half: Floats) -> None:
+    """Copy the first rows of what is known of a block's lower halves."""
+    for f in range(known):
+        row = down[f][low : low + BLOCK]
+        for p in range(BLOCK):
+            half[f, p] = row[p]
+
+
+@inline
+def _fill_sent(real: bool, turn: float, x: complex, half: Floats, sent: Floats) -> None:
+    """Fill rows (4, BLOCK) of |g|^2 times what is sent down, and up; x = a P. See `_weigh_sent`.
+
+    real : whether kz is; turn : |exp(i kz d)|^2.
     """
-    oscillates = abs(kz.real) >= abs(kz.imag)
-    turn = abs2(exp_i(kz * float(source.kd)))
-    for p in range(carried.size):
-        br, bi = b[0, low + p], b[1, low + p]
-        size = carried[p] * (br * br + bi * bi)
-        if oscillates:
-            parts[0, p] = carried[p] + size
-            parts[1, p] = 2.0 * sign * br * carried[p]
-            parts[2, p] = -2.0 * sign * bi * carried[p]
-        else:
-            parts[0, p] = 2.0 * sign * br * turn * carried[p]
-            parts[1, p] = carried[p]
-            parts[2, p] = size
+    xr, xi = x.real, x.imag
+    for p in range(BLOCK):
+        r, i = half[R_RE, p], half[R_IM, p]
+        dr, di = 1.0 - (xr * r - xi * i), xr * i + xi * r
+        g = 1.0 / (dr * dr + di * di)
+        size, twice = g * (r * r + i * i), 2.0 * g * r
+        sent[0, p] = g
+        sent[1, p] = g + size if real else g
+        sent[2, p] = twice if real else turn * twice
+        sent[3, p] = 2.0 * g * i if real else turn * size
 
 
 @inline
-def any_goes(to_down: Floats, to_up: Floats) -> bool:
-    """Whether anything goes to a destination; mostly the first point tells."""
-    p = 0
-    while p < to_down.size and to_down[p] == 0.0 and to_up[p] == 0.0:
-        p += 1
-    return p < to_down.size
+def _fill_light(sent: Floats, to_down: Floats, to_up: Floats, light: Floats, n: int) -> None:
+    """Fill rows n to n + 3 with what goes to one destination."""
+    for p in range(BLOCK):
+        light[n, p] = sent[0, p] * to_down[p]
+        light[n + 1, p] = sent[1, p] * to_up[p]
+        light[n + 2, p] = sent[2, p] * to_up[p]
+        light[n + 3, p] = sent[3, p] * to_up[p]
 
 
 @inline
-def add_destination(
-    to_down: Floats,
-    to_up: Floats,
-    carried: Floats,
-    sent: Floats,
-    basis: Floats,
-    zone: Floats,
-    rule: tuple[float, float, float],
-    v: Floats,
-    target: Floats,
-    begin: int,
+def _light_of_block(
+    sides: Sides,
+    nodes: Nodes,
+    k: int,
+    outside: Outsides,
+    waves: tuple[Complexes, Complexes],
+    up: Floats,
+    down: Floats,
+    low: int,
+    mean: Floats,
+    work: _Work,
+    light: Floats,
     moments: Floats,
 ) -> None:
-    """Add what goes to one destination to target (z, p) from begin on, and its moments (3, l).
+    """Fill the light of a block of devices at a panel's nodes, and its moments.
 
-    to_down, to_up (l,): share of what is sent down, up; sent (3, l) of `sent_up`; basis (3, z) of
-    `directions_of`; v (5, l) work space.
+    Parameters
+    ----------
+    waves : (complex, complex)
+        From `film_waves`.
+    up : float (n, 2, KNOWN_OF_HALF)
+        The upper half.
+    down, low
+        Lower halves; the block's begin at low.
+    light : float (COLUMNS, 2, 4 * nodes, BLOCK), output
+        By destination and polarization.
+    moments : float (2, COLUMNS, 3, BLOCK), output
+        Added to.
     """
-    weight, last, second = rule
-    m0, m1, m2 = (zone * basis[0]).sum(), (zone * basis[1]).sum(), (zone * basis[2]).sum()
-    for p in range(carried.size):
-        v[0, p] = carried[p] * to_down[p]
-        v[1, p] = sent[0, p] * to_up[p]
-        v[2, p] = sent[1, p] * to_up[p]
-        v[3, p] = sent[2, p] * to_up[p]
-        v[4, p] = m0 * v[0, p] + v[1, p] + m1 * v[2, p] + m2 * v[3, p]
-    add_moments(v[4], weight, last, second, moments)
-    for q in range(target.shape[0]):
-        x0, x1, x2 = weight * basis[0, q], weight * basis[1, q], weight * basis[2, q]
-        for p in range(carried.size):
-            new = x0 * v[0, p] + weight * v[1, p]
-            target[q, begin + p] += new + x1 * v[2, p] + x2 * v[3, p]
+    half, stack, sent, shares = work
+    for i in range(outside.returns.size):
+        n = nodes.first[k] + i
+        rule = (nodes.weight[n], nodes.last[n], nodes.second[n])
+        if rule[0] == 0.0:
+            continue
+        for pol in range(2):
+            real, phase = oscillates(waves[0][i, pol]), waves[1][i, pol]
+            x = complex(up[n, pol, R_RE], up[n, pol, R_IM]) * phase * phase
+            _cut_out(down[n, pol], low, outside.known[i], half)
+            _fill_sent(real, abs2(phase), x, half, sent)
+            first_arrivals(sides, outside, i, pol, up[n, pol], half, phase, stack, shares)
+            for column in range(1, COLUMNS):
+                if not outside.goes[i, column]:
+                    continue
+                lit = light[column, pol]
+                _fill_light(sent, shares[0, column], shares[1, column], lit, 4 * i)
+                for c in range(0 if pol == P else 2, 2 if pol == P else 3):
+                    add_moments(mean[c, i], 0.0, rule, lit, 4 * i, moments[min(c, 1), column])
 
 
 @kernel
@@ -125,14 +187,14 @@ def combine_radiated(
     source: Source,
     sides: Sides,
     nodes: Nodes,
-    up: HalfTable,
-    down: HalfTable,
-    rows: Rows,
+    up: Floats,
+    down: Floats,
+    blocks: Blocks,
     zone: Floats,
     value: Floats,
     misses: Floats,
 ) -> None:
-    """All destinations of every point below the outer light lines.
+    """All destinations of every device below the outer light lines.
 
     Parameters
     ----------
@@ -140,10 +202,10 @@ def combine_radiated(
         Of one wavelength, with z positions.
     sides : Sides
     nodes : Nodes
-    up, down : HalfTable
-        From `combine_tables.tabulate_half`.
-    rows : Rows
-        Of p points in all.
+    up, down : float (n, 2, KNOWN_OF_HALF, v)
+        From `combine_tables.tabulate_half`; the lower ones with BLOCK more at the end.
+    blocks : Blocks
+        Of p devices in all.
     zone : float (z,)
         Weights of the average whose error is estimated.
     value : float (2, COLUMNS, z, p), output
@@ -153,41 +215,39 @@ def combine_radiated(
         Estimated errors, added to.
     """
     z = source.kz_positions.size
-    per_row, basis = np.zeros((2, COLUMNS)), np.zeros((3, z))
+    work = _Work(
+        np.zeros((KNOWN_OF_HALF, BLOCK)), np.zeros((5, BLOCK)), np.zeros((4, BLOCK)),
+        np.zeros((2, COLUMNS, BLOCK)),
+    )  # fmt: skip
+    product, moments = np.zeros((z, BLOCK)), np.zeros((2, COLUMNS, 3, BLOCK))
     for k in range(nodes.part.size):
-        begin, ways = 0, ways_of(source, nodes, k)
-        for row in range(rows.up.size):
-            low, iu = rows.first[row], rows.up[row]
-            points = rows.last[row] - low
-            # Of exactly this length, so that loops over them vectorize.
-            g, t, bg = np.zeros((2, points)), np.zeros((2, points)), np.zeros((2, points))
-            carried, sent, more = np.zeros(points), np.zeros((3, points)), np.zeros((5, points))
-            shares, moments = np.zeros((2, COLUMNS, points)), np.zeros((2, COLUMNS, 3, points))
-            for n in range(nodes.first[k], nodes.first[k + 1]):
-                rule, u = (nodes.weight[n], nodes.last[n], nodes.second[n]), nodes.u[n].real
-                if rule[0] == 0.0:
+        begin, first = 0, nodes.first[k]
+        count = nodes.first[k + 1] - first
+        ways, outside = ways_of(source, nodes, k), outsides(sides, nodes.u[first : first + count])
+        waves = film_waves(source, nodes, k)
+        some = outside.goes.sum(axis=0) > 0
+        light = np.zeros((COLUMNS, 2, 4 * count, BLOCK))
+        mean, weights = np.zeros((3, count, 4)), np.zeros((3, z, 4 * count))
+        known = -1
+        for block in range(blocks.up.size):
+            iu, low, length = blocks.up[block], blocks.first[block], blocks.length[block]
+            if iu != known:
+                known = iu
+                for c in range(3):
+                    _weigh_sent(
+                        source, nodes, k, c, up[:, :, :, iu], ways, zone, mean[c], weights[c]
+                    )
+            moments[:, :, :, :] = 0.0
+            _light_of_block(
+                sides, nodes, k, outside, waves, up[:, :, :, iu], down, low, mean, work, light,
+                moments,
+            )  # fmt: skip
+            for column in range(1, COLUMNS):
+                if not some[column]:
                     continue
-                for pol in range(2):
-                    kz = emitter_kz(source, pol, complex(nodes.u[n]))
-                    phase = exp_i(kz * float(source.kd))
-                    a = complex(up.r[n, pol, 0, iu], up.r[n, pol, 1, iu])
-                    b = down.r[n, pol]
-                    resonance(a, b, low, phase * phase, g, t, bg)
-                    first_arrivals(sides, pol, u, up, down, n, iu, low, a, phase, per_row, shares)
-                    for c in range(0 if pol == P else 2, 2 if pol == P else 3):
-                        o, sign = min(c, 1), channel(c)[1]
-                        outgoing = outgoing_factor(c, source, u, kz) * nodes.du[n].real
-                        for p in range(points):
-                            carried[p] = outgoing * (g[0, p] * g[0, p] + g[1, p] * g[1, p])
-                        directions_of(source, ways[n - nodes.first[k], pol], kz, sign, a, basis)
-                        sent_up(source, kz, sign, b, low, carried, sent)
-                        for column in range(1, COLUMNS):
-                            if any_goes(shares[0, column], shares[1, column]):
-                                add_destination(
-                                    shares[0, column], shares[1, column], carried, sent, basis,
-                                    zone, rule, more, value[o, column], begin, moments[o, column],
-                                )  # fmt: skip
-            for o in range(2):
-                for column in range(COLUMNS):
-                    add_misses(moments[o, column], misses[o, column], begin)
-            begin += points
+                for c in range(3):
+                    pol, target = channel(c)[0], value[min(c, 1), column]
+                    add_product(weights[c], light[column, pol], 0.0, product, target, begin, length)
+                for o in range(2):
+                    add_misses(moments[o, column], misses[o, column, begin : begin + length])
+            begin += length

@@ -5,8 +5,6 @@ both sides of an emitter needs each half once. Tables keep real and imaginary pa
 half stacks as the last axis, so that loops over them vectorize.
 """
 
-from typing import NamedTuple
-
 import numpy as np
 from numpy.typing import NDArray
 
@@ -25,17 +23,19 @@ _DEEPEST = 48
 _HOPELESS = 10.0
 
 
-class HalfTable(NamedTuple):
-    """Half stacks at real nodes; v of them on the last axis."""
-
-    r: Floats  # (n, 2, 2, v) reflection seen from the emitter film; s, p; real, imaginary
-    out: Floats  # (n, 2, v) flux carried out per |amplitude|^2 sent from the emitter film
-    loss: Floats  # (n, 2, v) absorbed, likewise
-    flux: Floats  # (n, 2, v) Re Y of the outer medium
-    ports: Complexes  # (n, 2, 3, v) t outward; and lit from outside: t inward, reflection,
-    # filled, as what follows, at nodes where this side's slab sends light back.
-    outside: Floats  # (n, 2, v) absorbed per |amplitude|^2 sent from outside
-    cross: Complexes  # (n, 2, v) cross term of both
+# What is known of a half stack at a real node, in the order of a table's third axis.
+(
+    R_RE, R_IM,  # reflection seen from the emitter film
+    OUT,  # flux carried out per |amplitude|^2 sent from the emitter film
+    LOSS,  # absorbed, likewise
+    FLUX,  # Re Y of the outer medium
+    T_OUT_RE, T_OUT_IM,  # transmission outward; light from the other side leaves through it too
+    T_IN_RE, T_IN_IM,  # lit from outside, where this side's slab sends light back: inward
+    R_OUT_RE, R_OUT_IM,  # reflection
+    OUTSIDE,  # absorbed per |amplitude|^2 sent from outside
+    CROSS_RE, CROSS_IM,  # cross term of both
+) = range(14)  # fmt: skip
+KNOWN_OF_HALF = 14
 
 
 @kernel
@@ -52,7 +52,7 @@ def tabulate_reflection(
         k0 times thickness, 0 at both ends.
     u : complex (n,)
         Nodes over k0, a multiple of NODES.
-    r : float (n, 2, 2, v), output
+    r : float (n, 2, 2, v or more), output
         s, p; real and imaginary part.
     """
     work = work_space(eps_o.size)
@@ -73,7 +73,7 @@ def tabulate_half(
     kd: Floats,
     u: Complexes,
     returns: NDArray[np.bool_],
-    table: HalfTable,
+    table: Floats,
 ) -> None:
     """Everything about half stacks at real nodes.
 
@@ -83,7 +83,7 @@ def tabulate_half(
         As of `tabulate_reflection`.
     returns : bool (n,)
         Where the half stack may be lit from outside.
-    table : HalfTable, output
+    table : float (n, 2, KNOWN_OF_HALF, v or more), output
     """
     work = work_space(eps_o.size)
     for j in range(kd.shape[0]):
@@ -96,33 +96,17 @@ def tabulate_half(
             for i in range(NODES):
                 n = start + i
                 for pol in range(2):
-                    r = work.r_far[pol, 0, i]
-                    flux = work.y[pol, -1, i].real
-                    table.r[n, pol, 0, j], table.r[n, pol, 1, j] = r.real, r.imag
-                    table.out[n, pol, j] = abs2(work.t[pol, i]) * flux
-                    table.loss[n, pol, j] = work.form[0, pol, i].real
-                    table.flux[n, pol, j] = flux
-                    # Light that comes back from the other side leaves through this half too.
-                    table.ports[n, pol, 0, j] = work.t[pol, i]
+                    known = table[n, pol]
+                    r, t, flux = work.r_far[pol, 0, i], work.t[pol, i], work.y[pol, -1, i].real
+                    known[R_RE, j], known[R_IM, j] = r.real, r.imag
+                    known[OUT, j], known[LOSS, j] = abs2(t) * flux, work.form[0, pol, i].real
+                    known[FLUX, j], known[T_OUT_RE, j], known[T_OUT_IM, j] = flux, t.real, t.imag
                     if some:
-                        table.ports[n, pol, 1, j] = work.g[pol, 0, i]
-                        table.ports[n, pol, 2, j] = work.r_out[pol, i]
-                        table.outside[n, pol, j] = work.form[1, pol, i].real
-                        table.cross[n, pol, j] = work.form[2, pol, i]
-
-
-def empty_table(nodes: int, halves: int) -> HalfTable:
-    """Table with room for so many nodes and half stacks."""
-    real = [np.zeros((nodes, 2, halves)) for _ in range(4)]
-    return HalfTable(
-        np.zeros((nodes, 2, 2, halves)),
-        real[0],
-        real[1],
-        real[2],
-        np.zeros((nodes, 2, 3, halves), dtype=np.complex128),
-        real[3],
-        np.zeros((nodes, 2, halves), dtype=np.complex128),
-    )
+                        t, r, cross = work.g[pol, 0, i], work.r_out[pol, i], work.form[2, pol, i]
+                        known[T_IN_RE, j], known[T_IN_IM, j] = t.real, t.imag
+                        known[R_OUT_RE, j], known[R_OUT_IM, j] = r.real, r.imag
+                        known[OUTSIDE, j] = work.form[1, pol, i].real
+                        known[CROSS_RE, j], known[CROSS_IM, j] = cross.real, cross.imag
 
 
 @kernel

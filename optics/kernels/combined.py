@@ -6,6 +6,7 @@ parts, so that whoever misses the wanted accuracy can be told, and computed by `
 """
 
 from collections.abc import Iterator
+from itertools import pairwise
 from typing import NamedTuple
 
 import numpy as np
@@ -14,19 +15,19 @@ from optics.kernels.arrays import Floats, Integers
 from optics.kernels.budget import light_budget
 from optics.kernels.combine import (
     BEYOND_PART,
+    BLOCK,
     GUIDED_PART,
     NEAR_PART,
     PARTS,
     TOTAL_PART,
+    Blocks,
     Nodes,
-    Rows,
     combine_dissipated,
 )
 from optics.kernels.combine_collect import add_averages, collect
 from optics.kernels.combine_radiated import combine_radiated
 from optics.kernels.combine_tables import (
-    HalfTable,
-    empty_table,
+    KNOWN_OF_HALF,
     finest,
     leaves,
     nodes_of,
@@ -141,20 +142,20 @@ class _Found(NamedTuple):
 def _at_nodes(family: Family, w: int, panels: _Panels, places: Integers, zone: Floats) -> _Found:
     """Compute devices, given by their places in sorted order, at the nodes of these panels."""
     pairs = family.pairs[places]
-    rows = _rows(pairs)
+    blocks = _blocks(pairs)
     points, z = places.size, zone.size
     source, sides, up, down = _one(family.problem, w)
     kd_up, kd_down = family.kd_up[w], family.kd_down[w]
     found, missed = np.zeros((PARTS, 3, z, points)), np.zeros((PARTS, 3, points))
     nodes = _nodes(panels, free=False)
     r_up, r_down = _reflections(up, kd_up, nodes), _reflections(down, kd_down, nodes)
-    combine_dissipated(source, nodes, r_up, r_down, rows, zone, found, missed)
+    combine_dissipated(source, nodes, r_up, r_down, blocks, zone, found, missed)
     free, missed_free = np.zeros((2, COLUMNS, z, points)), np.zeros((2, COLUMNS, points))
     nodes = _nodes(panels, free=True)
     if nodes.part.size:
         above = _halves(up, kd_up, nodes, sides, 1)
         below = _halves(down, kd_down, nodes, sides, 0)
-        combine_radiated(source, sides, nodes, above, below, rows, zone, free, missed_free)
+        combine_radiated(source, sides, nodes, above, below, blocks, zone, free, missed_free)
     result = _Found(np.zeros(points), np.zeros(points), np.zeros((2, KNOWN, z, points)))
     collect(found, missed, free, missed_free, panels.plasmon, zone, *result)
     return result
@@ -257,14 +258,14 @@ def _nodes(panels: _Panels, *, free: bool) -> Nodes:
 
 
 def _reflections(half: Half, kd: Floats, nodes: Nodes) -> Floats:
-    table = np.zeros((nodes.u.size, 2, 2, kd.shape[0]))
+    table = np.zeros((nodes.u.size, 2, 2, kd.shape[0] + BLOCK))
     tabulate_reflection(half.eps_o, half.eps_e, kd, nodes.u, table)
     return table
 
 
-def _halves(half: Half, kd: Floats, nodes: Nodes, sides: Sides, side: int) -> HalfTable:
+def _halves(half: Half, kd: Floats, nodes: Nodes, sides: Sides, side: int) -> Floats:
     """Table of the half stacks on one side (0 bottom, 1 top), lit from its slab where it can be."""
-    table = empty_table(nodes.u.size, kd.shape[0])
+    table = np.zeros((nodes.u.size, 2, KNOWN_OF_HALF, kd.shape[0] + BLOCK))
     lit = np.zeros(nodes.u.size, dtype=np.bool_)
     if sides.kind[side] == PLANAR:
         lit = nodes.u.real < sides.n_outer[side]
@@ -272,13 +273,13 @@ def _halves(half: Half, kd: Floats, nodes: Nodes, sides: Sides, side: int) -> Ha
     return table
 
 
-def _rows(pairs: Integers) -> Rows:
-    """Rows of sorted pairs: runs of one upper half with neighboring lower ones."""
+def _blocks(pairs: Integers) -> Blocks:
+    """Blocks of sorted pairs: one upper half with neighboring lower ones."""
     up, down = pairs[:, 0], pairs[:, 1]
     new = np.flatnonzero((np.diff(up) != 0) | (np.diff(down) != 1)) + 1
-    begin = np.concatenate([[0], new])
-    end = np.concatenate([new, [up.size]])
-    return Rows(up[begin], down[begin], down[end - 1] + 1)
+    ends = np.concatenate([[0], new, [up.size]])
+    begin = np.concatenate([np.arange(a, b, BLOCK) for a, b in pairwise(ends)])
+    return Blocks(up[begin], down[begin], np.diff(np.append(begin, up.size)))
 
 
 def _device(family: Family, pair: Integers) -> Problem:
