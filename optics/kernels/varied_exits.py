@@ -5,7 +5,7 @@ The twin of `exits`, which gives the values.
 
 import math
 
-from optics.kernels.arrays import Complexes, Floats
+from optics.kernels.arrays import Complexes, Flags, Floats
 from optics.kernels.compiled import inline
 from optics.kernels.exits import (
     ABSORBING,
@@ -15,7 +15,7 @@ from optics.kernels.exits import (
     MATCHED,
     MATCHED_BOTTOM,
     MATCHED_TOP,
-    PLANAR,
+    OPEN,
     SUBSTRATE,
     bounces,
     exit_line,
@@ -23,58 +23,72 @@ from optics.kernels.exits import (
     once_through,
 )
 from optics.kernels.halfstack import S, abs2, reciprocal
-from optics.kernels.problem import Sides, Work
+from optics.kernels.problem import Sides, Source, Work
+from optics.kernels.rules import NODES
 from optics.kernels.variation import Rates
 from optics.kernels.varied_response import Response
 
+Two = tuple[float, float]
+Three = tuple[float, float, float]
 Four = tuple[float, float, float, float]
+Ports = tuple[complex, complex, complex, complex]
 
 
 @inline
 def _re(a: complex, b: complex) -> float:
-    """Re(conj(a) b): half the rate of |a|^2 where b is the rate of a."""
-    return a.real * b.real + a.imag * b.imag
+    """Re(a b)."""
+    return a.real * b.real - a.imag * b.imag
 
 
 @inline
-def whole_stack_rates(
-    phase: complex,
-    phase_rate: complex,
-    half_a: tuple[complex, complex, float],
-    rates_a: tuple[complex, complex, float],
-    half_b: tuple[complex, complex, complex, complex, float],
-    rates_b: tuple[complex, complex, complex, complex, float],
-) -> Four:
-    """Whole stack lit from the medium outside half b: (R, T, dR, dT) per unit incident flux.
+def _reflected(phase: complex, r_a: complex, b: Ports) -> tuple[float, Ports, complex, complex]:
+    """Reflectance R of the whole stack lit from outside half b, and what changes it.
 
     Parameters
     ----------
     phase : complex
         exp(i kz d) of the emitter film.
-    half_a : (complex, complex, float)
-        Reflection seen from the emitter film, t outward, Re Y of the medium outside.
-    half_b : (complex, complex, complex, complex, float)
-        The same of half b, t inward and reflection from outside before the last.
-    phase_rate, rates_a, rates_b
-        Their rates.
+    r_a : complex
+        Reflection of the far half seen from the emitter film.
+    b : (complex, complex, complex, complex)
+        The near half: reflection seen from the emitter film, t outward, t inward, reflection
+        from outside.
+
+    Returns
+    -------
+    R, then factors f so that dR is the sum of Re(f dx): for the ports of b, r_a, phase.
     """
-    r_a, t_a, flux_a = half_a
-    r_b, t_b, in_b, out_b, flux_b = half_b
-    dr_a, dt_a, dflux_a = rates_a
-    dr_b, dt_b, din_b, dout_b, dflux_b = rates_b
+    r_b, t, t_in, r_out = b
     inv = reciprocal(1.0 - r_a * r_b * phase * phase)
-    loop_rate = (dr_a * r_b + r_a * dr_b) * phase * phase + 2.0 * r_a * r_b * phase * phase_rate
-    toward = in_b * phase * inv
-    d_toward = (din_b * phase + in_b * phase_rate + toward * loop_rate) * inv
-    back = phase * r_a
-    d_back = phase_rate * r_a + phase * dr_a
-    r = out_b + t_b * toward * back
-    dr = dout_b + dt_b * toward * back + t_b * (d_toward * back + toward * d_back)
-    x = t_a * toward
-    dx = dt_a * toward + t_a * d_toward
-    through = abs2(x) * flux_a / flux_b
-    through_rate = (2.0 * _re(x, dx) * flux_a + abs2(x) * dflux_a - through * dflux_b) / flux_b
-    return abs2(r), through, 2.0 * _re(r, dr), through_rate
+    there = phase * inv
+    twice = there * phase
+    echo = t_in * twice * r_a
+    r = r_out + t * echo
+    weight = 2.0 * r.conjugate()
+    by_a = weight * t * t_in * twice * inv
+    ports = (weight * t * echo * r_a * twice, weight * echo, weight * t * twice * r_a, weight)
+    return abs2(r), ports, by_a, 2.0 * weight * t * t_in * r_a * there * inv
+
+
+@inline
+def _transmitted(
+    phase: complex, r_a: complex, t_a: complex, r_b: complex, in_b: complex, ratio: float
+) -> tuple[float, Ports, complex]:
+    """Transmittance T of the whole stack lit from outside half b, and what changes it.
+
+    ratio : Re Y of the medium outside half a over that outside half b
+
+    Returns
+    -------
+    T, then factors f so that dT is the sum of Re(f dx): for r_a, t_a, r_b, in_b; phase.
+    """
+    inv = reciprocal(1.0 - r_a * r_b * phase * phase)
+    x = t_a * in_b * phase * inv
+    weight = 2.0 * ratio * x.conjugate()
+    loop = weight * x * inv * phase * phase
+    ports = (loop * r_b, weight * in_b * phase * inv, loop * r_a, weight * t_a * phase * inv)
+    by_phase = weight * t_a * in_b * inv * inv * (1.0 + r_a * r_b * phase * phase)
+    return abs2(x) * ratio, ports, by_phase
 
 
 @inline
@@ -111,18 +125,55 @@ def once_rate(
 
 
 @inline
-def _bounce_rates(
-    m: Four, backs: tuple[float, float], back_rates: tuple[float, float], stack: Four, rates: Four
+def _side(
+    kind: int, matched: bool, pol: int, u: float, n_outer: float, n_out: float, loss: float
 ) -> Four:
+    """One outer medium: one pass, face reflectance; share that leaves, share that comes back.
+
+    matched : bool
+        As if an index-matched hemisphere stood on the slab.
+    """
+    if kind == ABSORBING:
+        return 0.0, 0.0, 0.0, 0.0
+    if kind == OPEN:
+        return 1.0, 0.0, 1.0, 0.0
+    once = once_through(u, n_outer, loss)
+    if matched or kind == MATCHED:
+        return once, 0.0, once, 0.0
+    rho = face_reflectance(pol, u, n_outer, n_out) if u < n_outer else 1.0
+    return once, rho, once * (1.0 - rho), once * once * rho
+
+
+@inline
+def _side_rates(
+    side: Four, kind: int, matched: bool, pol: int, u: float, du: float,
+    n_outer: Two, n_out: Two, loss: Two,
+) -> Two:  # fmt: skip
+    """Rates of the share that leaves and of the share that comes back.
+
+    side : from `_side`; n_outer, n_out, loss : values and their rates
+    """
+    if kind in (OPEN, ABSORBING) or u >= n_outer[0]:
+        return 0.0, 0.0
+    once, rho = side[0], side[1]
+    d_once = once_rate(once, u, du, n_outer[0], n_outer[1], loss[0], loss[1])
+    if matched or kind == MATCHED:
+        return d_once, 0.0
+    d_rho = face_rate(pol, u, du, n_outer[0], n_outer[1], n_out[0], n_out[1])
+    return d_once * (1.0 - rho) - once * d_rho, once * (2.0 * d_once * rho + once * d_rho)
+
+
+@inline
+def _bounce_rates(m: Four, backs: Two, back_rates: Two, stack: Three, stack_rates: Three) -> Four:
     """Rates of `exits.bounces`: m is the inverse of 1 - K, so that dm = m dK m.
 
-    stack, rates : R from the bottom, R from the top, T, unused
+    stack, stack_rates : R from the bottom, R from the top, T
     """
-    (bb, bt, tb, tt), (r_b, r_t, through, _), (dr_b, dr_t, dthrough, _) = m, stack, rates
+    (bb, bt, tb, tt), (r_b, r_t, through), (dr_b, dr_t, d_through) = m, stack, stack_rates
     k_bb = dr_b * backs[0] + r_b * back_rates[0]
-    k_tb = dthrough * backs[0] + through * back_rates[0]
+    k_tb = d_through * backs[0] + through * back_rates[0]
     k_tt = dr_t * backs[1] + r_t * back_rates[1]
-    k_bt = dthrough * backs[1] + through * back_rates[1]
+    k_bt = d_through * backs[1] + through * back_rates[1]
     x_bb, x_bt = k_bb * bb + k_bt * tb, k_bb * bt + k_bt * tt
     x_tb, x_tt = k_tb * bb + k_tt * tb, k_tb * bt + k_tt * tt
     return (
@@ -134,159 +185,188 @@ def _bounce_rates(
 
 
 @inline
-def _side(
-    side: int, pol: int, sides: Sides, rates: Rates, p: int, u: float, du: float
-) -> tuple[float, float, float, float, float, float]:
-    """One outer medium: one pass, share that leaves, share that comes back; and their rates.
-
-    Without a direction (p < 0) the rates are 0.
-    """
-    kind, n, n_out, loss = (
-        sides.kind[side],
-        sides.n_outer[side],
-        sides.n_out[side],
-        sides.loss[side],
-    )
-    if kind == ABSORBING:
-        return 0.0, 0.0, 0.0, 0.0, 0.0, 0.0
-    once = once_through(u, n, loss)
-    rho, d_once, d_rho = 1.0, 0.0, 0.0
-    planar = kind == PLANAR and u < n
-    if planar:
-        rho = face_reflectance(pol, u, n, n_out)
-    if p >= 0:
-        dn = rates.n_outer[p, side]
-        d_once = once_rate(once, u, du, n, dn, loss, rates.loss[p, side])
-        if planar:
-            d_rho = face_rate(pol, u, du, n, dn, n_out, rates.n_out[p, side])
-    if kind == PLANAR:
-        return (
-            once, once * (1.0 - rho), once * once * rho,
-            d_once, d_once * (1.0 - rho) - once * d_rho, once * (2.0 * d_once * rho + once * d_rho),
-        )  # fmt: skip
-    if kind == MATCHED:
-        return once, once, 0.0, d_once, d_once, 0.0
-    return 1.0, 1.0, 0.0, 0.0, 0.0, 0.0
-
-
-@inline
-def _lit(
-    pol: int, i: int, p: int, sides: Sides, down: Work, up: Work, phase: complex,
-    phase_rate: complex, vary_down: Response, vary_up: Response,
-) -> tuple[Four, Four]:  # fmt: skip
-    """R from the bottom, R from the top, T of the whole stack, and their rates (last ones 0)."""
-    a_down = (down.r_far[pol, 0, i], down.t[pol, i], down.y[pol, -1, i].real)
-    a_up = (up.r_far[pol, 0, i], up.t[pol, i], up.y[pol, -1, i].real)
-    da_down = (vary_down.r[pol, p, i], vary_down.t[pol, p, i], vary_down.y_out[pol, p, i].real)
-    da_up = (vary_up.r[pol, p, i], vary_up.t[pol, p, i], vary_up.y_out[pol, p, i].real)
-    r_b, r_t, through, dr_b, dr_t, dthrough = 1.0, 1.0, 0.0, 0.0, 0.0, 0.0
-    if sides.kind[1] == PLANAR and a_up[2] > 0.0:
-        b = (a_up[0], a_up[1], up.g[pol, 0, i], up.r_out[pol, i], a_up[2])
-        db = (da_up[0], da_up[1], vary_up.t_in[pol, p, i], vary_up.r_out[pol, p, i], da_up[2])
-        r_t, through, dr_t, dthrough = whole_stack_rates(phase, phase_rate, a_down, da_down, b, db)
-    if sides.kind[0] == PLANAR and a_down[2] > 0.0:
-        b = (a_down[0], a_down[1], down.g[pol, 0, i], down.r_out[pol, i], a_down[2])
-        db = (
-            da_down[0], da_down[1], vary_down.t_in[pol, p, i], vary_down.r_out[pol, p, i],
-            da_down[2],
-        )  # fmt: skip
-        r_b, through, dr_b, dthrough = whole_stack_rates(phase, phase_rate, a_up, da_up, b, db)
-    return (r_b, r_t, through, 0.0), (dr_b, dr_t, dthrough, 0.0)
-
-
-@inline
 def _book(
-    m: Four, d_m: Four, arrived: tuple[float, float], d_arrived: tuple[float, float],
-    exits: tuple[float, float], d_exits: tuple[float, float],
-    columns: tuple[int, int], shares: Floats, rates: Floats,
+    m: Four, d_m: Four, arrived: Two, d_arrived: Two, leaves: Two, d_leaves: Two, row: int
+) -> tuple[float, float, float, float]:
+    """What leaves at the bottom and top of light sent down (row 0) or up, and the rates."""
+    to_b, to_t, d_b, d_t = m[row], m[2 + row], d_m[row], d_m[2 + row]
+    power, d_power = arrived[row], d_arrived[row]
+    return (
+        to_b * power * leaves[0],
+        to_t * power * leaves[1],
+        (d_b * power + to_b * d_power) * leaves[0] + to_b * power * d_leaves[0],
+        (d_t * power + to_t * d_power) * leaves[1] + to_t * power * d_leaves[1],
+    )
+
+
+@inline
+def lit_from_outside(
+    pol: int, side: int, source: Source, kd_rate: Floats, phase: Complexes, near: Work, far: Work,
+    vary: Response, vary_far: Response, lit: Flags, stack: Floats, rates: Floats,
 ) -> None:  # fmt: skip
-    """Add what leaves at the bottom and top (columns) to shares and rates (2, COLUMNS)."""
-    for row in range(2):
-        i_b, i_t = (m[0], m[2]) if row == 0 else (m[1], m[3])
-        d_b, d_t = (d_m[0], d_m[2]) if row == 0 else (d_m[1], d_m[3])
-        power, d_power = arrived[row], d_arrived[row]
-        if exits[0] != 0.0 or d_exits[0] != 0.0:
-            shares[row, columns[0]] += i_b * power * exits[0]
-            rates[row, columns[0]] += (d_b * power + i_b * d_power) * exits[0]
-            rates[row, columns[0]] += i_b * power * d_exits[0]
-        if exits[1] != 0.0 or d_exits[1] != 0.0:
-            shares[row, columns[1]] += i_t * power * exits[1]
-            rates[row, columns[1]] += (d_t * power + i_t * d_power) * exits[1]
-            rates[row, columns[1]] += i_t * power * d_exits[1]
+    """Reflectance and transmittance of the whole stack lit from one side, and their rates.
+
+    Parameters
+    ----------
+    side : int
+        0: the bottom one, 1: the top one.
+    kd_rate : float (p,)
+        Rates of k0 d of the emitter film.
+    phase : complex (n,)
+        exp(i kz d) of the emitter film.
+    near, far : Work
+        Half stack on the side that is lit, and the other; vary, vary_far their rates.
+    lit : bool (n,)
+        Nodes where it is asked for.
+    stack : float (3, n), output
+        R from the bottom, R from the top, T.
+    rates : float (p, 3, n), output
+    """
+    for i in range(NODES):
+        y_near, y_far = near.y[pol, -1, i].real, far.y[pol, -1, i].real
+        if not lit[i] or y_near <= 0.0:
+            continue
+        kz, e, ratio = near.kz[pol, 0, i], phase[i], y_far / y_near
+        r, r_far, t_in = near.r_far[pol, 0, i], far.r_far[pol, 0, i], near.g[pol, 0, i]
+        ports = (r, near.t[pol, i], t_in, near.r_out[pol, i])
+        stack[side, i], by, by_far, by_phase = _reflected(e, r_far, ports)
+        through, to, to_phase = _transmitted(e, r_far, far.t[pol, i], r, t_in, ratio)
+        stack[2, i] = through
+        per_ratio = through / ratio if ratio > 0.0 else 0.0
+        for p in range(kd_rate.size):
+            turn = 1j * e * (vary.kz[pol, p, i] * source.kd + kz * kd_rate[p])
+            dr, dr_far, dt_in = vary.r[pol, p, i], vary_far.r[pol, p, i], vary.t_in[pol, p, i]
+            rates[p, side, i] = (
+                _re(by[0], dr) + _re(by[1], vary.t[pol, p, i]) + _re(by[2], dt_in)
+                + _re(by[3], vary.r_out[pol, p, i]) + _re(by_far, dr_far) + _re(by_phase, turn)
+            )  # fmt: skip
+            flux = (vary_far.y_out[pol, p, i].real - ratio * vary.y_out[pol, p, i].real) / y_near
+            rates[p, 2, i] = (
+                _re(to[0], dr_far) + _re(to[1], vary_far.t[pol, p, i]) + _re(to[2], dr)
+                + _re(to[3], dt_in) + _re(to_phase, turn) + per_ratio * flux
+            )  # fmt: skip
+
+
+@inline
+def arrival_rates(
+    pol: int, down: Work, up: Work, vary_down: Response, vary_up: Response, arrived: Floats,
+    rates: Floats,
+) -> None:  # fmt: skip
+    """Flux into the outer media per unit amplitude from the emitter film: bottom, top.
+
+    Parameters
+    ----------
+    arrived : float (2, n), output
+    rates : float (p, 2, n), output
+    """
+    for side in range(2):
+        for i in range(NODES):
+            t = down.t[pol, i] if side == 0 else up.t[pol, i]
+            y = down.y[pol, -1, i].real if side == 0 else up.y[pol, -1, i].real
+            arrived[side, i] = abs2(t) * y
+            weight = 2.0 * y * t.conjugate()
+            for p in range(rates.shape[0]):
+                dt = vary_down.t[pol, p, i] if side == 0 else vary_up.t[pol, p, i]
+                dy = vary_down.y_out[pol, p, i] if side == 0 else vary_up.y_out[pol, p, i]
+                rates[p, side, i] = _re(weight, dt) + abs2(t) * dy.real
 
 
 @inline
 def share_rates(
-    pol: int, i: int, u: float, u_rate: Floats, sides: Sides, rates: Rates, down: Work, up: Work,
-    phase: complex, phase_rate: Complexes, vary_down: Response, vary_up: Response,
-    shares: Floats, d_shares: Floats,
+    pol: int, u: Complexes, u_rate: Floats, sides: Sides, rates: Rates, moving: Flags,
+    arrived: Floats, d_arrived: Floats, stack: Floats, d_stack: Floats, shares: Floats,
+    d_shares: Floats,
 ) -> None:  # fmt: skip
     """Where light goes that the emitter film sends out with unit amplitude, without absorption.
 
     Parameters
     ----------
-    u_rate : float (p,)
-    phase_rate : complex (p,)
-        Of the phase factor of the emitter film.
-    shares : float (2, COLUMNS), output
-        By destination; rows: sent down, up. Column ABSORBED stays 0.
-    d_shares : float (p, 2, COLUMNS), output
+    moving : bool (p,)
+        Directions along which anything outside changes, or the nodes move.
+    arrived, d_arrived
+        From `arrival_rates`.
+    stack, d_stack
+        From `lit_from_outside`.
+    shares : float (COLUMNS, n, 2), output
+        By destination; last axis: sent down, up. Column ABSORBED stays 0.
+    d_shares : float (p, COLUMNS, n, 2), output
     """
+    shares[:, :, :] = 0.0
+    d_shares[:, :, :, :] = 0.0
+    for variant in range(3):
+        if variant > 0 and sides.kind[variant - 1] in (OPEN, ABSORBING):
+            continue
+        for i in range(NODES):
+            _share_at_node(
+                variant, i, pol, u[i].real, u_rate, sides, rates, moving, arrived, d_arrived,
+                stack, d_stack, shares, d_shares,
+            )  # fmt: skip
+
+
+@inline
+def _share_at_node(
+    variant: int, i: int, pol: int, u: float, u_rate: Floats, sides: Sides, rates: Rates,
+    moving: Flags, arrived: Floats, d_arrived: Floats, stack: Floats, d_stack: Floats,
+    shares: Floats, d_shares: Floats,
+) -> None:  # fmt: skip
+    """Shares of one node: variant 0 as it is, 1 and 2 with the bottom, top slab matched."""
     kind_b, kind_t = sides.kind[0], sides.kind[1]
-    line_b = exit_line(kind_b, sides.n_outer[0], sides.n_out[0])
-    line_t = exit_line(kind_t, sides.n_outer[1], sides.n_out[1])
-    y_b, y_t = down.y[pol, -1, i], up.y[pol, -1, i]
-    t_b, t_t = down.t[pol, i], up.t[pol, i]
-    p_b, p_t = abs2(t_b) * y_b.real, abs2(t_t) * y_t.real
-    d_shares[:, :, :] = 0.0
-    for p in range(u_rate.size):
-        shares[:, :] = 0.0
-        d_b = 2.0 * _re(t_b, vary_down.t[pol, p, i]) * y_b.real
-        d_b += abs2(t_b) * vary_down.y_out[pol, p, i].real
-        d_t = 2.0 * _re(t_t, vary_up.t[pol, p, i]) * y_t.real
-        d_t += abs2(t_t) * vary_up.y_out[pol, p, i].real
-        once_b, out_b, back_b, d_once_b, d_out_b, d_back_b = _side(
-            0, pol, sides, rates, p, u, u_rate[p]
-        )
-        once_t, out_t, back_t, d_once_t, d_out_t, d_back_t = _side(
-            1, pol, sides, rates, p, u, u_rate[p]
-        )
-        stack, d_stack = _lit(pol, i, p, sides, down, up, phase, phase_rate[p], vary_down, vary_up)
-        powers = (
-            stack[0], stack[1], stack[2],
-            max(1.0 - stack[0] - stack[2], 0.0), max(1.0 - stack[1] - stack[2], 0.0),
-        )  # fmt: skip
-        arrived, d_arrived = (p_b, p_t), (d_b, d_t)
-        if u < max(line_b, line_t):
-            m = bounces(back_b, back_t, powers)
-            d_m = _bounce_rates(m, (back_b, back_t), (d_back_b, d_back_t), stack, d_stack)
-            _book(
-                m, d_m, arrived, d_arrived, (out_b, out_t), (d_out_b, d_out_t),
-                (AIR_BOTTOM, AIR_TOP), shares, d_shares[p],
+    n_b, n_t, out_b, out_t = sides.n_outer[0], sides.n_outer[1], sides.n_out[0], sides.n_out[1]
+    line_b = exit_line(MATCHED if variant == 1 else kind_b, n_b, out_b)
+    line_t = exit_line(MATCHED if variant == 2 else kind_t, n_t, out_t)
+    free = u < max(line_b, line_t)
+    if not free:
+        if variant == 0:
+            _book_trapped(i, kind_b, kind_t, arrived, d_arrived, shares, d_shares)
+        return
+    side_b = _side(kind_b, variant == 1, pol, u, n_b, out_b, sides.loss[0])
+    side_t = _side(kind_t, variant == 2, pol, u, n_t, out_t, sides.loss[1])
+    power, backs, leaves = (arrived[0, i], arrived[1, i]), (side_b[3], side_t[3]), (0.0, 0.0)
+    if variant == 0:
+        leaves = (side_b[2], side_t[2])
+    elif variant == 1:
+        leaves = (side_b[2], 0.0)
+    else:
+        leaves = (0.0, side_t[2])
+    column_b, column_t = (AIR_BOTTOM, AIR_TOP) if variant == 0 else (MATCHED_BOTTOM, MATCHED_TOP)
+    seen = (stack[0, i], stack[1, i], stack[2, i])
+    kept = (max(1.0 - seen[0] - seen[2], 0.0), max(1.0 - seen[1] - seen[2], 0.0))
+    m = bounces(backs[0], backs[1], (seen[0], seen[1], seen[2], kept[0], kept[1]))
+    for p in range(u_rate.shape[0]):
+        d_power, d_seen = (d_arrived[p, 0, i], d_arrived[p, 1, i]), (0.0, 0.0, 0.0)
+        d_b, d_t, d_m = (0.0, 0.0), (0.0, 0.0), (0.0, 0.0, 0.0, 0.0)
+        if moving[p]:
+            d_b = _side_rates(
+                side_b, kind_b, variant == 1, pol, u, u_rate[p, i], (n_b, rates.n_outer[p, 0]),
+                (out_b, rates.n_out[p, 0]), (sides.loss[0], rates.loss[p, 0]),
             )  # fmt: skip
-        else:
-            if kind_b != ABSORBING:
-                shares[0, SUBSTRATE] += p_b
-                d_shares[p, 0, SUBSTRATE] += d_b
-            if kind_t != ABSORBING:
-                shares[1, COVER] += p_t
-                d_shares[p, 1, COVER] += d_t
-        # The same light if one slab's face were replaced by an index-matched hemisphere.
-        if kind_b in (PLANAR, MATCHED):
-            seen = u < max(sides.n_outer[0], line_t)
-            back, d_back = (back_t, d_back_t) if seen else (0.0, 0.0)
-            m = bounces(0.0, back, powers)
-            d_m = _bounce_rates(m, (0.0, back), (0.0, d_back), stack, d_stack)
-            _book(
-                m, d_m, arrived, d_arrived, (once_b, 0.0), (d_once_b, 0.0),
-                (MATCHED_BOTTOM, MATCHED_TOP), shares, d_shares[p],
+            d_t = _side_rates(
+                side_t, kind_t, variant == 2, pol, u, u_rate[p, i], (n_t, rates.n_outer[p, 1]),
+                (out_t, rates.n_out[p, 1]), (sides.loss[1], rates.loss[p, 1]),
             )  # fmt: skip
-        if kind_t in (PLANAR, MATCHED):
-            seen = u < max(sides.n_outer[1], line_b)
-            back, d_back = (back_b, d_back_b) if seen else (0.0, 0.0)
-            m = bounces(back, 0.0, powers)
-            d_m = _bounce_rates(m, (back, 0.0), (d_back, 0.0), stack, d_stack)
-            _book(
-                m, d_m, arrived, d_arrived, (0.0, once_t), (0.0, d_once_t),
-                (MATCHED_BOTTOM, MATCHED_TOP), shares, d_shares[p],
-            )  # fmt: skip
+        if backs[0] != 0.0 or backs[1] != 0.0:
+            d_seen = (d_stack[p, 0, i], d_stack[p, 1, i], d_stack[p, 2, i])
+            d_m = _bounce_rates(m, backs, (d_b[1], d_t[1]), seen, d_seen)
+        d_leaves = (0.0 if variant == 2 else d_b[0], 0.0 if variant == 1 else d_t[0])
+        for row in range(2):
+            b, t, rate_b, rate_t = _book(m, d_m, power, d_power, leaves, d_leaves, row)
+            if variant != 2:
+                shares[column_b, i, row] = b
+                d_shares[p, column_b, i, row] = rate_b
+            if variant != 1:
+                shares[column_t, i, row] = t
+                d_shares[p, column_t, i, row] = rate_t
+
+
+@inline
+def _book_trapped(
+    i: int, kind_b: int, kind_t: int, arrived: Floats, d_arrived: Floats, shares: Floats,
+    d_shares: Floats,
+) -> None:  # fmt: skip
+    """Light beyond every exit light line counts where it arrives first."""
+    if kind_b != ABSORBING:
+        shares[SUBSTRATE, i, 0] = arrived[0, i]
+        d_shares[:, SUBSTRATE, i, 0] = d_arrived[:, 0, i]
+    if kind_t != ABSORBING:
+        shares[COVER, i, 1] = arrived[1, i]
+        d_shares[:, COVER, i, 1] = d_arrived[:, 1, i]

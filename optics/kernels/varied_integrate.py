@@ -14,8 +14,9 @@ from optics.kernels.paths import ARC, REAL_FROM_ZERO, TAIL, panel_error, panel_s
 from optics.kernels.problem import Problem, work_space
 from optics.kernels.rules import NODES, STAGES
 from optics.kernels.variation import Rates, rates_at
-from optics.kernels.varied_response import response_space
-from optics.kernels.varied_source import varied_dissipated, varied_radiated, varied_scratch
+from optics.kernels.varied_radiated import varied_radiated
+from optics.kernels.varied_response import find_moves, moves_space, response_space
+from optics.kernels.varied_source import varied_dissipated, varied_scratch
 
 # A panel is halved at most this often, and no path takes more batches of nodes than this.
 _DEEPEST = 48
@@ -80,6 +81,7 @@ def integrate_rates(
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
     vary_up, vary_down = response_space(directions), response_space(directions)
     scratch = varied_scratch(directions, problem.source.kz_positions.shape[1])
+    moves = moves_space(directions)
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     u_rate, du_rate = np.zeros((directions, NODES)), np.zeros((directions, NODES))
     values = np.zeros((STAGES * NODES, columns))
@@ -88,6 +90,7 @@ def integrate_rates(
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
         here = rates_at(rates, rows[task])
+        find_moves(here, ends[task], moves)
         kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
         open_ends[0, 0], open_ends[1, 0] = 0.0, 1.0
         waiting, count = 1, 0
@@ -108,13 +111,13 @@ def integrate_rates(
                 batch = values[stage * NODES : (stage + 1) * NODES]
                 if everything:
                     varied_radiated(
-                        source, here, sides, up, down, work_up, work_down, vary_up, vary_down,
-                        scratch, u, du, u_rate, du_rate, batch,
+                        source, here, moves, sides, up, down, work_up, work_down, vary_up,
+                        vary_down, scratch, u, du, u_rate, du_rate, batch,
                     )  # fmt: skip
                 else:
                     varied_dissipated(
-                        source, here, up, down, work_up, work_down, vary_up, vary_down, scratch,
-                        u, du, u_rate, du_rate, kind == TAIL, batch,
+                        source, here, moves, up, down, work_up, work_down, vary_up, vary_down,
+                        scratch, u, du, u_rate, du_rate, kind == TAIL, batch,
                     )  # fmt: skip
                 worst = panel_error(values, stage, scale[task], moments, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_BATCHES:

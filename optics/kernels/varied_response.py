@@ -12,12 +12,12 @@ from typing import NamedTuple
 
 import numpy as np
 
-from optics.kernels.arrays import Complexes, Floats
+from optics.kernels.arrays import Complexes, Flags, Floats
 from optics.kernels.compiled import inline
-from optics.kernels.halfstack import P, S, abs2, reciprocal
+from optics.kernels.halfstack import S, abs2, reciprocal
 from optics.kernels.problem import Half, Work
 from optics.kernels.rules import NODES
-from optics.kernels.variation import HalfRates
+from optics.kernels.variation import HalfRates, Rates
 
 # Waves sent in: from the emitter film at both ends of the pair, from either end, from outside.
 INSIDE, THROUGH, OUTSIDE = 0, 1, 2
@@ -37,8 +37,18 @@ class Response(NamedTuple):
     t: Complexes  # (2, p, n) from the emitter film out
     t_in: Complexes  # (2, p, n) from outside into the emitter film
     r_out: Complexes  # (2, p, n) reflection seen from outside
-    forms: Complexes  # (FORMS, 2, p, n) work space: Y dS by films
+    forms: Complexes  # (FORMS, p, n) work space: Y dS by films
     terms: Complexes  # (4, FORMS, n) work space: rates by normal, in-plane eps, thickness; by u
+    waves: Complexes  # (4, n) work space: both waves in a film, lit from inside and outside
+
+
+class Moves(NamedTuple):
+    """What changes along each of p directions, so that the rest need not be computed."""
+
+    nodes: Flags  # (p,) the nodes move, or the emitter film's index changes
+    outer: Flags  # (p,) that, or the index of an outer medium changes
+    sides: Flags  # (p,) or whatever else stands outside
+    places: Flags  # (p,) the dipoles move
 
 
 @inline
@@ -53,9 +63,34 @@ def response_space(directions: int) -> Response:
         found[4],
         found[5],
         found[6],
-        np.zeros((FORMS, 2, directions, NODES), dtype=np.complex128),
+        np.zeros((FORMS, directions, NODES), dtype=np.complex128),
         np.zeros((4, FORMS, NODES), dtype=np.complex128),
+        np.zeros((4, NODES), dtype=np.complex128),
     )
+
+
+@inline
+def moves_space(directions: int) -> Moves:
+    """Flags for so many directions."""
+    flags = np.zeros((4, directions), dtype=np.bool_)
+    return Moves(flags[0], flags[1], flags[2], flags[3])
+
+
+@inline
+def find_moves(rates: Rates, ends: Floats, moves: Moves) -> None:
+    """Fill the flags of a path whose ends move at the rates ends (p, 2)."""
+    for p in range(ends.shape[0]):
+        nodes = ends[p, 0] != 0.0 or ends[p, 1] != 0.0
+        nodes |= rates.eps[p, 0] != 0.0 or rates.eps[p, 1] != 0.0
+        outer = nodes or rates.up.eps_o[p, -1] != 0.0 or rates.down.eps_o[p, -1] != 0.0
+        sides = outer
+        for side in range(2):
+            sides |= rates.n_out[p, side] != 0.0 or rates.loss[p, side] != 0.0
+        places = False
+        for q in range(rates.kz_positions.shape[1]):
+            places |= rates.kz_positions[p, q] != 0.0
+        moves.nodes[p], moves.outer[p] = nodes, outer
+        moves.sides[p], moves.places[p] = sides, places
 
 
 @inline
@@ -64,6 +99,7 @@ def respond(
     u_rate: Floats,
     half: Half,
     rates: HalfRates,
+    moves: Moves,
     work: Work,
     forms: int,
     found: Response,
@@ -78,30 +114,60 @@ def respond(
     work : Work
         After `outward`; with more than one form also after `inward`.
     forms : int
-        1: only r. FORMS: everything.
+        1: only r. THROUGH + 1: t and t_in too. FORMS: everything.
     """
-    found.forms[:forms] = 0.0
+    moving = False
+    for p in range(u_rate.shape[0]):
+        moving |= moves.nodes[p]
     for pol in range(2):
+        found.forms[:forms] = 0.0
         found.terms[3, :forms] = 0.0
         for j in range(1, half.kd.size - 1):
-            _film_terms(pol, j, u, half, work, forms, found.terms)
+            index, thickness = False, False
+            for p in range(u_rate.shape[0]):
+                index |= rates.eps_o[p, j] != 0.0 or rates.eps_e[p, j] != 0.0
+                thickness |= rates.kd[p, j] != 0.0
+            if not (index or thickness or moving):
+                continue
+            _standing_terms(pol, j, half, work, forms, found)
+            if index or moving:
+                _running_terms(pol, j, u, half, work, forms, found)
             _add_film(pol, j, rates, forms, found)
-        for p in range(u_rate.shape[0]):
-            for s in range(forms):
-                for i in range(NODES):
-                    found.forms[s, pol, p, i] += found.terms[3, s, i] * u_rate[p, i]
-            _ends(pol, p, u, u_rate[p], half, rates, work, forms, found)
+        if moving:
+            _add_motion(u_rate, forms, found)
+        _finish(pol, u, u_rate, half, rates, moves, work, forms, found)
 
 
 @inline
-def _film_terms(
-    pol: int, j: int, u: Complexes, half: Half, work: Work, forms: int, terms: Complexes
-) -> None:
-    """Rates of Y S by one film's kz Y (or kz / Y), thickness; adds up those by u.
+def _standing_terms(pol: int, j: int, half: Half, work: Work, forms: int, found: Response) -> None:
+    """Rates of Y S by one film's thickness; leaves the waves and f1 g2 + g1 f2 for others."""
+    terms, waves = found.terms, found.waves
+    inv_o = complex(1.0, 0.0) if pol == S else reciprocal(half.eps_o[j])
+    for i in range(NODES):
+        e = work.e[pol, j, i]
+        waves[0, i] = work.f[pol, j, i]
+        waves[1, i] = work.r_far[pol, j, i] * e * work.f[pol, j, i]
+    if forms > 1:
+        for i in range(NODES):
+            e = work.e[pol, j, i]
+            waves[3, i] = work.g[pol, j, i]
+            waves[2, i] = work.r_near[pol, j, i] * e * work.g[pol, j, i]
+    for s in range(forms):
+        one, other = 2 * (s == OUTSIDE), 2 * (s != INSIDE)
+        for i in range(NODES):
+            kz = work.kz[pol, j, i]
+            f1, g1, f2, g2 = waves[one, i], waves[one + 1, i], waves[other, i], waves[other + 1, i]
+            standing = (f1 * g2 + g1 * f2) * work.e[pol, j, i]
+            terms[0, s, i] = standing
+            terms[2, s, i] = 1j * kz * kz * inv_o * standing
 
-    terms : complex (4, FORMS, n), output; rows: d by normal permittivity in p, in-plane in s;
-    by in-plane permittivity in p; by k0 d; the last, by u, is added to.
-    """
+
+@inline
+def _running_terms(
+    pol: int, j: int, u: Complexes, half: Half, work: Work, forms: int, found: Response
+) -> None:
+    """Rates of Y S by one film's permittivities; those by u are added up over the films."""
+    terms, waves = found.terms, found.waves
     d, inv_e, inv_o = half.kd[j], reciprocal(half.eps_e[j]), reciprocal(half.eps_o[j])
     for i in range(NODES):
         kz, e, at = work.kz[pol, j, i], work.e[pol, j, i], u[i]
@@ -114,39 +180,81 @@ def _film_terms(
         y = kz if pol == S else kz * inv_o
         normal = complex(1.0, 0.0) if pol == S else at * at * inv_e * inv_e
         by_u = -2.0 * at if pol == S else -2.0 * at * inv_e
-        f, g = work.f[pol, j, i], work.r_far[pol, j, i] * e * work.f[pol, j, i]
         for s in range(forms):
-            f1, g1, f2, g2 = f, g, f, g
-            if s != INSIDE:
-                g2 = work.g[pol, j, i]
-                f2 = work.r_near[pol, j, i] * e * g2
-            if s == OUTSIDE:
-                f1, g1 = f2, g2
-            running = (f1 * f2 + g1 * g2) * mean
-            standing = (f1 * g2 + g1 * f2) * e
-            psi = 0.5j * (running + standing * d)
+            one, other = 2 * (s == OUTSIDE), 2 * (s != INSIDE)
+            running = waves[one, i] * waves[other, i] + waves[one + 1, i] * waves[other + 1, i]
+            running *= mean
+            standing = terms[0, s, i] * d
+            psi = 0.5j * (running + standing)
             terms[0, s, i] = normal * psi
-            terms[1, s, i] = -0.5j * y * y * (running - standing * d)
-            terms[2, s, i] = 1j * y * kz * standing
+            terms[1, s, i] = -0.5j * y * y * (running - standing)
             terms[3, s, i] += by_u * psi
 
 
 @inline
 def _add_film(pol: int, j: int, rates: HalfRates, forms: int, found: Response) -> None:
     """Add one film's part along every direction in which it changes."""
+    terms = found.terms
     for p in range(rates.kd.shape[0]):
         in_plane, normal, thicker = rates.eps_o[p, j], rates.eps_e[p, j], rates.kd[p, j]
-        if in_plane == 0.0 and normal == 0.0 and thicker == 0.0:
-            continue
-        first = in_plane if pol == S else normal
-        second = complex(0.0, 0.0) if pol == S else in_plane
-        for s in range(forms):
+        if thicker != 0.0:
+            for s in range(forms):
+                for i in range(NODES):
+                    found.forms[s, p, i] += terms[2, s, i] * thicker
+        if pol == S:
+            normal, in_plane = in_plane, complex(0.0, 0.0)
+        if normal != 0.0:
+            for s in range(forms):
+                for i in range(NODES):
+                    found.forms[s, p, i] += terms[0, s, i] * normal
+        if in_plane != 0.0:
+            for s in range(forms):
+                for i in range(NODES):
+                    found.forms[s, p, i] += terms[1, s, i] * in_plane
+
+
+@inline
+def _add_motion(u_rate: Floats, forms: int, found: Response) -> None:
+    """Add what the nodes' own motion does in all films."""
+    for s in range(forms):
+        for p in range(u_rate.shape[0]):
             for i in range(NODES):
-                found.forms[s, pol, p, i] += (
-                    found.terms[0, s, i] * first
-                    + found.terms[1, s, i] * second
-                    + found.terms[2, s, i] * thicker
-                )
+                found.forms[s, p, i] += found.terms[3, s, i] * u_rate[p, i]
+
+
+@inline
+def _finish(
+    pol: int,
+    u: Complexes,
+    u_rate: Floats,
+    half: Half,
+    rates: HalfRates,
+    moves: Moves,
+    work: Work,
+    forms: int,
+    found: Response,
+) -> None:
+    """Divide by the admittances, and add what the media at both ends do."""
+    last = half.kd.size - 1
+    for i in range(NODES):
+        found.waves[0, i] = reciprocal(work.y[pol, 0, i])
+        found.waves[1, i] = reciprocal(work.y[pol, last, i])
+    for p in range(u_rate.shape[0]):
+        for i in range(NODES):
+            found.r[pol, p, i] = found.forms[INSIDE, p, i] * found.waves[0, i]
+        if forms > THROUGH:
+            for i in range(NODES):
+                found.t[pol, p, i] = found.forms[THROUGH, p, i] * found.waves[1, i]
+                found.t_in[pol, p, i] = found.forms[THROUGH, p, i] * found.waves[0, i]
+        if forms > OUTSIDE:
+            for i in range(NODES):
+                found.r_out[pol, p, i] = found.forms[OUTSIDE, p, i] * found.waves[1, i]
+        if moves.outer[p]:
+            _ends(pol, p, u, u_rate, half, rates, work, forms, found)
+        else:
+            found.kz[pol, p, :] = 0.0
+            found.y_in[pol, p, :] = 0.0
+            found.y_out[pol, p, :] = 0.0
 
 
 @inline
@@ -177,44 +285,32 @@ def _ends(
     forms: int,
     found: Response,
 ) -> None:
-    """Finish the rates along one direction: what the media at both ends do.
+    """Add what the media at both ends do along one direction.
 
     A change of the admittance at an end acts like a face with reflection dY / 2Y put there.
     """
     last = half.kd.size - 1
+    o_0, e_0, o_l, e_l = half.eps_o[0], half.eps_e[0], half.eps_o[last], half.eps_e[last]
+    do_0, de_0, do_l, de_l = (
+        rates.eps_o[p, 0],
+        rates.eps_e[p, 0],
+        rates.eps_o[p, last],
+        rates.eps_e[p, last],
+    )
     for i in range(NODES):
-        y_in, y_out = work.y[pol, 0, i], work.y[pol, last, i]
         r, t = work.r_far[pol, 0, i], work.t[pol, i]
-        kz_rate, in_rate, kz_by_u, in_by_u = _outer_wave(
-            pol, half.eps_o[0], half.eps_e[0], rates.eps_o[p, 0], rates.eps_e[p, 0], u[i],
-            work.kz[pol, 0, i],
-        )  # fmt: skip
-        _, out_rate, _, out_by_u = _outer_wave(
-            pol, half.eps_o[last], half.eps_e[last], rates.eps_o[p, last], rates.eps_e[p, last],
-            u[i], work.kz[pol, last, i],
-        )  # fmt: skip
-        found.kz[pol, p, i] = kz_rate + kz_by_u * u_rate[i]
-        in_rate += in_by_u * u_rate[i]
-        out_rate += out_by_u * u_rate[i]
+        kz, in_rate, kz_u, in_u = _outer_wave(pol, o_0, e_0, do_0, de_0, u[i], work.kz[pol, 0, i])
+        _, out_rate, _, out_u = _outer_wave(pol, o_l, e_l, do_l, de_l, u[i], work.kz[pol, last, i])
+        in_rate += in_u * u_rate[p, i]
+        out_rate += out_u * u_rate[p, i]
+        found.kz[pol, p, i] = kz + kz_u * u_rate[p, i]
         found.y_in[pol, p, i], found.y_out[pol, p, i] = in_rate, out_rate
-        inv_in, inv_out = reciprocal(y_in), reciprocal(y_out)
-        face_in, face_out = 0.5 * in_rate * inv_in, 0.5 * out_rate * inv_out
-        inside = found.forms[INSIDE, pol, p, i] - 0.5 * out_rate * t * t
-        found.r[pol, p, i] = inside * inv_in + face_in * (1.0 - r * r)
-        if forms > 1:
+        face_in, face_out = 0.5 * in_rate * found.waves[0, i], 0.5 * out_rate * found.waves[1, i]
+        half_out = 0.5 * out_rate * found.waves[0, i]
+        found.r[pol, p, i] += face_in * (1.0 - r * r) - half_out * t * t
+        if forms > THROUGH:
             t_in, r_out = work.g[pol, 0, i], work.r_out[pol, i]
-            through = found.forms[THROUGH, pol, p, i]
-            found.t[pol, p, i] = through * inv_out + t * (
-                face_in * (1.0 - r) - face_out * (1.0 + r_out)
-            )
-            found.t_in[pol, p, i] = through * inv_in + t_in * (
-                face_out * (1.0 - r_out) - face_in * (1.0 + r)
-            )
-            found.r_out[pol, p, i] = (
-                found.forms[OUTSIDE, pol, p, i] * inv_out
-                + face_out * (1.0 - r_out * r_out)
-                - face_in * t * t_in
-            )
-
-
-__all__ = ["FORMS", "P", "Response", "respond", "response_space"]
+            found.t[pol, p, i] += t * (face_in * (1.0 - r) - face_out * (1.0 + r_out))
+            found.t_in[pol, p, i] += t_in * (face_out * (1.0 - r_out) - face_in * (1.0 + r))
+            if forms > OUTSIDE:
+                found.r_out[pol, p, i] += face_out * (1.0 - r_out * r_out) - face_in * t * t_in
