@@ -12,8 +12,8 @@ from optics.device import laws
 from optics.device.constants import HC_EV_NM
 from optics.device.materials import ComplexArray, FloatArray, Law, Material
 
-# Rates of the ordinary and the extraordinary permittivity; None where nothing changes.
-Rates = tuple[ComplexArray, ComplexArray] | None
+#: Rates of the ordinary and the extraordinary permittivity.
+EpsilonRates = tuple[ComplexArray, ComplexArray]
 
 
 class MaterialNumber(NamedTuple):
@@ -28,7 +28,7 @@ def permittivity_rates(
     number: MaterialNumber,
     local_names: Collection[str],
     wavelength_nm: FloatArray,
-) -> Rates:
+) -> EpsilonRates | None:
     """Rates of change of a film's or slab's permittivity with a number of a local material.
 
     Parameters
@@ -60,9 +60,7 @@ def permittivity_rates(
     return None
 
 
-def index_rates(
-    ordinary: ComplexArray, extraordinary: ComplexArray, step: complex
-) -> tuple[ComplexArray, ComplexArray]:
+def index_rates(ordinary: ComplexArray, extraordinary: ComplexArray, step: complex) -> EpsilonRates:
     """Rates of both permittivities when both indices change by `step`: d eps = 2 (n + ik) d n."""
     return _by_index(ordinary, step), _by_index(extraordinary, step)
 
@@ -76,7 +74,7 @@ def has_rates(material: Material, keys: Sequence[str]) -> bool:
     return _slope_of(material.law, tuple(keys)) is not None
 
 
-def _own_rates(law: Law, keys: tuple[str, ...], wavelength_nm: FloatArray) -> Rates:
+def _own_rates(law: Law, keys: tuple[str, ...], wavelength_nm: FloatArray) -> EpsilonRates | None:
     slope = _slope_of(law, keys)
     assert slope is not None, keys
     return slope(wavelength_nm)
@@ -112,14 +110,12 @@ _CONSTANT: dict[str, tuple[complex, complex]] = {
 
 def _constant(
     law: laws.Constant, ordinary: complex, extraordinary: complex, wavelength_nm: FloatArray
-) -> tuple[ComplexArray, ComplexArray]:
+) -> EpsilonRates:
     eps_o, eps_e = law(wavelength_nm)
     return _by_index(eps_o, ordinary), _by_index(eps_e, extraordinary)
 
 
-def _cauchy(
-    law: laws.Cauchy, place: int | None, wavelength_nm: FloatArray
-) -> tuple[ComplexArray, ComplexArray]:
+def _cauchy(law: laws.Cauchy, place: int | None, wavelength_nm: FloatArray) -> EpsilonRates:
     step = 1.0j if place is None else np.asarray(wavelength_nm ** (-2.0 * place))
     rate = _by_index(law(wavelength_nm)[0], step)
     return rate, rate
@@ -127,7 +123,7 @@ def _cauchy(
 
 def _sellmeier(
     law: laws.Sellmeier, key: str, place: int, wavelength_nm: FloatArray
-) -> tuple[ComplexArray, ComplexArray]:
+) -> EpsilonRates:
     squared_um2 = (wavelength_nm * 1e-3) ** 2
     above = squared_um2 - law.c_um2[place]
     rate = squared_um2 / above if key == "b" else law.b[place] * squared_um2 / above**2
@@ -136,7 +132,7 @@ def _sellmeier(
 
 def _lorentz_drude(
     law: laws.LorentzDrude, keys: tuple[str, ...], wavelength_nm: FloatArray
-) -> tuple[ComplexArray, ComplexArray]:
+) -> EpsilonRates:
     photon = (HC_EV_NM / wavelength_nm).astype(np.complex128)
     plasma2 = law.plasma_ev**2
     free = -plasma2 / (photon * (photon + 1j * law.gamma0_ev))  # per f0
@@ -159,8 +155,8 @@ def _lorentz_drude(
 
 
 def _pair_rates(
-    law: laws.Pair, inner: Callable[[Material], Rates], wavelength_nm: FloatArray
-) -> Rates:
+    law: laws.Pair, inner: Callable[[Material], EpsilonRates | None], wavelength_nm: FloatArray
+) -> EpsilonRates | None:
     ordinary, extraordinary = inner(law.ordinary), inner(law.extraordinary)
     if ordinary is None and extraordinary is None:
         return None
@@ -172,8 +168,8 @@ def _pair_rates(
 
 
 def _mix_rates(
-    law: laws.Mix, inner: Callable[[Material], Rates], wavelength_nm: FloatArray
-) -> Rates:
+    law: laws.Mix, inner: Callable[[Material], EpsilonRates | None], wavelength_nm: FloatArray
+) -> EpsilonRates | None:
     """Chain rule through a mixture.
 
     Bruggeman's root obeys sum f (e_i - e)/(e_i + 2e) = 0, so that by the implicit function

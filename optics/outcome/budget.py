@@ -253,13 +253,18 @@ def shine(case: Case, tolerance: float, threads: int | None = None) -> tuple[Lit
     ValueError
         If the tolerance is not between 1e-12 and 0.1.
     """
-    if not 1e-12 <= tolerance <= 0.1:
-        raise ValueError(f"tolerance: found {tolerance!r}; expected a number from 1e-12 to 0.1")
+    check_tolerance(tolerance)
     lights = [emitter_light(case, emitter, tolerance, threads) for emitter in case.emitters]
     return tuple(
         Lit(emitter, light, emission(emitter, light))
         for emitter, light in zip(case.emitters, lights, strict=True)
     )
+
+
+def check_tolerance(tolerance: float) -> None:
+    """Refuse a tolerance outside 1e-12 to 0.1 with a ValueError."""
+    if not 1e-12 <= tolerance <= 0.1:
+        raise ValueError(f"tolerance: found {tolerance!r}; expected a number from 1e-12 to 0.1")
 
 
 def accuracy_of(lit: Sequence[Lit]) -> Accuracy:

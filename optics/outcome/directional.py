@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, NamedTuple, cast
 
 import numpy as np
 
@@ -16,8 +16,11 @@ from optics.device.constants import HC_EV_NM
 from optics.device.spectrum import trapezoid_weights
 from optics.kernels.angles import leaving
 from optics.kernels.budget import AIR_BOTTOM, AIR_TOP
+from optics.kernels.varied_directions import leaving_rates
+from optics.outcome.dual import Dual
 from optics.outcome.efficiency import orientation_average, orientation_shares
 from optics.outcome.light import at_rows, cores, problem_of
+from optics.outcome.light_rates import rates_at_rows
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -25,6 +28,7 @@ if TYPE_CHECKING:
     from optics.device.case import Case
     from optics.device.emitter import Emitter
     from optics.kernels.problem import Problem
+    from optics.kernels.variation import Rates
     from optics.outcome.budget import Lit
     from optics.outcome.efficiency import Emission
     from optics.outcome.light import Light
@@ -49,6 +53,7 @@ class Source(NamedTuple):
     radiating: Floats  # (z,) zone weight * q / (1 - q + q F)
     watts: Floats  # (w,) W/(A nm) of one photon per exciton of the unit, before outcoupling
     leaves: Floats  # (w, 2) radiating-weighted power that leaves at the bottom, top; over bulk
+    rates: Rates | None = None  # of the engine's arrays, where the numbers carry rates
 
     @property
     def is_line(self) -> bool:
@@ -162,8 +167,12 @@ def _some_wavelengths(
 ) -> Floats:
     problem = at_rows(problem, rows)
     n = index_outside(case, problem, side)
-    u = np.ascontiguousarray(n[:, None] * np.sin(np.deg2rad(angle_deg)))
-    channels = leaving(problem, u, side) @ source.radiating
+    sine = np.sin(np.deg2rad(angle_deg))
+    if source.rates is None:
+        leaves = leaving(problem, np.ascontiguousarray(n[:, None] * sine), side)
+    else:
+        n, leaves = _moving(case, problem, rates_at_rows(source.rates, rows), side, n, sine)
+    channels = leaves @ source.radiating
     vertical, horizontal = (source.orientation[rows, k, None] for k in range(2))
     p = vertical * channels[:, 0] + horizontal * channels[:, 1]
     s = horizontal * channels[:, 2]
@@ -172,11 +181,25 @@ def _some_wavelengths(
     return result
 
 
+def _moving(
+    case: Case, problem: Problem, rates: Rates, side: int, n: Floats, sine: Floats
+) -> tuple[Floats, Floats]:
+    """Index outside (w,) and what leaves (w, 3, n, z), both with their rates, at fixed angles."""
+    moves = (rates.n_outer if _is_matched(case, side) else rates.n_out)[:, :, side]
+    u = np.ascontiguousarray(n[:, None] * sine)
+    leaves = leaving(problem, u, side)
+    changes = leaving_rates(problem, rates, u, moves[:, :, None] * sine, side)
+    return cast("Floats", Dual(n, moves.T)), cast("Floats", Dual(leaves, changes))
+
+
 def index_outside(case: Case, problem: Problem, side: int) -> Floats:
     """Index (w,) of the medium in which a side's angles are measured."""
+    return (problem.sides.n_outer if _is_matched(case, side) else problem.sides.n_out)[:, side]
+
+
+def _is_matched(case: Case, side: int) -> bool:
     slab = (case.stack.substrate, case.stack.cover)[side]
-    matched = slab is not None and slab.exit == "matched"
-    return (problem.sides.n_outer if matched else problem.sides.n_out)[:, side]
+    return slab is not None and slab.exit == "matched"
 
 
 def unbounded_at_grazing(case: Case, source: Source, side: int) -> bool:

@@ -27,6 +27,7 @@ _SLOPES: Mapping[Any, Callable[..., tuple[Any, ...]]] = {
     np.sqrt: lambda a, out: (0.5 / out,),
     np.exp: lambda a, out: (out,),
     np.square: lambda a, out: (2.0 * a,),
+    np.hypot: lambda a, b, out: tuple(part / np.where(out > 0.0, out, np.inf) for part in (a, b)),
 }
 # Questions, whose answers do not change with small steps.
 _QUESTIONS = frozenset(
@@ -83,6 +84,10 @@ class Dual(NDArrayOperatorsMixin):
             self.value.sum(axis=axes, keepdims=keepdims),
             self.rates.sum(axis=tuple(one + 1 for one in axes), keepdims=keepdims),
         )
+
+    def __array__(self, *_args: Any, **_options: Any) -> Floats:
+        """Refuse to become a plain array, which would lose the rates unseen."""
+        raise TypeError("an array with rates of change cannot become one without")
 
     def __array_ufunc__(self, ufunc: Any, method: str, *inputs: Any, **options: Any) -> Any:
         """Apply an elementwise operation or a matrix product."""

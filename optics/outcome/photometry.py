@@ -6,6 +6,8 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
+from optics.outcome.dual import plain, value_of
+
 if TYPE_CHECKING:
     from collections.abc import Callable
 
@@ -40,7 +42,7 @@ def peak(wavelength_nm: Floats, power: Floats) -> Peak:
         The width lies between the outermost half points, interpolated linearly; None where the
         grid ends before the spectrum has fallen to half. Both None without light.
     """
-    top = int(power.argmax())
+    top = int(value_of(power).argmax())
     if not power[top] > 0.0:
         return Peak(None, None)
     at = float(wavelength_nm[top])
@@ -56,7 +58,7 @@ def peak(wavelength_nm: Floats, power: Floats) -> Peak:
             return Peak(at, None)
         part = (power[inside] - half) / (power[inside] - power[outside])
         step = wavelength_nm[outside] - wavelength_nm[inside]
-        ends.append(float(wavelength_nm[inside] + part * step))
+        ends.append(plain(wavelength_nm[inside] + part * step))
     return Peak(at, ends[1] - ends[0])
 
 
@@ -91,7 +93,8 @@ def half_angle_deg(
             inner = evaluate(angle_deg[1:-1])
             luminance = np.concatenate([luminance[end - 1 : end], inner, luminance[end : end + 1]])
     part = (luminance[end - 1] - half) / (luminance[end - 1] - luminance[end])
-    return float(low + part * (high - low))
+    angle: float = plain(low + part * (high - low))
+    return angle
 
 
 def ratio(value: float, reference: float) -> float | None:

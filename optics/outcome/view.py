@@ -1,13 +1,14 @@
 """A device looked at from one side: everything is computed when it is first asked for.
 
 Studies ask for a few numbers of many devices, `angular` for all numbers of one; both ask here.
+Sources whose numbers carry rates (`dual.Dual`) give numbers that do.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from functools import cached_property
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
@@ -19,6 +20,7 @@ from optics.outcome.directional import (
     radiance,
     unbounded_at_grazing,
 )
+from optics.outcome.dual import plain, value_of
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -132,7 +134,7 @@ class View:
 
     def curve(self, values: Floats) -> Curve:
         """Values at the angles asked for; None for NaN and where there is no limit."""
-        known = [float(values[at]) if at < len(values) else np.nan for at in self._asked]
+        known = [plain(values[at]) if at < values.size else np.nan for at in self._asked]
         return tuple(value if np.isfinite(value) else None for value in known)
 
     def relative(self, values: Floats) -> Curve:
@@ -141,7 +143,7 @@ class View:
         if luminance[0] > 0.0:
             return self.curve(values / luminance[0])
         lit = self.totals.lumens > 0.0
-        return self.curve(np.full_like(values, np.nan) if lit else values)
+        return self.curve(np.nan * values if lit else values)
 
     def absolute(self, values: Floats) -> Curve | None:
         """Curve of amounts of light; None without a current density."""
@@ -157,19 +159,21 @@ class View:
     def delta_uv(self) -> Floats:
         """Distance (n,) in u', v' from the color along the normal."""
         uv = self.chromaticity[1]
-        distance: Floats = np.hypot(*(uv - uv[0]).T)
+        away = uv - uv[0]
+        distance: Floats = np.hypot(away[:, 0], away[:, 1])
         return distance
 
     @property
     def normal_color(self) -> tuple[float | None, ...]:
         """x, y, u', v' along the normal; None without visible light."""
-        values = [float(part[0, place]) for part in self.chromaticity for place in range(2)]
+        values = [plain(part[0, place]) for part in self.chromaticity for place in range(2)]
         return tuple(value if np.isfinite(value) else None for value in values)
 
     @property
     def normal(self) -> float:
         """Luminance along the normal over current density, cd/A."""
-        return float(self.seen.luminance[0])
+        number: float = plain(self.seen.luminance[0])
+        return number
 
     @cached_property
     def hue(self) -> color.Dominant | None:
@@ -204,11 +208,11 @@ class View:
         spread = [ray[:, 0].sum(axis=1) for source, ray in pairs if not source.is_line]
         if spread:
             grid = next(source.wavelength_nm for source, _ in pairs if not source.is_line)
-            found = photometry.peak(grid, np.sum(spread, axis=0))
+            found = photometry.peak(grid, sum(spread[1:], spread[0]))
             if found.wavelength_nm is not None:
                 return found
         lines = [
-            (float(ray[0, 0].sum()), float(source.wavelength_nm[0]))
+            (float(value_of(ray[0, 0].sum())), float(source.wavelength_nm[0]))
             for source, ray in pairs
             if source.is_line
         ]
@@ -232,10 +236,10 @@ class View:
         watts, lumens, photons = 0.0, 0.0, 0.0
         for source in self._emitting:
             power = source.step_nm * exitance(self._case, source, self._side)
-            watts += float(power.sum())
+            watts += plain(power.sum())
             visible = power @ color.observer_at(source.wavelength_nm)[:, 1]
-            lumens += photometry.LUMENS_PER_WATT * float(visible)
-            photons += float(power @ source.wavelength_nm) / HC_EV_NM
+            lumens += photometry.LUMENS_PER_WATT * plain(visible)
+            photons += plain(power @ source.wavelength_nm) / HC_EV_NM
         return Totals(watts, lumens, photons)
 
     @cached_property
@@ -255,9 +259,10 @@ class View:
 
 def add_up(emitting: Sequence[Source], rays: Sequence[Floats]) -> Seen:
     """Sum spectral radiance (w, n, 2) over emitters and wavelengths."""
-    watts, xyz = 0.0, 0.0
+    watts: Any = 0.0
+    xyz: Any = 0.0
     for source, ray in zip(emitting, rays, strict=True):
         watts = watts + np.einsum("w,wnp->np", source.step_nm, ray)
         weight = source.step_nm[:, None] * color.observer_at(source.wavelength_nm)
         xyz = xyz + np.einsum("wk,wnp->npk", weight, ray)
-    return Seen(np.asarray(watts), np.asarray(xyz))
+    return Seen(watts, xyz)

@@ -1,0 +1,85 @@
+"""Sensitivities as a table for people: what each nanometer does."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from rich.console import Group, RenderableType
+from rich.padding import Padding
+from rich.table import Table
+from rich.text import Text
+
+from optics.present.tables import plain_table, titled
+from optics.present.wording import MISSING, accuracy
+
+#: What each kind of change is, above its rows.
+CHANGES = {
+    "thickness": "1 nm more of a film",
+    "position": "emission zone 1 nm up",
+    "index": "0.01 more of a film's index n",
+    "orientation": "0.01 more horizontal dipoles",
+}
+# Columns of each side: head, key of the effect, factor, digits.
+_OF_SIDE = (("luminance %", "luminance_relative", 100.0, 2), ("x", "x", 1.0, 4), ("y", "y", 1.0, 4))
+
+
+def signed(value: float | None, digits: int) -> str:
+    """Word a change as ``+0.12``; ``0`` is exact, ``<0.01`` is not."""
+    if value is None:
+        return MISSING
+    if value == 0.0:
+        return "0"
+    if abs(value) < 0.5 * 10.0**-digits:
+        return f"<{10.0**-digits:.{digits}f}"
+    return f"{value:+.{digits}f}"
+
+
+def sensitivity_view(found: Mapping[str, Any]) -> RenderableType:
+    """Lay out sensitivities: one row for each film and emitter.
+
+    Parameters
+    ----------
+    found : mapping
+        Entry ``sensitivity`` of ``budget --sensitivity --json``.
+    """
+    rows: Sequence[Mapping[str, Any]] = found["rows"]
+    lit = list(rows[0]["sides"])
+    heads = ["EQE points", "EQE %"]
+    for side in lit:
+        prefix = f"{side} " if len(lit) > 1 else ""
+        heads += [f"{prefix}{head}" for head, *_ in _OF_SIDE]
+    table = plain_table("", *heads)
+    previous = None
+    for row in rows:
+        if row["change"] != previous:
+            if previous is not None:
+                table.add_section()
+            table.add_row(CHANGES[row["change"]], *[""] * len(heads), style="bold")
+            previous = row["change"]
+        _add_row(table, row, lit)
+    explained = (
+        "Points are percentage points of the EQE; EQE % and luminance % are relative changes. "
+        "Luminance and color along the normal. Exact derivatives, accuracy reached: "
+        f"{accuracy(found['derivative_error'])} of their natural scale"
+    )
+    return Group(
+        titled("Sensitivity: what a small step changes", table),
+        Padding(Text(explained), (1, 0, 0, 0)),
+    )
+
+
+def _add_row(table: Table, row: Mapping[str, Any], lit: Sequence[str]) -> None:
+    relative = row["external_quantum_efficiency_relative"]
+    cells = [
+        signed(100.0 * row["external_quantum_efficiency"], 3),
+        signed(None if relative is None else 100.0 * relative, 2),
+    ]
+    for side in lit:
+        for _, key, factor, digits in _OF_SIDE:
+            value = row["sides"][side][key]
+            cells.append(signed(None if value is None else factor * value, digits))
+    table.add_row(f"  {row['name']}", *cells)
+
+
+__all__ = ["sensitivity_view", "signed"]
