@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from optics.outcome.budget import Budget, budget
     from optics.outcome.modes import Modes, modes
     from optics.study.check import Check, check
+    from optics.study.sensitivity import Sensitivity, sensitivity
     from optics.study.sweep import sweep
     from optics.study.tolerance import tolerance
     from optics.study.tolerance_result import Tolerance
@@ -28,6 +29,7 @@ _HOMES = {
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
     "Modes": "optics.outcome.modes",
+    "Sensitivity": "optics.study.sensitivity",
     "Tolerance": "optics.study.tolerance_result",
     "ambient": "optics.outcome.ambient",
     "angular": "optics.outcome.angular",
@@ -35,6 +37,7 @@ _HOMES = {
     "check": "optics.study.check",
     "modes": "optics.outcome.modes",
     "read_case": "optics.device.case",
+    "sensitivity": "optics.study.sensitivity",
     "sweep": "optics.study.sweep",
     "tolerance": "optics.study.tolerance",
 }
@@ -47,6 +50,7 @@ __all__ = [
     "CaseError",
     "Check",
     "Modes",
+    "Sensitivity",
     "Tolerance",
     "__version__",
     "ambient",
@@ -55,6 +59,7 @@ __all__ = [
     "check",
     "modes",
     "read_case",
+    "sensitivity",
     "sweep",
     "tolerance",
 ]

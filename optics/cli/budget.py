@@ -32,13 +32,25 @@ if TYPE_CHECKING:
     "--picture",
     type=click.Choice(pictures.PICTURES),
     help="What a .png, .svg or .pdf shows: the chain from charge to air (if not said), "
-    "destinations against wavelength or against the emitter's position, or dissipated power "
-    "over wavelength and effective index.",
+    "destinations against wavelength or against the emitter's position, dissipated power "
+    "over wavelength and effective index, or what a nanometer of each film does.",
+)
+@click.option(
+    "--sensitivity",
+    "sensitive",
+    is_flag=True,
+    help="Also show what one nanometer more of each film, and small steps of index, emission "
+    "zone and orientation, do to EQE, luminance and color.",
 )
 @tolerance_option
 @traceback_option
 def budget(
-    case: Path, as_object: bool, outputs: tuple[Path, ...], picture: str | None, tolerance: float
+    case: Path,
+    as_object: bool,
+    outputs: tuple[Path, ...],
+    picture: str | None,
+    sensitive: bool,
+    tolerance: float,
 ) -> None:
     """Show where the generated light goes, and the EQE chain.
 
@@ -50,19 +62,27 @@ def budget(
 
     device = optics.read_case(case)
 
-    from optics.kernels.compiled import cache_is_warm
+    from optics.kernels.compiled import cache_is_warm, mark_cache_warm
     from optics.present.cautions import cautions
+    from optics.present.sensitivity import frame_of, tree_of, with_sensitivity
     from optics.present.terminal import compiling_notice
 
-    with compiling_notice(needed=not cache_is_warm()):
+    differentiates = sensitive or picture == pictures.SENSITIVITY
+    is_warm = cache_is_warm() and (not differentiates or cache_is_warm("derivatives"))
+    found = None
+    with compiling_notice(needed=not is_warm):
         outcome = optics.budget(device, tolerance=tolerance)
-    result = outcome.to_dict()
+        if differentiates:
+            found = optics.sensitivity(device, tolerance=tolerance)
+            mark_cache_warm("derivatives")
+    told = found if sensitive else None
+    result = with_sensitivity(outcome, told)
     writers: dict[str, Writer] = {
-        ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
-        ".nc": lambda path: outcome.to_tree().to_netcdf(path, engine="h5netcdf"),
+        ".csv": lambda path: frame_of(outcome, told).to_csv(path, index=False),
+        ".nc": lambda path: tree_of(outcome, told).to_netcdf(path, engine="h5netcdf"),
     }
     if draws:
-        figure = pictures.draw(picture or pictures.PICTURES[0], device, outcome, tolerance)
+        figure = pictures.draw(picture or pictures.PICTURES[0], device, outcome, tolerance, found)
         writers |= {end: lambda path: pictures.write(figure, path) for end in PICTURE_SUFFIXES}
     reminders = cautions(device, result)
 

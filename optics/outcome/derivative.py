@@ -19,7 +19,7 @@ from optics.outcome.budget import Accuracy, Lit, check_tolerance
 from optics.outcome.directional import Source, sources
 from optics.outcome.dual import Dual
 from optics.outcome.efficiency import emission, energy_balance
-from optics.outcome.light import Light, at_rows, chunks_of, problem_of, quadrature
+from optics.outcome.light import Light, at_rows, chunks_of, problem_of, quadrature, run_engine
 from optics.outcome.light_rates import light_rates, rates_at_rows
 from optics.outcome.varied_case import varied_case
 
@@ -164,6 +164,10 @@ def _engine(
     problem: Problem, rates: Rates, tolerance: float, threads: int | None
 ) -> tuple[EngineBudget, tuple[Floats, Floats], float]:
     """Run the engine over all wavelengths: the budget, rates of shares and dissipation, error."""
+    if rates.kd.shape[1] == 0:
+        engine = run_engine(problem, tolerance, threads)
+        empty = np.zeros((0, *engine.shares.shape)), np.zeros((0, *engine.dissipation.shape))
+        return engine, empty, 0.0
     chunks, workers = chunks_of(problem, threads)
 
     def some(rows: NDArray[np.int64]) -> tuple[EngineBudget, Derivatives]:

@@ -91,7 +91,8 @@ class Dual(NDArrayOperatorsMixin):
 
     def __array_ufunc__(self, ufunc: Any, method: str, *inputs: Any, **options: Any) -> Any:
         """Apply an elementwise operation or a matrix product."""
-        if method != "__call__" or options:
+        # In place, such as a += b, makes a new number: these do not change.
+        if method != "__call__" or not isinstance(options.pop("out", (self,))[0], Dual) or options:
             return NotImplemented
         values = [value_of(one) for one in inputs]
         if ufunc in _QUESTIONS:

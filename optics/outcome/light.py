@@ -53,7 +53,7 @@ def emitter_light(
     wavelength_nm = emitter.spectrum.grid_nm(case.wavelength_nm)
     position_nm, zone_weight = quadrature(case, emitter, wavelength_nm)
     problem = problem_of(case, emitter, wavelength_nm, position_nm)
-    engine = _in_chunks(problem, tolerance, threads)
+    engine = run_engine(problem, tolerance, threads)
     return Light(wavelength_nm, position_nm, zone_weight, problem.source.bulk, engine)
 
 
@@ -133,8 +133,8 @@ def _side(
     return _Outside(kind, (index.real**2).astype(np.complex128), beyond.real, loss)
 
 
-def _in_chunks(problem: Problem, tolerance: float, threads: int | None) -> EngineBudget:
-    """Run the engine over all wavelengths."""
+def run_engine(problem: Problem, tolerance: float, threads: int | None) -> EngineBudget:
+    """Run the engine over all wavelengths, on at most so many threads."""
     chunks, workers = chunks_of(problem, threads)
     if workers == 1:
         return light_budget(problem, tolerance)

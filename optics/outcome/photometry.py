@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
@@ -19,7 +19,10 @@ if TYPE_CHECKING:
 LUMENS_PER_WATT = 683.0
 
 _PIECES = 16  # a bracket of the half angle is cut into so many parts,
-_CUTS = 2  # so many times; what is left is straight enough
+_CUTS = 2  # so many times; what is left is a cubic
+# Coefficients of the cubic through values at 0, 1, 2, 3.
+_CUBIC = np.linalg.inv(np.vander(np.arange(4.0), increasing=True))
+_NEWTON_STEPS = 3
 
 
 class Peak(NamedTuple):
@@ -92,9 +95,30 @@ def half_angle_deg(
             angle_deg = np.linspace(low, high, _PIECES + 1)
             inner = evaluate(angle_deg[1:-1])
             luminance = np.concatenate([luminance[end - 1 : end], inner, luminance[end : end + 1]])
-    part = (luminance[end - 1] - half) / (luminance[end - 1] - luminance[end])
-    angle: float = plain(low + part * (high - low))
+    start = min(max(end - 2, 0), _PIECES - 3)
+    four = slice(start, start + 4)
+    crossing = _crossing(luminance[four] - half, end - 1 - start)
+    angle: float = plain(angle_deg[start] + crossing * (high - low))
     return angle
+
+
+def _crossing(values: Floats, start: int) -> Any:
+    """Where a cubic through values at 0, 1, 2, 3 is 0 between `start` and the next place."""
+    shape = _CUBIC @ value_of(values)
+    place = start + _straight(value_of(values), start)
+    for _ in range(_NEWTON_STEPS):
+        powers = place ** np.arange(4)
+        slope = shape[1:] @ (np.arange(1, 4) * powers[:3])
+        place = float(np.clip(place - powers @ shape / slope, start, start + 1))
+    powers = place ** np.arange(4)
+    slope = shape[1:] @ (np.arange(1, 4) * powers[:3])
+    # The last step, at an unchanged slope, carries the rates of the values, if they have any.
+    return place - (powers @ _CUBIC) @ values / slope
+
+
+def _straight(values: Floats, start: int) -> float:
+    """Share of the way from one value to the next at which a straight line is 0."""
+    return float(values[start] / (values[start] - values[start + 1]))
 
 
 def ratio(value: float, reference: float) -> float | None:

@@ -11,26 +11,36 @@ if TYPE_CHECKING:
 
     from optics.device.case import Case
     from optics.outcome.budget import Budget
+    from optics.study.sensitivity import Sensitivity
 
 #: What `draw` can draw, and the formats of `write`. Nothing heavy loads with these names.
-PICTURES = ("chain", "wavelength", "position", "dispersion")
+SENSITIVITY = "sensitivity"
+PICTURES = ("chain", "wavelength", "position", "dispersion", SENSITIVITY)
 SUFFIXES = (".png", ".svg", ".pdf")
 
 
-def draw(picture: str, case: Case, outcome: Budget, tolerance: float) -> Figure:
+def draw(
+    picture: str,
+    case: Case,
+    outcome: Budget,
+    tolerance: float,
+    sensitivity: Sensitivity | None = None,
+) -> Figure:
     """Draw one picture of a light budget.
 
     Parameters
     ----------
-    picture : {"chain", "wavelength", "position", "dispersion"}
+    picture : {"chain", "wavelength", "position", "dispersion", "sensitivity"}
         Chain from charge to photons outside; destinations against wavelength; destinations
         against the emitter's position in its film; dissipated power over wavelength and
-        effective index.
+        effective index; what a nanometer of each film does.
     case : Case
     outcome : Budget
         Of this case.
     tolerance : float
         For what has to be computed anew.
+    sensitivity : Sensitivity, optional
+        Of this case; for its picture, which else computes it.
 
     Raises
     ------
@@ -63,6 +73,12 @@ def draw(picture: str, case: Case, outcome: Budget, tolerance: float) -> Figure:
         return dispersion_figure(
             case.title, {name: dispersion(case, outcome, name) for name in names}
         )
+    if picture == SENSITIVITY:
+        from optics.present.pictures_sensitivity import sensitivity_figure
+        from optics.study import sensitivity as study
+
+        found = sensitivity or study.sensitivity(case, tolerance)
+        return sensitivity_figure(case.title, found.to_dict())
     raise ValueError(f"picture: found {picture!r}; expected one of {', '.join(PICTURES)}")
 
 

@@ -1,9 +1,9 @@
-"""Sensitivities as a table for people: what each nanometer does."""
+"""Sensitivities beside a budget: what each nanometer does, for people and in files."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from rich.console import Group, RenderableType
 from rich.padding import Padding
@@ -13,6 +13,13 @@ from rich.text import Text
 from optics.present.tables import plain_table, titled
 from optics.present.wording import MISSING, accuracy
 
+if TYPE_CHECKING:
+    import pandas
+    import xarray
+
+    from optics.outcome.budget import Budget
+    from optics.study.sensitivity import Sensitivity
+
 #: What each kind of change is, above its rows.
 CHANGES = {
     "thickness": "1 nm more of a film",
@@ -21,7 +28,31 @@ CHANGES = {
     "orientation": "0.01 more horizontal dipoles",
 }
 # Columns of each side: head, key of the effect, factor, digits.
-_OF_SIDE = (("luminance %", "luminance_relative", 100.0, 2), ("x", "x", 1.0, 4), ("y", "y", 1.0, 4))
+_OF_SIDE = (("luminance %", "luminance_relative", 100.0, 2), ("x", "x", 1.0, 5), ("y", "y", 1.0, 5))
+
+
+def with_sensitivity(outcome: Budget, found: Sensitivity | None) -> dict[str, Any]:
+    """Build the JSON result of a budget, with the key ``sensitivity`` if there is one."""
+    extra = {} if found is None else {"sensitivity": found.to_dict()}
+    return {**outcome.to_dict(), **extra}
+
+
+def frame_of(outcome: Budget, found: Sensitivity | None) -> pandas.DataFrame:
+    """Build the long table of a budget and of sensitivities below it."""
+    import pandas
+
+    frame = outcome.to_frame()
+    return frame if found is None else pandas.concat([frame, found.to_frame()], ignore_index=True)
+
+
+def tree_of(outcome: Budget, found: Sensitivity | None) -> xarray.DataTree:
+    """Build the labelled arrays of a budget, with a node ``sensitivity`` if there is one."""
+    tree = outcome.to_tree()
+    if found is not None:
+        import xarray
+
+        tree["sensitivity"] = xarray.DataTree(found.to_dataset())
+    return tree
 
 
 def signed(value: float | None, digits: int) -> str:
@@ -82,4 +113,4 @@ def _add_row(table: Table, row: Mapping[str, Any], lit: Sequence[str]) -> None:
     table.add_row(f"  {row['name']}", *cells)
 
 
-__all__ = ["sensitivity_view", "signed"]
+__all__ = ["frame_of", "sensitivity_view", "signed", "tree_of", "with_sensitivity"]

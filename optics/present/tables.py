@@ -57,11 +57,20 @@ def budget_view(
             _emitter_table(result["emitters"]),
             _constants_table(tables),
             _accuracy_line(result["accuracy"]),
+            *_sensitivity(result),
         ),
     ]
     parts += _remarks("Warning", result["warnings"], "yellow")
     parts += _remarks("Caution", cautions, "yellow")
     return Group(*parts)
+
+
+def _sensitivity(result: Mapping[str, Any]) -> list[RenderableType]:
+    """Sensitivities, where the result holds them."""
+    from optics.present.sensitivity import sensitivity_view
+
+    found = result.get("sensitivity")
+    return [] if found is None else [sensitivity_view(found)]
 
 
 def print_budget(

@@ -41,7 +41,7 @@ class Reached(NamedTuple):
 
 
 def values_and_gradient(
-    question: Question, values: Iterable[float]
+    question: Question, values: Iterable[float], threads: int | None = None
 ) -> tuple[Floats, Floats, Reached]:
     """Compute one point's outcomes with their derivatives, in one go and not by differences.
 
@@ -51,6 +51,8 @@ def values_and_gradient(
         Linked paths move with their leaders.
     values : float (p,)
         One for each of `question.paths`.
+    threads : int, optional
+        At most so many; as many as there are cores if not given. No number depends on it.
 
     Returns
     -------
@@ -73,7 +75,9 @@ def values_and_gradient(
     ]
     if faults:
         raise CaseError(faults)
-    return outcomes_and_rates(case, directions_of(question), question.outcomes, question.tolerance)
+    return outcomes_and_rates(
+        case, directions_of(question), question.outcomes, question.tolerance, threads
+    )
 
 
 def why_no_gradient(question: Question) -> dict[str, str]:
@@ -113,12 +117,16 @@ def directions_of(question: Question) -> tuple[Direction, ...]:
 
 
 def outcomes_and_rates(
-    case: Case, directions: Sequence[Direction], outcomes: Sequence[Outcome], tolerance: float
+    case: Case,
+    directions: Sequence[Direction],
+    outcomes: Sequence[Outcome],
+    tolerance: float,
+    threads: int | None = None,
 ) -> tuple[Floats, Floats, Reached]:
     """Outcomes (k,) of a case and their rates (k, p) along directions; as `values_and_gradient`."""
-    found = shine_with_rates(case, directions, tolerance)
+    found = shine_with_rates(case, directions, tolerance, threads)
     budget = budget_numbers(found.case, {one.emitter.name: one.emission for one in found.lit})
-    sides = _sides(found, outcomes)
+    sides = _sides(found, outcomes, threads)
     numbers = [read_outcome(outcome, budget, sides) for outcome in outcomes]
     numbers = [np.nan if number is None else number for number in numbers]
     values = np.array([value_of(number) for number in numbers], dtype=np.float64)
@@ -128,14 +136,16 @@ def outcomes_and_rates(
     return values, rates, Reached(trust.energy_balance, trust.integration_error, found.error)
 
 
-def _sides(device: VariedDevice, outcomes: Sequence[Outcome]) -> dict[str, View]:
+def _sides(
+    device: VariedDevice, outcomes: Sequence[Outcome], threads: int | None
+) -> dict[str, View]:
     """Views of the sides that outcomes are asked of."""
     asked = {one.keys[0] for one in outcomes if one.needs_angular}
     if not asked:
         return {}
     angles, emitting = np.array(angles_needed(outcomes)), device.sources
     return {
-        name: View(device.case, emitting, place, angles)
+        name: View(device.case, emitting, place, angles, threads=threads)
         for place, name in enumerate(SIDES)
         if name in asked
     }

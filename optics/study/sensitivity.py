@@ -139,8 +139,8 @@ class Sensitivity:
         }
         variables["step"] = ("influence", [one.step for one in self.influences])
         coords = {
-            key: ("influence", [getattr(one, key) for one in self.influences])
-            for key in ("change", "name", "unit")
+            key: ("influence", [getattr(one, name) for one in self.influences])
+            for key, name in (("change", "change"), ("name", "name"), ("step_unit", "unit"))
         }
         attrs = {"title": self.title, "derivative_error": self.derivative_error}
         return xarray.Dataset(variables, coords=coords, attrs=attrs)

@@ -152,6 +152,7 @@ def test_pictures_name_what_they_show(
         "wavelength": "vacuum wavelength (nm)",
         "position": "position in EML-a (nm from its bottom face, 20 nm thick)",
         "dispersion": "effective index (in-plane wavevector over that in vacuum)",
+        "sensitivity": "EQE, relative (%)",
     }
     assert axis[picture] in shown
     if picture == "dispersion":
