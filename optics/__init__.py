@@ -14,7 +14,8 @@ if TYPE_CHECKING:
     from optics.outcome.ambient import Ambient, ambient
     from optics.outcome.angular import Angular, angular
     from optics.outcome.budget import Budget, budget
-    from optics.outcome.modes import Modes, modes
+    from optics.outcome.modes import modes
+    from optics.outcome.modes_result import Modes
     from optics.study.check import Check, check
     from optics.study.sensitivity import Sensitivity, sensitivity
     from optics.study.sweep import sweep
@@ -28,7 +29,7 @@ _HOMES = {
     "Case": "optics.device.case",
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
-    "Modes": "optics.outcome.modes",
+    "Modes": "optics.outcome.modes_result",
     "Sensitivity": "optics.study.sensitivity",
     "Tolerance": "optics.study.tolerance_result",
     "ambient": "optics.outcome.ambient",

@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     from optics.present.files import Writer
 
 PICTURES = ("dispersion", "fields", "absorption")
+TABLES = ("modes", "trapped", "absorption", "fields")
 
 
 @main.command()
@@ -47,6 +48,12 @@ PICTURES = ("dispersion", "fields", "absorption")
     help="What a .png, .svg or .pdf shows: effective index against wavelength with shares (if "
     "not said), fields over the films, or where the light ends, film by film.",
 )
+@click.option(
+    "--table",
+    type=click.Choice(TABLES),
+    help="What a .csv holds: modes by wavelength (if not said), trapped light mode by mode, where "
+    "the light ends, or fields over the films.",
+)
 @traceback_option
 def modes(
     case: Path,
@@ -56,12 +63,15 @@ def modes(
     leaky: bool,
     every_mode: bool,
     picture: str | None,
+    table: str | None,
 ) -> None:
     """Show guided modes one by one, and the power absorbed in each film.
 
     CASE is a case file; see docs/modes.md for what the words and numbers mean.
     """
     draws = check_outputs(outputs, (".json", ".csv", ".nc", *PICTURE_SUFFIXES), picture)
+    if table is not None and not any(path.suffix.lower() == ".csv" for path in outputs):
+        raise click.UsageError(f"--table {table} needs a file: give -o with .csv")
 
     import optics
     from optics.kernels.compiled import cache_is_warm, mark_cache_warm
@@ -72,8 +82,14 @@ def modes(
         outcome = optics.modes(device, wavelength_nm, leaky=leaky)
     mark_cache_warm("modes")
     result = outcome.to_dict()
+    frames = {
+        "modes": outcome.to_frame,
+        "trapped": outcome.trapped_frame,
+        "absorption": outcome.absorption_frame,
+        "fields": outcome.fields_frame,
+    }
     writers: dict[str, Writer] = {
-        ".csv": lambda path: outcome.to_frame().to_csv(path, index=False),
+        ".csv": lambda path: frames[table or TABLES[0]]().to_csv(path, index=False),
         ".nc": lambda path: outcome.to_tree().to_netcdf(path, engine="h5netcdf"),
     }
     if draws:

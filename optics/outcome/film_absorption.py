@@ -57,6 +57,11 @@ class FilmAbsorption:
     closure_error: float
     integration_error: float
 
+    def by_place(self) -> dict[str, float]:
+        """Shares of films (``films.NAME``) and of all other places, which sum to 1."""
+        films = {f"films.{name}": share for name, share in self.films.items()}
+        return {**films, **self.elsewhere}
+
     def to_dict(self) -> dict[str, Any]:
         """Entry of the JSON result."""
         return {

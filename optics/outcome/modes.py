@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
-from dataclasses import dataclass
 from types import MappingProxyType
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
-from optics._version import VERSION
 from optics.device.errors import CaseError, Fault
 from optics.kernels.geometry import has_plasmon
 from optics.kernels.modal_fields import mode_content
@@ -18,199 +16,22 @@ from optics.kernels.modal_nodes import Account, account
 from optics.kernels.poles import leaky_modes, outer_line
 from optics.outcome.budget import Budget, budget
 from optics.outcome.efficiency import orientation_average
-from optics.outcome.film_absorption import FilmAbsorption, film_absorption, of_device
+from optics.outcome.film_absorption import film_absorption, of_device
 from optics.outcome.light import problem_of
-from optics.outcome.modes_lines import ModeLine, Snapshot, destination_of, join, kind_of
+from optics.outcome.modes_lines import Snapshot, destination_of, join, kind_of
+from optics.outcome.modes_result import EmitterModes, Modes, Trapped
 from optics.outcome.resolved import exciton_weight
 
 if TYPE_CHECKING:
-    import pandas
-    import xarray
     from numpy.typing import NDArray
 
     from optics.device.case import Case
     from optics.device.emitter import Emitter
     from optics.kernels.problem import Problem
 
-SCHEMA = "outcouple.modes/1"
 TRAPPED = ("guided", "surface_plasmon")
 _TOLERANCE = 1e-6  # of the light budget, and of each share in the account of the films
 _LARGEST_GAP = 1e-5
-
-
-@dataclass(frozen=True, slots=True)
-class Trapped:
-    """A trapped destination of the light budget, split up.
-
-    Attributes
-    ----------
-    budget : float
-        Share of the dissipated photons, from the light budget.
-    guided_modes, plasmons : float
-        What bound modes of either kind take of it, by their residues. Guided modes of TM
-        polarization are inside ``surface_plasmon`` where a metal is near.
-    remainder : float
-        The rest: near field, overdamped waves, the tails of lines that reach over the light
-        line. 0 where nothing absorbs.
-    """
-
-    budget: float
-    guided_modes: float
-    plasmons: float
-    remainder: float
-
-    def to_dict(self) -> dict[str, float]:
-        """Entry of the JSON result."""
-        return {
-            "budget": self.budget,
-            "guided_modes": self.guided_modes,
-            "plasmons": self.plasmons,
-            "remainder": self.remainder,
-        }
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class EmitterModes:
-    """Modes as one emitter meets them; its own film is taken as lossless.
-
-    Attributes
-    ----------
-    name : str
-    media : tuple of str
-        Bottom medium, films, top medium.
-    wavelength_nm : float (w,)
-    lines : tuple of ModeLine
-        Bound modes, then leaky ones if asked for.
-    trapped : mapping of str to Trapped
-        ``guided`` and ``surface_plasmon``.
-    absorption : FilmAbsorption
-    missing : int
-        Modes that were counted but not found: 0.
-    """
-
-    name: str
-    media: tuple[str, ...]
-    wavelength_nm: NDArray[np.float64]
-    lines: tuple[ModeLine, ...]
-    trapped: Mapping[str, Trapped]
-    absorption: FilmAbsorption
-    missing: int
-
-    def to_dict(self) -> dict[str, Any]:
-        """Entry of ``emitters`` in the JSON result."""
-        return {
-            "name": self.name,
-            "wavelength_nm": self.wavelength_nm.tolist(),
-            "modes": [line.to_dict(self.media) for line in self.lines],
-            "trapped": {key: part.to_dict() for key, part in self.trapped.items()},
-            "absorption": self.absorption.to_dict(),
-        }
-
-    def to_dataset(self) -> xarray.Dataset:
-        """Lay the lines out over mode, wavelength_nm and medium; nan where a mode is not."""
-        import xarray
-
-        shape = (len(self.lines), self.wavelength_nm.size)
-        index = np.full(shape, np.nan, dtype=np.complex128)
-        length, share = np.full(shape, np.nan), np.full(shape, np.nan)
-        confinement = np.full((*shape, len(self.media)), np.nan)
-        words = {key: np.full(shape, "", dtype=object) for key in _WORDS}
-        for i, line in enumerate(self.lines):
-            at = np.searchsorted(self.wavelength_nm, line.wavelength_nm)
-            index[i, at], length[i, at] = line.effective_index, line.attenuation_length_um
-            share[i, at], confinement[i, at] = line.share, line.confinement
-            for key, values in words.items():
-                values[i, at] = getattr(line, key)
-        dims = ("mode", "wavelength_nm")
-        return xarray.Dataset(
-            {
-                "effective_index": (dims, index.real, {"units": "1"}),
-                "effective_index_imaginary": (dims, index.imag, {"units": "1"}),
-                "attenuation_length_um": (dims, length, {"units": "um"}),
-                "share": (dims, share, {"units": "1"}),
-                "confinement": ((*dims, "medium"), confinement, {"units": "1"}),
-                **{key: (dims, values.astype(str)) for key, values in words.items()},
-            },
-            coords={
-                "mode": [line.name for line in self.lines],
-                "polarization": ("mode", [line.polarization for line in self.lines]),
-                "wavelength_nm": (
-                    "wavelength_nm",
-                    self.wavelength_nm,
-                    {"units": "nm", "long_name": "vacuum wavelength"},
-                ),
-                "medium": list(self.media),
-            },
-            attrs={"emitter": self.name},
-        )
-
-
-_WORDS = ("direction", "kind", "destination")
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Modes:
-    """Modes of a device and where its light is absorbed.
-
-    Attributes
-    ----------
-    title, case_sha256 : str
-    emitters : tuple of EmitterModes
-    absorption : FilmAbsorption or None
-        Of the device: emitters by the photons they generate. None without any.
-    warnings : tuple of str
-    """
-
-    title: str
-    case_sha256: str
-    emitters: tuple[EmitterModes, ...]
-    absorption: FilmAbsorption | None
-    warnings: tuple[str, ...]
-
-    def to_dict(self) -> dict[str, Any]:
-        """Build the JSON result, ``outcouple.modes/1``: plain types only."""
-        return {
-            "schema": SCHEMA,
-            "version": VERSION,
-            "title": self.title,
-            "case_sha256": self.case_sha256,
-            "emitters": [emitter.to_dict() for emitter in self.emitters],
-            "absorption": None if self.absorption is None else self.absorption.to_dict(),
-            "warnings": list(self.warnings),
-        }
-
-    def to_frame(self) -> pandas.DataFrame:
-        """Build a table with a row per emitter, mode and wavelength."""
-        import pandas
-
-        rows = []
-        for emitter in self.emitters:
-            for line in emitter.lines:
-                for i, nm in enumerate(line.wavelength_nm.tolist()):
-                    inside = dict(zip(emitter.media, line.confinement[i].tolist(), strict=True))
-                    rows.append(
-                        {
-                            "emitter": emitter.name,
-                            "mode": line.name,
-                            "polarization": line.polarization,
-                            "wavelength_nm": nm,
-                            "effective_index": line.effective_index[i].real,
-                            "effective_index_imaginary": line.effective_index[i].imag,
-                            "attenuation_length_um": line.attenuation_length_um[i],
-                            "share": line.share[i],
-                            **{key: getattr(line, key)[i] for key in _WORDS},
-                            **{f"confinement.{name}": share for name, share in inside.items()},
-                        }
-                    )
-        return pandas.DataFrame(rows)
-
-    def to_tree(self) -> xarray.DataTree:
-        """Build labelled arrays: a node per emitter."""
-        import xarray
-
-        tree = {f"/{one.name}": one.to_dataset() for one in self.emitters}
-        root = xarray.Dataset(attrs={"title": self.title, "case_sha256": self.case_sha256})
-        return xarray.DataTree.from_dict({"/": root, **tree})
 
 
 def modes(case: Case, wavelength_nm: float | None = None, *, leaky: bool = False) -> Modes:
@@ -326,6 +147,7 @@ def _emitter_modes(
         name=emitter.name,
         media=_media(case),
         wavelength_nm=grid[rows],
+        stacks=tuple(one.films for one in accounts),
         lines=lines,
         trapped=MappingProxyType(
             {key: _trapped(key, snapshots, of_all, (averaged(key) / dissipated)[rows])
@@ -380,6 +202,3 @@ def _trapped(
     in_budget = float(weight @ of_budget)
     guided, plasmons = total["guided"], total["plasmon"]
     return Trapped(in_budget, guided, plasmons, in_budget - guided - plasmons)
-
-
-__all__ = ["SCHEMA", "EmitterModes", "ModeLine", "Modes", "Trapped", "modes"]

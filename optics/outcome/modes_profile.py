@@ -8,87 +8,91 @@ import numpy as np
 
 from optics.kernels.halfstack import P, S
 from optics.kernels.modal_fields import mode_profile
-from optics.kernels.poles import films_of, place_on_sheet
-from optics.outcome.light import problem_of
-from optics.outcome.resolved import emitter_called
+from optics.kernels.poles import place_on_sheet
 
 if TYPE_CHECKING:
-    import xarray
+    from numpy.typing import NDArray
 
-    from optics.device.case import Case
-    from optics.outcome.modes_lines import ModeLine
+    from optics.kernels.modal_sheet import Films
 
 _FARTHEST_NM = 400.0  # shown of an outer medium
+_POINTS = 600
 
 
-def field_profile(
-    case: Case, emitter: str, line: ModeLine, wavelength_nm: float, points: int = 600
-) -> xarray.Dataset:
-    """Field of a mode against height at one wavelength.
+def heights(
+    films: Films, wavelength_nm: float, place: complex | None = None
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Heights at which to show fields, and the films' faces, in nm above the lowest face.
 
     Parameters
     ----------
-    case : Case
-    emitter : str
-        Name of the emitter whose film is taken as lossless.
-    line : ModeLine
-        Of `optics.modes` for this case and emitter.
+    films : Films
     wavelength_nm : float
-        One at which the line exists.
-    points : int
-        Heights; each film's faces are among them, from both sides.
+    place : complex, optional
+        A mode's on the engine's sheet: outer media are shown as far as its field reaches.
 
     Returns
     -------
-    xarray.Dataset
-        By ``height_nm`` above the lowest film's bottom face: ``electric`` and ``magnetic``,
-        |E|^2 and |H|^2, each over its largest value, and ``index``, Re n in the film plane.
-        Attribute ``faces_nm``.
-
-    Raises
-    ------
-    ValueError
-        If the mode does not exist at that wavelength.
+    height_nm : float (n,)
+        Each face is there from both sides.
+    faces_nm : float (m + 1,)
     """
-    import xarray
-
-    where = np.flatnonzero(line.wavelength_nm == wavelength_nm)
-    if where.size == 0:
-        first, last = line.wavelength_nm[0], line.wavelength_nm[-1]
-        raise ValueError(
-            f"wavelength_nm: found {wavelength_nm!r}; expected one of {line.name}, which runs "
-            f"from {first:g} to {last:g} nm"
-        )
-    problem = problem_of(
-        case, emitter_called(case, emitter), np.array([wavelength_nm]), np.zeros(1)
-    )
-    films = films_of(problem, 0)
-    place = line.place[where]
-    decay, u = (part[0] for part in place_on_sheet(films, place))
     k0 = 2.0 * np.pi / wavelength_nm
     faces = np.concatenate([[0.0], np.cumsum(films.kd)]) / k0
-    reach = [min(_FARTHEST_NM, 3.0 / max(k0 * abs(g.real), 1e-9)) for g in decay]
-    inner = np.linspace(-reach[0], faces[-1] + reach[1], points)
+    reach = [_FARTHEST_NM, _FARTHEST_NM]
+    if place is not None:
+        decay = place_on_sheet(films, np.array([place]))[0][0]
+        # A leaky mode's field grows outward; little of that is worth showing.
+        ways = [(3.0 if g.real > 0.0 else 0.3) / max(k0 * abs(g.real), 1e-9) for g in decay]
+        reach = [min(_FARTHEST_NM, way) for way in ways]
+    even = np.linspace(-reach[0], faces[-1] + reach[1], _POINTS)
     gap = 1e-6 * max(faces[-1], 1.0)
-    height = np.unique(np.concatenate([inner, faces - gap, faces + gap]))
-    field = np.zeros((2, height.size), dtype=np.complex128)
-    pol = S if line.polarization == "s" else P
-    mode_profile(films, pol, complex(place[0]), k0 * height, field)
-    at = np.searchsorted(faces, height)
-    eps_o = np.concatenate([[films.bottom], films.eps_o, [films.top]])[at]
-    eps_e = np.concatenate([[films.bottom], films.eps_e, [films.top]])[at]
+    return np.unique(np.concatenate([even, faces - gap, faces + gap])), faces
+
+
+def fields_at(
+    films: Films,
+    polarization: str,
+    place: complex,
+    wavelength_nm: float,
+    height_nm: NDArray[np.float64],
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """|E|^2 and |H|^2 of a mode (n,), each over its largest value.
+
+    If it leaks, over the largest in the films, since it grows without bound outside.
+    """
+    k0 = 2.0 * np.pi / wavelength_nm
+    decay, u = (part[0] for part in place_on_sheet(films, np.array([place])))
+    field = np.zeros((2, height_nm.size), dtype=np.complex128)
+    pol = S if polarization == "s" else P
+    mode_profile(films, pol, place, k0 * height_nm, field)
+    _, eps_e = _permittivity(films, wavelength_nm, height_nm)
     if pol == S:
         electric = np.abs(field[0]) ** 2
         magnetic = np.abs(field[1]) ** 2 + np.abs(u * field[0]) ** 2
     else:
         electric = np.abs(field[1]) ** 2 + np.abs(u * field[0] / eps_e) ** 2
         magnetic = np.abs(field[0]) ** 2
-    return xarray.Dataset(
-        {
-            "electric": ("height_nm", electric / electric.max(), {"units": "1"}),
-            "magnetic": ("height_nm", magnetic / magnetic.max(), {"units": "1"}),
-            "index": ("height_nm", np.sqrt(eps_o).real, {"units": "1"}),
-        },
-        coords={"height_nm": ("height_nm", height, {"units": "nm"})},
-        attrs={"faces_nm": faces, "wavelength_nm": wavelength_nm, "mode": line.name},
+    inside = (height_nm >= 0.0) & (height_nm <= films.kd.sum() / k0) | (decay.real > 0.0).all()
+    return electric / electric[inside].max(), magnetic / magnetic[inside].max()
+
+
+def index_at(
+    films: Films, wavelength_nm: float, height_nm: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """Re n in the film plane (n,)."""
+    eps_o, _ = _permittivity(films, wavelength_nm, height_nm)
+    return np.asarray(np.sqrt(eps_o).real)
+
+
+def _permittivity(
+    films: Films, wavelength_nm: float, height_nm: NDArray[np.float64]
+) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+    """Ordinary and extraordinary (n,)."""
+    faces_nm = np.concatenate([[0.0], np.cumsum(films.kd)]) * wavelength_nm / (2.0 * np.pi)
+    at = np.searchsorted(faces_nm, height_nm)
+    outer = [films.bottom], [films.top]
+    return (
+        np.concatenate([outer[0], films.eps_o, outer[1]])[at],
+        np.concatenate([outer[0], films.eps_e, outer[1]])[at],
     )

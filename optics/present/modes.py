@@ -12,7 +12,7 @@ from rich.text import Text
 
 from optics.present.tables import plain_table, titled
 from optics.present.terminal import show
-from optics.present.wording import MISSING, percent
+from optics.present.wording import percent
 
 _FAINT = 5e-5  # share of a line below which it is shown only on request
 _PLACES = {
@@ -76,7 +76,7 @@ def _chosen(
     lines: Sequence[Mapping[str, Any]], *, every_mode: bool
 ) -> tuple[list[Mapping[str, Any]], int]:
     kept = [
-        line for line in lines if every_mode or line["leaky"] or (line["share"] or 0.0) >= _FAINT
+        line for line in lines if every_mode or line["leaky"] or abs(line["share"] or 0.0) >= _FAINT
     ]
     return kept, len(lines) - len(kept)
 
@@ -95,7 +95,7 @@ def _mode_table(lines: Sequence[Mapping[str, Any]]) -> Table:
         table.add_row(
             line["name"],
             f"{kind}, backward" if backward else kind,
-            MISSING if line["leaky"] else percent(line["share"]),
+            percent(line["share"]),
             _span(line["wavelength_nm"]).removesuffix(" nm"),
             f"{line['wavelength_nm'][at]:g}",
             f"{index.real:.4f}{index.imag:+.4f}i",
@@ -123,13 +123,9 @@ def _trapped(parts: Mapping[str, Mapping[str, float]]) -> Table:
         part = parts[key]
         table.add_row(
             label,
-            *(_signed(part[name]) for name in ("budget", "guided_modes", "plasmons", "remainder")),
+            *(percent(part[name]) for name in ("budget", "guided_modes", "plasmons", "remainder")),
         )
     return table
-
-
-def _signed(share: float) -> str:
-    return percent(share) if share >= 0.0 else f"-{percent(-share)}".replace("-<", "<")
 
 
 def _absorption_parts(result: Mapping[str, Any]) -> list[RenderableType]:

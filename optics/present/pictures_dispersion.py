@@ -18,6 +18,8 @@ from optics.present.pictures_style import (
 )
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     import xarray
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
@@ -29,13 +31,13 @@ _MAP_DECADES, _PROFILE_DECADES = 2.3, 3.3
 _SAME_LINE = 0.006
 # The axis ends where so much of the power lies below, but not before the last light line.
 _SHOWN_SHARE = 0.98
-_STYLES: dict[str, dict[str, Any]] = {
+LINE_STYLES: dict[str, dict[str, Any]] = {
     "surroundings": {"linestyle": "-", "linewidth": 1.3, "color": "#0072B2"},
     "slab": {"linestyle": (0, (6, 2)), "linewidth": 1.3, "color": "#0072B2"},
     "emitter": {"linestyle": "-", "linewidth": 1.6, "color": "#009E73"},
     "film": {"linestyle": (0, (1, 1.6)), "linewidth": 1.2, "color": INK},
 }
-_ORDER = tuple(_STYLES)
+_ORDER = tuple(LINE_STYLES)
 _LABEL_GAP = 0.028
 
 
@@ -89,20 +91,26 @@ def dispersion_figure(title: str, found: dict[str, xarray.Dataset]) -> Figure:
 
 
 def light_lines(data: xarray.Dataset) -> list[Line]:
+    """Light lines of a dataset of `outcome.dispersion`, as `merged`."""
+    values = data["light_line"].to_numpy()
+    names, kinds = data["line"].to_numpy(), data["kind"].to_numpy()
+    every = [
+        Line(str(name), str(kind), n) for name, kind, n in zip(names, kinds, values, strict=True)
+    ]
+    return merged(every)
+
+
+def merged(every: Sequence[Line]) -> list[Line]:
     """Merge light lines that coincide, and order them by index at the longest wavelength."""
-    kinds = data["kind"].to_numpy()
-    merged: list[Line] = []
-    for kind in _ORDER:
-        for place in np.flatnonzero(kinds == kind).tolist():
-            index = data["light_line"].to_numpy()[place]
-            name = str(data["line"].to_numpy()[place])
-            twin = next((at for at, one in enumerate(merged) if _coincide(one.n, index)), None)
-            if twin is None:
-                merged.append(Line(name, kind, index))
-            else:
-                known = merged[twin]
-                merged[twin] = known._replace(name=_joined(known.name, name))
-    return sorted(merged, key=_last)
+    found: list[Line] = []
+    for line in sorted(every, key=lambda one: _ORDER.index(one.kind)):
+        twin = next((at for at, one in enumerate(found) if _coincide(one.n, line.n)), None)
+        if twin is None:
+            found.append(line)
+        else:
+            known = found[twin]
+            found[twin] = known._replace(name=_joined(known.name, line.name))
+    return sorted(found, key=_last)
 
 
 def _joined(known: str, name: str) -> str:
@@ -144,7 +152,7 @@ def _map(figure: Figure, axes: Axes, data: xarray.Dataset) -> None:
     bar.set_label("power per effective index", fontsize=TEXT_SIZE)
     bar.ax.tick_params(labelsize=SMALL_SIZE)
     for line in light_lines(data):
-        (drawn,) = axes.plot(line.n, data["wavelength_nm"].to_numpy(), **_STYLES[line.kind])
+        (drawn,) = axes.plot(line.n, data["wavelength_nm"].to_numpy(), **LINE_STYLES[line.kind])
         _rim(drawn)
     plain(axes)
     axes.set_ylabel("vacuum wavelength (nm)")
@@ -172,7 +180,7 @@ def _profile(axes: Axes, data: xarray.Dataset) -> None:
         )  # fmt: skip
     for line in light_lines(data):
         middle = float(np.nanmean(line.n))
-        axes.axvline(middle, alpha=0.6, **{**_STYLES[line.kind], "linewidth": 0.8})
+        axes.axvline(middle, alpha=0.6, **{**LINE_STYLES[line.kind], "linewidth": 0.8})
     axes.set_yscale("log")
     axes.set_ylim(top * 10.0**-_PROFILE_DECADES, 3.0 * top)
     axes.set_ylabel("power per\neffective index")

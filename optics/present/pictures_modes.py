@@ -5,9 +5,7 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
-import numpy as np
-
-from optics.outcome.modes_profile import field_profile
+from optics.present.pictures_indices import MODE_COLORS, dispersion_figure
 from optics.present.pictures_style import (
     FAINT,
     GRID,
@@ -18,7 +16,6 @@ from optics.present.pictures_style import (
     caption,
     figure_of,
     plain,
-    spread,
 )
 from optics.present.wording import percent
 
@@ -30,14 +27,12 @@ if TYPE_CHECKING:
 
     from optics.device.case import Case
     from optics.outcome.film_absorption import FilmAbsorption
-    from optics.outcome.modes import EmitterModes, ModeLine, Modes
+    from optics.outcome.modes_lines import ModeLine
+    from optics.outcome.modes_result import EmitterModes, Modes
 
 #: What `draw` can draw.
 PICTURES = ("dispersion", "fields", "absorption")
 
-_COLORS = {"guided": "#0072B2", "plasmon": "#CC79A7", "overdamped": "0.75", "leaky": "#E69F00"}
-_THICKEST, _THINNEST = 9.0, 0.9
-_FULL_SHARE = 0.3  # share at which a line has its full width
 _MOST_FIELDS = 6
 _PLACES = {
     "air_bottom": ("leaves, bottom", LOOKS["air_bottom"]),
@@ -70,75 +65,15 @@ def draw(picture: str, case: Case, found: Modes) -> Figure:
         If there is no such picture.
     """
     if picture == "dispersion":
-        return dispersion_figure(found)
+        return dispersion_figure(case, found)
     if picture == "fields":
-        return fields_figure(case, found)
+        return fields_figure(found)
     if picture == "absorption":
         return absorption_figure(found)
     raise ValueError(f"picture: found {picture!r}; expected one of {', '.join(PICTURES)}")
 
 
-def dispersion_figure(found: Modes) -> Figure:
-    """Draw the effective index of every mode against wavelength."""
-    figure = figure_of(0.8 + 5.6 * len(found.emitters), 5.4, found.title)
-    panels = figure.subplots(1, len(found.emitters), squeeze=False, sharey=True)[0]
-    for axes, emitter in zip(panels, found.emitters, strict=True):
-        for line in emitter.lines:
-            if set(line.kind) != {"overdamped"}:
-                _draw_line(axes, line)
-        _name_lines(axes, emitter)
-        axes.set_xlabel("vacuum wavelength (nm)")
-        axes.set_title(f"emitter {emitter.name}", fontsize=TEXT_SIZE, loc="left")
-        plain(axes)
-    panels[0].set_ylabel("effective index, real part")
-    caption(
-        figure,
-        "Width: share of the emitter's photons at that wavelength; paler below the outer light "
-        "line. Plain TE, dashed in the middle TM. Blue guided, purple plasmons, orange leaky "
-        "modes, which have no share.",
-    )
-    return figure
-
-
-def _draw_line(axes: Axes, line: ModeLine) -> None:
-    share = np.nan_to_num(line.share)
-    width = _THINNEST + (_THICKEST - _THINNEST) * np.sqrt(np.clip(share / _FULL_SHARE, 0, 1))
-    faint = [0.4 if place == "below light line" else 1.0 for place in line.destination]
-    x, y = line.wavelength_nm, line.effective_index.real
-    if x.size == 1:
-        marker = "o" if line.polarization == "s" else "D"
-        color = _COLORS[line.kind[0]]
-        axes.plot(x, y, marker, color=color, alpha=faint[0], markersize=float(2 + width[0]))
-        return
-    for i in range(x.size - 1):
-        axes.plot(
-            x[i : i + 2], y[i : i + 2], color=_COLORS[line.kind[i]], alpha=faint[i],
-            linewidth=float(0.5 * (width[i] + width[i + 1])), solid_capstyle="butt",
-        )  # fmt: skip
-    if line.polarization == "p":
-        thin = float(np.clip(0.3 * width.mean(), 0.9, 1.8))
-        axes.plot(x, y, color="white", linewidth=thin, linestyle=(0, (3, 3)))
-
-
-def _name_lines(axes: Axes, emitter: EmitterModes) -> None:
-    """Name every line that takes something in front of where it begins."""
-    named = [line for line in emitter.lines if line.leaky or (line.overall_share or 0.0) > 1e-4]
-    named.sort(key=lambda line: float(line.effective_index[0].real))
-    left, right = axes.get_xlim()
-    axes.set_xlim(left - 0.22 * (right - left), right)
-    low, high = axes.get_ylim()
-    places = [float(line.effective_index[0].real) for line in named]
-    moved = spread(places, 0.04 * (high - low), low, high)
-    for line, label in zip(named, moved, strict=True):
-        share = "" if line.leaky else f"  {percent(line.overall_share)} %"
-        start = float(line.wavelength_nm[0]) - 0.015 * (right - left)
-        axes.text(
-            start, label, f"{line.name}{share}", fontsize=SMALL_SIZE, color=INK,
-            ha="right", va="center",
-        )  # fmt: skip
-
-
-def fields_figure(case: Case, found: Modes) -> Figure:
+def fields_figure(found: Modes) -> Figure:
     """Draw |E|^2 of the strongest modes over the films of the stack."""
     emitter = found.emitters[0]
     ranked = [line for line in emitter.lines if not line.leaky]
@@ -152,19 +87,20 @@ def fields_figure(case: Case, found: Modes) -> Figure:
     for axes in panels[len(lines) :]:
         axes.set_axis_off()
     for axes, line in zip(panels, lines, strict=False):
-        _draw_field(axes, case, emitter, line)
+        _draw_field(axes, emitter, line)
     caption(
         figure,
         f"|E|^2 of the modes that take most, emitter {emitter.name}, at the wavelength that "
-        "adds most to each; over its largest value. Steps behind: real index in the film plane.",
+        "adds most to each; over its largest value (of leaky modes: in the films). Steps behind: "
+        "real index in the film plane.",
     )
     return figure
 
 
-def _draw_field(axes: Axes, case: Case, emitter: EmitterModes, line: ModeLine) -> None:
+def _draw_field(axes: Axes, emitter: EmitterModes, line: ModeLine) -> None:
     strongest = line.strongest
     wavelength_nm = float(line.wavelength_nm[strongest])
-    data = field_profile(case, emitter.name, line, wavelength_nm)
+    data = emitter.field_profile(line.name, wavelength_nm)
     height = data["height_nm"].to_numpy()
     behind = axes.twinx()
     behind.fill_between(height, data["index"].to_numpy(), color=GRID, linewidth=0)
@@ -175,7 +111,7 @@ def _draw_field(axes: Axes, case: Case, emitter: EmitterModes, line: ModeLine) -
     axes.set_zorder(behind.get_zorder() + 1)
     axes.patch.set_visible(False)
     axes.plot(
-        height, data["electric"].to_numpy(), color=_COLORS[line.kind[strongest]], linewidth=1.8
+        height, data["electric"].to_numpy(), color=MODE_COLORS[line.kind[strongest]], linewidth=1.8
     )
     faces = data.attrs["faces_nm"]
     for face in faces:
@@ -189,9 +125,10 @@ def _draw_field(axes: Axes, case: Case, emitter: EmitterModes, line: ModeLine) -
     axes.set_xlim(height[0], height[-1])
     axes.set_ylim(0.0, 1.15)
     index = line.effective_index[strongest]
-    share = "leaky" if line.leaky else f"{percent(line.overall_share)} %"
+    kind = line.kind[strongest]
+    words = line.name if line.leaky else f"{line.name} ({kind}), {percent(line.overall_share)} %"
     axes.set_title(
-        f"{line.name} ({line.kind[strongest]}), {share}, {wavelength_nm:g} nm, "
+        f"{words}, {wavelength_nm:g} nm, "
         f"n = {index.real:.3f}{index.imag:+.3f}i",
         fontsize=SMALL_SIZE, loc="left",
     )  # fmt: skip

@@ -138,6 +138,23 @@ def test_a_narrow_leak_and_a_faint_loss_share_a_mode_by_their_rates() -> None:
     assert found.by_place[FILMS + 1] == pytest.approx(power @ by_loss, rel=1e-5)
 
 
+# --- shares that are no shares on their own -----------------------------------------------------
+
+
+def test_plasmons_that_meet_take_opposite_shares_of_any_size_and_together_little() -> None:
+    """A forward and a backward plasmon just past the point where they have become a pair."""
+    stack = Stack(400.0, [film(1.8, 60), metal(-2 + 0.005j, 20), film(1.8, 60)], 1.5**2, 1, 0, 40)
+    found = check(stack)
+    dissipated = WEIGHT[:, 0] @ solved(stack, OF_BUDGET).dissipation[0, 0]
+    plasmons = found.modes.polarization == P
+    u, share = found.modes.u[plasmons], found.power[plasmons] / dissipated
+    assert len(u) == 2
+    assert np.sign(u.imag).tolist() in ([1, -1], [-1, 1])
+    assert share.max() > 1.0
+    assert share.min() < 0.0
+    assert 0.0 < share.sum() < 1.0
+
+
 # --- random stacks ------------------------------------------------------------------------------
 
 

@@ -11,8 +11,8 @@ import pytest
 
 import optics
 from optics.device.errors import CaseError
-from optics.outcome.modes import EmitterModes, Modes, modes
-from optics.outcome.modes_profile import field_profile
+from optics.outcome.modes import modes
+from optics.outcome.modes_result import EmitterModes, Modes
 
 
 def lossless(**metal: float) -> dict[str, Any]:
@@ -194,15 +194,48 @@ def test_results_in_plain_types_tables_and_arrays(pixel: Modes) -> None:
     frame = pixel.to_frame()
     assert len(frame) == sum(line.wavelength_nm.size for line in only(pixel).lines)
     assert frame["share"].sum() > 0.0
+    assert (frame["leaky"] == False).all()  # noqa: E712
     assert "/green" in pixel.to_tree().groups
 
 
+def test_fields_absorption_and_trapped_light_are_in_arrays_and_tables(pixel: Modes) -> None:
+    emitter = only(pixel)
+    data = emitter.to_dataset()
+    profile = emitter.field_profile("TE0", 550.0)
+    shown = data["electric"].sel(mode="TE0", wavelength_nm=550.0)
+    # Over its largest value at the heights of each, which differ.
+    same = profile["electric"].interp(height_nm=shown["height_nm"].to_numpy()[150:450:50])
+    assert same.to_numpy() == pytest.approx(shown.to_numpy()[150:450:50], abs=2e-3)
+    assert data["index"].sel(wavelength_nm=550.0, height_nm=50.0, method="nearest") == 1.86
+    assert float(data["absorption"].sum()) == pytest.approx(
+        1.0 + emitter.absorption.closure_error, abs=1e-12
+    )
+    for key, part in emitter.trapped.items():
+        found = data["trapped"].sel(trapped_as=key)
+        assert dict(zip(data["part"].to_numpy().tolist(), found.to_numpy(), strict=True)) == (
+            part.to_dict()
+        )
+    assert not data["leaky"].any()
+    assert pixel.trapped_frame()["budget"].tolist() == [
+        part.budget for part in emitter.trapped.values()
+    ]
+    places = pixel.absorption_frame().set_index(["emitter", "place"])["share"]
+    assert places["green", "films.CAT"] == emitter.absorption.films["CAT"]
+    assert places["", "air_bottom"] == pixel.absorption.elsewhere["air_bottom"]  # type: ignore[union-attr]
+    assert places["green"].sum() == pytest.approx(1.0, abs=1e-5)
+    fields = pixel.fields_frame()
+    assert set(fields["mode"]) == {line.name for line in emitter.lines}
+    assert fields.groupby("mode")["electric"].max().to_numpy() == pytest.approx(1.0)
+
+
+def test_a_mode_that_is_not_there_has_no_field(pixel: Modes) -> None:
+    with pytest.raises(KeyError, match="TE9"):
+        only(pixel).field_profile("TE9", 550.0)
+
+
 def test_field_profile_meets_the_indices_of_the_films(pixel: Modes) -> None:
-    document = devices.pixel()
-    document["wavelength"] = {"start_nm": 490, "stop_nm": 610, "step_nm": 20}
-    case = devices.case(document)
     line = only(pixel).lines[0]
-    data = field_profile(case, "green", line, 550.0)
+    data = only(pixel).field_profile("TE0", 550.0)
     assert float(data["electric"].max()) == 1.0
     faces = data.attrs["faces_nm"]
     assert faces == pytest.approx([0, 110, 170, 200, 250, 350])
@@ -216,4 +249,4 @@ def test_field_profile_meets_the_indices_of_the_films(pixel: Modes) -> None:
     at = int(np.flatnonzero(line.wavelength_nm == 550.0)[0])
     assert ratio == pytest.approx(line.confinement[at, 2] / line.confinement[at, 1], rel=2e-3)
     with pytest.raises(ValueError, match=r"wavelength_nm: found 551.0; expected one of TE0"):
-        field_profile(case, "green", line, 551.0)
+        only(pixel).field_profile("TE0", 551.0)

@@ -6,12 +6,15 @@ import json
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 from click.testing import CliRunner, Result
+from matplotlib.collections import LineCollection
+from matplotlib.figure import Figure
 
 import optics
 from optics import cli
-from optics.outcome.modes import Modes
+from optics.outcome.modes_result import Modes
 from optics.present import pictures_modes
 from optics.present.modes import print_modes
 from optics.present.terminal import console
@@ -136,20 +139,65 @@ def test_pictures(picture: str, path: Path, found: Modes, tmp_path: Path) -> Non
     assert any(word.startswith(expected) for word in words)
 
 
+def ribbons(figure: Figure) -> list[LineCollection]:
+    return [one for axes in figure.axes for one in axes.collections
+            if isinstance(one, LineCollection)]  # fmt: skip
+
+
 def test_width_of_a_line_grows_with_its_share(path: Path, found: Modes) -> None:
     figure = pictures_modes.draw("dispersion", optics.read_case(path), found)
-    segments = [line for line in figure.axes[0].lines if line.get_color() != "white"]
-    first, *_ = found.emitters[0].lines
-    faintest = min(line.get_linewidth() for line in segments)
-    widest = max(line.get_linewidth() for line in segments)
-    assert widest > faintest + 1.0
-    strongest = max(
-        (line for line in found.emitters[0].lines if line.overall_share),
-        key=lambda one: one.share[1],
+    (emitter,) = found.emitters
+    shown = [line for line in emitter.lines if set(line.kind) != {"overdamped"}]
+    drawn = ribbons(figure)
+    assert len(drawn) == len([line for line in shown if line.wavelength_nm.size > 1])
+    widths = np.array([np.max(one.get_linewidth()) for one in drawn])
+    strongest = max(shown, key=lambda line: float(np.nan_to_num(line.share).max()))
+    widest = drawn[int(widths.argmax())]
+    assert widths.max() > widths.min() + 1.0
+    # The first piece of the widest ribbon begins where the strongest mode does.
+    start = widest.get_segments()[0][0]
+    assert start == pytest.approx(
+        [strongest.wavelength_nm[0], strongest.effective_index[0].real], rel=1e-12
     )
-    heights = [y for line in segments if line.get_linewidth() == widest for y in line.get_ydata()]
-    assert min(abs(y - strongest.effective_index.real[1]) for y in heights) < 0.2
-    assert first.name == "TE0"
+
+
+def test_ribbons_have_neither_seams_nor_transparency(path: Path, found: Modes) -> None:
+    figure = pictures_modes.draw("dispersion", optics.read_case(path), found)
+    for ribbon in ribbons(figure):
+        assert ribbon.get_capstyle() == "round"
+        assert (ribbon.get_colors()[:, 3] == 1.0).all()
+        pieces = np.array(ribbon.get_segments())
+        assert (pieces[1:, 0] == pieces[:-1, 1]).all()
+        assert np.abs(np.diff(ribbon.get_linewidth())).max() < 1.0
+
+
+def test_every_mode_and_every_light_line_is_named(path: Path, found: Modes) -> None:
+    figure = pictures_modes.draw("dispersion", optics.read_case(path), found)
+    labels = [text.get_text() for axes in figure.axes for text in axes.texts]
+    for line in found.emitters[0].lines:
+        if set(line.kind) != {"overdamped"}:
+            assert any(label.split("  ")[0] == line.name for label in labels)
+    for medium in ("substrate", "TCO", "EML", "surroundings"):
+        assert any(medium in label for label in labels)
+
+
+def test_modes_far_out_have_an_axis_of_their_own() -> None:
+    case = optics.read_case("cases/transparent-porthole.toml")
+    result = optics.modes(case, 540.0)
+    figure = pictures_modes.draw("dispersion", case, result)
+    upper, lower = figure.axes
+    far = max(line.effective_index[0].real for line in result.emitters[0].lines)
+    assert far > 4.0
+    assert upper.get_ylim()[0] < far < upper.get_ylim()[1]
+    assert lower.get_ylim()[1] < 2.5
+
+
+def test_negative_shares_are_shown_with_their_sign(
+    found: Modes, capsys: pytest.CaptureFixture[str]
+) -> None:
+    result = found.to_dict()
+    result["emitters"][0]["modes"][0]["share"] = -0.0723
+    assert "-7.23" in printed(result, capsys)
 
 
 def test_an_unknown_picture_is_refused(path: Path, found: Modes) -> None:
@@ -166,7 +214,31 @@ def test_files(path: Path, tmp_path: Path) -> None:
     result = run(path, *(part for file in files for part in ("-o", file)))
     assert result.exit_code == 0
     assert all(file.stat().st_size > 200 for file in files)
-    assert (tmp_path / "modes.csv").read_text().startswith("emitter,mode,polarization")
+    assert (tmp_path / "modes.csv").read_text().startswith("emitter,mode,polarization,leaky")
     refused = run(path, "--picture", "fields")
     assert refused.exit_code == 2
     assert "needs a file" in refused.stderr
+
+
+@pytest.mark.parametrize(
+    ("table", "columns"),
+    [
+        ("modes", "emitter,mode,polarization,leaky,wavelength_nm"),
+        ("trapped", "emitter,destination,budget,guided_modes,plasmons,remainder"),
+        ("absorption", "emitter,place,share"),
+        ("fields", "emitter,mode,wavelength_nm,height_nm,electric,magnetic,index"),
+    ],
+)
+def test_tables_of_csv_files(table: str, columns: str, path: Path, tmp_path: Path) -> None:
+    file = tmp_path / "table.csv"
+    assert run(path, "-o", file, "--table", table).exit_code == 0
+    first, *rows = file.read_text().splitlines()
+    assert first.startswith(columns)
+    assert rows
+
+
+def test_a_table_needs_a_csv_file(path: Path, tmp_path: Path) -> None:
+    refused = run(path, "--table", "fields", "-o", tmp_path / "modes.nc")
+    assert refused.exit_code == 2
+    assert "--table fields needs a file: give -o with .csv" in refused.stderr
+    assert not list(tmp_path.iterdir())
