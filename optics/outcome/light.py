@@ -133,7 +133,7 @@ def _side(
     return _Outside(kind, (index.real**2).astype(np.complex128), beyond.real, loss)
 
 
-def run_engine(problem: Problem, tolerance: float, threads: int | None) -> EngineBudget:
+def run_engine(problem: Problem, tolerance: float, threads: int | None = None) -> EngineBudget:
     """Run the engine over all wavelengths, on at most so many threads."""
     chunks, workers = chunks_of(problem, threads)
     if workers == 1:

@@ -23,7 +23,7 @@ from optics.outcome.light import cores
 from optics.outcome.view import View
 from optics.study.executor import completed, executor_or_threads
 from optics.study.outcomes import Outcome, angles_needed, read_outcome
-from optics.study.store import Store, content_key
+from optics.study.store import Store, clear_abandoned, content_key
 
 if TYPE_CHECKING:
     from concurrent.futures import Executor
@@ -222,6 +222,8 @@ def store_for(
 ) -> Store:
     """Open the file in which the finished points of this very study are kept.
 
+    Files of other studies that were left there long ago are removed.
+
     Parameters
     ----------
     question : Question
@@ -246,7 +248,9 @@ def store_for(
         "version": VERSION,
         "kernels": CACHE_FOLDER.name,
     }
-    return Store(folder / f"{study}-{content_key(content)}.part", question.width, places)
+    store = Store(folder / f"{study}-{content_key(content)}.part", question.width, places)
+    clear_abandoned(folder, besides=store.path)
+    return store
 
 
 def layout_of(points: Floats) -> dict[str, str]:

@@ -10,6 +10,7 @@ from __future__ import annotations
 import hashlib
 import json
 import os
+import time
 import zlib
 from collections.abc import Mapping
 from contextlib import suppress
@@ -23,6 +24,9 @@ if TYPE_CHECKING:
 
     Floats = NDArray[np.float64]
     Integers = NDArray[np.int64]
+
+
+_ABANDONED_S = 30 * 86400.0
 
 
 def content_key(content: Mapping[str, Any]) -> str:
@@ -40,6 +44,16 @@ def progress_folder() -> Path:
     else:
         base = Path.home() / ".cache"
     return base / "outcouple" / "studies"
+
+
+def clear_abandoned(folder: Path, besides: Path) -> None:
+    """Remove progress files, besides one, that nobody has come back to for 30 days."""
+    for path in folder.glob("*-*.part"):
+        if path == besides:
+            continue
+        with suppress(OSError):  # another process may be quicker
+            if time.time() - path.stat().st_mtime > _ABANDONED_S:
+                path.unlink()
 
 
 class Store:

@@ -24,8 +24,9 @@ if TYPE_CHECKING:
     Integers = NDArray[np.int64]
 
 FILM, SOURCE, OTHER = "film", "source", "other"
-# Films of one block at most, so that progress shows and memory stays small ...
-_MOST_FILMS = 1700
+# Films of one block at most, so that progress shows and memory stays small, and those of a grid
+# that are not worth cutting up for a second core ...
+_MOST_FILMS, _FEW_FILMS = 2500, 400
 # ... and points; fewer than this are as quick one by one.
 _MOST_POINTS = 20_000
 FEWEST_POINTS = 6
@@ -90,7 +91,10 @@ def blocks(plan: Plan) -> Iterator[Integers]:
     for group in grid:
         for pattern in np.unique(absent):
             films = group[absent == pattern]
-            for part in np.array_split(films, -(-len(films) // most)):
+            few = min(_FEW_FILMS, most)
+            # An even number of parts keeps an even number of cores busy to the end.
+            parts = 1 if len(films) <= few else 2 * -(-len(films) // (2 * most))
+            for part in np.array_split(films, parts):
                 yield part.ravel()
 
 

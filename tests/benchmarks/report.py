@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 import os
 import platform
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import partial
 from pathlib import Path
 
@@ -17,6 +17,7 @@ from optics.outcome import light
 
 from . import batch
 from .devices import Device, device
+from .map import MapPlan, section
 from .measure import (
     RIVAL_POINTS,
     STEP_NS,
@@ -49,6 +50,7 @@ class Plan:
     films: tuple[int, ...] = (3, 6, 12, 24)
     spectra: tuple[int, ...] = (1, 11, 41, 81, 201, 401)
     zones: tuple[int, ...] = (1, 5, 10, 20, 40)
+    map: MapPlan = field(default_factory=MapPlan)
 
 
 def markdown(header: list[str], rows: list[list[str]]) -> str:
@@ -92,7 +94,7 @@ def main(output: Path, arguments: list[str] | None = None) -> None:
 
 def report(plan: Plan) -> str:
     """The whole page."""
-    parts = [_head(), *_against_rival(plan), *_scaling(plan), *_profile(plan)]
+    parts = [_head(), *_against_rival(plan), *_scaling(plan), *section(plan.map), *_profile(plan)]
     return "\n\n".join(parts) + "\n"
 
 
@@ -132,7 +134,7 @@ def _against_rival(plan: Plan) -> list[str]:
             partial(engine, timed),
             partial(run_rival, timed, spared=False),
             partial(run_rival, timed),
-            lambda: light._in_chunks(timed.problem(), TOLERANCE),
+            lambda: light.run_engine(timed.problem(), TOLERANCE),
         ],
         plan.repeats,
     )

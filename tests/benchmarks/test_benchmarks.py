@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import pytest
 from benchmarks.devices import device
+from benchmarks.map import MapPlan
 from benchmarks.measure import (
     engine,
     engine_errors,
@@ -43,9 +44,15 @@ def test_extrapolation_follows_the_power_law() -> None:
 
 def test_report_is_written_from_measurements() -> None:
     plan = Plan(wavelengths=2, samples=1, repeats=1, grids=(500, 1000), films=(3,), spectra=(1,),
-                zones=(1, 20))  # fmt: skip
+                zones=(1, 20), map=MapPlan(3, 2, 2, 4))  # fmt: skip
     text = report(plan)
-    for heading in ("Against the rival", "At equal accuracy", "Scaling", "Where the time goes"):
+    for heading in (
+        "Against the rival",
+        "At equal accuracy",
+        "Scaling",
+        "A map",
+        "Where the time goes",
+    ):
         assert heading in text
     assert "nan" not in text
 

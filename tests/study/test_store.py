@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import os
+import time
 from pathlib import Path
 
 import numpy as np
 import pytest
 
-from optics.study.store import Store, content_key, progress_folder
+from optics.study.store import Store, clear_abandoned, content_key, progress_folder
 
 
 def filled(path: Path) -> Store:
@@ -89,3 +90,15 @@ def test_keys_do_not_depend_on_order_but_on_every_value() -> None:
 def test_progress_is_kept_in_the_users_cache(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setenv("XDG_CACHE_HOME", "/somewhere")
     assert progress_folder() == Path("/somewhere/outcouple/studies")
+
+
+def test_only_what_was_left_long_ago_is_cleared(tmp_path: Path) -> None:
+    names = ("sweep-a.part", "sweep-b.part", "sweep-mine.part", "notes.txt")
+    old, new, mine, foreign = (tmp_path / name for name in names)
+    for path in (old, new, mine, foreign):
+        path.write_bytes(b"1")
+    for path in (old, mine, foreign):
+        os.utime(path, (0, time.time() - 31 * 86400))
+    clear_abandoned(tmp_path, besides=mine)
+    assert set(tmp_path.iterdir()) == {new, mine, foreign}
+    clear_abandoned(tmp_path / "no such folder", besides=mine)
