@@ -17,7 +17,9 @@ from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import mark_cache_warm
 from optics.kernels.exits import COLUMNS, TOTAL
 from optics.kernels.geometry import (
+    backward_modes_likely,
     backward_modes_possible,
+    grazing_splits,
     has_plasmon,
     largest_index,
     light_lines,
@@ -25,6 +27,7 @@ from optics.kernels.geometry import (
 )
 from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
 from optics.kernels.problem import Problem
+from optics.kernels.second_look import SecondLook
 from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_destination
 
 # Places on the last axis of Budget.shares.
@@ -59,6 +62,7 @@ _SMALLEST_SCALE = 1e-5  # errors are relative to the dissipated power, but not b
 _FLATNESS = 0.7
 # Of the wanted accuracy: parts that differ from the total by more hide something narrow.
 _SUSPICIOUS = 0.1
+_ANY = 1e300  # an accuracy that the first batch of nodes meets
 _PANEL_SHARE = 0.05  # of the wanted accuracy, allowed to one panel
 
 
@@ -109,11 +113,11 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     batches = np.zeros(w, dtype=np.int64)
     per_panel = _PANEL_SHARE * tolerance
 
+    length = np.maximum(far, 1.0 / nearest_absorber(problem))
+    tail = Tasks.on(rows, TAIL, far, np.inf, length)
+    scale, near, miss_near = _scale_and_near(problem, far, tail, per_panel, batches)
     arc = along_arcs(rows, ARC, np.zeros(w), far)
-    tail = Tasks.on(rows, TAIL, far, np.inf, np.maximum(far, 1.0 / nearest_absorber(problem)))
-    total, near, scale, miss_total, miss_near = _total_and_scale(
-        problem, arc, tail, per_panel, batches
-    )
+    total, miss_total = dissipated_power(problem, arc, scale, per_panel, batches)
     ranges = (
         along_arcs(rows, ARC_FROM_LINE, trapped, start, _FLATNESS).nonempty(),
         along_arcs(rows, ARC_FROM_LINE, start, far, _FLATNESS),
@@ -121,14 +125,21 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     (guided, miss_guided), (beyond, miss_beyond) = (
         dissipated_power(problem, tasks, scale, per_panel, batches) for tasks in ranges
     )
-    axis = Tasks.between(rows, lines)
+    axis = Tasks.between(rows, lines, grazing_splits(problem, lines, tolerance))
     free, miss_free = every_destination(problem, axis, scale, per_panel, batches)
 
     parts = Parts(by_orientation(total), free, guided, beyond, near)
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     gap = _disagreement(parts, scale)
     careful = ~(error <= tolerance) | ~(gap <= _SUSPICIOUS * tolerance)
-    careful |= backward_modes_possible(problem)
+    careful |= backward_modes_likely(problem)
+    suspects = backward_modes_possible(problem) & ~careful
+    again = SecondLook(problem, suspects, scale, per_panel, batches)
+    again.on_axis(trapped, start, guided)
+    again.on_axis(start, far, beyond)
+    again.on_arc(far, length, near)
+    gap = np.maximum(gap, again.gap)
+    careful |= ~(gap <= _SUSPICIOUS * tolerance)
     error = np.maximum(error, gap)
     for row in np.flatnonzero(careful).tolist():
         error[row] = _settle(
@@ -138,21 +149,26 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     return _collect(parts, plasmon, error, batches, careful)
 
 
-def _total_and_scale(
-    problem: Problem, arc: Tasks, tail: Tasks, per_panel: float, batches: Integers
-) -> tuple[Floats, Floats, Floats, Floats, Floats]:
-    """Total power up to and beyond far, and the scale (w, 2, z) errors are measured against.
+def _scale_and_near(
+    problem: Problem, far: Floats, tail: Tasks, per_panel: float, batches: Integers
+) -> tuple[Floats, Floats, Floats]:
+    """Scale (w, 2, z) errors are measured against, power beyond far (w, 3, z), its error (w,).
 
-    A first coarse pass gives the scale.
+    One panel for each gives the scale. The tail is mostly resolved by it and done again where
+    it is not.
     """
     w, z = problem.source.kz_positions.shape
-    anything = np.full((w, 2, z), np.inf)
-    coarse, _ = dissipated_power(problem, arc, anything, 1.0, batches)
-    near, _ = dissipated_power(problem, tail, anything, 1.0, batches)
+    absolute = np.ones((w, 2, z))
+    arc = along_arcs(tail.rows, ARC_FROM_LINE, np.zeros(w), far)
+    coarse, _ = dissipated_power(problem, arc, absolute, _ANY, batches)
+    near, miss = dissipated_power(problem, tail, absolute, _ANY, batches)
     scale = np.maximum(np.abs(by_orientation(coarse + near)), _SMALLEST_SCALE)
-    total, miss_total = dissipated_power(problem, arc, scale, per_panel, batches)
-    near, miss_near = dissipated_power(problem, tail, scale, per_panel, batches)
-    return total, near, scale, miss_total, miss_near
+    miss /= scale.min(axis=(1, 2))
+    rough = ~(miss <= per_panel)
+    if rough.any():
+        again, miss_again = dissipated_power(problem, tail.where(rough), scale, per_panel, batches)
+        near[rough], miss[rough] = again[rough], miss_again[rough]
+    return scale, near, miss
 
 
 def _disagreement(parts: Parts, scale: Floats) -> Floats:

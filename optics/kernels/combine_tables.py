@@ -147,7 +147,7 @@ def leaves(
     scratch = scratch_space(source.kz_positions.size, COLUMNS)
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     values = np.zeros((STAGES * NODES, scale.size))
-    moments, misses = np.zeros((3, scale.size)), np.zeros(scale.size)
+    moments, misses = np.zeros((4, scale.size)), np.zeros(scale.size)
     ends = np.zeros((2, 2 * _DEEPEST))
     ends[1, 0] = 1.0
     waiting, count = 1, 0

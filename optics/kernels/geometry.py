@@ -7,8 +7,15 @@ from optics.kernels.arrays import Floats
 from optics.kernels.exits import ABSORBING
 from optics.kernels.problem import Half, Problem
 
-# A film whose Re eps lies above -(this) * (largest positive Re eps) may carry backward modes.
+# A film whose Re eps lies above -(this) * (largest positive Re eps) may carry backward modes:
+# between two half spaces it does below 1, absorption and more films blur that.
 _RESONANT = 4.0
+_STRONGLY_RESONANT = 1.5
+# In units of its loss exponent: cosine of the angle in a slab within which light dies out.
+_GRAZING = 8.0
+# Error over loss^2 of panels that end at the slab's light line alone, as measured, and how much
+# of the wanted accuracy it may be.
+_GRAZING_ERROR, _GRAZING_SHARE = 4.0, 0.25
 _SHORTEST_WAY = 1e-7  # k0 times a distance, where a dipole touches an absorber
 _NO_ABSORBER = 1e3
 
@@ -43,11 +50,23 @@ def has_plasmon(problem: Problem) -> NDArray[np.bool_]:
 
 def backward_modes_possible(problem: Problem) -> NDArray[np.bool_]:
     """Tell where a metal is so close to its plasma resonance that modes may run backward (w,)."""
-    eps, negative = _media(problem)
-    weakest = np.where(negative, eps.real, -np.inf).max(axis=1)
-    largest = np.where(negative, 0.0, eps.real).max(axis=1)
-    near: NDArray[np.bool_] = weakest > -_RESONANT * largest
+    near: NDArray[np.bool_] = _distance_to_resonance(problem) < _RESONANT
     return near
+
+
+def backward_modes_likely(problem: Problem) -> NDArray[np.bool_]:
+    """Tell where it is as close as that alone could make them run backward, and a margin (w,)."""
+    near: NDArray[np.bool_] = _distance_to_resonance(problem) < _STRONGLY_RESONANT
+    return near
+
+
+def _distance_to_resonance(problem: Problem) -> Floats:
+    """Smallest |Re eps| of a metal over the largest positive Re eps (w,); inf without metal."""
+    eps, negative = _media(problem)
+    weakest = np.where(negative, -eps.real, np.inf).min(axis=1)
+    largest = np.where(negative, 0.0, eps.real).max(axis=1)
+    distance: Floats = weakest / np.maximum(largest, 1e-300)
+    return distance
 
 
 def outer_light_line(problem: Problem) -> Floats:
@@ -74,6 +93,39 @@ def light_lines(problem: Problem) -> Floats:
         ]
     )
     return np.sort(np.minimum(points, outer_light_line(problem)[:, None]), axis=1)
+
+
+def grazing_splits(problem: Problem, lines: Floats, tolerance: float) -> Floats:
+    """Where paths between light lines are split because an absorbing slab's line ends them.
+
+    Grazing light dies out in a slab: exp(-loss / cos) has an essential singularity at the slab's
+    light line, which a panel that ends there does not see.
+
+    Parameters
+    ----------
+    lines : float (w, p)
+        From `light_lines`.
+    tolerance : float
+        Wanted accuracy; slabs that matter less are left alone.
+
+    Returns
+    -------
+    float (w, p - 1)
+        Parameter of the path from lines[:, i] to lines[:, i + 1], see `paths.place`; 0: no split.
+    """
+    splits = np.zeros((lines.shape[0], lines.shape[1] - 1))
+    span = np.diff(lines, axis=1)
+    for side in range(2):
+        loss, n = problem.sides.loss[:, side, None], problem.sides.n_outer[:, side, None]
+        matters = _GRAZING_ERROR * loss**2 > _GRAZING_SHARE * tolerance
+        ends_there = matters & (lines[:, 1:] == n) & (span > 0.0)
+        if not ends_there.any():
+            continue
+        short = n * (1.0 - np.sqrt(1.0 - np.minimum(_GRAZING * loss, 0.5) ** 2))
+        share = np.minimum(short / np.where(ends_there, span, 1.0), 0.5)
+        split = 1.0 - 2.0 / np.pi * np.arcsin(np.sqrt(share))
+        splits = np.where(ends_there, np.maximum(splits, split), splits)
+    return splits
 
 
 def nearest_absorber(problem: Problem) -> Floats:

@@ -8,7 +8,7 @@ import numpy as np
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
-from optics.kernels.paths import ARC, REAL_FROM_ZERO, TAIL, panel_error, panel_sum, place
+from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place
 from optics.kernels.problem import (
     Half,
     Problem,
@@ -64,7 +64,7 @@ def integrate(
     rows : int (t,)
         Wavelength of each task.
     paths : float (t, 4)
-        kind, lo, hi, depth of each path, see `paths.place`.
+        kind, lo, hi, depth or split of each path, see `paths`.
     everything : bool
         False: dissipated power, q = 3 * positions columns as of `source.dissipated`. True, for
         real paths below the outer light lines: every destination, q = 2 * COLUMNS * positions
@@ -83,15 +83,16 @@ def integrate(
     scratch = scratch_space(problem.source.kz_positions.shape[1], COLUMNS)
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     values = np.zeros((STAGES * NODES, columns))
-    moments, misses = np.zeros((3, columns)), np.zeros(columns)
+    moments, misses = np.zeros((4, columns)), np.zeros(columns)
     ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
         kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
         ends[0, 0], ends[1, 0] = 0.0, 1.0
         waiting, count = 1, 0
-        if kind in (ARC, REAL_FROM_ZERO):  # long paths, which one panel hardly ever resolves
-            ends[1, 0], ends[0, 1], ends[1, 1] = 0.5, 0.5, 1.0
+        split = first_split(kind, depth)
+        if split > 0.0:
+            ends[1, 0], ends[0, 1], ends[1, 1] = split, split, 1.0
             waiting = 2
         while waiting > 0:
             waiting -= 1

@@ -9,15 +9,26 @@ import math
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.compiled import inline
 from optics.kernels.elementary import turn
-from optics.kernels.rules import LAST, NODES, SECOND, WEIGHT, X
+from optics.kernels.rules import EARLIER, EARLIER_SECOND, LAST, NODES, SECOND, WEIGHT, X
 
-# Kinds of path, with their three parameters. Square roots of the integrand lie at light lines.
-REAL = 0  # lo, hi: real axis, smooth where both ends are light lines
-REAL_FROM_ZERO = 1  # lo, hi: real axis, only hi is a light line
+# Kinds of path, with their parameters. Square roots of the integrand lie at light lines.
+REAL = 0  # lo, hi, split: real axis, smooth where both ends are light lines
+REAL_FROM_ZERO = 1  # lo, hi, split: real axis, only hi is a light line
 ARC = 2  # lo, hi, depth: half ellipse below the axis, neither end is a light line
 ARC_FROM_LINE = 3  # the same, lo is a light line
 ARC_BETWEEN_LINES = 4  # the same, both ends are
 TAIL = 5  # lo, hi = inf, length: real axis from lo to infinity, half the nodes within length
+
+
+@inline
+def first_split(kind: float, split: float) -> float:
+    """Parameter at which the first two panels of a path meet; 0 where one panel begins."""
+    if kind == REAL:
+        return split
+    # Long paths, which one panel hardly ever resolves.
+    if kind == REAL_FROM_ZERO:
+        return max(split, 0.5)
+    return 0.5 if kind == ARC else 0.0
 
 
 @inline
@@ -83,9 +94,11 @@ def panel_error(
 ) -> float:
     """Estimate the error of a panel's sums.
 
-    The last Legendre coefficients of the interpolant tell how far the integrand is resolved.
-    Where convergence is geometric a Gauss rule errs by about the square of that ratio, its
-    extension by the power 1.6; the power 3/2 used here is the cautious choice.
+    The last Legendre coefficients of the interpolant tell how far the integrand is resolved, and
+    their ratio to those BEFORE degrees earlier how fast it converges. Both rules are exact for
+    about 16 degrees more than they have nodes, so that with geometric convergence they err by
+    the fourth power of that ratio; the square used here is the cautious choice. Where something
+    narrow keeps the coefficients up, the last ones themselves are the error.
 
     Parameters
     ----------
@@ -94,7 +107,7 @@ def panel_error(
         How many stages are filled in, less one.
     scale : float (q,)
         What each column's error is compared with.
-    moments : float (3, q)
+    moments : float (4, q)
         Work space.
     misses : float (q,), output
         Estimated error of each column.
@@ -107,16 +120,19 @@ def panel_error(
     q = scale.size
     moments[:, :] = 0.0
     for i in range((stage + 1) * NODES):
-        w, p, s = WEIGHT[stage, i], LAST[stage, i], SECOND[stage, i]
+        first, second = LAST[stage, i], SECOND[stage, i]
+        third, fourth = EARLIER[stage, i], EARLIER_SECOND[stage, i]
         for k in range(q):
             v = values[i, k]
-            moments[0, k] += w * abs(v)
-            moments[1, k] += p * v
-            moments[2, k] += s * v
+            moments[0, k] += first * v
+            moments[1, k] += second * v
+            moments[2, k] += third * v
+            moments[3, k] += fourth * v
     worst = 0.0
     for k in range(q):
-        size = 0.5 * moments[0, k] + 1e-300
-        unresolved = max(abs(moments[1, k]), abs(moments[2, k]))
-        misses[k] = 2.0 * unresolved * math.sqrt(min(1.0, unresolved / size))
+        unresolved = max(abs(moments[0, k]), abs(moments[1, k]))
+        earlier = max(abs(moments[2, k]), abs(moments[3, k])) + 1e-300
+        falling = min(1.0, unresolved / earlier)
+        misses[k] = 2.0 * unresolved * falling**2
         worst = max(worst, misses[k] / scale[k])
     return worst

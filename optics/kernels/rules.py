@@ -13,6 +13,8 @@ from optics.kernels.arrays import Floats
 NODES = 16
 STAGES = 2
 _GAUSS = NODES - 1
+#: Degrees from the earlier to the last coefficients that tell how fast a panel converges.
+BEFORE = 4
 
 
 def _kronrod_nodes() -> Floats:
@@ -30,21 +32,23 @@ def _kronrod_nodes() -> Floats:
     return 0.5 * (zeros - zeros[::-1])
 
 
-def _stage(x: Floats) -> tuple[Floats, Floats, Floats]:
-    """Interpolatory weights, and rows that give the last two Legendre coefficients."""
+def _stage(x: Floats) -> Floats:
+    """Interpolatory weights, and rows that give Legendre coefficients: (5, nodes)."""
     to_coefficients = np.linalg.inv(legendre.legvander(x, x.size - 1))
-    return 2.0 * to_coefficients[0], to_coefficients[-1], to_coefficients[-2]
+    last = to_coefficients[[-1, -2, -1 - BEFORE, -2 - BEFORE]]
+    return np.vstack([2.0 * to_coefficients[:1], last])
 
 
-def _nested() -> tuple[Floats, Floats, Floats, Floats]:
+def _nested() -> tuple[Floats, Floats]:
     gauss, kronrod = legendre.leggauss(_GAUSS)[0], _kronrod_nodes()
     x = np.concatenate([gauss, kronrod, kronrod[-1:]])
-    rows = np.zeros((3, STAGES, 2 * NODES))
+    rows = np.zeros((5, STAGES, 2 * NODES))
     for stage, count in enumerate((_GAUSS, 2 * _GAUSS + 1)):
         rows[:, stage, :count] = _stage(x[:count])
-    return x, rows[0], rows[1], rows[2]
+    return x, rows
 
 
-#: Nodes on -1..1 (STAGES * NODES,); by stage (STAGES, STAGES * NODES): weights and the two rows
-#: of the last Legendre coefficients of the interpolant.
-X, WEIGHT, LAST, SECOND = _nested()
+X, _ROWS = _nested()
+#: Nodes X on -1..1 (STAGES * NODES,); by stage (STAGES, STAGES * NODES): weights and the rows of
+#: Legendre coefficients of the interpolant, the last two and two that come BEFORE these.
+WEIGHT, LAST, SECOND, EARLIER, EARLIER_SECOND = _ROWS

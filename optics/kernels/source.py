@@ -114,22 +114,31 @@ def dissipated(
     reflection(work_up.y, work_up.e, work_up.r)
     reflection(work_down.y, work_down.e, work_down.r)
     positions = source.kz_positions.size
-    for c in (2, 0, 1):
-        pol, sign = channel(c)
-        if c != 1:
-            fill_phases(pol, source, work_up, scratch)
+    # The bracket of a reflection with either sign, 1 +- (a + b) + ab or what is beyond the bulk.
+    own, both = (0.0, 2.0) if beyond_bulk else (1.0, 1.0)
+    for pol in range(2):
+        fill_phases(pol, source, work_up, scratch)
         for i in range(NODES):
             kz = work_up.kz[pol, 0, i]
             a_face, b_face = work_up.r[pol, i], work_down.r[pol, i]
             through = scratch.to_bottom[i, 0] * scratch.to_top[i, 0]
-            factor = dissipated_factor(c, source, u[i], kz) * du[i]
-            factor *= reciprocal(1.0 - a_face * b_face * through * through)
-            a_face, b_face = sign * a_face, sign * b_face
+            inv = du[i] * reciprocal(1.0 - a_face * b_face * through * through)
+            if pol == S:
+                plus = inv * dissipated_factor(2, source, u[i], kz)
+                for q in range(positions):
+                    a = a_face * scratch.to_top[i, q] * scratch.to_top[i, q]
+                    b = b_face * scratch.to_bottom[i, q] * scratch.to_bottom[i, q]
+                    even = own + both * (a * b)
+                    values[i, 2 * positions + q] = (plus * (even + (a + b))).real
+                continue
+            plus = inv * dissipated_factor(0, source, u[i], kz)
+            minus = inv * dissipated_factor(1, source, u[i], kz)
             for q in range(positions):
                 a = a_face * scratch.to_top[i, q] * scratch.to_top[i, q]
                 b = b_face * scratch.to_bottom[i, q] * scratch.to_bottom[i, q]
-                bracket = a + b + 2.0 * a * b if beyond_bulk else (1.0 + a) * (1.0 + b)
-                values[i, c * positions + q] = (factor * bracket).real
+                even, odd = own + both * (a * b), a + b
+                values[i, q] = (plus * (even + odd)).real
+                values[i, positions + q] = (minus * (even - odd)).real
 
 
 @inline

@@ -3,7 +3,7 @@
 from typing import NamedTuple
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.exits import COLUMNS
@@ -29,16 +29,23 @@ class Tasks(NamedTuple):
         return cls(rows, paths)
 
     @classmethod
-    def between(cls, rows: Integers, lines: Floats) -> "Tasks":
-        """Real paths between neighboring light lines (w, p), from 0; empty ones are left out."""
+    def between(cls, rows: Integers, lines: Floats, splits: ArrayLike = 0.0) -> "Tasks":
+        """Real paths between neighboring light lines (w, p), from 0; empty ones are left out.
+
+        splits : float (w, p - 1), where the first panels of a path meet.
+        """
         lo, hi = lines[:, :-1].reshape(-1), lines[:, 1:].reshape(-1)
         kind = np.where(lo == 0.0, REAL_FROM_ZERO, REAL)
-        return cls.on(np.repeat(rows, lines.shape[1] - 1), kind, lo, hi).nonempty()
+        split = np.broadcast_to(splits, (rows.size, lines.shape[1] - 1)).reshape(-1)
+        return cls.on(np.repeat(rows, lines.shape[1] - 1), kind, lo, hi, split).nonempty()
+
+    def where(self, chosen: NDArray[np.bool_]) -> "Tasks":
+        """Only some of the paths (t,)."""
+        return Tasks(self.rows[chosen], self.paths[chosen])
 
     def nonempty(self) -> "Tasks":
         """Only the paths that have a length."""
-        kept = self.paths[:, 2] - self.paths[:, 1] > 1e-13
-        return Tasks(self.rows[kept], self.paths[kept])
+        return self.where(self.paths[:, 2] - self.paths[:, 1] > 1e-13)
 
 
 def along_arcs(

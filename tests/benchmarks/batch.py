@@ -150,7 +150,7 @@ def batch(problem: Problem, w: int, calls: int = 300, repeats: int = 25) -> Batc
 
     def error(values: Any) -> tuple[Any, ...]:
         columns = values.shape[1]
-        return _error, values, np.ones(columns), np.zeros((3, columns)), np.zeros(columns)
+        return _error, values, np.ones(columns), np.zeros((4, columns)), np.zeros(columns)
 
     arc = _us(
         {
