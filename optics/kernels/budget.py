@@ -17,7 +17,6 @@ from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import mark_cache_warm
 from optics.kernels.exits import COLUMNS, TOTAL
 from optics.kernels.geometry import (
-    backward_modes_likely,
     backward_modes_possible,
     grazing_splits,
     has_plasmon,
@@ -132,7 +131,6 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     gap = _disagreement(parts, scale)
     careful = ~(error <= tolerance) | ~(gap <= _SUSPICIOUS * tolerance)
-    careful |= backward_modes_likely(problem)
     suspects = backward_modes_possible(problem) & ~careful
     again = SecondLook(problem, suspects, scale, per_panel, batches)
     again.on_axis(trapped, start, guided)

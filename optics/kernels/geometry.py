@@ -10,7 +10,6 @@ from optics.kernels.problem import Half, Problem
 # A film whose Re eps lies above -(this) * (largest positive Re eps) may carry backward modes:
 # between two half spaces it does below 1, absorption and more films blur that.
 _RESONANT = 4.0
-_STRONGLY_RESONANT = 1.5
 # In units of its loss exponent: cosine of the angle in a slab within which light dies out.
 _GRAZING = 8.0
 # Error over loss^2 of panels that end at the slab's light line alone, as measured, and how much
@@ -50,23 +49,11 @@ def has_plasmon(problem: Problem) -> NDArray[np.bool_]:
 
 def backward_modes_possible(problem: Problem) -> NDArray[np.bool_]:
     """Tell where a metal is so close to its plasma resonance that modes may run backward (w,)."""
-    near: NDArray[np.bool_] = _distance_to_resonance(problem) < _RESONANT
-    return near
-
-
-def backward_modes_likely(problem: Problem) -> NDArray[np.bool_]:
-    """Tell where it is as close as that alone could make them run backward, and a margin (w,)."""
-    near: NDArray[np.bool_] = _distance_to_resonance(problem) < _STRONGLY_RESONANT
-    return near
-
-
-def _distance_to_resonance(problem: Problem) -> Floats:
-    """Smallest |Re eps| of a metal over the largest positive Re eps (w,); inf without metal."""
     eps, negative = _media(problem)
-    weakest = np.where(negative, -eps.real, np.inf).min(axis=1)
+    weakest = np.where(negative, eps.real, -np.inf).max(axis=1)
     largest = np.where(negative, 0.0, eps.real).max(axis=1)
-    distance: Floats = weakest / np.maximum(largest, 1e-300)
-    return distance
+    near: NDArray[np.bool_] = weakest > -_RESONANT * largest
+    return near
 
 
 def outer_light_line(problem: Problem) -> Floats:
