@@ -10,7 +10,7 @@ import numpy as np
 from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.paths import ARC, REAL_FROM_ZERO, TAIL, panel_error, panel_sum, place
+from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place
 from optics.kernels.problem import Problem, work_space
 from optics.kernels.rules import NODES, STAGES
 from optics.kernels.variation import Rates, rates_at
@@ -85,7 +85,7 @@ def integrate_rates(
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     u_rate, du_rate = np.zeros((directions, NODES)), np.zeros((directions, NODES))
     values = np.zeros((STAGES * NODES, columns))
-    moments, misses = np.zeros((3, columns)), np.zeros(columns)
+    moments, misses = np.zeros((4, columns)), np.zeros(columns)
     open_ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
@@ -94,8 +94,9 @@ def integrate_rates(
         kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
         open_ends[0, 0], open_ends[1, 0] = 0.0, 1.0
         waiting, count = 1, 0
-        if kind in (ARC, REAL_FROM_ZERO):  # long paths, which one panel hardly ever resolves
-            open_ends[1, 0], open_ends[0, 1], open_ends[1, 1] = 0.5, 0.5, 1.0
+        split = first_split(kind, depth)
+        if split > 0.0:
+            open_ends[1, 0], open_ends[0, 1], open_ends[1, 1] = split, split, 1.0
             waiting = 2
         while waiting > 0:
             waiting -= 1
