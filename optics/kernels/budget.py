@@ -22,6 +22,7 @@ from optics.kernels.geometry import (
     has_plasmon,
     largest_index,
     light_lines,
+    narrow_plasmons_possible,
     nearest_absorber,
 )
 from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
@@ -131,8 +132,8 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     gap = _disagreement(parts, scale)
     careful = ~(error <= tolerance) | ~(gap <= _SUSPICIOUS * tolerance)
-    suspects = backward_modes_possible(problem) & ~careful
-    again = SecondLook(problem, suspects, scale, per_panel, batches)
+    suspects = backward_modes_possible(problem) | narrow_plasmons_possible(problem)
+    again = SecondLook(problem, suspects & ~careful, scale, per_panel, batches)
     again.on_axis(trapped, start, guided)
     again.on_axis(start, far, beyond)
     again.on_arc(far, length, near)

@@ -10,6 +10,7 @@ from optics.kernels.problem import Half, Problem
 # A film whose Re eps lies above -(this) * (largest positive Re eps) may carry backward modes:
 # between two half spaces it does below 1, absorption and more films blur that.
 _RESONANT = 4.0
+_HARDLY_ABSORBING = 1e-3  # Im eps of a metal over |Re eps|
 # In units of its loss exponent: cosine of the angle in a slab within which light dies out.
 _GRAZING = 8.0
 # Error over loss^2 of panels that end at the slab's light line alone, as measured, and how much
@@ -54,6 +55,13 @@ def backward_modes_possible(problem: Problem) -> NDArray[np.bool_]:
     largest = np.where(negative, 0.0, eps.real).max(axis=1)
     near: NDArray[np.bool_] = weakest > -_RESONANT * largest
     return near
+
+
+def narrow_plasmons_possible(problem: Problem) -> NDArray[np.bool_]:
+    """Tell where a metal absorbs so little that nodes may step over its plasmons (w,)."""
+    eps, negative = _media(problem)
+    hardly = negative & (eps.imag < _HARDLY_ABSORBING * np.abs(eps.real))
+    return np.asarray(hardly.any(axis=1))
 
 
 def outer_light_line(problem: Problem) -> Floats:

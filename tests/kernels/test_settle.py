@@ -135,6 +135,18 @@ def test_the_fast_way_alone_would_be_wrong(monkeypatch: pytest.MonkeyPatch) -> N
     assert misses(fast, right) > 1.0
 
 
+def test_plasmon_of_a_lossless_film_far_beyond_the_largest_index() -> None:
+    """A line without width at u = 4.55 holds nearly all the power; a trace of loss shows it."""
+
+    def found(loss: float) -> engine.Budget:
+        films = [film(2.028, 33.4), metal(complex(-36.73, loss), 3.76)]
+        return solved(Reference(566.0, films, 1.0, 1.0, 0, 16.7))
+
+    lossless, nearly = found(0.0), found(1e-6)
+    assert nearly.shares[0, 0, 0, engine.SURFACE_PLASMON] > 0.5 * nearly.dissipation[0, 0, 0]
+    assert lossless.dissipation[0, 0] == pytest.approx(nearly.dissipation[0, 0], rel=1e-5)
+
+
 def test_mode_that_leaks_by_tunneling_only() -> None:
     """A mode 1e-17 from the axis below the light line: its power is found, and goes out.
 
