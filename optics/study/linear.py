@@ -36,19 +36,31 @@ class Tangent(NamedTuple):
         return line
 
 
-def stencil(nominal: Floats, sd: Floats) -> Floats:
-    """Points (4 p, p) at which outcomes give `differences`."""
-    steps = [step for step, _ in _STENCIL]
+def stencil(nominal: Floats, sd: Floats, places: Sequence[int]) -> Floats:
+    """Points (4 m, p) at which outcomes give `differences` for m of the p numbers.
+
+    Parameters
+    ----------
+    nominal, sd : float (p,)
+    places : sequence of int (m,)
+    """
     points = [
         nominal + _STEP * step * sd * (np.arange(nominal.size) == place)
-        for place in range(nominal.size)
-        for step in steps
+        for place in places
+        for step, _ in _STENCIL
     ]
     return np.array(points).reshape(-1, nominal.size)
 
 
 def differences(outcomes: Floats, sd: Floats) -> Floats:
-    """Gradient (k, p) from outcomes (4 p, k) at the points of `stencil`; fourth order."""
+    """Gradient (k, m) from outcomes (4 m, k) at the points of `stencil`; fourth order.
+
+    Parameters
+    ----------
+    outcomes : float (4 m, k)
+    sd : float (m,)
+        Of the numbers that were stepped.
+    """
     weights = np.array([weight for _, weight in _STENCIL])
     by_number = outcomes.reshape(sd.size, len(weights), -1)
     gradient: Floats = np.einsum("psk,s->kp", by_number, weights) / (_STEP * sd)

@@ -11,7 +11,8 @@ from optics.outcome.budget import DEFAULT_TOLERANCE
 from optics.study import evaluate
 from optics.study.draws import Draws, draw
 from optics.study.evaluate import Progress, answers, layout_of
-from optics.study.linear import Tangent, differences, stencil
+from optics.study.linear import Tangent
+from optics.study.tangent import slopes_of
 from optics.study.tolerance_plan import Plan, plan_tolerance
 from optics.study.tolerance_result import Tolerance
 from optics.study.tolerance_statistics import outcome_spreads, warnings_of, yields_of
@@ -90,9 +91,9 @@ def tolerance(
 
 
 def points_of(plan: Plan, drawn: Draws) -> Floats:
-    """Points of a study: the nominal one, those for derivatives, then the samples."""
-    sd = np.array([spread.sd for spread in plan.spreads])
-    return np.concatenate([plan.nominal[None], stencil(plan.nominal, sd), drawn.values])
+    """Points of a study: the nominal one, those for differences, then the samples."""
+    steps = slopes_of(plan.question).stencil(plan.nominal, plan.sd)
+    return np.concatenate([plan.nominal[None], steps, drawn.values])
 
 
 def store_for(plan: Plan, points: Floats, folder: Path) -> Store:
@@ -140,12 +141,12 @@ def evaluated(
     def name_of(place: int) -> str:
         if place == 0:
             return "the nominal values"
-        which = f"sample {place - first}" if place >= first else "a point for derivatives"
+        which = f"sample {place - first}" if place >= first else "a point for differences"
         return f"{which} ({question.name_of(points[place])})"
 
     outcomes = values[:, : len(question.outcomes)]
-    sd = np.array([spread.sd for spread in plan.spreads])
-    tangent = Tangent(outcomes[0], differences(outcomes[1:first], sd))
+    slopes = slopes_of(question)
+    tangent = Tangent(outcomes[0], slopes.gradient(plan.nominal, plan.sd, outcomes[1:first]))
     sampled = outcomes[first:]
     lost = np.zeros(plan.samples, dtype=np.bool_)
     lost[[place - first for place in failed if place >= first]] = True
@@ -170,7 +171,7 @@ def evaluated(
         outcomes=spreads,
         yields=yields,
         joint_yield=joint,
-        derivatives="differences of fourth order",
+        derivatives=slopes.told(),
         accuracy=largest_errors(question, values),
         failed=names,
         warnings=tuple(warnings),

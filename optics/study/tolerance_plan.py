@@ -63,6 +63,11 @@ class Plan:
         return np.array([spread.nominal for spread in self.spreads])
 
     @property
+    def sd(self) -> Floats:
+        """Standard deviations (p,)."""
+        return np.array([spread.sd for spread in self.spreads])
+
+    @property
     def factors(self) -> tuple[tuple[int, ...], ...]:
         """Places of the numbers that vary together: every group, and every number in none.
 

@@ -11,11 +11,13 @@ from optics.study.linear import differences, failures, stencil, variance_shares,
 
 def test_differences_are_exact_for_polynomials_of_fourth_degree() -> None:
     nominal, sd = np.array([2.0, -1.0]), np.array([0.3, 0.05])
-    points = stencil(nominal, sd)
+    points = stencil(nominal, sd, (0, 1))
     assert points.shape == (8, 2)
     x, y = points.T
     outcomes = np.stack([x**4 + y, x * y**3, 3.0 * x - 2.0 * y], axis=1)
     expected = [[32.0, 1.0], [-1.0, 6.0], [3.0, -2.0]]
+    assert stencil(nominal, sd, (1,)).tolist() == points[4:].tolist()
+    assert stencil(nominal, sd, ()).shape == (0, 2)
     assert differences(outcomes, sd) == pytest.approx(np.array(expected), rel=1e-10)
 
 

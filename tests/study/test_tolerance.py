@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -14,8 +15,10 @@ from tolerance_devices import EQE, ETL, GUIDED, HTL, SPREAD, YIELD, spread_out
 
 import optics
 from optics.device.errors import CaseError
+from optics.study import tangent
 from optics.study import tolerance as tolerance_module
-from optics.study.evaluate import TRUST, Question
+from optics.study.evaluate import TRUST, Question, answers
+from optics.study.tolerance_plan import plan_tolerance
 from optics.study.tolerance_result import Tolerance
 
 LIMITS = {EQE: {"min": 0.2}}
@@ -29,7 +32,15 @@ def planted(monkeypatch: pytest.MonkeyPatch, function: Any) -> None:
         trust = np.full((len(points), len(TRUST)), 1e-9)
         return np.column_stack([*columns, trust]), {}
 
+    def slopes(_: Question, nominal: Any) -> Any:
+        # Exact for outcomes up to the second degree.
+        ends = [
+            [function(nominal + sign * step) for sign in (1, -1)] for step in np.eye(len(nominal))
+        ]
+        return None, np.array([np.subtract(*pair) / 2.0 for pair in ends]).T, None
+
     monkeypatch.setattr(tolerance_module, "answers", answers)
+    monkeypatch.setattr(tangent, "values_and_gradient", slopes)
 
 
 def said(found: Tolerance) -> list[str]:
@@ -147,6 +158,37 @@ def test_derivatives_and_influences_of_a_device_agree() -> None:
         assert one.influence.unexplained < 1e-3
         whole = [part.value for part in one.influence.total]
         assert whole == pytest.approx(list(one.linear.shares), abs=0.05)
+
+
+def test_derivatives_are_exact_or_differences_and_agree() -> None:
+    """What changes the wavelengths has no exact derivative, nor has one that it follows."""
+    wave = "wavelength.values_nm.1"
+    device = spread_out({HTL: {"sd": 2.0}, wave: {"sd": 1.0}}, samples=2, outcomes=[EQE, GUIDED])
+    question = plan_tolerance(device, 1e-9).question
+    slopes = tangent.slopes_of(question)
+    assert (slopes.paths, slopes.outcomes, slopes.by_differences) == ((0,), (0, 1), (1,))
+    found = optics.tolerance(device, tolerance=1e-9)
+    assert found.derivatives == f"exact, for {wave} by differences of fourth order"
+    nominal, sd = np.array([device.value(HTL), 545.0]), np.array([2.0, 1.0])
+    every = tangent.Slopes(question, (), ())
+    assert every.by_differences == (0, 1)
+    values, _ = answers(question, every.stencil(nominal, sd))
+    stepped = every.gradient(nominal, sd, values[:, :2])
+    for row, one in zip(stepped, found.outcomes, strict=True):
+        assert one.linear is not None
+        assert list(one.linear.derivatives.values()) == pytest.approx(row.tolist(), rel=1e-5)
+    assert tangent.slopes_of(replace(question, followers=((wave, 0),), paths=(HTL,))).paths == ()
+
+
+def test_linked_numbers_move_with_their_leader_in_the_derivatives() -> None:
+    both = spread_out({HTL: {"sd": 2.0}}, samples=2, linked={ETL: HTL})
+    apart = spread_out({HTL: {"sd": 2.0}, ETL: {"sd": 1.0}}, samples=2)
+    apart = apart.replace(ETL, apart.value(HTL))
+    slopes = [optics.tolerance(device).outcomes[0].linear for device in (both, apart)]
+    assert slopes[0] is not None
+    assert slopes[1] is not None
+    total = sum(slopes[1].derivatives.values())
+    assert slopes[0].derivatives[HTL] == pytest.approx(total, rel=1e-9)
 
 
 def faults_of(spread: dict[str, Any] | None = None, **table: Any) -> list[str]:
