@@ -18,13 +18,14 @@ from optics.kernels.budget import (
     OUTCOMES,
     SURFACE_PLASMON,
     Budget,
+    by_orientation,
     light_budget,
 )
 from optics.kernels.exits import TOTAL
 from optics.kernels.geometry import has_plasmon, largest_index, light_lines, nearest_absorber
 from optics.kernels.paths import ARC, ARC_FROM_LINE, REAL, REAL_FROM_ZERO, TAIL
 from optics.kernels.problem import Half, Problem
-from optics.kernels.tasks import Tasks, along_arcs
+from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_destination
 from optics.kernels.variation import HalfRates, Rates
 from optics.kernels.varied_geometry import (
     largest_index_rates,
@@ -40,6 +41,8 @@ from optics.kernels.varied_tasks import (
 
 _FLATNESS = 0.7  # of the arcs that parts of the total run on, as in `budget`
 _PANEL_SHARE = 0.05  # of the wanted accuracy, allowed to one panel
+_AGREEMENT = 10.0  # times the wanted accuracy, within which two ways to a value agree
+_SMALLEST_SCALE = 1e-5  # errors of values are relative to the dissipated power, at least this
 _NOTHING = 1e-300  # scale of a direction in which nothing changes
 
 
@@ -48,7 +51,7 @@ class Derivatives(NamedTuple):
 
     shares: Floats  # (p, w, z, 2, OUTCOMES)
     dissipation: Floats  # (p, w, z, 2)
-    error: Floats  # (p, w) estimated error of the worst entry over scale
+    error: Floats  # (p, w) estimated error of the worst entry over scale; inf: not to be used
     scale: Floats  # (p, w, z, 2) what errors are measured against
 
 
@@ -83,6 +86,8 @@ def light_budget_with_derivatives(
     Returns
     -------
     Budget, Derivatives
+        The error is infinite at wavelengths where a resonance is so narrow that paths alone pass
+        it by, as with lossless metals: values are settled there by other means, derivatives not.
     """
     budget = light_budget(problem, tolerance)
     ranges = _ranges(problem, rates)
@@ -106,6 +111,7 @@ def light_budget_with_derivatives(
     gap = (np.abs(total - known) / scale).max(axis=(2, 3))
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     error = np.maximum(error, gap)
+    error[_hides_something(problem, budget, ranges, tolerance)] = np.inf
     shares, dissipation = _collect(problem, total, free, guided, beyond, near)
     return budget, Derivatives(
         shares,
@@ -113,6 +119,41 @@ def light_budget_with_derivatives(
         np.ascontiguousarray(error.T),
         np.ascontiguousarray(scale.transpose(1, 0, 3, 2)),
     )
+
+
+def _hides_something(
+    problem: Problem, budget: Budget, ranges: Ranges, tolerance: float
+) -> NDArray[np.bool_]:
+    """Tell where values on the paths of the derivatives are not those that were settled (w,)."""
+    doubtful = budget.careful.copy()
+    if not doubtful.any():
+        return doubtful
+    w, z, _ = budget.dissipation.shape
+    power = np.maximum(np.abs(budget.dissipation), _SMALLEST_SCALE).transpose(0, 2, 1)
+    batches = np.zeros(w, dtype=np.int64)
+    found = np.zeros((w, 2, OUTCOMES, z))
+
+    def kept(moving: MovingTasks) -> Tasks:
+        some = doubtful[moving.tasks.rows]
+        return Tasks(moving.tasks.rows[some], moving.tasks.paths[some])
+
+    def trapped(moving: MovingTasks) -> Floats:
+        per_panel = _PANEL_SHARE * tolerance
+        return by_orientation(dissipated_power(problem, kept(moving), power, per_panel, batches)[0])
+
+    free, _ = every_destination(
+        problem, kept(ranges.free), power, _PANEL_SHARE * tolerance, batches
+    )
+    for place, column in _RADIATED.items():
+        found[:, :, place] = free[:, :, column]
+    found[:, :, NEAR_FIELD] = trapped(ranges.near)
+    found[:, :, GUIDED] = trapped(ranges.guided) + trapped(ranges.beyond) + found[:, :, NEAR_FIELD]
+    settled = budget.shares.transpose(0, 2, 3, 1).copy()
+    settled[:, :, GUIDED] += settled[:, :, SURFACE_PLASMON]
+    settled[:, :, SURFACE_PLASMON] = 0.0
+    miss = (np.abs(found - settled) / power[:, :, None]).max(axis=(1, 2, 3))
+    hides: NDArray[np.bool_] = doubtful & ~(miss <= _AGREEMENT * tolerance)
+    return hides
 
 
 def _ranges(problem: Problem, rates: Rates) -> Ranges:

@@ -1,7 +1,8 @@
 """How the break points of the paths move when the device changes.
 
 Where lines coincide they part when one of them moves. What counts then is the line at which a
-destination begins; of several such lines the mean, which is what a central difference sees.
+destination begins; of several such lines the middle between the fastest and the slowest, which
+is what a central difference sees of the largest.
 """
 
 import numpy as np
@@ -55,15 +56,16 @@ def _side_ranks(problem: Problem) -> tuple[Floats, Floats]:
 
 
 def _leading(near: NDArray[np.bool_], rank: Floats, moves: Floats) -> Floats:
-    """Mean move (w, p, lines) of the lines of highest rank among those that are near.
+    """Move (w, p, lines) of the lines of highest rank among those that are near.
 
     near : bool (w, lines, n); rank (w, n); moves (w, p, n)
     """
     ranks = np.where(near, rank[:, None], -2)
-    chosen = (ranks == ranks.max(axis=2, keepdims=True)).astype(float)
-    chosen /= chosen.sum(axis=2, keepdims=True)
-    mean: Floats = np.einsum("wln,wpn->wpl", chosen, moves)
-    return mean
+    chosen = (ranks == ranks.max(axis=2, keepdims=True))[:, None]
+    most = np.where(chosen, moves[:, :, None], -np.inf).max(axis=3)
+    least = np.where(chosen, moves[:, :, None], np.inf).min(axis=3)
+    middle: Floats = 0.5 * (most + least)
+    return middle
 
 
 def plasmon_start_rates(problem: Problem, rates: Rates, start: Floats, trapped: Floats) -> Floats:

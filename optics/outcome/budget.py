@@ -5,18 +5,13 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import partial
-from types import MappingProxyType
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 from optics._version import VERSION
-from optics.device.zone import unbounded_faces
-from optics.kernels import budget as engine
 from optics.outcome import cautions
-from optics.outcome.dual import plain
+from optics.outcome.chain import EmitterBudget, budget_numbers
 from optics.outcome.efficiency import (
-    DESTINATIONS,
     Emission,
-    destinations,
     emission,
     energy_balance,
 )
@@ -41,64 +36,6 @@ class Lit(NamedTuple):
     emitter: Emitter
     light: Light
     emission: Emission
-
-
-@dataclass(frozen=True, slots=True)
-class EmitterBudget:
-    """What becomes of the excitons of one emitter.
-
-    Attributes
-    ----------
-    name, unit : str
-    purcell_factor, decay_rate_ratio : float or None
-        Zone averages of F and of 1 - q + q F; None where the zone touches an absorber.
-    radiative_efficiency, outcoupling_efficiency, external_quantum_efficiency : float
-    horizontal_fraction, vertical_fraction, order_parameter : float
-    near_field_share, lost_share : float
-    destinations : mapping of str to float
-        Shares of the dissipated photons; they sum to 1.
-    matched : (float or None, float or None)
-        Share that would leave at the bottom, top if that slab's exit were matched.
-    generated : float
-        Photons per injected charge of its unit before outcoupling: charge balance x share x
-        exciton fraction x radiative efficiency.
-    """
-
-    name: str
-    unit: str
-    purcell_factor: float | None
-    decay_rate_ratio: float | None
-    radiative_efficiency: float
-    outcoupling_efficiency: float
-    horizontal_fraction: float
-    vertical_fraction: float
-    order_parameter: float
-    near_field_share: float
-    lost_share: float
-    destinations: Mapping[str, float]
-    external_quantum_efficiency: float
-    matched: tuple[float | None, float | None]
-    generated: float
-
-    def to_dict(self) -> dict[str, Any]:
-        """Entry of ``emitters`` in the JSON result."""
-        keys = (
-            "name",
-            "unit",
-            "purcell_factor",
-            "decay_rate_ratio",
-            "radiative_efficiency",
-            "outcoupling_efficiency",
-            "horizontal_fraction",
-            "vertical_fraction",
-            "order_parameter",
-            "near_field_share",
-            "lost_share",
-        )
-        entry = {key: getattr(self, key) for key in keys}
-        entry["destinations"] = dict(self.destinations)
-        entry["external_quantum_efficiency"] = self.external_quantum_efficiency
-        return entry
 
 
 @dataclass(frozen=True, slots=True)
@@ -273,109 +210,6 @@ def accuracy_of(lit: Sequence[Lit]) -> Accuracy:
         max(energy_balance(one.light) for one in lit),
         max(float(one.light.engine.error.max()) for one in lit),
     )
-
-
-def budget_numbers(case: Case, emissions: Mapping[str, Emission]) -> dict[str, Any]:
-    """Fields of `Budget` that follow from what becomes of each emitter's excitons.
-
-    Numbers of the case and of the emissions may carry rates (`outcome.dual.Dual`); so do the
-    results then.
-    """
-    emitters = tuple(
-        _emitter_budget(case, emitter, emissions[emitter.name]) for emitter in case.emitters
-    )
-    return {
-        "emitters": emitters,
-        "chain": tuple(_chain(case, unit, emitters) for unit in case.units),
-        **_device(case, emitters),
-    }
-
-
-def _emitter_budget(case: Case, emitter: Emitter, found: Emission) -> EmitterBudget:
-    unbounded = bool(unbounded_faces(case.stack, emitter, case.every_wavelength_nm))
-    shares = destinations(found.shares)
-    outcoupling = shares["air_bottom"] + shares["air_top"]
-    generated = (
-        case.drive.charge_balance[emitter.unit]
-        * emitter.share
-        * emitter.exciton_fraction
-        * found.radiative_efficiency
-    )
-    slabs = (case.stack.substrate, case.stack.cover)
-    matched = (found.shares[engine.MATCHED_BOTTOM], found.shares[engine.MATCHED_TOP])
-    return EmitterBudget(
-        name=emitter.name,
-        unit=emitter.unit,
-        purcell_factor=None if unbounded else found.purcell_factor,
-        decay_rate_ratio=(
-            None if unbounded and emitter.quantum_yield > 0.0 else found.decay_rate_ratio
-        ),
-        radiative_efficiency=found.radiative_efficiency,
-        outcoupling_efficiency=outcoupling,
-        horizontal_fraction=emitter.horizontal_fraction,
-        vertical_fraction=emitter.vertical_fraction,
-        order_parameter=emitter.order_parameter,
-        near_field_share=plain(found.shares[engine.NEAR_FIELD]),
-        lost_share=emitter.spectrum.lost_share(case.wavelength_nm),
-        destinations=MappingProxyType(shares),
-        external_quantum_efficiency=generated * outcoupling,
-        matched=(
-            None if slabs[0] is None else plain(matched[0]),
-            None if slabs[1] is None else plain(matched[1]),
-        ),
-        generated=generated,
-    )
-
-
-def _device(case: Case, emitters: tuple[EmitterBudget, ...]) -> dict[str, Any]:
-    """Sum over emitters and units; in a tandem the full current passes every unit."""
-    generated = sum(emitter.generated for emitter in emitters)
-
-    def per_charge(share: float | None, emitter: EmitterBudget) -> float:
-        return emitter.generated * (share or 0.0)
-
-    sums = {
-        name: sum(per_charge(emitter.destinations[name], emitter) for emitter in emitters)
-        for name in DESTINATIONS
-    }
-    bottom, top = sums["air_bottom"], sums["air_top"]
-    brighter = 0 if bottom >= top else 1
-    has_slab = (case.stack.substrate, case.stack.cover)[brighter] is not None
-    matched = sum(per_charge(emitter.matched[brighter], emitter) for emitter in emitters)
-    shares = {name: value / generated if generated > 0.0 else None for name, value in sums.items()}
-    return {
-        "destinations": MappingProxyType(shares),
-        "outcoupling_efficiency": (bottom + top) / generated if generated > 0.0 else None,
-        "external_quantum_efficiency": bottom + top,
-        "external_quantum_efficiency_bottom": bottom,
-        "external_quantum_efficiency_top": top,
-        "external_quantum_efficiency_matched": matched if has_slab else None,
-    }
-
-
-def _chain(case: Case, unit: str, emitters: tuple[EmitterBudget, ...]) -> Mapping[str, Any]:
-    """Parts into which the charge injected into one unit splits."""
-    balance = case.drive.charge_balance[unit]
-    pairs = [
-        (emitter, found)
-        for emitter, found in zip(case.emitters, emitters, strict=True)
-        if emitter.unit == unit
-    ]
-    bright = [balance * emitter.share * emitter.exciton_fraction for emitter, _ in pairs]
-    parts: dict[str, Any] = {
-        "unit": unit,
-        "unbalanced": 1.0 - balance,
-        "dark_excitons": sum(
-            balance * emitter.share * (1.0 - emitter.exciton_fraction) for emitter, _ in pairs
-        ),
-        "nonradiative": sum(
-            part * (1.0 - found.radiative_efficiency)
-            for part, (_, found) in zip(bright, pairs, strict=True)
-        ),
-    }
-    for name in DESTINATIONS:
-        parts[name] = sum(found.generated * found.destinations[name] for _, found in pairs)
-    return MappingProxyType(parts)
 
 
 def _warnings(

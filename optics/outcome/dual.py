@@ -132,8 +132,8 @@ def rates_of(number: Any, directions: int) -> Floats:
 
 
 def plain(number: Any) -> Any:
-    """Python float of a NumPy scalar; a number with its rates stays what it is."""
-    return number if isinstance(number, Dual) else float(number)
+    """Python float of a NumPy scalar; arrays and numbers with their rates stay what they are."""
+    return number if isinstance(number, Dual) or np.ndim(number) > 0 else float(number)
 
 
 def _aligned(number: Dual, ndim: int) -> Floats:

@@ -6,7 +6,7 @@ intrinsic radiative yield, zone(z) density of exciton formation, X any destinati
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
@@ -30,6 +30,15 @@ DESTINATIONS = {
     "absorbed": engine.ABSORBED,
 }
 _PLACES = list(DESTINATIONS.values())
+
+
+class Averages(NamedTuple):
+    """Averages over an emitter's zone: numbers, or arrays (...) of many devices."""
+
+    purcell_factor: Any
+    decay_rate_ratio: Any
+    radiative_efficiency: Any
+    shares: NDArray[np.float64]  # (engine.OUTCOMES, ...) of the dissipated photons
 
 
 class Emission(NamedTuple):
@@ -90,22 +99,45 @@ def emission(emitter: Emitter, light: Light) -> Emission:
     shares = np.einsum(
         "w,wzk->zk", spectrum_weight, orientation_average(light.engine.shares, light.bulk, theta)
     )
-    decay = 1.0 - q + q * dissipated
-    radiating = light.zone_weight * dissipated / decay
-    leaving = light.zone_weight * (shares[:, engine.AIR_BOTTOM] + shares[:, engine.AIR_TOP]) / decay
+    leaving = light.zone_weight * (shares[:, engine.AIR_BOTTOM] + shares[:, engine.AIR_TOP])
+    leaving = leaving / (1.0 - q + q * dissipated)
     total = leaving.sum()
     return Emission(
-        purcell_factor=plain(light.zone_weight @ dissipated),
-        decay_rate_ratio=plain(light.zone_weight @ decay),
-        radiative_efficiency=plain(q * radiating.sum()),
-        shares=(light.zone_weight / decay) @ shares / radiating.sum(),
+        *zone_average(q, light.zone_weight, dissipated, shares),
         emitted_profile=leaving / total if total > 0.0 else np.zeros_like(leaving),
         spectrum_weight=spectrum_weight,
     )
 
 
+def zone_average(
+    quantum_yield: float,
+    zone_weight: NDArray[np.float64],
+    dissipated: NDArray[np.float64],
+    shares: NDArray[np.float64],
+) -> Averages:
+    """Average over a zone what was averaged over spectrum and orientation.
+
+    Parameters
+    ----------
+    quantum_yield : float
+    zone_weight : float (z,)
+        Sum 1.
+    dissipated : float (z, ...)
+        F; further axes are those of many devices, and stay.
+    shares : float (z, engine.OUTCOMES, ...)
+    """
+    decay = 1.0 - quantum_yield + quantum_yield * dissipated
+    radiating = np.einsum("z,z...->...", zone_weight, dissipated / decay)
+    return Averages(
+        purcell_factor=plain(np.einsum("z,z...->...", zone_weight, dissipated)),
+        decay_rate_ratio=plain(np.einsum("z,z...->...", zone_weight, decay)),
+        radiative_efficiency=plain(quantum_yield * radiating),
+        shares=np.einsum("z,z...,zk...->k...", zone_weight, 1.0 / decay, shares) / radiating,
+    )
+
+
 def destinations(shares: NDArray[np.float64]) -> dict[str, float]:
-    """Name the destinations among an engine's outcomes (engine.OUTCOMES,)."""
+    """Name the destinations among an engine's outcomes (engine.OUTCOMES, ...)."""
     return {name: plain(shares[place]) for name, place in DESTINATIONS.items()}
 
 

@@ -11,7 +11,8 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-_ROW_IN, _NAMES_IN, _PANEL_IN = 0.26, 1.6, 2.6
+_ROW_IN, _NAMES_IN = 0.26, 1.6
+_PANEL_IN, _NARROW_PANEL_IN, _MANY_PANELS = 2.6, 1.75, 5
 _GAIN, _LOSS = LOOKS["guided"].color, LOOKS["air_top"].color
 
 
@@ -34,7 +35,8 @@ def sensitivity_figure(title: str, found: Mapping[str, Any]) -> Figure:
     columns = _columns(rows)
     order = sorted(range(len(rows)), key=lambda place: -_influence(columns, place))
     names = [_name(rows[place]) for place in order]
-    width = _NAMES_IN + _PANEL_IN * len(columns)
+    panel = _PANEL_IN if len(columns) < _MANY_PANELS else _NARROW_PANEL_IN
+    width = _NAMES_IN + panel * len(columns)
     figure = figure_of(width, 1.5 + _ROW_IN * len(rows), title)
     panels = figure.subplots(1, len(columns), sharey=True, squeeze=False)[0]
     for axes, column in zip(panels, columns, strict=True):
@@ -44,8 +46,8 @@ def sensitivity_figure(title: str, found: Mapping[str, Any]) -> Figure:
     caption(
         figure,
         "What one nanometer more of each film does, to first order, and one nanometer that an "
-        "emission zone moves up; strongest influence on the EQE first. Luminance and color along "
-        "the normal.",
+        "emission zone moves up; strongest influence on the EQE first. EQE and luminance change "
+        "relative to themselves; luminance and color along the normal.",
     )
     return figure
 
@@ -61,10 +63,10 @@ def _columns(rows: Sequence[Mapping[str, Any]]) -> list[_Column]:
     for side in lit:
         prefix = f"{side} " if len(lit) > 1 else ""
         luminance = [row["sides"][side]["luminance_relative"] for row in rows]
-        columns.append(_Column(f"{prefix}luminance, relative (%)", percent(luminance)))
+        columns.append(_Column(f"{prefix}luminance (%)", percent(luminance)))
         for key, name in (("u_prime", "u'"), ("v_prime", "v'")):
             shift = [row["sides"][side][key] or 0.0 for row in rows]
-            columns.append(_Column(f"{prefix}{name} (thousandths)", [1e3 * one for one in shift]))
+            columns.append(_Column(f"{prefix}{name} (0.001)", [1e3 * one for one in shift]))
     return columns
 
 
@@ -83,7 +85,7 @@ def _draw(axes: Axes, title: str, values: Sequence[float]) -> None:
         color=colors, edgecolor=INK, linewidth=0.5, height=0.72, zorder=2,
     )  # fmt: skip
     largest = max((abs(value) for value in values), default=0.0) or 1.0
-    axes.set_xlim(-1.55 * largest, 1.55 * largest)
+    axes.set_xlim(-1.7 * largest, 1.7 * largest)
     for place, value in enumerate(values):
         right = value >= 0.0
         axes.text(
@@ -92,7 +94,7 @@ def _draw(axes: Axes, title: str, values: Sequence[float]) -> None:
         )  # fmt: skip
     axes.axvline(0.0, color=INK, linewidth=0.8, zorder=3)
     axes.grid(axis="x", color=GRID, linewidth=0.6, zorder=0)
-    axes.locator_params(axis="x", nbins=5)
+    axes.locator_params(axis="x", nbins=4)
     axes.set_xlabel(title, fontsize=TEXT_SIZE)
     axes.tick_params(axis="x", labelsize=TEXT_SIZE - 1, color=FAINT)
     axes.tick_params(axis="y", length=0)

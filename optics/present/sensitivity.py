@@ -22,10 +22,10 @@ if TYPE_CHECKING:
 
 #: What each kind of change is, above its rows.
 CHANGES = {
-    "thickness": "1 nm more of a film",
-    "position": "emission zone 1 nm up",
-    "index": "0.01 more of a film's index n",
-    "orientation": "0.01 more horizontal dipoles",
+    "thickness": "1 nm more of each film",
+    "position": "1 nm that an emission zone moves up",
+    "index": "0.01 more of each film's index n",
+    "orientation": "0.01 more of the horizontal fraction",
 }
 # Columns of each side: head, key of the effect, factor, digits.
 _OF_SIDE = (("luminance %", "luminance_relative", 100.0, 2), ("x", "x", 1.0, 5), ("y", "y", 1.0, 5))
@@ -75,29 +75,33 @@ def sensitivity_view(found: Mapping[str, Any]) -> RenderableType:
         Entry ``sensitivity`` of ``budget --sensitivity --json``.
     """
     rows: Sequence[Mapping[str, Any]] = found["rows"]
+    widest = max(len(row["name"]) for row in rows)
+    parts: list[RenderableType] = [Text("Sensitivity: what a small step changes", style="bold")]
+    for change in dict.fromkeys(row["change"] for row in rows):
+        these = [row for row in rows if row["change"] == change]
+        parts.append(Padding(_table(these, f"by {CHANGES[change]}", widest), (1, 0, 0, 0)))
+    explained = (
+        "Points are percentage points of the EQE; EQE % and luminance % are relative changes. "
+        "Luminance and color x, y along the normal. Exact derivatives, accuracy reached: "
+        f"{accuracy(found['derivative_error'])} of their natural scale"
+    )
+    return Group(*parts, Padding(Text(explained), (1, 0, 0, 0)))
+
+
+def _table(rows: Sequence[Mapping[str, Any]], caption: str, widest: int) -> Group:
+    """Return the rows of one kind of step, names as wide as the widest of all."""
     lit = list(rows[0]["sides"])
     heads = ["EQE points", "EQE %"]
     for side in lit:
         prefix = f"{side} " if len(lit) > 1 else ""
         heads += [f"{prefix}{head}" for head, *_ in _OF_SIDE]
     table = plain_table("", *heads)
-    previous = None
+    table.columns[0].min_width = widest
+    for column in table.columns[1:]:
+        column.min_width = len("+0.00012")
     for row in rows:
-        if row["change"] != previous:
-            if previous is not None:
-                table.add_section()
-            table.add_row(CHANGES[row["change"]], *[""] * len(heads), style="bold")
-            previous = row["change"]
         _add_row(table, row, lit)
-    explained = (
-        "Points are percentage points of the EQE; EQE % and luminance % are relative changes. "
-        "Luminance and color along the normal. Exact derivatives, accuracy reached: "
-        f"{accuracy(found['derivative_error'])} of their natural scale"
-    )
-    return Group(
-        titled("Sensitivity: what a small step changes", table),
-        Padding(Text(explained), (1, 0, 0, 0)),
-    )
+    return titled(caption, table)
 
 
 def _add_row(table: Table, row: Mapping[str, Any], lit: Sequence[str]) -> None:
@@ -110,7 +114,7 @@ def _add_row(table: Table, row: Mapping[str, Any], lit: Sequence[str]) -> None:
         for _, key, factor, digits in _OF_SIDE:
             value = row["sides"][side][key]
             cells.append(signed(None if value is None else factor * value, digits))
-    table.add_row(f"  {row['name']}", *cells)
+    table.add_row(row["name"], *cells)
 
 
 __all__ = ["frame_of", "sensitivity_view", "signed", "tree_of", "with_sensitivity"]

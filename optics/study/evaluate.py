@@ -17,7 +17,8 @@ import numpy as np
 from optics._version import VERSION
 from optics.device.errors import CaseError
 from optics.kernels.budget import NEAR_FIELD
-from optics.outcome.budget import accuracy_of, budget_numbers, shine
+from optics.outcome.budget import accuracy_of, shine
+from optics.outcome.chain import budget_numbers
 from optics.outcome.directional import SIDES, sources
 from optics.outcome.light import cores
 from optics.outcome.view import View

@@ -9,7 +9,7 @@ import numpy as np
 
 from optics.device.direction import Direction, NumberStep, why_not_differentiable
 from optics.device.errors import CaseError, Fault
-from optics.outcome.budget import budget_numbers
+from optics.outcome.chain import budget_numbers
 from optics.outcome.derivative import VariedDevice, shine_with_rates
 from optics.outcome.dual import rates_of, value_of
 from optics.outcome.view import View

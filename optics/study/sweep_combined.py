@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from optics.device.zone import zone_interval
+from optics.kernels.budget import NEAR_FIELD
 from optics.kernels.combined import Combined, Family, combined_budget
 from optics.kernels.geometry import backward_modes_possible
 from optics.outcome.light import problem_of, quadrature
@@ -67,11 +68,11 @@ def compute_block(block: Block) -> Found:
     balance = np.max([one.balance for one in combined], axis=0)
     places, values = [], []
     for number, case in enumerate(grid.sources):
-        averages = [
-            emitter_averages(light.source(number), one.sums)
+        averages = {
+            light.name: emitter_averages(light.source(number), one.sums)
             for light, one in zip(emitters, combined, strict=True)
-        ]
-        near = np.max([one.near_field_share for one in averages], axis=0)
+        }
+        near = np.max([one.shares[NEAR_FIELD] for one in averages.values()], axis=0)
         found = outcome_values(case, averages, plan.question.outcomes, error, balance)
         places.append(grid.places[:, number])
         values.append(np.column_stack([*found, balance, error, near]))
@@ -165,6 +166,11 @@ class _Light:
         self._weights = np.concatenate([weight for _, weight in self._zones]) / len(self._zones)
         self._problem: Problem = problem_of(grid.thinnest, first, self._wavelength_nm, positions)
         self._thetas = np.array(thetas)
+
+    @property
+    def name(self) -> str:
+        """Of the emitter."""
+        return self._emitters[0].name
 
     @property
     def is_hard(self) -> bool:

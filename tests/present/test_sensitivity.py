@@ -85,7 +85,8 @@ def printed(found: dict[str, Any]) -> str:
 
 
 def cells(text: str, name: str, occurrence: int = 0) -> list[str]:
-    rows = [line.split() for line in text.splitlines() if line.startswith(f"  {name} ")]
+    below = text[text.index("Sensitivity") :]
+    rows = [line.split() for line in below.splitlines() if line.startswith(f"{name} ")]
     return rows[occurrence][1:]
 
 
@@ -94,10 +95,13 @@ def test_one_row_for_each_film_under_what_is_changed() -> None:
     assert "Sensitivity: what a small step changes" in text
     lines = text.splitlines()
     heads = [
-        "1 nm more of a film", "emission zone 1 nm up", "0.01 more of a film's index n",
-        "0.01 more horizontal dipoles",
+        "1 nm more of each film", "1 nm that an emission zone moves up",
+        "0.01 more of each film's index n",
+        "0.01 more of the horizontal fraction",
     ]  # fmt: skip
-    places = [next(i for i, line in enumerate(lines) if line.startswith(head)) for head in heads]
+    places = [
+        next(i for i, line in enumerate(lines) if line.startswith(f"by {head}")) for head in heads
+    ]
     assert places == sorted(places)
     assert cells(text, "HTL") == ["-0.123", "-0.61", "+0.42", "-0.00034", "<0.00001"]
 
@@ -131,7 +135,7 @@ def test_the_picture_ranks_films_by_their_influence_on_the_eqe() -> None:
         "EML", "HTL", "zone of green",
     ]  # fmt: skip
     assert [axes.get_xlabel() for axes in panels] == [
-        "EQE, relative (%)", "luminance, relative (%)", "u' (thousandths)", "v' (thousandths)",
+        "EQE, relative (%)", "luminance (%)", "u' (0.001)", "v' (0.001)",
     ]  # fmt: skip
     widths = [bar.get_width() for bar in panels[0].patches]
     assert widths == pytest.approx([1.0, -0.615, 0.0])
@@ -155,7 +159,7 @@ def test_the_command_prints_the_table_when_asked(case: Path) -> None:
     plain, asked = run(case), run(case, "--sensitivity")
     assert plain.exit_code == asked.exit_code == 0
     assert "Sensitivity" not in plain.stdout
-    assert "1 nm more of a film" in asked.stdout
+    assert "by 1 nm more of each film" in asked.stdout
     assert asked.stdout.startswith(plain.stdout[:200])
 
 
