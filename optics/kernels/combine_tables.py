@@ -13,7 +13,7 @@ from optics.kernels.compiled import kernel
 from optics.kernels.exits import COLUMNS
 from optics.kernels.halfstack import abs2, reflection, waves
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.paths import TAIL, panel_error, place
+from optics.kernels.paths import TAIL, panel_error, place, probed_columns
 from optics.kernels.problem import Half, Problem, scratch_space, work_space
 from optics.kernels.rules import NODES, STAGES
 from optics.kernels.source import dissipated, radiated, solve_half
@@ -148,6 +148,7 @@ def leaves(
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     values = np.zeros((STAGES * NODES, scale.size))
     moments, misses = np.zeros((4, scale.size)), np.zeros(scale.size)
+    probed = probed_columns(scale.size, 1)
     ends = np.zeros((2, 2 * _DEEPEST))
     ends[1, 0] = 1.0
     waiting, count = 1, 0
@@ -166,7 +167,7 @@ def leaves(
             else:
                 beyond = path[0] == TAIL
                 dissipated(source, up, down, work_up, work_down, scratch, u, du, beyond, batch)
-            worst = panel_error(values, stage, scale, moments, misses)
+            worst = panel_error(values, stage, scale, probed, moments, misses)
         if worst > tolerance and b - a > 0.5**_DEEPEST and count + waiting + 2 <= found.shape[0]:
             ends[0, waiting], ends[1, waiting] = a, 0.5 * (a + b)
             ends[0, waiting + 1], ends[1, waiting + 1] = 0.5 * (a + b), b

@@ -76,6 +76,12 @@ def film_coefficients(
 
 
 @inline
+def lossless(alpha: Floats, beta: Floats) -> bool:
+    """Tell a film that absorbs nothing by its coefficients (n,): all are 0, or none is."""
+    return alpha[0] == 0.0 and beta[0] == 0.0 and alpha[-1] == 0.0 and beta[-1] == 0.0
+
+
+@inline
 def absorbed_alone(
     e: Complexes, back: Complexes, amplitude: Complexes, alpha: Floats, beta: Floats, a: Floats
 ) -> None:
@@ -87,6 +93,9 @@ def absorbed_alone(
     """
     for pol in range(2):
         for j in range(1, e.shape[1] - 1):
+            if lossless(alpha[pol, j], beta[pol, j]):
+                a[pol, j, :] = 0.0
+                continue
             for i in range(e.shape[2]):
                 q = back[pol, j, i] * e[pol, j, i]
                 power = alpha[pol, j, i] * (1.0 + abs2(q)) + 2.0 * beta[pol, j, i] * q.real
@@ -107,6 +116,9 @@ def absorbed_cross(
     """Cross term between both ways of lighting the half stack: a_cross, complex (2, m, n)."""
     for pol in range(2):
         for j in range(1, e.shape[1] - 1):
+            if lossless(alpha[pol, j], beta[pol, j]):
+                a_cross[pol, j, :] = 0.0
+                continue
             for i in range(e.shape[2]):
                 f1 = f[pol, j, i]
                 g1 = r_far[pol, j, i] * e[pol, j, i] * f1

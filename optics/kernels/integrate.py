@@ -8,7 +8,7 @@ import numpy as np
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
-from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place
+from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place, probed_columns
 from optics.kernels.problem import (
     Half,
     Problem,
@@ -83,7 +83,9 @@ def integrate(
     scratch = scratch_space(problem.source.kz_positions.shape[1], COLUMNS)
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     values = np.zeros((STAGES * NODES, columns))
-    moments, misses = np.zeros((4, columns)), np.zeros(columns)
+    positions = problem.source.kz_positions.shape[1]
+    probed = probed_columns(columns // positions, positions)
+    moments, misses = np.zeros((4, probed.size)), np.zeros(columns)
     ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
@@ -110,7 +112,7 @@ def integrate(
                 else:
                     beyond = kind == TAIL
                     dissipated(source, up, down, work_up, work_down, scratch, u, du, beyond, batch)
-                worst = panel_error(values, stage, scale[task], moments, misses)
+                worst = panel_error(values, stage, scale[task], probed, moments, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_BATCHES:
                 ends[0, waiting], ends[1, waiting] = a, 0.5 * (a + b)
                 ends[0, waiting + 1], ends[1, waiting + 1] = 0.5 * (a + b), b

@@ -6,7 +6,9 @@ same curve and panels can be halved until their estimate is met.
 
 import math
 
-from optics.kernels.arrays import Complexes, Floats
+import numpy as np
+
+from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline
 from optics.kernels.elementary import turn
 from optics.kernels.rules import EARLIER, EARLIER_SECOND, LAST, NODES, SECOND, WEIGHT, X
@@ -18,6 +20,8 @@ ARC = 2  # lo, hi, depth: half ellipse below the axis, neither end is a light li
 ARC_FROM_LINE = 3  # the same, lo is a light line
 ARC_BETWEEN_LINES = 4  # the same, both ends are
 TAIL = 5  # lo, hi = inf, length: real axis from lo to infinity, half the nodes within length
+
+_PROBED = 4  # of so many neighboring positions one is looked at for errors
 
 
 @inline
@@ -89,8 +93,32 @@ def panel_sum(values: Floats, stage: int, misses: Floats, result: Floats, error:
 
 
 @inline
+def probed_columns(groups: int, positions: int) -> Integers:
+    """Columns (group * positions + position) in which a panel's error is looked at.
+
+    Neighboring positions differ by little: every fourth and the last will do.
+    """
+    stride = _PROBED if positions > _PROBED else 1
+    count = (positions - 1) // stride + 1
+    last = positions - 1 if (count - 1) * stride < positions - 1 else -1
+    some = count + (1 if last > 0 else 0)
+    found = np.zeros(groups * some, dtype=np.int64)
+    for group in range(groups):
+        for i in range(count):
+            found[group * some + i] = group * positions + i * stride
+        if last > 0:
+            found[group * some + count] = group * positions + last
+    return found
+
+
+@inline
 def panel_error(
-    values: Floats, stage: int, scale: Floats, moments: Floats, misses: Floats
+    values: Floats,
+    stage: int,
+    scale: Floats,
+    probed: Integers,
+    moments: Floats,
+    misses: Floats,
 ) -> float:
     """Estimate the error of a panel's sums.
 
@@ -107,32 +135,34 @@ def panel_error(
         How many stages are filled in, less one.
     scale : float (q,)
         What each column's error is compared with.
-    moments : float (4, q)
+    probed : int (c,)
+        Columns to look at.
+    moments : float (4, c)
         Work space.
     misses : float (q,), output
-        Estimated error of each column.
+        Estimated error of each of these columns.
 
     Returns
     -------
     float
         Largest error over scale.
     """
-    q = scale.size
     moments[:, :] = 0.0
     for i in range((stage + 1) * NODES):
         first, second = LAST[stage, i], SECOND[stage, i]
         third, fourth = EARLIER[stage, i], EARLIER_SECOND[stage, i]
-        for k in range(q):
-            v = values[i, k]
+        for k in range(probed.size):
+            v = values[i, probed[k]]
             moments[0, k] += first * v
             moments[1, k] += second * v
             moments[2, k] += third * v
             moments[3, k] += fourth * v
     worst = 0.0
-    for k in range(q):
+    for k in range(probed.size):
+        column = probed[k]
         unresolved = max(abs(moments[0, k]), abs(moments[1, k]))
         earlier = max(abs(moments[2, k]), abs(moments[3, k])) + 1e-300
         falling = min(1.0, unresolved / earlier)
-        misses[k] = 2.0 * unresolved * falling**2
-        worst = max(worst, misses[k] / scale[k])
+        misses[column] = 2.0 * unresolved * falling**2
+        worst = max(worst, misses[column] / scale[column])
     return worst

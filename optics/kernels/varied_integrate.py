@@ -10,7 +10,7 @@ import numpy as np
 from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place
+from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place, probed_columns
 from optics.kernels.problem import Problem, work_space
 from optics.kernels.rules import NODES, STAGES
 from optics.kernels.variation import Rates, rates_at
@@ -85,6 +85,7 @@ def integrate_rates(
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     u_rate, du_rate = np.zeros((directions, NODES)), np.zeros((directions, NODES))
     values = np.zeros((STAGES * NODES, columns))
+    probed = probed_columns(columns, 1)
     moments, misses = np.zeros((4, columns)), np.zeros(columns)
     open_ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
@@ -120,7 +121,7 @@ def integrate_rates(
                         source, here, moves, up, down, work_up, work_down, vary_up, vary_down,
                         scratch, u, du, u_rate, du_rate, kind == TAIL, batch,
                     )  # fmt: skip
-                worst = panel_error(values, stage, scale[task], moments, misses)
+                worst = panel_error(values, stage, scale[task], probed, moments, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_BATCHES:
                 open_ends[0, waiting], open_ends[1, waiting] = a, 0.5 * (a + b)
                 open_ends[0, waiting + 1], open_ends[1, waiting + 1] = 0.5 * (a + b), b

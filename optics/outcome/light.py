@@ -25,6 +25,7 @@ if TYPE_CHECKING:
 
 # Fewer wavelengths than this are not worth a second thread.
 _SMALLEST_CHUNK = 4
+_MANY = 100
 NM_PER_MM = 1e6
 
 
@@ -147,7 +148,11 @@ def chunks_of(problem: Problem, threads: int | None = None) -> tuple[list[NDArra
     """Neighboring wavelengths to be computed together, and the number of threads for them."""
     rows = np.arange(problem.source.eps_o.size)
     workers = min(threads or cores(), max(1, rows.size // _SMALLEST_CHUNK))
-    return ([rows] if workers == 1 else np.array_split(rows, 2 * workers)), workers
+    if workers == 1:
+        return [rows], workers
+    # Smaller pieces even out what some wavelengths take longer; each costs what is not compiled.
+    pieces = 2 if rows.size >= _MANY * workers else 1
+    return np.array_split(rows, pieces * workers), workers
 
 
 def at_rows(problem: Problem, rows: NDArray[np.int64]) -> Problem:

@@ -93,10 +93,10 @@ def _radiated(n, own, sides, halves, works, scratch, u, du, values):  # type: ig
 
 
 @_compiled
-def _error(n, values, scale, moments, misses):  # type: ignore[no-untyped-def]
+def _error(n, values, scale, probed, moments, misses):  # type: ignore[no-untyped-def]
     for _ in range(n):
         values[0, 0] += _NUDGE
-        paths.panel_error(values, 0, scale, moments, misses)
+        paths.panel_error(values, 0, scale, probed, moments, misses)
 
 
 @dataclass(frozen=True, slots=True)
@@ -150,7 +150,8 @@ def batch(problem: Problem, w: int, calls: int = 300, repeats: int = 25) -> Batc
 
     def error(values: Any) -> tuple[Any, ...]:
         columns = values.shape[1]
-        return _error, values, np.ones(columns), np.zeros((4, columns)), np.zeros(columns)
+        probed = np.arange(columns)
+        return _error, values, np.ones(columns), probed, np.zeros((4, columns)), np.zeros(columns)
 
     arc = _us(
         {
