@@ -8,6 +8,7 @@ import math
 
 from optics.kernels.arrays import StackPowers
 from optics.kernels.compiled import inline
+from optics.kernels.elementary import decay
 from optics.kernels.halfstack import S, abs2, reciprocal
 
 # What stands outside the films on one side.
@@ -24,17 +25,24 @@ _STUCK = 1e-280
 
 
 @inline
-def face_reflectance(pol: int, u: float, n_slab: float, n_out: float) -> float:
-    """Fresnel reflectance of a slab's outer face for in-plane wavevector u; 1 beyond its line."""
-    if u >= n_out:
-        return 1.0
+def face_reflectances(u: float, n_slab: float, n_out: float) -> tuple[float, float]:
+    """Fresnel reflectances (s, p) of a slab's outer face at wavevector u; 1 beyond its line."""
+    if u >= n_out or u >= n_slab:
+        return 1.0, 1.0
     y1 = math.sqrt(n_slab * n_slab - u * u)
     y2 = math.sqrt(n_out * n_out - u * u)
-    if pol != S:
-        y1 /= n_slab * n_slab
-        y2 /= n_out * n_out
-    r = (y1 - y2) / (y1 + y2)
-    return r * r
+    s = (y1 - y2) / (y1 + y2)
+    y1 *= n_out * n_out
+    y2 *= n_slab * n_slab
+    p = (y1 - y2) / (y1 + y2)
+    return s * s, p * p
+
+
+@inline
+def face_reflectance(pol: int, u: float, n_slab: float, n_out: float) -> float:
+    """One polarization of `face_reflectances`."""
+    s, p = face_reflectances(u, n_slab, n_out)
+    return s if pol == S else p
 
 
 @inline
@@ -50,7 +58,7 @@ def once_through(u: float, n_outer: float, loss: float) -> float:
     """Transmittance of one pass through a slab by Beer-Lambert; loss = 4 pi k d / lambda."""
     if u >= n_outer:
         return 0.0
-    return 1.0 if loss == 0.0 else math.exp(-loss / math.sqrt(1.0 - (u / n_outer) ** 2))
+    return 1.0 if loss == 0.0 else decay(loss / math.sqrt(1.0 - (u / n_outer) ** 2))
 
 
 @inline

@@ -58,13 +58,15 @@ def film_coefficients(
                 k = kz[pol, j, i]
                 x = 2.0 * k.imag * d
                 # Integrals of |e^{i kz z}|^2 and of the cross term, both real; the one-pass
-                # factor already holds the exponential and the sine.
-                if x < _THIN:
-                    same = d * (1.0 - 0.5 * x * (1.0 - x / 3.0))
-                else:
-                    same = d * (1.0 - abs2(e[pol, j, i])) / x
-                turn = k.real * d
-                cross = d * math.exp(-0.5 * x) if abs(turn) < 1e-8 else e[pol, j, i].imag / k.real
+                # factor already holds the exponential and the sine. Choices rather than
+                # branches, so that the loop vectorizes.
+                passed = abs2(e[pol, j, i])
+                thin = x < _THIN
+                series = 1.0 - 0.5 * x * (1.0 - x / 3.0)
+                same = d * (series if thin else (1.0 - passed) / (1.0 if thin else x))
+                still = abs(k.real * d) < 1e-8
+                turning = e[pol, j, i].imag / (1.0 if still else k.real)
+                cross = d * math.sqrt(passed) if still else turning
                 if pol == S:
                     alpha[S, j, i] = loss_o * same
                     beta[S, j, i] = loss_o * cross

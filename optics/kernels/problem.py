@@ -76,6 +76,7 @@ class Scratch(NamedTuple):
     to_top: Complexes  # (NODES, z)
     shares: Floats  # (2, COLUMNS) destinations of light sent down, up
     sent: Floats  # (2, z) power sent down, up
+    faces: Floats  # (2, 3, NODES) by side: `source.side_face`
 
 
 @inline
@@ -95,7 +96,13 @@ def work_space(m: int) -> Work:
 def scratch_space(positions: int, columns: int) -> Scratch:
     """Arrays for so many positions and columns of destinations."""
     phases = np.zeros((2, NODES, positions), dtype=np.complex128)
-    return Scratch(phases[0], phases[1], np.zeros((2, columns)), np.zeros((2, positions)))
+    return Scratch(
+        phases[0],
+        phases[1],
+        np.zeros((2, columns)),
+        np.zeros((2, positions)),
+        np.zeros((2, 3, NODES)),
+    )
 
 
 def make_half(

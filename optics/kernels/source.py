@@ -25,7 +25,7 @@ from optics.kernels.exits import (
     SUBSTRATE,
     bounces,
     exit_line,
-    face_reflectance,
+    face_reflectances,
     once_through,
     passage,
     whole_stack,
@@ -202,26 +202,50 @@ def share_out(
 
     shares : float (2, COLUMNS), added to; row 0 for p_b, row 1 for p_t.
     """
+    once_b, s_b, p_b_face = side_face(sides, 0, u)
+    once_t, s_t, p_t_face = side_face(sides, 1, u)
+    rho = (s_b, s_t) if pol == S else (p_b_face, p_t_face)
+    share_by_faces(sides, u, (once_b, once_t), rho, stack, p_b, p_t, shares)
+
+
+@inline
+def side_face(sides: Sides, side: int, u: float) -> tuple[float, float, float]:
+    """One side's transmittance of one pass, and reflectance of its outer face for s and p."""
+    n_outer = sides.n_outer[side]
+    rho_s, rho_p = 1.0, 1.0
+    if sides.kind[side] == PLANAR:
+        rho_s, rho_p = face_reflectances(u, n_outer, sides.n_out[side])
+    return once_through(u, n_outer, sides.loss[side]), rho_s, rho_p
+
+
+@inline
+def share_by_faces(
+    sides: Sides,
+    u: float,
+    once: tuple[float, float],
+    rho: tuple[float, float],
+    stack: StackPowers,
+    p_b: float,
+    p_t: float,
+    shares: Floats,
+) -> None:
+    """As `share_out`, with both sides' transmittance and reflectance of `side_face` at hand."""
     kind_b, kind_t = sides.kind[0], sides.kind[1]
     n_b, n_t = sides.n_outer[0], sides.n_outer[1]
     line_b, line_t = exit_line(kind_b, n_b, sides.n_out[0]), exit_line(kind_t, n_t, sides.n_out[1])
-    once_b, once_t = once_through(u, n_b, sides.loss[0]), once_through(u, n_t, sides.loss[1])
-    rho_b, rho_t = 1.0, 1.0
-    if kind_b == PLANAR and u < n_b:
-        rho_b = face_reflectance(pol, u, n_b, sides.n_out[0])
-    if kind_t == PLANAR and u < n_t:
-        rho_t = face_reflectance(pol, u, n_t, sides.n_out[1])
-    out_b, lost_b, back_b = passage(kind_b, rho_b, once_b)
-    out_t, lost_t, back_t = passage(kind_t, rho_t, once_t)
+    once_b, once_t = once
+    out_b, lost_b, back_b = passage(kind_b, rho[0], once_b)
+    out_t, lost_t, back_t = passage(kind_t, rho[1], once_t)
     if u < max(line_b, line_t):
         bb, bt, tb, tt = bounces(back_b, back_t, stack)
+        lost_b += back_b * stack[3]
+        lost_t += back_t * stack[4]
         for row in range(2):
             i_b = bb * p_b if row == 0 else bt * p_t
             i_t = tb * p_b if row == 0 else tt * p_t
             shares[row, AIR_BOTTOM] += i_b * out_b
             shares[row, AIR_TOP] += i_t * out_t
-            shares[row, ABSORBED] += i_b * (lost_b + back_b * stack[3])
-            shares[row, ABSORBED] += i_t * (lost_t + back_t * stack[4])
+            shares[row, ABSORBED] += i_b * lost_b + i_t * lost_t
     else:
         # Trapped: counted at first arrival in a slab, or swallowed by absorbing surroundings.
         shares[0, ABSORBED if kind_b == ABSORBING else SUBSTRATE] += p_b
@@ -280,7 +304,11 @@ def radiated(
     from_top = any_return and sides.kind[1] == PLANAR
     solve_half(up, work_up, u, from_top)
     solve_half(down, work_down, u, from_bottom)
-    shares = scratch.shares
+    shares, faces = scratch.shares, scratch.faces
+    for side in range(2):
+        for i in range(NODES):
+            passed, rho_s, rho_p = side_face(sides, side, u[i].real)
+            faces[side, 0, i], faces[side, 1, i], faces[side, 2, i] = passed, rho_s, rho_p
     values[:, :] = 0.0
     for pol in range(2):
         fill_phases(pol, source, work_up, scratch)
@@ -297,7 +325,9 @@ def radiated(
             shares[1, ABSORBED] = work_up.form[0, pol, i].real
             p_t = abs2(work_up.t[pol, i]) * work_up.y[pol, -1, i].real
             p_b = abs2(work_down.t[pol, i]) * work_down.y[pol, -1, i].real
-            share_out(sides, pol, u[i].real, stack, p_b, p_t, shares)
+            once = faces[0, 0, i], faces[1, 0, i]
+            rho = faces[0, 1 + pol, i], faces[1, 1 + pol, i]
+            share_by_faces(sides, u[i].real, once, rho, stack, p_b, p_t, shares)
             for c in range(3):
                 channel_pol, sign = channel(c)
                 if channel_pol != pol:
