@@ -17,6 +17,8 @@ if TYPE_CHECKING:
     from optics.outcome.modes import modes
     from optics.outcome.modes_result import Modes
     from optics.study.check import Check, check
+    from optics.study.optimize import optimize
+    from optics.study.optimum import Optimum
     from optics.study.sensitivity import Sensitivity, sensitivity
     from optics.study.sweep import sweep
     from optics.study.tolerance import tolerance
@@ -30,6 +32,7 @@ _HOMES = {
     "CaseError": "optics.device.errors",
     "Check": "optics.study.check",
     "Modes": "optics.outcome.modes_result",
+    "Optimum": "optics.study.optimum",
     "Sensitivity": "optics.study.sensitivity",
     "Tolerance": "optics.study.tolerance_result",
     "ambient": "optics.outcome.ambient",
@@ -37,6 +40,7 @@ _HOMES = {
     "budget": "optics.outcome.budget",
     "check": "optics.study.check",
     "modes": "optics.outcome.modes",
+    "optimize": "optics.study.optimize",
     "read_case": "optics.device.case",
     "sensitivity": "optics.study.sensitivity",
     "sweep": "optics.study.sweep",
@@ -51,6 +55,7 @@ __all__ = [
     "CaseError",
     "Check",
     "Modes",
+    "Optimum",
     "Sensitivity",
     "Tolerance",
     "__version__",
@@ -59,6 +64,7 @@ __all__ = [
     "budget",
     "check",
     "modes",
+    "optimize",
     "read_case",
     "sensitivity",
     "sweep",

@@ -219,7 +219,12 @@ def gather(
 
 
 def store_for(
-    question: Question, folder: Path, study: str, layout: Mapping[str, Any], places: int
+    question: Question,
+    folder: Path,
+    study: str,
+    layout: Mapping[str, Any],
+    places: int,
+    width: int | None = None,
 ) -> Store:
     """Open the file in which the finished points of this very study are kept.
 
@@ -236,6 +241,8 @@ def store_for(
         Plain content that says which point is at which place, such as `layout_of` says.
     places : int
         Number of points.
+    width : int, optional
+        Numbers of each; those of an answer if not given.
     """
     from optics.kernels.compiled import CACHE_FOLDER
 
@@ -249,7 +256,8 @@ def store_for(
         "version": VERSION,
         "kernels": CACHE_FOLDER.name,
     }
-    store = Store(folder / f"{study}-{content_key(content)}.part", question.width, places)
+    path = folder / f"{study}-{content_key(content)}.part"
+    store = Store(path, question.width if width is None else width, places)
     clear_abandoned(folder, besides=store.path)
     return store
 
