@@ -77,12 +77,11 @@ def _set(document: TOMLDocument, wanted: Case, path: str, value: float) -> None:
 
     *keys, last = path.split(".")
     if keys == ["drive", "charge_balance"]:
-        # One number for all units becomes a number for each.
-        keys, last = ["drive"], "charge_balance"
-        by_unit = tomlkit.inline_table()
-        by_unit.update(wanted.document["drive"]["charge_balance"])
-        _descend(document, keys)[last] = by_unit
-        return
+        drive = _descend(document, ["drive"])
+        if not isinstance(drive.get("charge_balance"), Mapping):
+            # One number for all units becomes a number for each.
+            drive["charge_balance"] = tomlkit.inline_table()
+            drive["charge_balance"].update(wanted.document["drive"]["charge_balance"])
     table = _descend(document, keys)
     if isinstance(table, MutableSequence):
         table[int(last)] = value

@@ -149,9 +149,8 @@ def loosest(
 
 def _room(unit: Floats, along: Floats) -> float:
     """Longest step in both directions that stays within the box."""
-    near = np.minimum(unit, 1.0 - unit)
-    with np.errstate(divide="ignore"):
-        return float(np.min(np.where(np.abs(along) > 1e-9, near / np.abs(along), np.inf)))
+    moves = np.abs(along) > 1e-9
+    return float(np.min(np.minimum(unit, 1.0 - unit)[moves] / np.abs(along[moves])))
 
 
 def _hessian(runner: Runner, top: Summit, binding: Binding) -> Floats:

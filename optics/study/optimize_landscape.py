@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from optics.study.evaluate import Question, answer
+from optics.study.gradient import values_and_gradient, why_no_gradient
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -21,24 +22,37 @@ _STEP = 1e-3
 
 @dataclass(frozen=True, slots=True)
 class DeviceLandscape:
-    """Outcomes at shares of the way between the bounds, see `optimize_local.Landscape`."""
+    """Outcomes at shares of the way between the bounds, see `optimize_local.Landscape`.
+
+    Attributes
+    ----------
+    exact : bool
+        Whether derivatives are those of the engine; otherwise they are made by differences.
+    """
 
     question: Question
     low: Floats  # (p,)
     high: Floats  # (p,)
-
-    @property
-    def method(self) -> str:
-        """How derivatives are made."""
-        return "differences"
+    exact: bool
 
     def value(self, unit: Floats) -> Floats:
         """Outcomes (k,) at a point (p,) of the unit box; NaN where undefined."""
-        found = answer(self.question, self.low + unit * (self.high - self.low))
+        found = answer(self.question, self._at(unit))
         return found[: len(self.question.outcomes)]
 
     def slope(self, unit: Floats) -> Floats:
-        """Derivatives (k, p) by differences of second order, at bounds one-sided."""
+        """Their derivatives (k, p) there, per share of the way between the bounds."""
+        if not self.exact:
+            return self._differences(unit)
+        # Points are computed in parallel; each keeps to one thread.
+        _, gradient, _ = values_and_gradient(self.question, self._at(unit), threads=1)
+        return gradient * (self.high - self.low)
+
+    def _at(self, unit: Floats) -> Floats:
+        return np.asarray(self.low + unit * (self.high - self.low))
+
+    def _differences(self, unit: Floats) -> Floats:
+        """Derivatives by differences of second order, at bounds one-sided."""
         columns = []
         for place in range(unit.size):
             # Three points around the middle one, or beside a bound.
@@ -52,6 +66,16 @@ class DeviceLandscape:
                 column = column + offset * bend / _STEP
             columns.append(column)
         return np.stack(columns, axis=1)
+
+
+def landscape_of(question: Question, low: Floats, high: Floats) -> tuple[DeviceLandscape, str]:
+    """Landscape over bounds (p,), and how its derivatives are made and why."""
+    reasons = why_no_gradient(question)
+    method = "exact"
+    if reasons:
+        why = "; ".join(f"{name}: {reason}" for name, reason in reasons.items())
+        method = f"differences ({why})"
+    return DeviceLandscape(question, low, high, not reasons), method
 
 
 def _moved(unit: Floats, place: int, value: float) -> Floats:

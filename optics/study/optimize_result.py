@@ -196,7 +196,7 @@ def _tried(runner: Runner, first: Ends, searches: Sequence[Searched], starts: in
         expected_optima=expected if len(searches) == 1 and np.isfinite(expected) else None,
         evaluations=runner.evaluations,
         gradients=runner.gradients,
-        gradient_method=runner.landscape.method,
+        gradient_method=runner.gradient_method,
     )
 
 

@@ -11,7 +11,7 @@ import numpy as np
 
 from optics.study.evaluate import Found, answers, gather, layout_of, store_for
 from optics.study.executor import completed
-from optics.study.optimize_landscape import DeviceLandscape
+from optics.study.optimize_landscape import DeviceLandscape, landscape_of
 from optics.study.optimize_local import Goal, Polished, Start, polish
 from optics.study.optimize_settle import Settled, settle
 
@@ -64,6 +64,10 @@ class Runner:
     progress : callable or None
     evaluations, gradients : int
         Points and derivatives so far, those kept from an earlier run included.
+    landscape : DeviceLandscape
+        Outcomes over the unit box.
+    gradient_method : str
+        How its derivatives are made, and why.
     """
 
     aim: Aim
@@ -72,12 +76,14 @@ class Runner:
     progress: Progress | None = None
     evaluations: int = 0
     gradients: int = 0
+    landscape: DeviceLandscape = field(init=False)
+    gradient_method: str = field(init=False)
     _stores: list[Store] = field(default_factory=list)
 
-    @property
-    def landscape(self) -> DeviceLandscape:
-        """Outcomes over the unit box."""
-        return DeviceLandscape(self.aim.question, self.aim.low, self.aim.high)
+    def __post_init__(self) -> None:
+        """See which derivatives there are."""
+        aim = self.aim
+        self.landscape, self.gradient_method = landscape_of(aim.question, aim.low, aim.high)
 
     @property
     def trouble(self) -> str | None:
