@@ -16,7 +16,8 @@ from optics.study.optimize_plan import Aim, plan_optimize
 from optics.study.optimize_reach import meet_limits
 from optics.study.optimize_result import Ends, front_optimum, single_optimum
 from optics.study.optimize_runner import Progress, Runner
-from optics.study.optimize_search import Sample, search, spread_points, usual_count
+from optics.study.optimize_search import search, spread_points, usual_count
+from optics.study.optimize_surrogate import Sample
 
 if TYPE_CHECKING:
     from concurrent.futures import Executor
@@ -99,16 +100,12 @@ def run_optimize(runner: Runner, seed: int, samples: int | None = None) -> Optim
     first = _first(runner, spread_points(len(aim.variables), count, seed))
     sample, spread = first.sample, spreads(first.sample.outcomes)
     if not meets(aim, sample.outcomes).any():
-        met = meet_limits(runner, sample, spread)
-        sample = Sample(
-            np.concatenate([sample.units, [one.unit for one in met]]),
-            np.concatenate([sample.outcomes, [one.outcomes for one in met]]),
-        )
+        sample = meet_limits(runner, sample, spread)
     ends = Ends(sample, spread, len(first.found), first.failed, seed)
     if len(aim.objectives) > 1:
         return front_optimum(runner, ends, find_front(runner, sample, spread))
     goal = single_goal(aim, aim.objectives[0], spread)
-    return single_optimum(runner, ends, goal, search(runner.landscape, goal, sample, runner.polish))
+    return single_optimum(runner, ends, goal, search(runner, goal, sample))
 
 
 class _First(NamedTuple):

@@ -10,7 +10,8 @@ import numpy as np
 
 from optics.study.optimize_goals import gradient_of_objective, single_goal, toward
 from optics.study.optimize_local import FEASIBLE, Goal, Polished, Start
-from optics.study.optimize_search import Sample, Searched, search
+from optics.study.optimize_search import Searched, search
+from optics.study.optimize_surrogate import Sample, refine
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -21,7 +22,8 @@ if TYPE_CHECKING:
 
 # About so many points, however many objectives there are.
 _POINTS = 21
-_STARTS = 3
+_STARTS = 2
+_GAP = 0.1  # between them, in ranges of the bounds
 # Costs nearer than this share of the front's range are one point.
 _SAME = 2e-3
 _BETTER = 1e-6
@@ -41,27 +43,30 @@ def find_front(runner: Runner, sample: Sample, spread: Floats) -> Front:
     Each objective alone gives the corners of the front. From points spread evenly on the simplex
     between the corners, in units of their ranges, the way leads toward better values of all
     objectives at once, as in normal-boundary intersection, Das and Dennis, SIAM J. Optim. 8, 631
-    (1998) (from memory). Every way begins at the best few points known, and once more at the best
-    one that other ways have found.
+    (1998) (from memory). Every way begins at the best point known once the sample was refined for
+    all of them, and once more at the best one that other ways have found.
     """
     aim = runner.aim
     goals = [single_goal(aim, one, spread) for one in aim.objectives]
-    anchors = tuple(search(runner.landscape, goal, sample, runner.polish) for goal in goals)
+    anchors: list[Searched] = []
+    for goal in goals:
+        anchors.append(search(runner, goal, sample))
+        sample = anchors[-1].sample
     ends = [(goal, one.optima[0]) for goal, one in zip(goals, anchors, strict=True)]
+    known = [one for found in anchors for one in found.polished]
+    sample = sample.joined(
+        np.array([one.unit for one in known]), np.array([one.outcomes for one in known])
+    )
     costs = np.stack([gradient_of_objective(one, spread) for one in aim.objectives])
     corners = np.stack([costs @ end.outcomes for _, end in ends])
     ranges = np.where(np.ptp(corners, axis=0) > _BETTER, np.ptp(corners, axis=0), 1.0)
-    known = [one for found in anchors for one in found.polished if one.violation <= FEASIBLE]
     ways = [
         toward(aim, costs / ranges[:, None], (share @ corners) / ranges, spread)
         for share in simplex(len(goals), _POINTS)
     ]
-    pool_units = np.concatenate([sample.units, *[one.unit[None] for one in known]])
-    pool_outcomes = np.concatenate([sample.outcomes, *[one.outcomes[None] for one in known]])
+    sample = refine(sample, ways, _best_apart, runner.ask, len(ways))
     begins = [
-        Start(runner.landscape, way, pool_units[place])
-        for way in ways
-        for place in _best_apart(way, pool_units, pool_outcomes)
+        Start(runner.landscape, way, sample.units[_best_apart(sample, way)[0]]) for way in ways
     ]
     first = runner.polish(begins)
     begins += _again(ways, begins, first)
@@ -70,7 +75,7 @@ def find_front(runner: Runner, sample: Sample, spread: Floats) -> Front:
         if end is not None and end.violation <= FEASIBLE:
             ends.append((start.goal, end))
     total = sum(one.starts for one in anchors) + len(begins)
-    return Front(tuple(_undominated(ends, costs / ranges[:, None])), anchors, total)
+    return Front(tuple(_undominated(ends, costs / ranges[:, None])), tuple(anchors), total)
 
 
 def _again(ways: list[Goal], begins: list[Start], ends: list[Polished | None]) -> list[Start]:
@@ -132,18 +137,16 @@ def _undominated(ends: list[tuple[Goal, Polished]], costs: Floats) -> list[tuple
     return [ends[place] for place in chosen]
 
 
-def _best_apart(way: Goal, units: Floats, outcomes: Floats) -> list[int]:
+def _best_apart(sample: Sample, way: Goal) -> list[int]:
     """Places of the best few points that stand apart from each other."""
-    rank = way.merit(outcomes) + way.violation(outcomes)
-    order = np.argsort(rank, kind="stable")
+    rank = way.merit(sample.outcomes) + way.violation(sample.outcomes)
     chosen: list[int] = []
-    for gap in (0.1, 0.0):
-        for place in order.tolist():
-            if len(chosen) == _STARTS:
-                break
-            near = [np.abs(units[place] - units[other]).max() < gap for other in chosen]
-            if place not in chosen and not any(near):
-                chosen.append(place)
+    for place in np.argsort(rank, kind="stable").tolist():
+        near = [np.abs(sample.units[place] - sample.units[other]).max() < _GAP for other in chosen]
+        if not any(near):
+            chosen.append(place)
+        if len(chosen) == _STARTS:
+            break
     return chosen
 
 

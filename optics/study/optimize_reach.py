@@ -9,7 +9,8 @@ import numpy as np
 from optics.device.errors import CaseError, Fault
 from optics.study.optimize_goals import least_miss
 from optics.study.optimize_local import FEASIBLE
-from optics.study.optimize_search import Sample, search
+from optics.study.optimize_search import search
+from optics.study.optimize_surrogate import Sample
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -21,8 +22,13 @@ if TYPE_CHECKING:
     Floats = NDArray[np.float64]
 
 
-def meet_limits(runner: Runner, sample: Sample, spread: Floats) -> tuple[Polished, ...]:
+def meet_limits(runner: Runner, sample: Sample, spread: Floats) -> Sample:
     """Search for points that meet every limit where no sample point does.
+
+    Returns
+    -------
+    Sample
+        With what was found.
 
     Raises
     ------
@@ -31,13 +37,13 @@ def meet_limits(runner: Runner, sample: Sample, spread: Floats) -> tuple[Polishe
         if each alone can be met, with those that the nearest point misses.
     """
     aim = runner.aim
-    found = search(runner.landscape, least_miss(aim.limits, spread), sample, runner.polish)
-    met = tuple(one for one in found.polished if one.merit <= FEASIBLE)
-    if met:
-        return met
+    found = search(runner, least_miss(aim.limits, spread), sample)
+    if any(one.merit <= FEASIBLE for one in found.polished):
+        units = np.array([one.unit for one in found.polished])
+        return found.sample.joined(units, np.array([one.outcomes for one in found.polished]))
     faults: list[Fault] = []
     for limit in aim.limits:
-        nearest = _nearest(runner, sample, limit, spread)
+        nearest = _nearest(runner, found.sample, limit, spread)
         if nearest is not None:
             faults.append(_out_of_reach(aim, limit, nearest, "at best", ""))
     if not faults:
@@ -54,7 +60,7 @@ def _nearest(runner: Runner, sample: Sample, limit: Limit, spread: Floats) -> Po
     """Point that misses one limit least; None if it can be met."""
     if (limit.sign * sample.outcomes[:, limit.place] >= limit.sign * limit.value).any():
         return None
-    found = search(runner.landscape, least_miss([limit], spread), sample, runner.polish)
+    found = search(runner, least_miss([limit], spread), sample)
     best = found.optima[0]
     return None if best.merit <= FEASIBLE else best
 

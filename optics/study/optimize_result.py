@@ -31,8 +31,9 @@ if TYPE_CHECKING:
     from optics.study.optimize_local import Goal
     from optics.study.optimize_plan import Aim
     from optics.study.optimize_runner import Runner
-    from optics.study.optimize_search import Sample, Searched
+    from optics.study.optimize_search import Searched
     from optics.study.optimize_settle import Settled
+    from optics.study.optimize_surrogate import Sample
 
     Floats = NDArray[np.float64]
 
@@ -186,14 +187,12 @@ def _constraints(aim: Aim, best: Settled, binding: Binding | None) -> tuple[Cons
 
 
 def _tried(runner: Runner, first: Ends, searches: Sequence[Searched], starts: int) -> Tried:
-    expected = searches[0].expected
     return Tried(
         samples=first.samples,
         failed=len(first.failed),
         starts=starts,
         settled=sum(one.settled for found in searches for one in found.polished),
         optima=sum(len(one.optima) for one in searches),
-        expected_optima=expected if len(searches) == 1 and np.isfinite(expected) else None,
         evaluations=runner.evaluations,
         gradients=runner.gradients,
         gradient_method=runner.gradient_method,

@@ -95,13 +95,17 @@ class Runner:
         points = self.aim.values_at(units)
         store = self._store(layout_of(points), len(points))
         found = answers(
-            self.aim.question, points, executor=self.executor, progress=self._watch(stage),
+            self.aim.question, points, executor=self.executor, progress=self._watch("polishing"),
             store=store,
         )  # fmt: skip
         self.evaluations += len(points)
         return found
 
-    def polish(self, starts: list[Start], stage: str = "polishing") -> list[Polished | None]:
+    def ask(self, units: Floats) -> Floats:
+        """Outcomes (n, k) at points (n, p) of the unit box; NaN where undefined."""
+        return self.answers(units, "searching")[0][:, : len(self.aim.question.outcomes)]
+
+    def polish(self, starts: list[Start]) -> list[Polished | None]:
         """Polish starts in parallel; ends in their order."""
         if not starts:
             return []
@@ -118,7 +122,7 @@ class Runner:
             tasks,
             np.full((len(starts), width), np.nan),
             executor=self.executor,
-            progress=self._watch(stage),
+            progress=self._watch("polishing"),
             store=store,
         )
         ends = [_end(row, variables) for row in rows]

@@ -3,44 +3,52 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Sequence
-from typing import TYPE_CHECKING, NamedTuple
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, NamedTuple, Protocol
 
 import numpy as np
 
 from optics.study.optimize_local import FEASIBLE, Goal, Landscape, Polished, Start
+from optics.study.optimize_surrogate import Sample, refine
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     Floats = NDArray[np.float64]
 
-Run = Callable[[list[Start]], list[Polished | None]]
 # Optima nearer than this share of the bounds' ranges, along every variable, are one.
 SAME = 0.01
 #: Loss of the goal, as a share of its best value, up to which an optimum is worth telling.
 CLOSE = 0.01
 # Reach of a better point, in units of the critical distance: smaller means more starts.
 _REACH = 2.0
-# Weight of a missed limit against the spread of the goal when starts are ranked.
+# Weight of a missed limit against the goal, both in units of their spreads, in ranking starts.
 _PENALTY = 3.0
-_MOST_ROUNDS = 4
+# Starts worse than the best by more than this share of it are not polished.
+_WORTH = 0.05
 
 
-class Sample(NamedTuple):
-    """Points of the first stage whose outcomes are known."""
+class Worker(Protocol):
+    """Computes points and polishes them, in parallel if it can."""
 
-    units: Floats  # (n, p)
-    outcomes: Floats  # (n, k), finite
+    @property
+    def landscape(self) -> Landscape:
+        """What is searched."""
+
+    def ask(self, units: Floats) -> Floats:
+        """Outcomes (n, k) at points (n, p); NaN where undefined."""
+
+    def polish(self, starts: list[Start]) -> list[Polished | None]:
+        """Ends of starts, in their order; None where undefined."""
 
 
 class Searched(NamedTuple):
-    """What the second stage found."""
+    """What a search found."""
 
     optima: tuple[Polished, ...]  # different ones, the best first
     polished: tuple[Polished, ...]  # every end, in the order of the starts
     starts: int
-    expected: float  # number of optima that the search would find if it went on
+    sample: Sample  # with all points computed on the way
 
 
 def spread_points(variables: int, count: int, seed: int) -> Floats:
@@ -58,78 +66,64 @@ def spread_points(variables: int, count: int, seed: int) -> Floats:
 
 
 def usual_count(variables: int) -> int:
-    """Points of the first stage if not said: a power of two from 48 a variable on, at most 1024."""
-    return int(min(2 ** math.ceil(math.log2(48 * variables)), 1024))
+    """Points of the first stage if not said: 64 to 1024, twice as many for each variable."""
+    return int(min(max(16 * 2**variables, 64), 1024))
 
 
-def search(landscape: Landscape, goal: Goal, sample: Sample, run: Run) -> Searched:
-    """Polish from the most promising sample points until nothing new is to be expected.
-
-    Starts are those without a better point within the critical distance of multi-level
-    single-linkage, Rinnooy Kan and Timmer, Math. Program. 39, 57 (1987) (from memory). After each
-    round the number of optima to be expected is estimated from how many different ones were found,
-    Boender and Rinnooy Kan, Math. Program. 37, 59 (1987) (from memory); the search ends when that
-    is less than one more, or when a further round found none among those within 1 % of the best.
+def search(worker: Worker, goal: Goal, sample: Sample) -> Searched:
+    """Refine a sample by way of a stand-in, then polish what is left of the promising points.
 
     Parameters
     ----------
-    landscape : Landscape
+    worker : Worker
     goal : Goal
     sample : Sample
         At least one point.
-    run : callable
-        Polishes starts, in their order.
     """
-    queue = promising(sample, goal)
-    size = 4 + 2 * sample.units.shape[1]
-    ends: list[Polished] = []
-    optima: tuple[Polished, ...] = ()
-    started = 0
-    for _ in range(_MOST_ROUNDS):
-        chosen, queue = queue[:size], queue[size:]
-        if not chosen:
-            break
-        found = run([Start(landscape, goal, sample.units[place]) for place in chosen])
-        ends += [one for one in found if one is not None]
-        started += len(chosen)
-        before, optima = optima, different(ends)
-        if expected_optima(len(optima), started) < len(optima) + 1.0:
-            break
-        if before and len(close(before)) == len(close(optima)) and _equal(before[0], optima[0]):
-            break
-    return Searched(optima, tuple(ends), started, expected_optima(len(optima), started))
+    most = 4 + 2 * sample.units.shape[1]
+    # Points that crowd around optima must not bring the distance down.
+    distance = critical_distance(*sample.units.shape)
+
+    def starts(now: Sample, goal: Goal) -> list[int]:
+        return promising(now, goal, distance)[: 3 * most]
+
+    sample = refine(sample, [goal], starts, worker.ask, most)
+    places = starts(sample, goal)
+    rank = ranks(sample, goal)
+    # Every basin has a point close to its optimum by now; those far below the best are left, but
+    # for a few, since the stand-in may err.
+    reach = rank[places[0]] + _WORTH * (1.0 if goal.slackens else abs(rank[places[0]]))
+    worth = sum(rank[place] <= reach for place in places)
+    chosen = places[: min(max(worth, 1 + sample.units.shape[1] // 2), most)]
+    found = worker.polish([Start(worker.landscape, goal, sample.units[place]) for place in chosen])
+    ends = tuple(one for one in found if one is not None)
+    return Searched(different(ends), ends, len(chosen), sample)
 
 
-def promising(sample: Sample, goal: Goal) -> list[int]:
-    """Places of the points to start from, the best first."""
-    merit, violation = goal.merit(sample.outcomes), goal.violation(sample.outcomes)
-    spread = float(np.ptp(merit)) or 1.0
-    rank = merit / spread + _PENALTY * violation
-    order = np.argsort(rank, kind="stable")
-    count, variables = sample.units.shape
-    reach = critical_distance(count, variables)
+def ranks(sample: Sample, goal: Goal) -> Floats:
+    """Goal (n,) with a penalty on missed limits; less is better."""
+    return np.asarray(goal.merit(sample.outcomes) + _PENALTY * goal.violation(sample.outcomes))
+
+
+def promising(sample: Sample, goal: Goal, distance: float) -> list[int]:
+    """Places of the points to start from, the best first: those with no better one at a distance.
+
+    Multi-level single-linkage, Rinnooy Kan and Timmer, Math. Program. 39, 57 (1987) (from memory).
+    """
+    order = np.argsort(ranks(sample, goal), kind="stable")
     starts: list[int] = []
     for index, place in enumerate(order):
         better = sample.units[order[:index]]
         gaps = np.linalg.norm(better - sample.units[place], axis=1)
-        if not (gaps < reach).any():
+        if not (gaps < distance).any():
             starts.append(int(place))
-    # The best points that meet every limit may stand close to a better one that does not.
-    met = [int(place) for place in order if violation[place] <= FEASIBLE][:2]
-    return list(dict.fromkeys([*met, *starts]))
+    return starts
 
 
 def critical_distance(count: int, variables: int) -> float:
     """Distance in the unit box within which a better point makes a start needless."""
     volume = math.gamma(1.0 + 0.5 * variables) * _REACH * math.log(max(count, 2)) / max(count, 2)
     return float(volume ** (1.0 / variables) / math.sqrt(math.pi))
-
-
-def expected_optima(found: int, starts: int) -> float:
-    """Bayesian estimate of the number of optima from how many different ones were found."""
-    if starts <= found + 2:
-        return math.inf
-    return found * (starts - 1) / (starts - found - 2)
 
 
 def different(ends: Sequence[Polished]) -> tuple[Polished, ...]:

@@ -153,13 +153,11 @@ class Tried:
     samples, failed : int
         Points of the first stage, and how many of them are no device or undefined.
     starts : int
-        Points from which the gradients were followed.
+        Promising points from which the gradients were followed.
     settled : int
         How many of those ended at an optimum.
     optima : int
         Different ones that meet the constraints.
-    expected_optima : float or None
-        Estimate of how many there are; None with too few starts to tell, or for a front.
     evaluations, gradients : int
         Points computed in all, and derivatives of all outcomes beside them.
     gradient_method : str
@@ -171,7 +169,6 @@ class Tried:
     starts: int
     settled: int
     optima: int
-    expected_optima: float | None
     evaluations: int
     gradients: int
     gradient_method: str
