@@ -109,9 +109,9 @@ def _descend(document: MutableMapping[str, Any], keys: list[str]) -> Any:
 
 def _table_paths(place: Any) -> Iterator[tuple[MutableMapping[str, Any], str]]:
     """Every mapping and key in a case file that names a table."""
-    entries = place.items() if isinstance(place, Mapping) else enumerate(place)
+    entries = place.items() if isinstance(place, MutableMapping) else enumerate(place)
     for key, value in list(entries):
-        if isinstance(place, Mapping) and key in _TABLE_KEYS and isinstance(value, str):
+        if isinstance(place, MutableMapping) and key in _TABLE_KEYS and isinstance(value, str):
             yield place, str(key)
         elif isinstance(value, Mapping | list):
             yield from _table_paths(value)

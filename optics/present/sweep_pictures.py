@@ -30,7 +30,8 @@ if TYPE_CHECKING:
 # Lines differ in dashes as well as in color; colors of Okabe and Ito (from memory).
 _COLORS = ("#000000", "#D55E00", "#0072B2", "#009E73", "#CC79A7", "#E69F00", "#56B4E9")
 _DASHES = ("-", "--", "-.", ":", (0, (5, 1, 1, 1, 1, 1)), (0, (3, 3)), (0, (8, 2)))
-_SHARES = {
+#: Outcomes, by the last part of their name, that pictures show in percent.
+SHARES = {
     *LOOKS, "unbalanced", "dark_excitons", "nonradiative", "outcoupling_efficiency",
     "external_quantum_efficiency", "external_quantum_efficiency_bottom",
     "external_quantum_efficiency_top", "external_quantum_efficiency_matched",
@@ -76,7 +77,7 @@ def _label(found: xarray.Dataset, path: str) -> str:
 
 
 def _is_share(data: xarray.DataArray) -> bool:
-    return str(data.attrs["long_name"]).rpartition(".")[2] in _SHARES
+    return str(data.attrs["long_name"]).rpartition(".")[2] in SHARES
 
 
 def _scaled(data: xarray.DataArray) -> tuple[NDArray[np.float64], str]:

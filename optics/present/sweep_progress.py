@@ -6,6 +6,7 @@ import sys
 import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from typing import Protocol
 
 from optics.present.terminal import console
 
@@ -13,8 +14,15 @@ from optics.present.terminal import console
 _EVERY_S = 10.0
 
 
+class Show(Protocol):
+    """Shows how many parts of a stage are done, and of how many."""
+
+    def __call__(self, done: int, total: int, what: str = "points") -> None:
+        """Show it; another name begins another stage."""
+
+
 @contextmanager
-def sweep_progress() -> Iterator[Callable[[int, int], None]]:
+def sweep_progress() -> Iterator[Show]:
     """Yield a function to call with the number of points done and of all.
 
     A bar with the time left on a terminal, now and then a line elsewhere. The time left is
@@ -28,12 +36,15 @@ def sweep_progress() -> Iterator[Callable[[int, int], None]]:
     from rich.progress import TimeRemainingColumn as TimeLeft
 
     columns = (
-        TextColumn("points"), BarColumn(), MofNCompleteColumn(), TimeLeft(), TextColumn("left"),
+        TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(), TimeLeft(),
+        TextColumn("left"),
     )  # fmt: skip
     with Progress(*columns, console=out, transient=True) as progress:
         task = progress.add_task("points", total=None)
 
-        def show(done: int, total: int) -> None:
+        def show(done: int, total: int, what: str = "points") -> None:
+            if progress.tasks[0].description != what:
+                progress.reset(task, description=what)
             progress.update(task, completed=done, total=total)
 
         yield show
@@ -46,19 +57,22 @@ class _Lines:
         self._write = write
         self._began = self._said = time.monotonic()
         self._kept: int | None = None
+        self._what = "points"
 
-    def __call__(self, done: int, total: int) -> None:
+    def __call__(self, done: int, total: int, what: str = "points") -> None:
         now = time.monotonic()
+        if what != self._what:
+            self._what, self._kept, self._began = what, None, now
         if self._kept is None:
             self._kept = done
             if done:
-                self._write(f"{done} of {total} points are there from an earlier run")
+                self._write(f"{done} of {total} {what} are there from an earlier run")
         if now - self._said < _EVERY_S or done == total:
             return
         self._said = now
         fresh = done - self._kept
         left = (now - self._began) / fresh * (total - done) if fresh else None
-        self._write(f"{done} of {total} points" + ("" if left is None else f", {spell(left)} left"))
+        self._write(f"{done} of {total} {what}" + ("" if left is None else f", {spell(left)} left"))
 
 
 def spell(seconds: float) -> str:

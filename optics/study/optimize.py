@@ -132,14 +132,11 @@ def _first(runner: Runner, units: Floats) -> _First:
         units = np.concatenate([own[None], units])
     found, failed = runner.answers(units, "sampling")
     outcomes = found[:, : -len(TRUST)]
-    known = np.isfinite(outcomes).all(axis=1)
+    known = np.asarray(np.isfinite(outcomes).all(axis=1))
     if not known.any():
         raise CaseError(_undefined(aim, outcomes, failed))
-    failed |= {
-        place: "an outcome is undefined"
-        for place in np.flatnonzero(~known).tolist()
-        if place not in failed
-    }
+    for place in np.arange(len(known))[~known].tolist():
+        failed.setdefault(place, "an outcome is undefined")
     return _First(Sample(units[known], outcomes[known]), found, failed)
 
 
@@ -150,7 +147,7 @@ def _undefined(aim: Aim, outcomes: Floats, failed: dict[int, str]) -> list[Fault
         why = next(iter(failed.values()))
         found = f"bounds within which none of {len(outcomes)} points could be computed: {why}"
         return [Fault(label, "optimize.variables", found, "bounds with devices between them")]
-    never = ~np.isfinite(outcomes).any(axis=0)
+    never = np.asarray(~np.isfinite(outcomes).any(axis=0))
     keys = {one.place: f"optimize ({one.name})" for one in aim.objectives}
     keys |= {one.place: one.key for one in aim.limits if one.place not in keys}
     return [

@@ -11,6 +11,7 @@ import numpy as np
 
 from optics.study.evaluate import Found, answers, gather, layout_of, store_for
 from optics.study.executor import completed
+from optics.study.optimize_goals import meets
 from optics.study.optimize_landscape import DeviceLandscape, landscape_of
 from optics.study.optimize_local import Goal, Polished, Start, polish
 from optics.study.optimize_settle import Settled, settle
@@ -64,6 +65,8 @@ class Runner:
     progress : callable or None
     evaluations, gradients : int
         Points and derivatives so far, those kept from an earlier run included.
+    best : float (p + k,) or None
+        Values and outcomes of the best point so far that meets every limit, by the first objective.
     landscape : DeviceLandscape
         Outcomes over the unit box.
     gradient_method : str
@@ -76,6 +79,7 @@ class Runner:
     progress: Progress | None = None
     evaluations: int = 0
     gradients: int = 0
+    best: Floats | None = None
     landscape: DeviceLandscape = field(init=False)
     gradient_method: str = field(init=False)
     _stores: list[Store] = field(default_factory=list)
@@ -99,6 +103,7 @@ class Runner:
             store=store,
         )  # fmt: skip
         self.evaluations += len(points)
+        self._keep_best(units, found[0][:, : len(self.aim.question.outcomes)])
         return found
 
     def ask(self, units: Floats) -> Floats:
@@ -130,6 +135,7 @@ class Runner:
             if one is not None:
                 self.evaluations += one.values
                 self.gradients += one.slopes
+                self._keep_best(one.unit[None], one.outcomes[None])
         return ends
 
     def slopes(self, units: Floats, stage: str) -> Floats:
@@ -167,6 +173,15 @@ class Runner:
         """Remove what is kept on disk, when the result has been handed on."""
         for store in self._stores:
             store.discard()
+
+    def _keep_best(self, units: Floats, outcomes: Floats) -> None:
+        first = self.aim.objectives[0]
+        good = np.isfinite(outcomes).all(axis=1) & meets(self.aim, outcomes)
+        size = units.shape[1]
+        for unit, row in zip(units[good], outcomes[good], strict=True):
+            gain = first.sign * row[first.place]
+            if self.best is None or gain > first.sign * self.best[size + first.place]:
+                self.best = np.concatenate([self.aim.values_at(unit), row])
 
     def _watch(self, stage: str) -> Callable[[int, int], object] | None:
         told = self.progress
