@@ -48,8 +48,12 @@ def _scaled(name: str, values: Any) -> Any:
     return 100.0 * array if name.rpartition(".")[2] in SHARES else array
 
 
+def _unit(one: ObjectiveFound) -> str:
+    return "%" if one.name.rpartition(".")[2] in SHARES else one.units
+
+
 def _label(one: ObjectiveFound) -> str:
-    unit = "%" if one.name.rpartition(".")[2] in SHARES else one.units
+    unit = _unit(one)
     return one.name if unit == "1" else f"{one.name} ({unit})"
 
 
@@ -66,8 +70,9 @@ def _cuts(found: Optimum) -> Figure:
         axes.remove()
     for axes in grid[:, 0]:
         axes.set_ylabel(_label(objective))
+    unit = "" if _unit(objective) == "1" else f" {_unit(objective)}"
     said = (
-        f"Star: the best, {digits(float(_scaled(name, objective.best)))}. Line: one variable "
+        f"Star: the best, {digits(float(_scaled(name, objective.best)))}{unit}. Line: one variable "
         "moved, the others at the best; dashed where a constraint is missed. Band: less than "
         "1 % lost. Dots: points tried, hollow where a constraint is missed."
     )

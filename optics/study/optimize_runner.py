@@ -99,7 +99,7 @@ class Runner:
         points = self.aim.values_at(units)
         store = self._store(layout_of(points), len(points))
         found = answers(
-            self.aim.question, points, executor=self.executor, progress=self._watch("polishing"),
+            self.aim.question, points, executor=self.executor, progress=self._watch(stage),
             store=store,
         )  # fmt: skip
         self.evaluations += len(points)

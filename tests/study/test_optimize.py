@@ -1,0 +1,208 @@
+"""Optimizations of devices: never worse than a grid, constraints met, faults told."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+from optimize_devices import BOUNDS, optimized
+from sweep_devices import EQE, ETL, HTL
+
+import optics
+from optics.device.case import Case
+from optics.device.errors import CaseError
+from optics.study.optimize_runner import Runner
+
+CASES = Path(__file__).parents[2] / "cases"
+ONE = {HTL: {"min": 20, "max": 120}}
+GUIDED = "destinations.guided"
+
+
+def faults_of(device: Callable[[], Case]) -> list[str]:
+    with pytest.raises(CaseError) as caught:
+        optics.optimize(device())
+    return [str(fault) for fault in caught.value.faults]
+
+
+def grid_best(device: Case, step_nm: float, most_guided: float = 1.0) -> float:
+    """Best EQE of the films' grid, by a sweep."""
+    axes = {path: {"start": 20, "stop": 120, "step": step_nm} for path in BOUNDS}
+    document = device.document
+    document.pop("optimize")
+    document["sweep"] = {"axes": axes, "outcomes": [EQE, GUIDED]}
+    from devices import case
+
+    found = optics.sweep(case(document))
+    return float(found[EQE].where(found[GUIDED] <= most_guided).max())
+
+
+def test_no_grid_is_better_and_values_are_what_they_say() -> None:
+    device = optimized()
+    found = optics.optimize(device, seed=3)
+    assert found.seed == 3
+    assert found.best.outcomes[EQE] >= grid_best(device, 5.0)
+    again = optics.budget(device.replace_all(found.best.values))
+    assert again.external_quantum_efficiency == pytest.approx(found.best.outcomes[EQE], abs=1e-6)
+    assert all(round(value, 2) == value for value in found.best.values.values())
+    assert found.objectives[0].start == pytest.approx(
+        optics.budget(device).external_quantum_efficiency, abs=1e-6
+    )
+    assert found.tried.gradient_method == "exact"
+
+
+def test_a_constraint_binds_and_its_gain_is_real() -> None:
+    free = optics.optimize(optimized())
+    inside = optics.budget(optimized().replace_all(free.best.values)).destinations["guided"]
+    assert inside is not None
+    limit = 0.9 * inside
+    device = optimized(constraints={GUIDED: {"max": limit}})
+    held = optics.optimize(device)
+    (constraint,) = held.constraints
+    assert constraint.binds
+    assert constraint.value <= limit
+    assert held.best.outcomes[EQE] < free.best.outcomes[EQE]
+    assert held.best.outcomes[EQE] >= grid_best(device, 5.0, limit)
+    looser = optics.optimize(optimized(constraints={GUIDED: {"max": 1.01 * limit}}))
+    gained = looser.best.outcomes[EQE] - held.best.outcomes[EQE]
+    # To first order, so to within the curvature over a step of 1 %.
+    assert gained == pytest.approx(0.01 * limit * constraint.gain_per_unit, rel=0.2)
+
+
+def test_a_bound_that_holds_back_is_named() -> None:
+    wide = optics.optimize(optimized(ONE))
+    best = wide.variables[0].best
+    narrow = optics.optimize(optimized({HTL: {"min": 20, "max": best - 5.0}}))
+    (variable,) = narrow.variables
+    if variable.binds == "max":
+        assert variable.best == pytest.approx(best - 5.0, abs=0.02)
+        assert variable.gain_per_unit > 0.0
+    else:
+        assert narrow.best.outcomes[EQE] <= wide.best.outcomes[EQE]
+    assert wide.variables[0].binds is None
+
+
+def test_flat_range_loses_one_percent_at_its_ends() -> None:
+    device = optimized()
+    found = optics.optimize(device)
+    for one in found.variables:
+        for end, bound in ((one.flat_from, one.min), (one.flat_to, one.max)):
+            assert end is not None
+            if end == bound:
+                continue
+            moved = device.replace_all({**found.best.values, one.path: end})
+            lost = 1.0 - optics.budget(moved).external_quantum_efficiency / found.best.outcomes[EQE]
+            assert lost == pytest.approx(0.01, abs=3e-4)
+
+
+def test_linked_numbers_are_in_the_best_point() -> None:
+    found = optics.optimize(optimized(ONE, linked={ETL: HTL}))
+    assert found.best.values[ETL] == found.best.values[HTL]
+
+
+def test_what_has_no_derivative_is_polished_by_differences() -> None:
+    found = optics.optimize(optimized(ONE, constraints={"bottom.peak_nm_normal": {"min": 500}}))
+    assert found.tried.gradient_method.startswith("differences (bottom.peak_nm_normal")
+
+
+def test_no_point_of_a_front_betters_another() -> None:
+    found = optics.optimize(optimized(objectives=[{"maximize": EQE}, {"minimize": GUIDED}]))
+    assert len(found.front) > 3
+    pairs = [(-point.outcomes[EQE], point.outcomes[GUIDED]) for point in found.front]
+    for one in pairs:
+        for other in pairs:
+            assert one == other or not (other[0] <= one[0] and other[1] <= one[1])
+    assert found.best in found.front
+    alone = optics.optimize(optimized())
+    assert -pairs[0][0] == pytest.approx(alone.best.outcomes[EQE], rel=1e-4)
+
+
+def test_faults_are_told_all_at_once() -> None:
+    said = faults_of(
+        lambda: optimized(
+            maximize="external_quantum_eficiency", constraints={"x_normal": {"max": 1}}
+        )
+    )
+    assert len(said) == 2
+    assert "did you mean external_quantum_efficiency?" in said[0]
+    assert "bottom.x_normal, top.x_normal" in said[1]
+    assert "no such table" in faults_of(lambda: optics.read_case(CASES / "white-tandem.toml"))[0]
+    said = faults_of(
+        lambda: optimized({HTL: {"min": 90, "max": 40}, "layers.HTX": {"min": 1, "max": 2}})
+    )
+    assert any("expected above min = 90" in one for one in said)
+    assert any("layers.HT" in one and "did you mean" in one for one in said)
+    said = faults_of(lambda: optimized({"emitters.green.quantum_yield": {"min": 0.5, "max": 1.5}}))
+    assert said
+    assert 'optimize.variables."emitters.green.quantum_yield".max' in said[0]
+    assert "which is varied" in faults_of(lambda: optimized(maximize=HTL))[0]
+
+
+def test_limits_out_of_reach_are_named_with_the_nearest_point() -> None:
+    (said,) = faults_of(lambda: optimized(constraints={EQE: {"min": 0.9}, GUIDED: {"max": 0.99}}))
+    assert f'optimize.constraints."{EQE}".min: found 0.9; at best 0.' in said
+    assert f"{HTL} = " in said
+    assert f"{ETL} = " in said
+
+
+def test_limits_that_exclude_each_other_are_named_together() -> None:
+    found = optics.optimize(optimized(ONE))
+    other = optics.optimize(optimized(ONE, minimize=EQE))
+    low, high = other.best.outcomes[EQE], found.best.outcomes[EQE]
+    limits = {EQE: {"min": low + 0.6 * (high - low), "max": low + 0.4 * (high - low)}}
+    with pytest.raises(CaseError):  # a smallest above a largest value, at the door
+        optimized(ONE, constraints=limits)
+
+
+def test_undefined_objectives_are_told() -> None:
+    (said,) = faults_of(lambda: optimized(ONE, maximize="bottom.luminous_efficacy_lm_W"))
+    assert "undefined at every point" in said
+
+
+def test_interrupted_it_continues_with_the_same_result(tmp_path: Path) -> None:
+    device = optimized()
+    whole = optics.optimize(device)
+
+    def stop(stage: str, done: int, _total: int) -> None:
+        if stage == "polishing" and done:
+            raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        optics.optimize(device, progress=stop, keep_in=tmp_path)
+    assert list(tmp_path.glob("optimize-*.part"))
+    calls: list[tuple[str, int]] = []
+    found = optics.optimize(
+        device, progress=lambda stage, done, total: calls.append((stage, done)), keep_in=tmp_path
+    )
+    assert calls[0] == ("sampling", found.tried.samples)
+    assert found.to_dict() == whole.to_dict()
+    assert not list(tmp_path.glob("optimize-*.part"))
+
+
+def test_the_best_so_far_meets_all_limits() -> None:
+    from concurrent.futures import ThreadPoolExecutor
+
+    from optics.study.optimize import run_optimize
+    from optics.study.optimize_plan import plan_optimize
+
+    with ThreadPoolExecutor(2) as pool:
+        runner = Runner(plan_optimize(optimized(constraints={GUIDED: {"max": 0.3}}), 1e-6), pool)
+        found = run_optimize(runner, 0)
+    assert runner.best is not None
+    assert runner.best[2] == pytest.approx(found.best.outcomes[EQE], abs=1e-4)
+
+
+@pytest.mark.parametrize("wrong", [{"seed": -1}, {"samples": 0}, {"tolerance": 1.0}])
+def test_arguments_out_of_range_are_refused(wrong: dict[str, float]) -> None:
+    with pytest.raises(ValueError, match=next(iter(wrong))):
+        optics.optimize(optimized(), **wrong)
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("stem", ["optimize-two-antinodes", "optimize-color"])
+def test_twenty_seeds_find_the_same_best(stem: str) -> None:
+    """Same: the objective to 1e-4 of itself, which is far below the gap to the next optimum."""
+    device = optics.read_case(CASES / f"{stem}.toml").replace("wavelength.step_nm", 20.0)
+    bests = [optics.optimize(device, seed=seed).best.outcomes[EQE] for seed in range(20)]
+    top = max(bests)
+    assert sum(best >= top * (1.0 - 1e-4) for best in bests) >= 19
