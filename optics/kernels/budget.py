@@ -17,12 +17,9 @@ from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import mark_cache_warm
 from optics.kernels.exits import COLUMNS, TOTAL
 from optics.kernels.geometry import (
-    backward_modes_possible,
     grazing_splits,
-    has_plasmon,
-    largest_index,
     light_lines,
-    narrow_plasmons_possible,
+    media_facts,
     nearest_absorber,
 )
 from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
@@ -105,10 +102,11 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     """
     w = problem.source.eps_o.size
     rows = np.arange(w)
-    far = 2.0 * largest_index(problem)
+    media = media_facts(problem)
+    far = 2.0 * media.largest_index
     lines = light_lines(problem)
     trapped = lines[:, -1]
-    plasmon = has_plasmon(problem)
+    plasmon = media.plasmon
     start = np.where(plasmon, np.maximum(trapped, np.sqrt(problem.source.eps_e)), trapped)
     batches = np.zeros(w, dtype=np.int64)
     per_panel = _PANEL_SHARE * tolerance
@@ -132,7 +130,7 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     error = np.maximum(miss_total, miss_free + miss_guided + miss_beyond) + miss_near
     gap = _disagreement(parts, scale)
     careful = ~(error <= tolerance) | ~(gap <= _SUSPICIOUS * tolerance)
-    suspects = backward_modes_possible(problem) | narrow_plasmons_possible(problem)
+    suspects = media.backward | media.narrow
     again = SecondLook(problem, suspects & ~careful, scale, per_panel, batches)
     again.on_axis(trapped, start, guided)
     again.on_axis(start, far, beyond)

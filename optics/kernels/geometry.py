@@ -1,5 +1,7 @@
 """What a stack says about its integrals before any is done: light lines, plasmons, dangers."""
 
+from typing import NamedTuple
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -35,33 +37,42 @@ def _media(problem: Problem) -> tuple[NDArray[np.complex128], NDArray[np.bool_]]
     return eps, eps.real < 0.0
 
 
+class MediaFacts(NamedTuple):
+    """What the permittivities of films and outer media say, by wavelength (w,)."""
+
+    largest_index: Floats  # largest Re n, ordinary or extraordinary
+    plasmon: NDArray[np.bool_]  # whether some film or absorbing surroundings is a metal
+    backward: NDArray[np.bool_]  # whether a metal is so near resonance that modes may run backward
+    narrow: NDArray[np.bool_]  # whether a metal absorbs so little that nodes may miss its plasmon
+
+
+def media_facts(problem: Problem) -> MediaFacts:
+    """Look at all media of a problem."""
+    eps, negative = _media(problem)
+    weakest = np.where(negative, eps.real, -np.inf).max(axis=1)
+    largest = np.where(negative, 0.0, eps.real).max(axis=1)
+    hardly = negative & (eps.imag < _HARDLY_ABSORBING * np.abs(eps.real))
+    return MediaFacts(
+        np.sqrt(eps).real.max(axis=1),
+        np.asarray(negative.any(axis=1)),
+        np.asarray(weakest > -_RESONANT * largest),
+        np.asarray(hardly.any(axis=1)),
+    )
+
+
 def largest_index(problem: Problem) -> Floats:
     """Largest Re n, ordinary or extraordinary, among films and outer media (w,)."""
-    eps, _ = _media(problem)
-    largest: Floats = np.sqrt(eps).real.max(axis=1)
-    return largest
+    return media_facts(problem).largest_index
 
 
 def has_plasmon(problem: Problem) -> NDArray[np.bool_]:
     """Tell where some film or absorbing surroundings has a negative permittivity (w,)."""
-    _, negative = _media(problem)
-    return np.asarray(negative.any(axis=1))
+    return media_facts(problem).plasmon
 
 
 def backward_modes_possible(problem: Problem) -> NDArray[np.bool_]:
     """Tell where a metal is so close to its plasma resonance that modes may run backward (w,)."""
-    eps, negative = _media(problem)
-    weakest = np.where(negative, eps.real, -np.inf).max(axis=1)
-    largest = np.where(negative, 0.0, eps.real).max(axis=1)
-    near: NDArray[np.bool_] = weakest > -_RESONANT * largest
-    return near
-
-
-def narrow_plasmons_possible(problem: Problem) -> NDArray[np.bool_]:
-    """Tell where a metal absorbs so little that nodes may step over its plasmons (w,)."""
-    eps, negative = _media(problem)
-    hardly = negative & (eps.imag < _HARDLY_ABSORBING * np.abs(eps.real))
-    return np.asarray(hardly.any(axis=1))
+    return media_facts(problem).backward
 
 
 def outer_light_line(problem: Problem) -> Floats:

@@ -75,9 +75,24 @@ def waves(
     kz, y, e : complex (2, m, n), output
         Normal wavevector over k0, admittance, exp(i kz kd); leading axis s, p.
     """
+    waves_from(0, u, eps_o, eps_e, kd, kz, y, e)
+
+
+@inline
+def waves_from(
+    first: int,
+    u: Complexes,
+    eps_o: Complexes,
+    eps_e: Complexes,
+    kd: Floats,
+    kz: Complexes,
+    y: Complexes,
+    e: Complexes,
+) -> None:
+    """As `waves`, from medium number first on."""
     n = u.size
     last = eps_o.size - 1
-    for j in range(last + 1):
+    for j in range(first, last + 1):
         eo = eps_o[j]
         inv = reciprocal(eo)
         isotropic = eps_e[j] == eo

@@ -54,6 +54,8 @@ class SecondLook:
         self._compare([arc, Tasks.on(rows, TAIL, _REACH * far, np.inf, length)], power)
 
     def _compare(self, paths: Iterable[Tasks], power: Floats) -> None:
+        if self._rows.size == 0:
+            return
         difference, miss = power.copy(), np.zeros(self.gap.size)
         seen = np.zeros(self.gap.size, dtype=np.bool_)
         for tasks in paths:

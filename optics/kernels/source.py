@@ -40,6 +40,7 @@ from optics.kernels.halfstack import (
     reciprocal,
     reflection,
     waves,
+    waves_from,
 )
 from optics.kernels.problem import Half, Scratch, Sides, Source, Work
 from optics.kernels.rules import NODES
@@ -85,6 +86,16 @@ def fill_phases(pol: int, source: Source, work: Work, scratch: Scratch) -> None:
 
 
 @inline
+def waves_below(down: Half, work_up: Work, work_down: Work, u: Complexes) -> None:
+    """Waves of the lower half; those of the emitter film are the upper half's own."""
+    for pol in range(2):
+        for i in range(NODES):
+            work_down.kz[pol, 0, i] = work_up.kz[pol, 0, i]
+            work_down.y[pol, 0, i] = work_up.y[pol, 0, i]
+    waves_from(1, u, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
+
+
+@inline
 def dissipated(
     source: Source,
     up: Half,
@@ -110,7 +121,7 @@ def dissipated(
         Re(integrand * du); column channel * positions + position.
     """
     waves(u, up.eps_o, up.eps_e, up.kd, work_up.kz, work_up.y, work_up.e)
-    waves(u, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
+    waves_below(down, work_up, work_down, u)
     reflection(work_up.y, work_up.e, work_up.r)
     reflection(work_down.y, work_down.e, work_down.r)
     positions = source.kz_positions.size
@@ -145,6 +156,12 @@ def dissipated(
 def solve_half(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> None:
     """Fill the work space of one half stack at real nodes."""
     waves(u, half.eps_o, half.eps_e, half.kd, work.kz, work.y, work.e)
+    solve_waves(half, work, u, lit_from_outside)
+
+
+@inline
+def solve_waves(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> None:
+    """As `solve_half`, with the waves at hand."""
     outward(work.y, work.e, work.r_far, work.f, work.t)
     film_coefficients(u, half.eps_o, half.eps_e, half.kd, work.kz, work.e, work.alpha, work.beta)
     absorbed_alone(work.e, work.r_far, work.f, work.alpha, work.beta, work.a_in)
@@ -303,7 +320,8 @@ def radiated(
     from_bottom = any_return and sides.kind[0] == PLANAR
     from_top = any_return and sides.kind[1] == PLANAR
     solve_half(up, work_up, u, from_top)
-    solve_half(down, work_down, u, from_bottom)
+    waves_below(down, work_up, work_down, u)
+    solve_waves(down, work_down, u, from_bottom)
     shares, faces = scratch.shares, scratch.faces
     for side in range(2):
         for i in range(NODES):

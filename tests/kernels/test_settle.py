@@ -31,7 +31,8 @@ from stacks import (
 
 from optics.kernels import budget as engine
 from optics.kernels.budget import light_budget
-from optics.kernels.geometry import backward_modes_possible
+from optics.kernels.geometry import MediaFacts, backward_modes_possible, media_facts
+from optics.kernels.problem import Problem
 
 PROMISE = 1e-6
 
@@ -126,10 +127,10 @@ def test_the_fast_way_alone_would_be_wrong(monkeypatch: pytest.MonkeyPatch) -> N
     assert careful.careful[0]
     assert misses(careful, right) <= PROMISE
 
-    def no_danger(problem: object) -> np.ndarray:
-        return np.zeros(1, dtype=bool)
+    def no_danger(problem: Problem) -> MediaFacts:
+        return media_facts(problem)._replace(backward=np.zeros(1, dtype=bool))
 
-    monkeypatch.setattr(engine, "backward_modes_possible", no_danger)
+    monkeypatch.setattr(engine, "media_facts", no_danger)
     fast = solved(stack)
     assert not fast.careful[0]
     assert misses(fast, right) > 1.0
