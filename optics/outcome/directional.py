@@ -150,7 +150,8 @@ def radiance_over_bulk(
     """
     problem = problem_of(case, source.emitter, source.wavelength_nm, source.position_nm)
     rows = np.arange(source.wavelength_nm.size)
-    parts = np.array_split(rows, -(-rows.size * angle_deg.size // _TOGETHER))
+    # A wavelength with more angles than go together is a part of its own.
+    parts = np.array_split(rows, min(rows.size, -(-rows.size * angle_deg.size // _TOGETHER)))
 
     def some(part: Rows) -> Floats:
         return _some_wavelengths(case, source, problem, side, angle_deg, part)

@@ -132,6 +132,16 @@ def test_all_bad_angles_at_once() -> None:
         angular(case(pixel()), [0.0, 91.0, 95.0])
 
 
+def test_one_wavelength_takes_any_number_of_angles() -> None:
+    """Angles go together in limited numbers; a narrow resonance needs thousands of them."""
+    device = case(narrow(pixel(), 545.0))
+    (source,) = sources(device, optics.budget(device).lit)
+    angles = np.linspace(0.0, 90.0, 2501)
+    found = radiance_over_bulk(device, source, 0, angles)
+    assert found.shape == (1, 2501, 2)
+    assert np.array_equal(found[:, ::500], radiance_over_bulk(device, source, 0, angles[::500]))
+
+
 def test_result_is_plain_frozen_and_labelled() -> None:
     seen = angular(case(driven(pixel())), [0.0, 30.0])
     result = seen.to_dict()
