@@ -11,6 +11,7 @@ from optics.kernels.arrays import Complexes, Floats, StackPowers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import (
     ABSORBING,
+    OPEN,
     PLANAR,
     bounces,
     exit_line,
@@ -62,6 +63,17 @@ def lit_films(
 
 
 @inline
+def beyond_exits(kind: int) -> int:
+    """Column of light that arrives beyond every exit light line.
+
+    Without a slab there is none but for rounding on the light line itself, where it just leaves.
+    """
+    if kind == OPEN:
+        return LEAVES
+    return SURROUNDINGS if kind == ABSORBING else TRAPPED
+
+
+@inline
 def outside(
     sides: Sides, pol: int, u: float, p_b: float, p_t: float, stack: StackPowers, row: Floats
 ) -> tuple[float, float]:
@@ -73,8 +85,8 @@ def outside(
     n_b, n_t = sides.n_outer[0], sides.n_outer[1]
     line = max(exit_line(kind_b, n_b, sides.n_out[0]), exit_line(kind_t, n_t, sides.n_out[1]))
     if u >= line:
-        row[SURROUNDINGS if kind_b == ABSORBING else TRAPPED] += p_b
-        row[(SURROUNDINGS if kind_t == ABSORBING else TRAPPED) + 1] += p_t
+        row[beyond_exits(kind_b)] += p_b
+        row[beyond_exits(kind_t) + 1] += p_t
         return 0.0, 0.0
     rho_b = face_reflectance(pol, u, n_b, sides.n_out[0]) if kind_b == PLANAR and u < n_b else 1.0
     rho_t = face_reflectance(pol, u, n_t, sides.n_out[1]) if kind_t == PLANAR and u < n_t else 1.0

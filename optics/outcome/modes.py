@@ -86,7 +86,8 @@ def _check_wavelength(case: Case, wavelength_nm: float | None) -> None:
     if wavelength_nm is None or wavelength_nm in every:
         return
     nearest = every[np.abs(every - wavelength_nm).argmin()]
-    expected = f"a wavelength of the case, {every[0]:g} to {every[-1]:g} nm"
+    span = f"{every[0]:g}" if len(every) == 1 else f"{every[0]:g} to {every[-1]:g}"
+    expected = f"a wavelength of the case, {span} nm"
     raise CaseError(
         [Fault(case.label, "wavelength", f"{wavelength_nm:g} nm", expected, f"{nearest:g}")]
     )

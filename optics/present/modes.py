@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -99,10 +100,17 @@ def _mode_table(lines: Sequence[Mapping[str, Any]]) -> Table:
             _span(line["wavelength_nm"]).removesuffix(" nm"),
             f"{line['wavelength_nm'][at]:g}",
             f"{index.real:.4f}{index.imag:+.4f}i",
-            "lossless" if length is None else f"{length:.3g}",
+            "lossless" if length is None else _three_digits(length),
             _mostly_in(line["confinement"], at),
         )
     return table
+
+
+def _three_digits(length: float) -> str:
+    """Three significant digits, zeros too; whole numbers and powers of ten for long ways."""
+    if length >= 1e6:
+        return f"{length:.2e}"
+    return f"{length:.{max(0, 2 - math.floor(math.log10(length)))}f}"
 
 
 def _strongest(line: Mapping[str, Any]) -> int:

@@ -133,6 +133,9 @@ def _draw_panel(
     _name(axes, names, left, gap)
     _name(axes, [(medium.name, right, _end(medium)) for medium in media], right, gap)
     plain(axes)
+    # Threads to the names pass behind the numbers of the axis.
+    for label in axes.get_yticklabels():
+        label.set_bbox({"facecolor": "white", "edgecolor": "none", "pad": 1.0})
 
 
 def _thin(medium: Line) -> dict[str, Any]:
@@ -211,6 +214,7 @@ def _name(axes: Axes, labels: list[tuple[str, float, float]], side: float, gap: 
         axes.annotate(
             name, xy=(start, y), xytext=(text_at, moved), annotation_clip=False,
             fontsize=SMALL_SIZE, color=INK, ha="right" if at_left else "left", va="center",
+            zorder=0.9,
             arrowprops={"arrowstyle": "-", "color": FAINT, "linewidth": 0.6, "shrinkA": 1,
                         "shrinkB": 0, "relpos": (1.0 if at_left else 0.0, 0.5)},
         )  # fmt: skip

@@ -110,6 +110,15 @@ def test_faint_modes_are_hidden_until_asked_for(
     assert len(full.splitlines()) == len(short.splitlines())  # a row instead of the remark
 
 
+def test_ways_have_three_digits(found: Modes, capsys: pytest.CaptureFixture[str]) -> None:
+    result = found.to_dict()
+    line = result["emitters"][0]["modes"][0]
+    ways = {7.9961: "8.00", 0.17: "0.170", 12.02: "12.0", 1234.5: "1234", 2.5e7: "2.50e+07"}
+    for length, expected in ways.items():
+        line["attenuation_length_um"] = [length] * len(line["wavelength_nm"])
+        assert f" {expected}   " in printed(result, capsys)
+
+
 def test_one_wavelength(path: Path) -> None:
     result = run(path, "--wavelength", 550)
     assert result.exit_code == 0
@@ -179,6 +188,15 @@ def test_every_mode_and_every_light_line_is_named(path: Path, found: Modes) -> N
             assert any(label.split("  ")[0] == line.name for label in labels)
     for medium in ("substrate", "TCO", "EML", "surroundings"):
         assert any(medium in label for label in labels)
+
+
+def test_names_threads_do_not_strike_numbers_out(path: Path, found: Modes) -> None:
+    figure = pictures_modes.draw("dispersion", optics.read_case(path), found)
+    axes = figure.axes[-1]
+    numbers = axes.get_yticklabels()
+    assert numbers
+    assert all(one.get_bbox_patch().get_facecolor() == (1.0, 1.0, 1.0, 1.0) for one in numbers)
+    assert all(text.get_zorder() < axes.yaxis.get_zorder() for text in axes.texts)
 
 
 def test_modes_far_out_have_an_axis_of_their_own() -> None:
