@@ -24,7 +24,9 @@ from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.elementary import exp_i
 from optics.kernels.halfstack import P, sqrt_upper
+from optics.kernels.paths import panel_miss
 from optics.kernels.problem import Source
+from optics.kernels.rules import DEGREES
 from optics.kernels.source import channel, dissipated_factor
 
 # Parts of the dissipated power, in the order of panels' `part`.
@@ -41,8 +43,7 @@ class Nodes(NamedTuple):
     u: Complexes  # (n,)
     du: Complexes  # (n,)
     weight: Floats  # (n,) of the panel's rule; 0 for nodes that only fill up a batch
-    last: Floats  # (n,) rows that give the last two Legendre coefficients
-    second: Floats  # (n,)
+    degrees: Floats  # (4, n) rows of the Legendre coefficients that tell a panel's error
     first: Integers  # (k + 1,) first node of every panel, and the end
     part: Integers  # (k,) part of the dissipated power that a panel belongs to
 
@@ -82,48 +83,28 @@ def resonance(x: complex, b: Floats, low: int, into: Floats, n: int) -> None:
 
 
 @inline
-def add_moments(
-    mean: Floats, flat: float, rule: tuple[float, float, float], rows: Floats, n: int, into: Floats
-) -> None:
-    """Add a node's value to the moments (3, BLOCK) that tell a panel's error.
-
-    The value is flat plus mean (4,) times rows n to n + 3.
-    """
-    weight, last, second = rule
-    m0, m1, m2, m3 = mean[0], mean[1], mean[2], mean[3]
-    for p in range(BLOCK):
-        v = flat + m0 * rows[n, p] + m1 * rows[n + 1, p]
-        v += m2 * rows[n + 2, p] + m3 * rows[n + 3, p]
-        into[0, p] += weight * abs(v)
-        into[1, p] += last * v
-        into[2, p] += second * v
-
-
-@inline
 def add_misses(moments: Floats, misses: Floats) -> None:
-    """Add a panel's estimated error, as of `paths.panel_error`, to misses (l,), l <= BLOCK."""
+    """Add a panel's estimated error to misses (l,), l <= BLOCK, from moments (DEGREES, BLOCK)."""
     for p in range(misses.size):
-        size = 0.5 * moments[0, p] + 1e-300
-        unresolved = max(abs(moments[1, p]), abs(moments[2, p]))
-        misses[p] += 2.0 * unresolved * np.sqrt(min(1.0, unresolved / size))
+        misses[p] += panel_miss(moments[0, p], moments[1, p], moments[2, p], moments[3, p])
 
 
 @inline
 def add_product(
-    left: Floats,
-    right: Floats,
-    flat: float,
-    product: Floats,
-    target: Floats,
-    begin: int,
-    length: int,
+    product: Floats, flat: Floats, target: Floats, moments: Floats, begin: int, length: int
 ) -> None:
-    """Add left (z, k) times right (k, BLOCK), plus flat, to target (z, p), a block of it."""
-    np.dot(left, right, product)
-    for q in range(target.shape[0]):
+    """Add a block's product (z + DEGREES, BLOCK), plus flat, to target (z, p) and to moments.
+
+    Factors of the values stand first, then those of the moments (DEGREES, BLOCK).
+    """
+    z = target.shape[0]
+    for q in range(z):
         row = target[q][begin : begin + length]
         for p in range(length):
-            row[p] += flat + product[q, p]
+            row[p] += flat[q] + product[q, p]
+    for d in range(DEGREES):
+        for p in range(BLOCK):
+            moments[d, p] += flat[z + d] + product[z + d, p]
 
 
 @inline
@@ -169,7 +150,6 @@ def _weigh_waves(
     ways: Complexes,
     zone: Floats,
     flat: Floats,
-    mean: Floats,
     weights: Floats,
 ) -> None:
     """Fill what multiplies the waves of a channel, for one upper half.
@@ -178,32 +158,39 @@ def _weigh_waves(
     ----------
     a : float (n, 2, 2)
         Its reflections.
-    flat : float (nodes,), output
-        Value without any waves.
-    mean : float (nodes, 4), output
-        Factors of the rows that `resonance` fills, averaged over positions.
-    weights : float (z, 4 * nodes), output
-        The same at every position, times the weight of the node.
+    flat : float (z + DEGREES,), output
+        The panel's sums without any waves.
+    weights : float (z + DEGREES, 4 * nodes), output
+        Factors of the rows that `resonance` fills: at every position, times the weight of the
+        node; then averaged over positions, times its rows of degrees.
     """
-    first = nodes.first[k]
+    first, z = nodes.first[k], zone.size
     pol, sign = channel(c)
-    for i in range(flat.size):
+    flat[:] = 0.0
+    for i in range(ways.shape[0]):
         n = first + i
         kz = emitter_kz(source, pol, complex(nodes.u[n]))
         factor = dissipated_factor(c, source, complex(nodes.u[n]), kz) * nodes.du[n]
         above = sign * factor * complex(a[n, pol, 0], a[n, pol, 1])
         to_top, to_bottom = ways[i, pol, 0], ways[i, pol, 1]
-        flat[i] = -factor.real if nodes.part[k] != NEAR_PART else -2.0 * factor.real
-        x, y = (
-            2.0 * factor + above * (zone * to_top).sum(),
-            sign * factor * (zone * to_bottom).sum(),
-        )
-        mean[i, 0], mean[i, 1], mean[i, 2], mean[i, 3] = x.real, -x.imag, y.real, -y.imag
-        w = nodes.weight[n]
-        for q in range(weights.shape[0]):
-            x, y = w * (2.0 * factor + above * to_top[q]), w * sign * factor * to_bottom[q]
-            weights[q, 4 * i], weights[q, 4 * i + 1] = x.real, -x.imag
-            weights[q, 4 * i + 2], weights[q, 4 * i + 3] = y.real, -y.imag
+        level = -factor.real if nodes.part[k] != NEAR_PART else -2.0 * factor.real
+        x, y = 0j, 0j
+        for q in range(z):
+            w = nodes.weight[n]
+            at_x, at_y = 2.0 * factor + above * to_top[q], sign * factor * to_bottom[q]
+            x, y = x + zone[q] * at_x, y + zone[q] * at_y
+            _weigh(w, at_x, at_y, weights[q], 4 * i)
+            flat[q] += w * level
+        for d in range(DEGREES):
+            _weigh(nodes.degrees[d, n], x, y, weights[z + d], 4 * i)
+            flat[z + d] += nodes.degrees[d, n] * level
+
+
+@inline
+def _weigh(w: float, x: complex, y: complex, into: Floats, n: int) -> None:
+    """Fill four factors, from n on, whose products with `resonance`'s rows are real parts."""
+    into[n], into[n + 1] = w * x.real, -w * x.imag
+    into[n + 2], into[n + 3] = w * y.real, -w * y.imag
 
 
 @kernel
@@ -235,16 +222,14 @@ def combine_dissipated(
     misses : float (PARTS, 3, p), output
         Estimated errors, added to.
     """
-    z = source.kz_positions.size
-    product, moments = np.zeros((z, BLOCK)), np.zeros((3, 3, BLOCK))
+    rows = source.kz_positions.size + DEGREES
+    product, moments = np.zeros((rows, BLOCK)), np.zeros((DEGREES, BLOCK))
     for k in range(nodes.part.size):
         part, begin, first = nodes.part[k], 0, nodes.first[k]
         count = nodes.first[k + 1] - first
         ways, through = ways_of(source, nodes, k), film_waves(source, nodes, k)[1]
         waves = np.zeros((2, 4 * count, BLOCK))
-        flat, mean, weights = (
-            np.zeros((3, count)), np.zeros((3, count, 4)), np.zeros((3, z, 4 * count)),
-        )  # fmt: skip
+        flat, weights = np.zeros((3, rows)), np.zeros((3, rows, 4 * count))
         known = -1
         for block in range(blocks.up.size):
             iu, low, length = blocks.up[block], blocks.first[block], blocks.length[block]
@@ -252,24 +237,19 @@ def combine_dissipated(
                 known = iu
                 for c in range(3):
                     _weigh_waves(
-                        source, nodes, k, c, r_up[:, :, :, iu], ways, zone, flat[c], mean[c],
-                        weights[c],
-                    )  # fmt: skip
-            moments[:, :, :] = 0.0
+                        source, nodes, k, c, r_up[:, :, :, iu], ways, zone, flat[c], weights[c]
+                    )
             for i in range(count):
                 n = first + i
-                rule = (nodes.weight[n], nodes.last[n], nodes.second[n])
-                if rule[0] == 0.0:
+                if nodes.weight[n] == 0.0:
                     continue
                 for pol in range(2):
                     turn = through[i, pol] * through[i, pol]
                     x = complex(r_up[n, pol, 0, iu], r_up[n, pol, 1, iu]) * turn
                     resonance(x, r_down[n, pol], low, waves[pol], 4 * i)
-                    for c in range(0 if pol == P else 2, 2 if pol == P else 3):
-                        add_moments(mean[c, i], flat[c, i], rule, waves[pol], 4 * i, moments[c])
             for c in range(3):
-                level = (nodes.weight[first : first + count] * flat[c]).sum()
-                pol = channel(c)[0]
-                add_product(weights[c], waves[pol], level, product, value[part, c], begin, length)
-                add_misses(moments[c], misses[part, c, begin : begin + length])
+                moments[:, :] = 0.0
+                np.dot(weights[c], waves[channel(c)[0]], product)
+                add_product(product, flat[c], value[part, c], moments, begin, length)
+                add_misses(moments, misses[part, c, begin : begin + length])
             begin += length

@@ -14,7 +14,6 @@ from optics.kernels.combine import (
     Blocks,
     Nodes,
     add_misses,
-    add_moments,
     add_product,
     emitter_kz,
     film_waves,
@@ -24,8 +23,9 @@ from optics.kernels.combine_outside import Outsides, first_arrivals, outsides
 from optics.kernels.combine_tables import KNOWN_OF_HALF, R_IM, R_RE
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
-from optics.kernels.halfstack import P, abs2
+from optics.kernels.halfstack import abs2
 from optics.kernels.problem import Sides, Source
+from optics.kernels.rules import DEGREES
 from optics.kernels.source import channel, outgoing_factor
 
 
@@ -47,7 +47,6 @@ def _weigh_sent(
     a: Floats,
     ways: Complexes,
     zone: Floats,
-    mean: Floats,
     weights: Floats,
 ) -> None:
     """Fill what multiplies the light of a channel, for one upper half.
@@ -62,21 +61,20 @@ def _weigh_sent(
         From its table.
     ways : complex (nodes, 2, 2, z)
         From `ways_of`.
-    mean : float (nodes, 4), output
-        Factors of the rows that `_fill_light` fills, averaged over positions.
-    weights : float (z, 4 * nodes), output
-        The same at every position, times the weight of the node.
+    weights : float (z + DEGREES, 4 * nodes), output
+        Factors of the rows that `_fill_light` fills: at every position, times the weight of the
+        node; then averaged over positions, times its rows of degrees.
     """
-    first = nodes.first[k]
+    first, z = nodes.first[k], zone.size
     pol, sign = channel(c)
-    for i in range(mean.shape[0]):
+    for i in range(ways.shape[0]):
         n = first + i
         u, w = complex(nodes.u[n]), nodes.weight[n]
         kz = emitter_kz(source, pol, u)
         carried = outgoing_factor(c, source, u.real, kz) * nodes.du[n].real
         above = sign * complex(a[n, pol, R_RE], a[n, pol, R_IM])
-        mean[i, :] = 0.0
-        for q in range(zone.size):
+        weights[z:, 4 * i : 4 * i + 4] = 0.0
+        for q in range(z):
             to_top, to_bottom = ways[i, pol, 0, q], ways[i, pol, 1, q]
             down = math.sqrt(abs2(to_bottom)) * abs2(1.0 + above * to_top)
             if oscillates(kz):
@@ -84,8 +82,10 @@ def _weigh_sent(
             else:
                 sent = (down, math.sqrt(abs2(to_top)), sign, math.sqrt(abs2(to_bottom)))
             for j in range(4):
-                mean[i, j] += zone[q] * carried * sent[j]
                 weights[q, 4 * i + j] = w * carried * sent[j]
+                for d in range(DEGREES):
+                    share = zone[q] * nodes.degrees[d, n]
+                    weights[z + d, 4 * i + j] += share * carried * sent[j]
 
 
 @inline
@@ -141,12 +141,10 @@ def _light_of_block(
     up: Floats,
     down: Floats,
     low: int,
-    mean: Floats,
     work: _Work,
     light: Floats,
-    moments: Floats,
 ) -> None:
-    """Fill the light of a block of devices at a panel's nodes, and its moments.
+    """Fill the light of a block of devices at a panel's nodes.
 
     Parameters
     ----------
@@ -158,14 +156,11 @@ def _light_of_block(
         Lower halves; the block's begin at low.
     light : float (COLUMNS, 2, 4 * nodes, BLOCK), output
         By destination and polarization.
-    moments : float (2, COLUMNS, 3, BLOCK), output
-        Added to.
     """
     half, stack, sent, shares = work
     for i in range(outside.returns.size):
         n = nodes.first[k] + i
-        rule = (nodes.weight[n], nodes.last[n], nodes.second[n])
-        if rule[0] == 0.0:
+        if nodes.weight[n] == 0.0:
             continue
         for pol in range(2):
             real, phase = oscillates(waves[0][i, pol]), waves[1][i, pol]
@@ -178,8 +173,6 @@ def _light_of_block(
                     continue
                 lit = light[column, pol]
                 _fill_light(sent, shares[0, column], shares[1, column], lit, 4 * i)
-                for c in range(0 if pol == P else 2, 2 if pol == P else 3):
-                    add_moments(mean[c, i], 0.0, rule, lit, 4 * i, moments[min(c, 1), column])
 
 
 @kernel
@@ -214,12 +207,13 @@ def combine_radiated(
     misses : float (2, COLUMNS, p), output
         Estimated errors, added to.
     """
-    z = source.kz_positions.size
+    rows = source.kz_positions.size + DEGREES
     work = _Work(
         np.zeros((KNOWN_OF_HALF, BLOCK)), np.zeros((5, BLOCK)), np.zeros((4, BLOCK)),
         np.zeros((2, COLUMNS, BLOCK)),
     )  # fmt: skip
-    product, moments = np.zeros((z, BLOCK)), np.zeros((2, COLUMNS, 3, BLOCK))
+    product, moments = np.zeros((rows, BLOCK)), np.zeros((2, DEGREES, BLOCK))
+    nothing = np.zeros(rows)
     for k in range(nodes.part.size):
         begin, first = 0, nodes.first[k]
         count = nodes.first[k + 1] - first
@@ -227,27 +221,25 @@ def combine_radiated(
         waves = film_waves(source, nodes, k)
         some = outside.goes.sum(axis=0) > 0
         light = np.zeros((COLUMNS, 2, 4 * count, BLOCK))
-        mean, weights = np.zeros((3, count, 4)), np.zeros((3, z, 4 * count))
+        weights = np.zeros((3, rows, 4 * count))
         known = -1
         for block in range(blocks.up.size):
             iu, low, length = blocks.up[block], blocks.first[block], blocks.length[block]
             if iu != known:
                 known = iu
                 for c in range(3):
-                    _weigh_sent(
-                        source, nodes, k, c, up[:, :, :, iu], ways, zone, mean[c], weights[c]
-                    )
-            moments[:, :, :, :] = 0.0
+                    _weigh_sent(source, nodes, k, c, up[:, :, :, iu], ways, zone, weights[c])
             _light_of_block(
-                sides, nodes, k, outside, waves, up[:, :, :, iu], down, low, mean, work, light,
-                moments,
-            )  # fmt: skip
+                sides, nodes, k, outside, waves, up[:, :, :, iu], down, low, work, light
+            )
             for column in range(1, COLUMNS):
                 if not some[column]:
                     continue
+                moments[:, :, :] = 0.0
                 for c in range(3):
-                    pol, target = channel(c)[0], value[min(c, 1), column]
-                    add_product(weights[c], light[column, pol], 0.0, product, target, begin, length)
+                    o = min(c, 1)
+                    np.dot(weights[c], light[column, channel(c)[0]], product)
+                    add_product(product, nothing, value[o, column], moments[o], begin, length)
                 for o in range(2):
-                    add_misses(moments[o, column], misses[o, column, begin : begin + length])
+                    add_misses(moments[o], misses[o, column, begin : begin + length])
             begin += length

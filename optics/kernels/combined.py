@@ -39,7 +39,7 @@ from optics.kernels.exits import COLUMNS, PLANAR
 from optics.kernels.geometry import has_plasmon, largest_index, light_lines, nearest_absorber
 from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
 from optics.kernels.problem import Half, Problem, Sides, Source
-from optics.kernels.rules import LAST, NODES, SECOND, STAGES, WEIGHT
+from optics.kernels.rules import DEGREE_ROWS, DEGREES, NODES, STAGES, WEIGHT
 from optics.kernels.tasks import Tasks, along_arcs
 
 #: What is known of every device: the outcomes of `budget`, then F.
@@ -243,18 +243,18 @@ def _nodes(panels: _Panels, *, free: bool) -> Nodes:
             nodes_of(path, a, b, nodes, slope)
             u.append(nodes[:count])
             du.append(slope[:count])
-            rule.append([table[int(stage), :count] for table in (WEIGHT, LAST, SECOND)])
+            rule.append([table[int(stage), :count] for table in (WEIGHT, *DEGREE_ROWS)])
             part.append(TOTAL_PART if free else place)
             first.append(first[-1] + count)
     if not part:
         nothing = np.zeros(0)
         empty = nothing.astype(np.complex128)
-        return Nodes(empty, empty, nothing, nothing, nothing, np.array(first), np.array(part, int))
-    weight, last, second = np.concatenate(rule, axis=1)
+        degrees = np.zeros((DEGREES, 0))
+        return Nodes(empty, empty, nothing, degrees, np.array(first), np.array(part, int))
+    rows = np.concatenate(rule, axis=1)
     return Nodes(
-        np.concatenate(u), np.concatenate(du), weight, last, second,
-        np.array(first), np.array(part),
-    )  # fmt: skip
+        np.concatenate(u), np.concatenate(du), rows[0], rows[1:], np.array(first), np.array(part)
+    )
 
 
 def _reflections(half: Half, kd: Floats, nodes: Nodes) -> Floats:

@@ -11,7 +11,7 @@ import numpy as np
 from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline
 from optics.kernels.elementary import turn
-from optics.kernels.rules import EARLIER, EARLIER_SECOND, LAST, NODES, SECOND, WEIGHT, X
+from optics.kernels.rules import DEGREE_ROWS, NODES, WEIGHT, X
 
 # Kinds of path, with their parameters. Square roots of the integrand lie at light lines.
 REAL = 0  # lo, hi, split: real axis, smooth where both ends are light lines
@@ -112,6 +112,21 @@ def probed_columns(groups: int, positions: int) -> Integers:
 
 
 @inline
+def panel_miss(last: float, second: float, earlier: float, earlier_second: float) -> float:
+    """Estimate of a panel's error from Legendre coefficients of the interpolant.
+
+    The last ones tell how far the integrand is resolved, and their ratio to those `rules.BEFORE`
+    degrees earlier how fast it converges. Both rules are exact for about 16 degrees more than
+    they have nodes, so that with geometric convergence they err by the fourth power of that
+    ratio; the square used here is the cautious choice. Where something narrow keeps the
+    coefficients up, the last ones themselves are the error.
+    """
+    unresolved = max(abs(last), abs(second))
+    falling = min(1.0, unresolved / (max(abs(earlier), abs(earlier_second)) + 1e-300))
+    return 2.0 * unresolved * falling * falling
+
+
+@inline
 def panel_error(
     values: Floats,
     stage: int,
@@ -120,13 +135,7 @@ def panel_error(
     moments: Floats,
     misses: Floats,
 ) -> float:
-    """Estimate the error of a panel's sums.
-
-    The last Legendre coefficients of the interpolant tell how far the integrand is resolved, and
-    their ratio to those BEFORE degrees earlier how fast it converges. Both rules are exact for
-    about 16 degrees more than they have nodes, so that with geometric convergence they err by
-    the fourth power of that ratio; the square used here is the cautious choice. Where something
-    narrow keeps the coefficients up, the last ones themselves are the error.
+    """Estimate the error of a panel's sums by `panel_miss`.
 
     Parameters
     ----------
@@ -149,8 +158,8 @@ def panel_error(
     """
     moments[:, :] = 0.0
     for i in range((stage + 1) * NODES):
-        first, second = LAST[stage, i], SECOND[stage, i]
-        third, fourth = EARLIER[stage, i], EARLIER_SECOND[stage, i]
+        first, second = DEGREE_ROWS[0, stage, i], DEGREE_ROWS[1, stage, i]
+        third, fourth = DEGREE_ROWS[2, stage, i], DEGREE_ROWS[3, stage, i]
         for k in range(probed.size):
             v = values[i, probed[k]]
             moments[0, k] += first * v
@@ -160,9 +169,6 @@ def panel_error(
     worst = 0.0
     for k in range(probed.size):
         column = probed[k]
-        unresolved = max(abs(moments[0, k]), abs(moments[1, k]))
-        earlier = max(abs(moments[2, k]), abs(moments[3, k])) + 1e-300
-        falling = min(1.0, unresolved / earlier)
-        misses[column] = 2.0 * unresolved * falling**2
+        misses[column] = panel_miss(moments[0, k], moments[1, k], moments[2, k], moments[3, k])
         worst = max(worst, misses[column] / scale[column])
     return worst

@@ -51,4 +51,5 @@ def _nested() -> tuple[Floats, Floats]:
 X, _ROWS = _nested()
 #: Nodes X on -1..1 (STAGES * NODES,); by stage (STAGES, STAGES * NODES): weights and the rows of
 #: Legendre coefficients of the interpolant, the last two and two that come BEFORE these.
-WEIGHT, LAST, SECOND, EARLIER, EARLIER_SECOND = _ROWS
+WEIGHT, DEGREE_ROWS = _ROWS[0], _ROWS[1:]
+DEGREES = len(DEGREE_ROWS)
