@@ -172,11 +172,10 @@ def _first_panels(family: Family, probes: Integers, tolerance: float) -> Iterato
     trapped, plasmon = lines[:, -1], has_plasmon(problem)
     start = np.where(plasmon, np.maximum(trapped, np.sqrt(problem.source.eps_e)), trapped)
     length = np.maximum(far, 1.0 / nearest_absorber(problem))
-    kind = np.where(start > trapped, ARC, ARC_FROM_LINE)
     every = {
         TOTAL_PART: along_arcs(rows, ARC, np.zeros(w), far),
         GUIDED_PART: along_arcs(rows, ARC_FROM_LINE, trapped, start, _FLATNESS).nonempty(),
-        BEYOND_PART: along_arcs(rows, kind, start, far, _FLATNESS),
+        BEYOND_PART: along_arcs(rows, ARC_FROM_LINE, start, far, _FLATNESS),
         NEAR_PART: Tasks.on(rows, TAIL, far, np.inf, length),
         _FREE: Tasks.between(rows, lines),
     }
