@@ -126,6 +126,8 @@ def _draw_field(axes: Axes, emitter: EmitterModes, line: ModeLine) -> None:
     axes.set_ylim(0.0, 1.15)
     index = line.effective_index[strongest]
     kind = line.kind[strongest]
+    if line.direction[strongest] == "backward":
+        kind += ", backward"
     words = line.name if line.leaky else f"{line.name} ({kind}), {percent(line.overall_share)} %"
     axes.set_title(
         f"{words}, {wavelength_nm:g} nm, "

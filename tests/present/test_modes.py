@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -216,6 +217,20 @@ def test_negative_shares_are_shown_with_their_sign(
     result = found.to_dict()
     result["emitters"][0]["modes"][0]["share"] = -0.0723
     assert "-7.23" in printed(result, capsys)
+
+
+def test_fields_say_which_mode_runs_backward(path: Path, found: Modes) -> None:
+    (emitter,) = found.emitters
+    line = emitter.line("TE0")
+    turned = replace(line, direction=("backward",) * line.wavelength_nm.size)
+    lines = tuple(turned if one is line else one for one in emitter.lines)
+    changed = replace(found, emitters=(replace(emitter, lines=lines),))
+    figure = pictures_modes.draw("fields", optics.read_case(path), changed)
+    titles = [axes.get_title(loc="left") for axes in figure.axes]
+    assert [title for title in titles if "backward" in title] == [
+        title for title in titles if title.startswith("TE0 (guided, backward)")
+    ]
+    assert any("backward" in title for title in titles)
 
 
 def test_an_unknown_picture_is_refused(path: Path, found: Modes) -> None:
