@@ -61,6 +61,8 @@ _FLATNESS = 0.7
 _SUSPICIOUS = 0.1
 _ANY = 1e300  # an accuracy that the first batch of nodes meets
 _PANEL_SHARE = 0.05  # of the wanted accuracy, allowed to one panel
+# Of that, allowed to one panel of the careful way: thick films have it add up a hundred intervals.
+_CAREFUL_SHARE = 0.1
 
 
 class Parts(NamedTuple):
@@ -186,7 +188,7 @@ def _settle(
     parts: Parts,
 ) -> float:
     """Replace one wavelength's parts by those of the careful way; return its error estimate."""
-    careful = settle.Careful(problem, row, scale[row], per_panel)
+    careful = settle.Careful(problem, row, scale[row], _CAREFUL_SHARE * per_panel)
     free, error = careful.free(lines)
     parts.free[row] = free
     for values, lo, hi in (
