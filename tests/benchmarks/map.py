@@ -71,8 +71,8 @@ def section(plan: MapPlan) -> list[str]:
             f"{straight / wall:,.0f} times, {_verdict(straight >= AIM_FASTER * wall)}; core for "
             f"core {straight / cpu:,.0f} times. Than the spared one: {spared / wall:,.0f} times, "
             f"core for core {spared / cpu:,.0f}. Both (one thread, a single dipole position) were "
-            f"timed at {plan.sampled} points and as many wavelengths and scaled to {straight:,.0f} s and "
-            f"{spared:,.0f} s for all.",
+            f"timed at {plan.sampled} points and as many wavelengths and scaled to "
+            f"{straight:,.0f} s and {spared:,.0f} s for all.",
             f"- Memory below {AIM_GIB:.0f} GiB: a map of {plan.large} x {plan.large} points at one "
             f"wavelength peaks at {peak:.2f} GiB, everything loaded included, "
             f"{_verdict(peak <= AIM_GIB)}.",
