@@ -62,19 +62,19 @@ def budget(
 
     device = optics.read_case(case)
 
-    from optics.kernels.compiled import cache_is_warm, mark_cache_warm
+    from optics.kernels.compiled import cache_is_warm
     from optics.present.cautions import cautions
     from optics.present.sensitivity import frame_of, tree_of, with_sensitivity
-    from optics.present.terminal import compiling_notice
+    from optics.present.terminal import COMPILING, COMPILING_RATES, compiling_notice
 
     differentiates = sensitive or picture == pictures.SENSITIVITY
     is_warm = cache_is_warm() and (not differentiates or cache_is_warm("derivatives"))
     found = None
-    with compiling_notice(needed=not is_warm):
+    message = COMPILING_RATES if differentiates else COMPILING
+    with compiling_notice(needed=not is_warm, message=message):
         outcome = optics.budget(device, tolerance=tolerance)
         if differentiates:
             found = optics.sensitivity(device, tolerance=tolerance)
-            mark_cache_warm("derivatives")
     told = found if sensitive else None
     result = with_sensitivity(outcome, told)
     writers: dict[str, Writer] = {

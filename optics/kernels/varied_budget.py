@@ -21,6 +21,7 @@ from optics.kernels.budget import (
     by_orientation,
     light_budget,
 )
+from optics.kernels.compiled import mark_cache_warm
 from optics.kernels.exits import TOTAL
 from optics.kernels.geometry import has_plasmon, largest_index, light_lines, nearest_absorber
 from optics.kernels.paths import ARC, ARC_FROM_LINE, REAL, REAL_FROM_ZERO, TAIL
@@ -113,6 +114,7 @@ def light_budget_with_derivatives(
     error = np.maximum(error, gap)
     error[_hides_something(problem, budget, ranges, tolerance)] = np.inf
     shares, dissipation = _collect(problem, total, free, guided, beyond, near)
+    mark_cache_warm("derivatives")
     return budget, Derivatives(
         shares,
         dissipation,

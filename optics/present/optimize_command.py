@@ -75,7 +75,7 @@ def run(
     aim = plan_optimize(case, tolerance)
     if pick is not None and len(aim.objectives) == 1:
         raise click.UsageError("--pick chooses from a Pareto front, but there is one objective")
-    say_compiling(aim.question)
+    say_compiling(aim.question, derivatives=True)
     runner, found = _search(aim, seed, samples, cluster)
     _write(case, found, outputs, _picked(case, found, pick))
     if as_object:

@@ -89,14 +89,16 @@ def check_shown(question: Question, shown: Sequence[str]) -> None:
         raise CaseError(faults)
 
 
-def say_compiling(question: Question) -> None:
-    """Announce the wait where kernels are not compiled yet."""
+def say_compiling(question: Question, *, derivatives: bool = False) -> None:
+    """Announce the wait where kernels, or those of derivatives, are not compiled yet."""
     from optics.kernels.angles import angles_are_compiled
     from optics.kernels.compiled import cache_is_warm
-    from optics.present.terminal import COMPILING
+    from optics.present.terminal import COMPILING, COMPILING_RATES
 
     by_angle = any(outcome.needs_angular for outcome in question.outcomes)
-    if not cache_is_warm() or (by_angle and not angles_are_compiled()):
+    if derivatives and not cache_is_warm("derivatives"):
+        print(COMPILING_RATES, file=sys.stderr)
+    elif not cache_is_warm() or (by_angle and not angles_are_compiled()):
         print(COMPILING, file=sys.stderr)
 
 

@@ -12,6 +12,9 @@ from rich.console import Console, RenderableType
 # Without a terminal there is no width to ask for.
 PLAIN_WIDTH = 100
 COMPILING = "Compiling the kernels (first use only, about half a minute) ..."
+COMPILING_RATES = (
+    "Compiling the kernels and their derivatives (first use only, about two minutes) ..."
+)
 
 
 def console(stream: TextIO | None = None, *, plain_width: int = PLAIN_WIDTH) -> Console:
@@ -33,25 +36,27 @@ def show(out: Console, view: RenderableType) -> None:
 
 
 @contextmanager
-def compiling_notice(*, needed: bool) -> Iterator[None]:
+def compiling_notice(*, needed: bool, message: str = COMPILING) -> Iterator[None]:
     """Say on standard error that kernels are being compiled, with the time that passes.
 
     Parameters
     ----------
     needed : bool
         False when compiled kernels lie in the cache; then nothing is said.
+    message : str
+        What is said.
     """
     if not needed:
         yield
         return
     out = console(sys.stderr)
     if not out.is_terminal:
-        out.print(COMPILING)
+        out.print(message)
         yield
         return
     from rich.progress import Progress, SpinnerColumn, TextColumn, TimeElapsedColumn
 
     columns = (SpinnerColumn(), TextColumn("{task.description}"), TimeElapsedColumn())
     with Progress(*columns, console=out, transient=True) as progress:
-        progress.add_task(COMPILING, total=None)
+        progress.add_task(message, total=None)
         yield

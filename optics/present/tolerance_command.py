@@ -75,7 +75,7 @@ def run(
 
     plan = plan_tolerance(case, tolerance, samples, seed)
     check_shown(plan.question, shown)
-    say_compiling(plan.question)
+    say_compiling(plan.question, derivatives=True)
     drawn = draw(plan.spreads, plan.groups, plan.samples, plan.seed)
     points = points_of(plan, drawn)
     store = store_for(plan, points, progress_folder())
