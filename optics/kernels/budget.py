@@ -22,7 +22,7 @@ from optics.kernels.geometry import (
     media_facts,
     nearest_absorber,
 )
-from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
+from optics.kernels.paths import ARC, ARC_BETWEEN_LINES, ARC_FROM_LINE, TAIL
 from optics.kernels.problem import Problem
 from optics.kernels.second_look import SecondLook
 from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_destination
@@ -158,7 +158,7 @@ def _scale_and_near(
     """
     w, z = problem.source.kz_positions.shape
     absolute = np.ones((w, 2, z))
-    arc = along_arcs(tail.rows, ARC_FROM_LINE, np.zeros(w), far)
+    arc = along_arcs(tail.rows, ARC_BETWEEN_LINES, np.zeros(w), far)
     coarse, _ = dissipated_power(problem, arc, absolute, _ANY, batches)
     near, miss = dissipated_power(problem, tail, absolute, _ANY, batches)
     scale = np.maximum(np.abs(by_orientation(coarse + near)), _SMALLEST_SCALE)

@@ -32,7 +32,7 @@ def first_split(kind: float, split: float) -> float:
     # Long paths, which one panel hardly ever resolves.
     if kind == REAL_FROM_ZERO:
         return max(split, 0.5)
-    return 0.5 if kind == ARC else 0.0
+    return 0.5 if kind in (ARC, ARC_FROM_LINE) else 0.0
 
 
 @inline
