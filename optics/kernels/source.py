@@ -45,6 +45,8 @@ from optics.kernels.halfstack import (
 from optics.kernels.problem import Half, Scratch, Sides, Source, Work
 from optics.kernels.rules import NODES
 
+_FADED = 15.0  # Im kz d of the emitter film up to which its phase factors may be divided
+
 
 @inline
 def channel(c: int) -> tuple[int, float]:
@@ -81,6 +83,12 @@ def fill_phases(pol: int, source: Source, work: Work, scratch: Scratch) -> None:
         kz = work.kz[pol, 0, i]
         for q in range(source.kz_positions.size):
             scratch.to_bottom[i, q] = exp_i(kz * source.kz_positions[q])
+        if kz.imag * source.kd < _FADED:
+            # Both ways together lead through the film: a quotient costs less than a wave.
+            through = exp_i(kz * source.kd)
+            for q in range(source.kz_positions.size):
+                scratch.to_top[i, q] = through * reciprocal(scratch.to_bottom[i, q])
+            continue
         for q in range(source.kz_positions.size):
             scratch.to_top[i, q] = exp_i(kz * (source.kd - source.kz_positions[q]))
 

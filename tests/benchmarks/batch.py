@@ -93,6 +93,11 @@ def _radiated(n, own, sides, halves, works, scratch, u, du, values):  # type: ig
 
 
 @_compiled
+def _probed(groups, positions):  # type: ignore[no-untyped-def]
+    return paths.probed_columns(groups, positions)
+
+
+@_compiled
 def _error(n, values, scale, probed, moments, misses):  # type: ignore[no-untyped-def]
     for _ in range(n):
         values[0, 0] += _NUDGE
@@ -150,8 +155,15 @@ def batch(problem: Problem, w: int, calls: int = 300, repeats: int = 25) -> Batc
 
     def error(values: Any) -> tuple[Any, ...]:
         columns = values.shape[1]
-        probed = np.arange(columns)
-        return _error, values, np.ones(columns), probed, np.zeros((4, columns)), np.zeros(columns)
+        probed = _probed(columns // z, z)
+        return (
+            _error,
+            values,
+            np.ones(columns),
+            probed,
+            np.zeros((4, probed.size)),
+            np.zeros(columns),
+        )
 
     arc = _us(
         {
