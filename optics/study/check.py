@@ -15,7 +15,7 @@ from optics.outcome.light import problem_of
 from optics.study.check_averages import average_rows
 from optics.study.check_directions import direction_rows
 from optics.study.check_fields import far_field_rows, outside_rows
-from optics.study.check_powers import QUANTITIES, powers
+from optics.study.check_powers import DESTINATIONS, QUANTITIES, powers
 from optics.study.check_rows import KINDS, Place, Row, compared, not_checked
 from optics.study.check_stack import layers_of
 
@@ -28,12 +28,19 @@ if TYPE_CHECKING:
 
     from optics.device.case import Case
     from optics.device.emitter import Emitter
+    from optics.device.stack import Slab
 
 __all__ = ["DEFAULT_ANGLES_DEG", "SCHEMA", "Check", "Row", "check"]
 
 SCHEMA = "outcouple.check/1"
 DEFAULT_ANGLES_DEG = (0.0, 20.0, 40.0, 60.0, 80.0)
 _ORIENTATIONS = ("vertical", "horizontal")
+# Quantities that only the engine's own result holds.
+_BESIDE = {
+    "near_field": engine.NEAR_FIELD,
+    "matched_bottom": engine.MATCHED_BOTTOM,
+    "matched_top": engine.MATCHED_TOP,
+}
 _QUADRATURE = "adaptive quadrature on the real axis"
 
 
@@ -185,6 +192,11 @@ def _wavelengths(data: xarray.Dataset, wanted_nm: Sequence[float] | None) -> lis
     return sorted({int(np.flatnonzero(grid == at)[0]) for at in wanted_nm if np.any(grid == at)})
 
 
+def _slabs(case: Case) -> dict[str, Slab | None]:
+    """Slab that stands where light of a matched exit would leave."""
+    return {"matched_bottom": case.stack.substrate, "matched_top": case.stack.cover}
+
+
 def _point_rows(
     case: Case, emitter: Emitter, data: xarray.Dataset, angles_deg: Sequence[float]
 ) -> Iterator[Row]:
@@ -199,14 +211,17 @@ def _point_rows(
     yield from far_field_rows(layers, problem, position_nm.tolist(), angles_deg, place)
     yield from outside_rows(layers, problem, angles_deg, place)
     found = powers(layers, position_nm.tolist())
-    near = engine.light_budget(problem, DEFAULT_TOLERANCE).shares[0, :, :, engine.NEAR_FIELD]
+    shares = engine.light_budget(problem, DEFAULT_TOLERANCE).shares[0]
+    absent = [name for name, slab in _slabs(case).items() if slab is None]
     for index, quantity in enumerate(QUANTITIES):
+        if quantity in absent:
+            continue
         if found.failure or found.error > DEFAULT_TOLERANCE:
             reason = found.failure or f"the quadrature only reached {found.error:.0e}"
             yield not_checked("power", quantity, _QUADRATURE, place, reason)
             continue
-        if quantity == "near_field":
-            ours = near
+        if quantity in _BESIDE:
+            ours = shares[:, :, _BESIDE[quantity]]
         else:
             name = "F" if quantity == "dissipated" else quantity
             ours = data[name].isel(position=chosen).transpose("position", ...).to_numpy()
@@ -239,7 +254,7 @@ def _energy_rows(emitter: Emitter, data: xarray.Dataset) -> Iterator[Row]:
     """Sum of the destinations against the dissipated power: the worst place at each wavelength."""
     total = data["F"].transpose("wavelength_nm", "position", "orientation").to_numpy()
     summed = np.zeros_like(total)
-    for quantity in QUANTITIES[1:-1]:
+    for quantity in DESTINATIONS:
         summed += data[quantity].transpose("wavelength_nm", "position", "orientation").to_numpy()
     gap = np.abs(summed / total - 1.0)
     gap[np.isnan(gap)] = np.inf

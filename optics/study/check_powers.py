@@ -29,7 +29,8 @@ if TYPE_CHECKING:
     Floats = NDArray[np.float64]
     Integrand = Callable[[Floats], Floats]
 
-#: Quantities of `Powers.budget`; `near_field` is a part of the others.
+#: Quantities of `Powers.budget`; `near_field` is a part of the others, and a matched one is what
+#: would leave through a slab's exit if that alone were index-matched.
 QUANTITIES = (
     "dissipated",
     "air_bottom",
@@ -40,9 +41,15 @@ QUANTITIES = (
     "surface_plasmon",
     "absorbed",
     "near_field",
+    "matched_bottom",
+    "matched_top",
 )
+#: Those that add up to the first.
+DESTINATIONS = QUANTITIES[1:8]
 _ALL, _AIR, _SLAB = 0, (1, 2), (3, 4)
 _GUIDED, _PLASMON, _ABSORBED, _NEAR = 5, 6, 7, 8
+_MATCHED = (9, 10)
+_STUCK = 1e-280  # light that a slab's faces and films never let go of
 _ABSOLUTE, _RELATIVE = 3e-9, 3e-9
 _MOST_SUBDIVISIONS = 1000
 _DEEP = 8.0  # resonances are looked for up to this multiple of the start of the near field
@@ -174,7 +181,7 @@ def _per_wavevector(layers: Layers, z: Floats, u: Array, du: Array, line: float)
         phase = 1j * layers.k0 * kz[:, None]
         to_bottom = np.exp(phase * z)
         to_top = np.exp(phase * (own.thickness_nm - z))
-        after = np.zeros((4, 2, u.size))
+        after = np.zeros((6, 2, u.size))
         if not trapped.all():
             after = _destinations(layers, u.real, pol)
         for orientation in (0, 1) if pol == "p" else (1,):
@@ -209,9 +216,9 @@ def _per_wavevector(layers: Layers, z: Floats, u: Array, du: Array, line: float)
             )
             sent = np.where(trapped[None, :, None], 0.0, sent)
             known = np.einsum("dsn,snz->dnz", after, sent)
-            for place, part in zip((*_AIR, *_SLAB), known, strict=True):
+            for place, part in zip((*_AIR, *_SLAB, *_MATCHED), known, strict=True):
                 values[:, place, orientation] += part
-            rest = np.where(trapped[:, None], 0.0, lost) - known.sum(axis=0)
+            rest = np.where(trapped[:, None], 0.0, lost) - known[:4].sum(axis=0)
             values[:, _ABSORBED, orientation] += rest
     return values
 
@@ -226,8 +233,9 @@ def _destinations(layers: Layers, u: Floats, pol: str) -> Floats:
 
     Returns
     -------
-    float (4, 2, n)
-        air_bottom, air_top, substrate, cover by side of arrival.
+    float (6, 2, n)
+        air_bottom, air_top, substrate, cover, and what would leave through the bottom's, the
+        top's slab were its exit matched, by side of arrival.
     """
     lines = [o.exit_line for o in layers.outside]
     once, face = np.zeros((2, u.size)), np.ones((2, u.size))
@@ -242,22 +250,35 @@ def _destinations(layers: Layers, u: Floats, pol: str) -> Floats:
     slabbed = np.array([o.kind == "planar" for o in layers.outside])[:, None]
     back = np.where(slabbed, once**2 * face, 0.0)
     reflect, through = _from_outside(layers, u, pol)
-    # Fluxes I into the slabs: I_b = first + R_b g_b I_b + T g_t I_t, and the same for the top.
-    system = np.zeros((u.size, 2, 2))
-    system[:, 0, 0] = 1.0 - reflect[0] * back[0]
-    system[:, 1, 1] = 1.0 - reflect[1] * back[1]
-    system[:, 0, 1], system[:, 1, 0] = -through * back[1], -through * back[0]
     leaves = once * (1.0 - face)
     leaves[[o.kind == "absorbing" for o in layers.outside]] = 0.0
     free = u < max(lines)
-    system[~free] = np.eye(2)
-    flux = np.linalg.inv(system)  # (n, into side, first arrival)
-    shares = np.zeros((4, 2, u.size))
-    for side in (0, 1):
+    flux = _fluxes(reflect, through, np.where(free, back, 0.0))
+    shares = np.zeros((6, 2, u.size))
+    for side, o in enumerate(layers.outside):
         shares[side] = np.where(free, flux[:, side, :].T * leaves[side], 0.0)
-        if layers.outside[side].kind != "absorbing":
+        if o.kind != "absorbing":
             shares[2 + side, side] = np.where(free, 0.0, 1.0)
+        if o.kind in ("planar", "matched"):
+            other_back = back.copy()
+            other_back[side] = 0.0
+            arriving = _fluxes(reflect, through, other_back)[:, side, :]
+            shares[4 + side] = arriving.T * once[side]
     return shares
+
+
+def _fluxes(reflect: Floats, through: Floats, back: Floats) -> Floats:
+    """Flux into each side's slab by side of first arrival (n, 2, 2), all bounces included.
+
+    I_b = first + R_b g_b I_b + T g_t I_t, and the same for the top, with g what a slab returns.
+    """
+    system = np.zeros((through.size, 2, 2))
+    system[:, 0, 0] = 1.0 - reflect[0] * back[0]
+    system[:, 1, 1] = 1.0 - reflect[1] * back[1]
+    system[:, 0, 1], system[:, 1, 0] = -through * back[1], -through * back[0]
+    stuck = np.abs(np.linalg.det(system)) < _STUCK
+    system[stuck] = np.eye(2)
+    return np.asarray(np.linalg.inv(system), dtype=np.float64)
 
 
 def _from_outside(layers: Layers, u: Floats, pol: str) -> tuple[Floats, Floats]:

@@ -69,7 +69,8 @@ FILM = (
     "film_coefficients",
     "real(*given)\ngiven[6][:, 1, :] = 0.0\ngiven[7][:, 1, :] = 0.0",
 )
-FACE = ("exits", "face_reflectance", "return 0.999 * real(*given)")
+FACE = ("exits", "face_reflectances", "s, p = real(*given)\nreturn 0.999 * s, 0.999 * p")
+PASS = ("exits", "once_through", "return (1.0 - 1e-5) * real(*given)")
 LINE = ("geometry", "outer_light_line", "return real(*given) - 0.002")
 BRANCH = ("halfstack", "sqrt_upper", "root = real(*given)\nreturn root * (1.0 + 1e-6)")
 
@@ -132,6 +133,12 @@ def test_a_wrong_slab_face_shows_in_what_leaves() -> None:
     found = failures(FACE)
     assert ("power", "air_bottom", None) in found
     assert "far field" not in kinds(found)
+
+
+def test_a_slab_that_swallows_too_much_shows_in_what_a_matched_exit_would_give() -> None:
+    found = failures(PASS)
+    assert ("power", "matched_bottom", None) in found
+    assert ("power", "matched_top", None) not in found
 
 
 def test_a_shifted_light_line_shows_in_what_is_trapped() -> None:
