@@ -50,7 +50,7 @@ def test_an_ordinary_device_passes_in_every_kind() -> None:
     assert found.summary() == [
         {**entry, "failed": 0, "not_checked": 0} for entry in found.summary()
     ]
-    # 2 sides, 3 channels, 3 angles; 2 sides, s and p, 3 angles, 3 numbers; 9 powers, 2 dipoles
+    # 2 sides, 3 channels, 3 angles; 2 sides, s and p, 3 angles, 3 numbers; 10 powers, 2 dipoles
     counts = {entry["kind"]: entry["checked"] for entry in found.summary()}
     assert counts["far field"] == 18
     assert counts["light from outside"] == 36
