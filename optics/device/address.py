@@ -27,18 +27,31 @@ _OPTIONAL = frozenset(
 
 def addresses(document: Mapping[str, Any]) -> tuple[str, ...]:
     """Every address of a single value in a resolved document."""
-    found: list[str] = []
+    return tuple(path for path, _ in _single_values(document))
+
+
+def numeric_addresses(document: Mapping[str, Any]) -> tuple[str, ...]:
+    """Every address of a number in a resolved document."""
+    return tuple(path for path, value in _single_values(document) if is_number(value))
+
+
+def is_number(value: Any) -> bool:
+    """Whether a value of a document is a number."""
+    return isinstance(value, int | float) and not isinstance(value, bool)
+
+
+def _single_values(document: Mapping[str, Any]) -> Iterator[tuple[str, Any]]:
     for section in _SECTIONS:
         if section in document:
-            found += _walk(document[section], section)
-    return tuple(found)
+            yield from _walk(document[section], section)
 
 
-def _walk(value: Any, path: str) -> Iterator[str]:
+def _walk(value: Any, path: str) -> Iterator[tuple[str, Any]]:
     if isinstance(value, Mapping):
         for key, item in value.items():
             if _is_orientation(path.split("."), key):
-                yield from (f"{path}.{other}" for other in ORIENTATION_KEYS)
+                # Interchangeable; what one of them is, number or not, the others are.
+                yield from ((f"{path}.{other}", item) for other in ORIENTATION_KEYS)
             else:
                 yield from _walk(item, f"{path}.{key}")
     elif isinstance(value, list):
@@ -46,7 +59,7 @@ def _walk(value: Any, path: str) -> Iterator[str]:
             name = item.get("name") if isinstance(item, Mapping) else None
             yield from _walk(item, f"{path}.{index if name is None else name}")
     else:
-        yield path
+        yield path, value
 
 
 def value_at(document: Mapping[str, Any], path: str, where: str) -> Any:

@@ -17,6 +17,14 @@ STUDY_FAULTS: list[tuple[str, Any, str]] = [
         "layers.HTL.thickness_nm?)",
     ),
     (
+        # the nearest address is layers.HTL.material, a text; a study needs a number
+        "sweep/axes",
+        {"layers.HTL.materials": {"values": [1]}},
+        'sweep.axes."layers.HTL.materials": found "layers.HTL.materials", no such address; '
+        "expected the address of a value, such as layers.NAME.thickness_nm (did you mean "
+        "layers.HTL.thickness_nm?)",
+    ),
+    (
         "sweep/axes",
         {"layers.HTL.material": {"values": [1]}},
         'sweep.axes."layers.HTL.material": found "layers.HTL.material", "doped"; expected the '
