@@ -15,6 +15,7 @@ import numpy as np
 import pytest
 import xarray
 from click.testing import CliRunner, Result
+from study_case import DEVICE
 
 from optics.cli import main
 from optics.present.sweep import (
@@ -32,34 +33,14 @@ from optics.present.terminal import console
 HTL, ETL = "layers.HTL.thickness_nm", "layers.ETL.thickness_nm"
 EQE, GUIDED, X = "external_quantum_efficiency", "destinations.guided", "bottom.x_normal"
 
-CASE = """
-title = "three films, invented"
-[wavelength]
-values_nm = [500, 550, 600]
-[materials.host]
-n = 1.75
-[[layers]]
-name = "EML"
-material = "host"
-thickness_nm = 30
-[[layers]]
-name = "ETL"
-material = "host"
-thickness_nm = 40
-[[layers]]
-name = "CAT"
-material = "al"
-thickness_nm = 100
-[[emitters]]
-name = "green"
-layer = "EML"
-spectrum = { peak_nm = 550, fwhm_nm = 20 }
-zone = { shape = "point", at_nm = 10, from = "bottom" }
-quantum_yield = 0.9
+CASE = (
+    DEVICE
+    + """\
 [sweep]
 outcomes = ["external_quantum_efficiency", "destinations.guided"]
 [sweep.axes]
 """
+)
 AXIS = '"layers.ETL.thickness_nm" = { start = 20, stop = 80, step = 10 }\n'
 
 

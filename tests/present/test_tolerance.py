@@ -16,6 +16,7 @@ import pytest
 import xarray
 from click.testing import CliRunner, Result
 from matplotlib.colors import to_hex
+from study_case import DEVICE
 
 from optics.cli import main
 from optics.present.terminal import console
@@ -32,30 +33,9 @@ HTL, ETL, THETA = (
 EQE, X = "external_quantum_efficiency", "bottom.x_normal"
 SAMPLES = 400
 
-CASE = """
-title = "three films, invented"
-[wavelength]
-values_nm = [500, 550, 600]
-[materials.host]
-n = 1.75
-[[layers]]
-name = "EML"
-material = "host"
-thickness_nm = 30
-[[layers]]
-name = "ETL"
-material = "host"
-thickness_nm = 40
-[[layers]]
-name = "CAT"
-material = "al"
-thickness_nm = 100
-[[emitters]]
-name = "green"
-layer = "EML"
-spectrum = { peak_nm = 550, fwhm_nm = 20 }
-zone = { shape = "point", at_nm = 10, from = "bottom" }
-quantum_yield = 0.9
+CASE = (
+    DEVICE
+    + """\
 [tolerance]
 samples = 32
 seed = 5
@@ -66,6 +46,7 @@ outcomes = ["external_quantum_efficiency", "destinations.guided"]
 [tolerance.limits]
 "external_quantum_efficiency" = { min = 0.1 }
 """
+)
 
 
 def about(value: float, half: float) -> Estimate:
