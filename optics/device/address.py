@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import copy
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
 from optics.device.emitter import horizontal_fraction_from, orientation_from
@@ -186,7 +186,17 @@ def _opened(document: Mapping[str, Any], path: str) -> dict[str, Any]:
     return opened
 
 
+def nearest_address(path: str, candidates: Sequence[str]) -> str | None:
+    """Return the address that looks most like `path`, or that begins most like a short one."""
+    depth = path.count(".") + 1
+    heads: dict[str, str] = {}
+    for candidate in candidates:
+        heads.setdefault(".".join(candidate.split(".")[:depth]), candidate)
+    head = nearest(path, heads)
+    return heads[head] if head is not None else nearest(path, candidates)
+
+
 def _unknown(document: Mapping[str, Any], path: str, where: str) -> CaseError:
-    near = nearest(path, addresses(document))
+    near = nearest_address(path, addresses(document))
     expected = "the address of a value, such as layers.NAME.thickness_nm"
     return CaseError([Fault(where, path, "no such address", expected, near)])

@@ -7,10 +7,16 @@ from typing import Any
 
 from pydantic import BaseModel
 
-from optics.device.address import is_number, numeric_addresses, orientation_group, value_at
+from optics.device.address import (
+    is_number,
+    nearest_address,
+    numeric_addresses,
+    orientation_group,
+    value_at,
+)
 from optics.device.door import shown
 from optics.device.draft import MOST_WAVELENGTHS, STEP_SLACK, Draft
-from optics.device.errors import CaseError, Fault, nearest
+from optics.device.errors import CaseError, Fault
 from optics.device.salvage import doubtful, known, stated
 from optics.device.study_schema import (
     AxisModel,
@@ -179,7 +185,7 @@ def _check_paths(draft: Draft, resolved: Mapping[str, Any], paths: Iterable[Path
         try:
             value = value_at(resolved, path, draft.faults.where)
         except CaseError as error:
-            fault, near = error.faults[0], nearest(path, numeric_addresses(resolved))
+            fault, near = error.faults[0], nearest_address(path, numeric_addresses(resolved))
             draft.faults.add(key, f"{shown(path)}, {fault.found}", fault.expected, near)
             continue
         if not is_number(value):
