@@ -49,22 +49,24 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
         propagates. Into absorbing surroundings: the flux at their face.
     """
     n = u.shape[1]
-    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    together = max(1, min(n, NODES))
+    work_up = work_space(problem.up.kd.shape[1], together)
+    work_down = work_space(problem.down.kd.shape[1], together)
     positions = problem.source.kz_positions.shape[1]
     to_bottom = np.zeros(positions, dtype=np.complex128)
     to_top = np.zeros(positions, dtype=np.complex128)
-    nodes = np.zeros(NODES, dtype=np.complex128)
+    nodes = np.zeros(together, dtype=np.complex128)
     for w in range(u.shape[0]):
         source, sides, up, down = at_wavelength(problem, w)
-        for start in range(0, n, NODES):
-            for i in range(NODES):
+        for start in range(0, n, together):
+            for i in range(together):
                 nodes[i] = max(u[w, min(start + i, n - 1)], _NORMAL)
             waves(nodes, up.eps_o, up.eps_e, up.kd, work_up.kz, work_up.y, work_up.e)
             waves(nodes, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
             outward(work_up.y, work_up.e, work_up.r_far, work_up.f, work_up.t)
             outward(work_down.y, work_down.e, work_down.r_far, work_down.f, work_down.t)
             for pol in range(2):
-                for i in range(min(NODES, n - start)):
+                for i in range(min(together, n - start)):
                     at = nodes[i].real
                     kz = work_up.kz[pol, 0, i]
                     through = exp_i(kz * source.kd)
@@ -105,17 +107,19 @@ def lit_from_outside(problem: Problem, u: Floats, powers: Floats) -> None:
         wave propagates R = 1 and the rest is 0.
     """
     n = u.shape[1]
-    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
-    nodes = np.zeros(NODES, dtype=np.complex128)
+    together = max(1, min(n, NODES))
+    work_up = work_space(problem.up.kd.shape[1], together)
+    work_down = work_space(problem.down.kd.shape[1], together)
+    nodes = np.zeros(together, dtype=np.complex128)
     for w in range(u.shape[0]):
         source, sides, up, down = at_wavelength(problem, w)
-        for start in range(0, n, NODES):
-            for i in range(NODES):
+        for start in range(0, n, together):
+            for i in range(together):
                 nodes[i] = u[w, min(start + i, n - 1)]
             solve_half(up, work_up, nodes, True)
             solve_half(down, work_down, nodes, True)
             for pol in range(2):
-                for i in range(min(NODES, n - start)):
+                for i in range(min(together, n - start)):
                     phase = exp_i(work_up.kz[pol, 0, i] * source.kd)
                     found = stack_from_outside(
                         sides.kind[0] != ABSORBING,

@@ -3,7 +3,8 @@
 Compiled functions take named tuples as they take arrays; these carry no behavior.
 """
 
-from typing import NamedTuple
+from collections.abc import Iterable, Iterator, Sequence
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -80,12 +81,12 @@ class Scratch(NamedTuple):
 
 
 @inline
-def work_space(m: int) -> Work:
-    """Work arrays for a half stack of m media."""
-    big = np.zeros((8, 2, m, NODES), dtype=np.complex128)
-    small = np.zeros((3, 2, NODES), dtype=np.complex128)
-    real = np.zeros((4, 2, m, NODES))
-    form = np.zeros((3, 2, NODES), dtype=np.complex128)
+def work_space(m: int, nodes: int = NODES) -> Work:
+    """Work arrays for a half stack of m media, at so many nodes together."""
+    big = np.zeros((8, 2, m, nodes), dtype=np.complex128)
+    small = np.zeros((3, 2, nodes), dtype=np.complex128)
+    real = np.zeros((4, 2, m, nodes))
+    form = np.zeros((3, 2, nodes), dtype=np.complex128)
     return Work(
         big[0], big[1], big[2], small[0], big[3], big[4], small[1], big[5], big[6],
         small[2], real[0], real[1], real[2], real[3], big[7], form,
@@ -175,6 +176,38 @@ def make_problem(
         sides,
         make_half(eps_o, eps_e, kd, outer[:, 1], emitter, 1),
         make_half(eps_o, eps_e, kd, outer[:, 0], emitter, -1),
+    )
+
+
+def shape_of(problem: Problem) -> tuple[int | bytes, ...]:
+    """What problems must have in common for `stacked`: sides, media above, below, positions."""
+    _, positions = problem.source.kz_positions.shape
+    media = problem.up.kd.shape[1], problem.down.kd.shape[1]
+    return (problem.sides.kind.tobytes(), *media, positions)
+
+
+def stacked(problems: Sequence[Problem]) -> Problem:
+    """Many devices of one shape as one problem, wavelengths after each other.
+
+    Each row of a problem is a device at a wavelength of its own, so whatever is computed of all
+    of them at once is to the last bit what it is of each one alone.
+
+    Parameters
+    ----------
+    problems : sequence of Problem
+        Of the same `shape_of`.
+    """
+    if len(problems) == 1:
+        return problems[0]
+
+    def joined(parts: Iterable[tuple[Any, ...]]) -> Iterator[Any]:
+        return (np.concatenate(arrays) for arrays in zip(*parts, strict=True))
+
+    return Problem(
+        Source(*joined(one.source for one in problems)),
+        Sides(problems[0].sides.kind, *joined(one.sides[1:] for one in problems)),
+        Half(*joined(one.up for one in problems)),
+        Half(*joined(one.down for one in problems)),
     )
 
 

@@ -16,7 +16,7 @@ from optics.outcome.efficiency import (
     energy_balance,
 )
 from optics.outcome.labelled import Spectral, budget_frame, budget_tree
-from optics.outcome.light import Light, emitter_light
+from optics.outcome.light import Light, emitter_lights
 
 if TYPE_CHECKING:
     import pandas
@@ -190,12 +190,23 @@ def shine(case: Case, tolerance: float, threads: int | None = None) -> tuple[Lit
     ValueError
         If the tolerance is not between 1e-12 and 0.1.
     """
+    return shine_together([case], tolerance, threads)[0]
+
+
+def shine_together(
+    cases: Sequence[Case], tolerance: float, threads: int | None = None
+) -> list[tuple[Lit, ...]]:
+    """As `shine` of every case, to the last bit; like devices cost less so."""
     check_tolerance(tolerance)
-    lights = [emitter_light(case, emitter, tolerance, threads) for emitter in case.emitters]
-    return tuple(
-        Lit(emitter, light, emission(emitter, light))
-        for emitter, light in zip(case.emitters, lights, strict=True)
-    )
+    wanted = [(case, emitter) for case in cases for emitter in case.emitters]
+    lights = iter(emitter_lights(wanted, tolerance, threads))
+    return [
+        tuple(
+            Lit(emitter, light, emission(emitter, light))
+            for emitter, light in zip(case.emitters, lights, strict=False)
+        )
+        for case in cases
+    ]
 
 
 def check_tolerance(tolerance: float) -> None:

@@ -125,7 +125,7 @@ def _light(
     engine, found, error = _engine(
         problem, make_rates(problem, wavelength_nm, _chosen(variation, active)), tolerance, threads
     )
-    at_rest = Light(wavelength_nm, position_nm, weight, problem.source.bulk, engine)
+    at_rest = Light(wavelength_nm, position_nm, weight, problem.source.bulk, engine, problem)
     rates = make_rates(problem, wavelength_nm, variation)
     p = len(directions)
     moving = engine._replace(
@@ -133,8 +133,8 @@ def _light(
         dissipation=_dual(engine.dissipation, found[1], active, p),
     )
     bulk = Dual(problem.source.bulk, np.moveaxis(rates.bulk, 1, 0) * problem.source.bulk)
-    light = Light(
-        wavelength_nm, position_nm, _as_array(Dual(weight, weight_rates)), _as_array(bulk), moving
+    light = at_rest._replace(
+        zone_weight=_as_array(Dual(weight, weight_rates)), bulk=_as_array(bulk), engine=moving
     )
     return VariedLight(Lit(emitter, light, emission(emitter, light)), at_rest, rates, error)
 

@@ -19,7 +19,7 @@ from optics.kernels.budget import AIR_BOTTOM, AIR_TOP
 from optics.kernels.varied_directions import leaving_rates
 from optics.outcome.dual import Dual
 from optics.outcome.efficiency import orientation_average, orientation_shares
-from optics.outcome.light import at_rows, cores, problem_of
+from optics.outcome.light import at_rows, cores
 from optics.outcome.light_rates import rates_at_rows
 
 if TYPE_CHECKING:
@@ -49,7 +49,7 @@ class Source(NamedTuple):
     wavelength_nm: Floats  # (w,)
     step_nm: Floats  # (w,) trapezoid weights; 1 for a line and a single wavelength
     orientation: Floats  # (w, 2) shares of the bulk rate, vertical and horizontal
-    position_nm: Floats  # (z,)
+    problem: Problem  # what the engine was asked
     radiating: Floats  # (z,) zone weight * q / (1 - q + q F)
     watts: Floats  # (w,) W/(A nm) of one photon per exciton of the unit, before outcoupling
     leaves: Floats  # (w, 2) radiating-weighted power that leaves at the bottom, top; over bulk
@@ -94,7 +94,7 @@ def source_of(case: Case, emitter: Emitter, light: Light, found: Emission) -> So
         light.wavelength_nm,
         step_nm,
         orientation_shares(light.bulk, theta),
-        light.position_nm,
+        light.problem,
         radiating,
         excitons * photons * HC_EV_NM / light.wavelength_nm,
         np.stack(leaves, axis=1),
@@ -148,13 +148,12 @@ def radiance_over_bulk(
     u: photons per solid angle relative to the bulk rate. Where the side's surroundings absorb
     nothing leaves.
     """
-    problem = problem_of(case, source.emitter, source.wavelength_nm, source.position_nm)
     rows = np.arange(source.wavelength_nm.size)
     # A wavelength with more angles than go together is a part of its own.
     parts = np.array_split(rows, min(rows.size, -(-rows.size * angle_deg.size // _TOGETHER)))
 
     def some(part: Rows) -> Floats:
-        return _some_wavelengths(case, source, problem, side, angle_deg, part)
+        return _some_wavelengths(case, source, side, angle_deg, part)
 
     workers = min(threads or cores(), len(parts))
     if workers == 1:
@@ -164,9 +163,9 @@ def radiance_over_bulk(
 
 
 def _some_wavelengths(
-    case: Case, source: Source, problem: Problem, side: int, angle_deg: Floats, rows: Rows
+    case: Case, source: Source, side: int, angle_deg: Floats, rows: Rows
 ) -> Floats:
-    problem = at_rows(problem, rows)
+    problem = at_rows(source.problem, rows)
     n = index_outside(case, problem, side)
     sine = np.sin(np.deg2rad(angle_deg))
     if source.rates is None:
@@ -212,7 +211,7 @@ def unbounded_at_grazing(case: Case, source: Source, side: int) -> bool:
     slab = (case.stack.substrate, case.stack.cover)[side]
     if slab is not None and slab.exit != "matched":
         return False
-    problem = problem_of(case, source.emitter, source.wavelength_nm, source.position_nm)
+    problem = source.problem
     own = problem.source.eps_o[:, None]
     return all(
         bool(np.all(eps == own))

@@ -1,4 +1,4 @@
-"""From a case to the engine's arrays and back: the light of one emitter at every wavelength."""
+"""From a case to the engine's arrays and back: the light of emitters at every wavelength."""
 
 from __future__ import annotations
 
@@ -13,9 +13,19 @@ from optics.device.zone import absorber_distances, zone_interval, zone_quadratur
 from optics.kernels.budget import Budget as EngineBudget
 from optics.kernels.budget import light_budget
 from optics.kernels.exits import ABSORBING, MATCHED, OPEN, PLANAR
-from optics.kernels.problem import Half, Problem, Sides, Source, make_problem
+from optics.kernels.problem import (
+    Half,
+    Problem,
+    Sides,
+    Source,
+    make_problem,
+    shape_of,
+    stacked,
+)
 
 if TYPE_CHECKING:
+    from collections.abc import Iterator, Sequence
+
     from numpy.typing import NDArray
 
     from optics.device.case import Case
@@ -26,6 +36,9 @@ if TYPE_CHECKING:
 # Fewer wavelengths than this are not worth a second thread.
 _SMALLEST_CHUNK = 4
 _MANY = 100
+# Rows of like devices that are computed together: enough to spread what is not compiled, few
+# enough to stay in a core's own cache.
+_ROWS_TOGETHER = 256
 NM_PER_MM = 1e6
 
 
@@ -37,25 +50,35 @@ class Light(NamedTuple):
     zone_weight: NDArray[np.float64]  # (z,) quadrature weight times density, sum 1
     bulk: NDArray[np.float64]  # (w, 2) bulk rates over that in vacuum
     engine: EngineBudget
+    problem: Problem  # what the engine was asked
 
 
-def emitter_light(
-    case: Case, emitter: Emitter, tolerance: float, threads: int | None = None
-) -> Light:
-    """Run the engine for one emitter of a case.
+def emitter_lights(
+    wanted: Sequence[tuple[Case, Emitter]], tolerance: float, threads: int | None = None
+) -> list[Light]:
+    """Run the engine for some emitters, each of its case.
 
     Parameters
     ----------
+    wanted : sequence of (Case, Emitter)
+        Many of like devices cost less together than one by one, and give the same to the last
+        bit.
     tolerance : float
         Wanted accuracy of every destination as a fraction of the dissipated power.
     threads : int, optional
         At most so many; as many as there are cores if not given. No number depends on it.
     """
-    wavelength_nm = emitter.spectrum.grid_nm(case.wavelength_nm)
-    position_nm, zone_weight = quadrature(case, emitter, wavelength_nm)
-    problem = problem_of(case, emitter, wavelength_nm, position_nm)
-    engine = run_engine(problem, tolerance, threads)
-    return Light(wavelength_nm, position_nm, zone_weight, problem.source.bulk, engine)
+    places, problems = [], []
+    for case, emitter in wanted:
+        wavelength_nm = emitter.spectrum.grid_nm(case.wavelength_nm)
+        position_nm, zone_weight = quadrature(case, emitter, wavelength_nm)
+        places.append((wavelength_nm, position_nm, zone_weight))
+        problems.append(problem_of(case, emitter, wavelength_nm, position_nm))
+    engines = run_engines(problems, tolerance, threads)
+    return [
+        Light(*place, problem.source.bulk, engine, problem)
+        for place, problem, engine in zip(places, problems, engines, strict=True)
+    ]
 
 
 def quadrature(
@@ -142,6 +165,32 @@ def run_engine(problem: Problem, tolerance: float, threads: int | None = None) -
     with ThreadPoolExecutor(workers) as pool:
         found = list(pool.map(lambda rows: light_budget(at_rows(problem, rows), tolerance), chunks))
     return EngineBudget(*(np.concatenate(parts) for parts in zip(*found, strict=True)))
+
+
+def run_engines(
+    problems: Sequence[Problem], tolerance: float, threads: int | None = None
+) -> list[EngineBudget]:
+    """Run the engine for many problems, like ones together."""
+    alike: dict[tuple[int | bytes, ...], list[int]] = {}
+    for place, problem in enumerate(problems):
+        alike.setdefault(shape_of(problem), []).append(place)
+    found: dict[int, EngineBudget] = {}
+    for places in alike.values():
+        most = max(1, _ROWS_TOGETHER // problems[places[0]].source.eps_o.size)
+        for start in range(0, len(places), most):
+            some = places[start : start + most]
+            sizes = [problems[place].source.eps_o.size for place in some]
+            every = run_engine(stacked([problems[place] for place in some]), tolerance, threads)
+            found |= zip(some, _parted(every, sizes), strict=True)
+    return [found[place] for place in range(len(problems))]
+
+
+def _parted(engine: EngineBudget, sizes: Sequence[int]) -> Iterator[EngineBudget]:
+    """Cut what was computed together into parts of so many rows."""
+    last = 0
+    for size in sizes:
+        first, last = last, last + size
+        yield EngineBudget._make(values[first:last] for values in engine)
 
 
 def chunks_of(problem: Problem, threads: int | None = None) -> tuple[list[NDArray[np.int64]], int]:

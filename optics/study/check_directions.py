@@ -11,14 +11,13 @@ import numpy as np
 from optics.kernels.geometry import light_lines
 from optics.outcome.budget import DEFAULT_TOLERANCE, Budget
 from optics.outcome.directional import SIDES, Source, index_outside, radiance_over_bulk, sources
-from optics.outcome.light import problem_of
+from optics.outcome.light import at_rows
 from optics.study.check_rows import Place, Row, compared, not_checked
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from optics.device.case import Case
-    from optics.device.emitter import Emitter
 
 _KIND = "all directions"
 _QUANTITY = "light that leaves"
@@ -56,18 +55,17 @@ def _one_wavelength(source: Source, row: int) -> Source:
         orientation=source.orientation[kept],
         watts=source.watts[kept],
         leaves=source.leaves[kept],
+        problem=at_rows(source.problem, np.array([row])),
     )
 
 
 def _row(case: Case, source: Source, side: int) -> Row:
-    emitter: Emitter = source.emitter
-    place = Place(emitter.name, float(source.wavelength_nm[0]), side=SIDES[side])
+    place = Place(source.emitter.name, float(source.wavelength_nm[0]), side=SIDES[side])
     scale = float(source.radiating.sum())
     if scale == 0.0:
         return not_checked(_KIND, _QUANTITY, _METHOD, place, "the emitter gives no light")
-    problem = problem_of(case, emitter, source.wavelength_nm, source.position_nm)
-    outside = float(index_outside(case, problem, side)[0])
-    lines = np.unique(light_lines(problem)[0]) / outside
+    outside = float(index_outside(case, source.problem, side)[0])
+    lines = np.unique(light_lines(source.problem)[0]) / outside
     ends = np.append(lines[lines < 1.0], 1.0)
     before, panels = np.inf, 1
     while True:

@@ -7,7 +7,7 @@ paths. Each point is a case of its own, computed by the ordinary engine.
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from contextlib import closing
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, NamedTuple, TypeVar
@@ -17,7 +17,7 @@ import numpy as np
 from optics._version import VERSION
 from optics.device.errors import CaseError
 from optics.kernels.budget import NEAR_FIELD
-from optics.outcome.budget import accuracy_of, shine
+from optics.outcome.budget import accuracy_of, shine, shine_together
 from optics.outcome.chain import budget_numbers
 from optics.outcome.directional import SIDES, sources
 from optics.outcome.light import cores
@@ -33,6 +33,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from optics.device.case import Case
+    from optics.outcome.budget import Lit
 
     Floats = NDArray[np.float64]
     Integers = NDArray[np.int64]
@@ -44,6 +45,8 @@ TRUST = ("energy_balance", "integration_error", "near_field_share")
 # Points of one task at most: a stop loses no more than those of the running tasks.
 _LARGEST_BATCH = 8
 _Task = TypeVar("_Task")
+_Item = TypeVar("_Item")
+_Result = TypeVar("_Result")
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,7 +134,8 @@ def answer(question: Question, values: Iterable[float], threads: int | None = No
     CaseError
         If there is no such device.
     """
-    return _answer_case(question, question.case_at(values), threads)
+    case = question.case_at(values)
+    return _outcomes(question, case, shine(case, question.tolerance, threads), threads)
 
 
 def answers(
@@ -276,26 +280,41 @@ def small_parts(places: Integers) -> Iterator[Integers]:
 
 
 def compute_batch(batch: Batch) -> Found:
-    """Compute points one by one; one that fails does not touch the others."""
-    places, rows, failed = [], [], []
-    for place, values in zip(batch.places.tolist(), batch.points, strict=True):
-        try:
-            rows.append(answer(batch.question, values, threads=1))
-            places.append(place)
-        except CaseError as error:
-            failed.append((place, "; ".join(str(fault) for fault in error.faults)))
-        except Exception as error:  # one point of many: told by name, the others go on
-            failed.append((place, f"{type(error).__name__}: {error}"))
+    """Compute points, like devices together; one that fails does not touch the others."""
+    question, points = batch.question, dict(zip(batch.places.tolist(), batch.points, strict=True))
+    failed: dict[int, str] = {}
+    cases = dict(_each(points, question.case_at, failed))
+    try:
+        every = shine_together(list(cases.values()), question.tolerance, threads=1)
+        lit = dict(zip(cases, every, strict=True))
+    except Exception:  # whose fault it is will show, each by itself
+        lit = dict(_each(cases, lambda case: shine(case, question.tolerance, threads=1), failed))
+    lights = {place: (cases[place], light) for place, light in lit.items()}
+    rows = dict(_each(lights, lambda one: _outcomes(question, *one, threads=1), failed))
     return Found(
-        np.array(places, dtype=np.int64),
-        np.array(rows, dtype=np.float64).reshape(-1, batch.question.width),
-        tuple(failed),
+        np.array(list(rows), dtype=np.int64),
+        np.array(list(rows.values()), dtype=np.float64).reshape(-1, question.width),
+        tuple(failed.items()),
     )
 
 
-def _answer_case(question: Question, case: Case, threads: int | None) -> Floats:
+def _each(
+    items: Mapping[int, _Item], compute: Callable[[_Item], _Result], failed: dict[int, str]
+) -> Iterator[tuple[int, _Result]]:
+    """What becomes of every item by place; the reasons of those that fail are noted."""
+    for place, item in items.items():
+        try:
+            yield place, compute(item)
+        except CaseError as error:
+            failed[place] = "; ".join(str(fault) for fault in error.faults)
+        except Exception as error:  # one point of many: told by name, the others go on
+            failed[place] = f"{type(error).__name__}: {error}"
+
+
+def _outcomes(
+    question: Question, case: Case, lit: Sequence[Lit], threads: int | None = None
+) -> Floats:
     """Outcomes of one case and how far they can be trusted; nothing else is computed."""
-    lit = shine(case, question.tolerance, threads)
     accuracy = accuracy_of(lit)
     numbers = budget_numbers(case, {one.emitter.name: one.emission for one in lit})
     numbers["accuracy"] = accuracy

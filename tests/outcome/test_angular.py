@@ -22,7 +22,6 @@ from optics.outcome.directional import (
     radiance_over_bulk,
     sources,
 )
-from optics.outcome.light import problem_of
 
 PUBLISHED = tomllib.loads(
     (Path(__file__).parents[1] / "published" / "color_photometry.toml").read_text(encoding="utf-8")
@@ -35,7 +34,7 @@ def test_directions_add_up_to_the_budget(name: str) -> None:
     device = case(narrow(DEVICES[name](), 520.0, 560.0))
     node, weight = np.polynomial.legendre.leggauss(240)
     for source in sources(device, optics.budget(device).lit):
-        problem = problem_of(device, source.emitter, source.wavelength_nm, source.position_nm)
+        problem = source.problem
         for side in range(2):
             n = float(index_outside(device, problem, side)[0])
             lines = (1.0, 1.33, 1.52, 1.65, 1.8)
