@@ -107,9 +107,8 @@ def changed(document: Mapping[str, Any], path: str, value: Any, where: str) -> d
         If there is no such address; the message names the nearest one.
     """
     opened = _opened(document, path)
-    _locate(opened, path, where)  # raises if there is no such address
-    copied = _copied_along(opened, path)
-    container, key = _locate(copied, path, where)
+    _, key = _locate(opened, path, where)
+    copied, container = _copied_along(opened, path)
     if isinstance(container, dict) and key in ORIENTATION_KEYS:
         for other in ORIENTATION_KEYS:
             container.pop(other, None)
@@ -117,14 +116,14 @@ def changed(document: Mapping[str, Any], path: str, value: Any, where: str) -> d
     return copied
 
 
-def _copied_along(document: dict[str, Any], path: str) -> dict[str, Any]:
-    """Copy in which the tables and lists on the way to an address are new, all others shared."""
+def _copied_along(document: dict[str, Any], path: str) -> tuple[dict[str, Any], Any]:
+    """Copy in which tables and lists on the way to an address are new, and the last of them."""
     copied = container = dict(document)
     for key in path.split(".")[:-1]:
         step: Any = _step(container, key)
         container[step] = copy.copy(container[step])
         container = container[step]
-    return copied
+    return copied, container
 
 
 def orientation_group(path: str) -> str | None:

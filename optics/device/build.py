@@ -17,11 +17,11 @@ from optics.device.drive import ByUnit, Drive, Side, Sides
 from optics.device.emission import make_emitters
 from optics.device.emitter import ISOTROPIC_FRACTION, Emitter, horizontal_fraction_from
 from optics.device.errors import CaseError
-from optics.device.layering import make_stack
+from optics.device.layering import Outline, make_stack
 from optics.device.loader import Files, table_use
 from optics.device.materials import TableUse, span_text
 from optics.device.salvage import known, plain_types
-from optics.device.schema import DEFAULT_UNIT, SideModel
+from optics.device.schema import DEFAULT_UNIT, CaseModel, SideModel
 from optics.device.stack import Stack
 from optics.device.studies import check_studies
 from optics.device.units import check_charge_balance
@@ -34,7 +34,10 @@ if TYPE_CHECKING:
 
 @dataclass(frozen=True, eq=False)  # without slots, so that the hash is made when it is asked for
 class Built:
-    """Everything that follows from a document; the attributes are those of `Case`."""
+    """Everything that follows from a document; most attributes are those of `Case`.
+
+    The parsed document and the outline of the stack are kept for `rebuild`.
+    """
 
     title: str
     wavelength_nm: NDArray[np.float64]
@@ -47,6 +50,8 @@ class Built:
     warnings: tuple[str, ...]
     document: Mapping[str, Any]
     files: Files
+    model: CaseModel
+    outline: Outline
 
     @cached_property
     def sha256(self) -> str:
@@ -107,6 +112,8 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
         warnings=tuple(draft.warnings),
         document=resolved,
         files=files,
+        model=draft.model,
+        outline=outline,
     )
 
 

@@ -15,6 +15,7 @@ from optics.device.address import changed, value_at
 from optics.device.build import Built, build
 from optics.device.errors import CaseError, Fault, nearest
 from optics.device.loader import Files
+from optics.device.rebuild import rebuilt
 from optics.device.schema import json_schema
 
 if TYPE_CHECKING:
@@ -147,10 +148,13 @@ class Case:
         CaseError
             As `replace`.
         """
-        document = self._built.document
-        for path, value in values.items():
-            document = changed(document, path, value, self.label)
-        return Case(self.label, self.source_path, build(document, self._built.files, self.label))
+        built = rebuilt(self._built, values, self.label)
+        if built is None:
+            document = self._built.document
+            for path, value in values.items():
+                document = changed(document, path, value, self.label)
+            built = build(document, self._built.files, self.label)
+        return Case(self.label, self.source_path, built)
 
 
 def exchanged(case: Case, **parts: Any) -> Case:

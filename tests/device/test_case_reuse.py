@@ -3,14 +3,23 @@
 from __future__ import annotations
 
 import pickle
+from collections.abc import Callable
+from functools import partial
+from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pytest
 from case_examples import plain_document
 
-from optics.device.case import case_from_dict
+import optics
+from optics.device.address import changed, numeric_addresses
+from optics.device.case import Case, case_from_dict
+from optics.device.emitter import Emitter
+from optics.device.errors import CaseError
 from optics.device.stack import absorbs
+
+REBUILT = ("layers", "emitters")
 
 
 def document() -> dict[str, Any]:
@@ -26,6 +35,67 @@ def test_a_changed_copy_is_what_a_new_case_would_be() -> None:
     assert changed.sha256 == afresh.sha256 != base.sha256
     assert base.stack.films[0].thickness_nm != 33.0
     assert base.document == case_from_dict(document()).document
+
+
+CASES = [
+    Path(__file__).parents[2] / "cases" / f"{name}.toml"
+    for name in ("polymer-f8bt", "red-top-microcavity", "silicon-microdisplay", "white-tandem")
+]
+
+
+def told(make: Callable[[], Case]) -> Any:
+    """Everything of a case that can be compared, or its faults."""
+    try:
+        case = make()
+    except CaseError as error:
+        return error.faults
+    # Tables are read anew by another case, so arrays tell equality there.
+    emitters = [
+        [getattr(one, field) for field in Emitter.__dataclass_fields__] for one in case.emitters
+    ]
+    return [
+        case.document,
+        case.sha256,
+        [(film.name, film.material.name, film.thickness_nm) for film in case.stack.films],
+        repr(emitters),
+        case.drive,
+        case.tables,
+        case.warnings,
+    ]
+
+
+@pytest.mark.parametrize("path", CASES, ids=lambda path: path.stem)
+def test_a_number_of_films_and_emitters_does_what_the_whole_door_does(path: Path) -> None:
+    """Whether the new value is small, large or none that a device can have."""
+    base = optics.read_case(path)
+    addresses = [one for one in numeric_addresses(base.document) if one.split(".")[0] in REBUILT]
+    assert addresses
+    for address in addresses:
+        value = base.value(address)
+        for other in (1.01 * value, 0, -1.0, 1e3):
+            document = changed(base.document, address, other, base.label)
+            anew = told(partial(case_from_dict, document, path.parent, base.label))
+            assert told(partial(base.replace, address, other)) == anew, (address, other)
+
+
+def test_a_copy_of_a_copy_is_what_a_new_case_would_be() -> None:
+    base = optics.read_case(CASES[0])
+    emitter, film = base.emitters[0].name, base.stack.films[-1].name
+    fraction = f"emitters.{emitter}.vertical_fraction"
+    copy = base.replace(fraction, 0.2).replace(f"layers.{film}.thickness_nm", 77.0)
+    copy = copy.replace(f"emitters.{emitter}.order_parameter", -0.1)
+    anew = partial(case_from_dict, copy.document, CASES[0].parent, base.label)
+    assert told(lambda: copy) == told(anew)
+    assert copy.emitters[0].horizontal_fraction == pytest.approx(1.1 / 1.5, rel=1e-15)
+
+
+def test_the_whole_door_is_not_asked_for_such_a_number(monkeypatch: pytest.MonkeyPatch) -> None:
+    base = case_from_dict(document())
+    film = base.stack.films[0].name
+    monkeypatch.setattr("optics.device.case.build", None)
+    assert base.replace(f"layers.{film}.thickness_nm", 33.0).stack.films[0].thickness_nm == 33.0
+    with pytest.raises(TypeError):
+        base.replace("drive.charge_balance", 0.5)
 
 
 def test_materials_that_did_not_change_are_shared() -> None:
