@@ -1,4 +1,4 @@
-"""A case with other numbers of its films and emitters, without going through the whole door again.
+"""A case with other numbers of its films, materials and emitters, without the whole door.
 
 Studies do this thousands of times. What such a number can touch is checked by the very functions
 that check a case file; where anything is at fault, or could be touched beyond that, the whole
@@ -8,18 +8,18 @@ door decides and words the fault.
 from __future__ import annotations
 
 from collections.abc import Mapping
+from copy import copy
 from dataclasses import replace
 from typing import Any
 
-from pydantic import BaseModel, ValidationError
+from pydantic import ValidationError
 
 from optics.device.address import changed, is_number
 from optics.device.build import Built
 from optics.device.door import Faults
 from optics.device.draft import Draft, Parts
 from optics.device.emission import make_emitters
-from optics.device.emitter import Emitter
-from optics.device.layering import Outline
+from optics.device.layering import Outline, make_stack
 from optics.device.loader import Materials
 from optics.device.schema import CaseModel
 from optics.device.stack import Stack
@@ -40,8 +40,8 @@ def rebuilt(built: Built, values: Mapping[str, float | str], label: str) -> Buil
     Returns
     -------
     Built or None
-        None where it takes the whole door: anything else than numbers of films and emitters,
-        and any fault.
+        None where it takes the whole door: anything else than numbers of films, materials
+        and emitters, and any fault.
 
     Raises
     ------
@@ -56,19 +56,18 @@ def rebuilt(built: Built, values: Mapping[str, float | str], label: str) -> Buil
     model = _parsed(built, document)
     if model is None:
         return None
-    outline = replace(
-        built.outline, thickness_nm=tuple(layer.thickness_nm for layer in model.layers)
-    )
-    stack = _stack(built.stack, outline)
-    made = _emitters(built, document, label, model, stack, outline)
-    if made is None:
+    draft = _draft(built, document, model, label)
+    stack, outline = _stack(built, draft, model)
+    if stack is None:
         return None
-    emitters, warnings = made
+    emitters = make_emitters(draft, stack, outline)
+    if draft.faults.found:
+        return None
     return replace(
         built,
         stack=stack,
         emitters=emitters,
-        warnings=warnings,
+        warnings=tuple(draft.warnings),  # those of a stack are faults, so all are of emitters
         document=document,
         model=model,
         outline=outline,
@@ -79,54 +78,49 @@ def _is_local(path: str) -> bool:
     """Whether an address is one that acts on films and emitters only, and on no wavelengths."""
     if path.startswith("layers."):
         return path.endswith(".thickness_nm")
-    return path.startswith("emitters.") and not path.endswith(".line_nm")
+    return path.startswith(("emitters.", "materials.")) and not path.endswith(".line_nm")
 
 
 def _parsed(built: Built, document: dict[str, Any]) -> CaseModel | None:
     """Model of a changed document, whose changed entries are written in full; None on a fault."""
-    update: dict[str, list[BaseModel]] = {}
-    for section in ("layers", "emitters"):
-        before, entries = built.document[section], document[section]
-        if entries is before:
+    update: dict[str, Any] = {}
+    for section in ("materials", "layers", "emitters"):
+        before, entries = built.document.get(section), document.get(section)
+        if before is None or entries is None or entries is before:
             continue
-        parts = list(getattr(built.model, section))
-        for index, entry in enumerate(entries):
-            if entry is before[index]:
+        parts = copy(getattr(built.model, section))
+        for key in entries if isinstance(entries, dict) else range(len(entries)):
+            if entries[key] is before[key]:
                 continue
             try:
-                parts[index] = type(parts[index]).model_validate(entry)
+                parts[key] = type(parts[key]).model_validate(entries[key])
             except ValidationError:
                 return None
-            entries[index] = parts[index].model_dump(by_alias=True, exclude_none=True)
+            entries[key] = parts[key].model_dump(by_alias=True, exclude_none=True)
         update[section] = parts
     return built.model.model_copy(update=update)
 
 
-def _stack(stack: Stack, outline: Outline) -> Stack:
-    """Stack with the thicknesses of an outline without fault."""
-    films = tuple(
-        film if film.thickness_nm == thickness_nm else replace(film, thickness_nm=thickness_nm)
-        for film, thickness_nm in zip(stack.films, outline.largest_nm, strict=True)
-    )
-    return replace(stack, films=films)
-
-
-def _emitters(
-    built: Built,
-    document: Mapping[str, Any],
-    label: str,
-    model: CaseModel,
-    stack: Stack,
-    outline: Outline,
-) -> tuple[tuple[Emitter, ...], tuple[str, ...]] | None:
-    """Emitters and all warnings of the case, which emitters alone cause; None on a fault."""
+def _draft(built: Built, document: Mapping[str, Any], model: CaseModel, label: str) -> Draft:
+    """Workspace of a parsed document on the wavelengths of a case."""
     faults, parts = Faults(label), Parts.of(model)
     materials = Materials(parts.materials, built.files, faults)
     draft = Draft(document, built.files, faults, model, model, parts, materials, ())
     draft.grid_nm, draft.grid_is_whole = built.wavelength_nm, True
     draft.every_nm = built.every_wavelength_nm
-    emitters = make_emitters(draft, stack, outline)
-    return None if faults.found else (emitters, tuple(draft.warnings))
+    return draft
+
+
+def _stack(built: Built, draft: Draft, model: CaseModel) -> tuple[Stack | None, Outline]:
+    """Stack and its outline; of the same materials where none of their numbers has changed."""
+    if model.materials is not built.model.materials:
+        return make_stack(draft)
+    thickness_nm = tuple(layer.thickness_nm for layer in model.layers)
+    films = tuple(
+        film if film.thickness_nm == own_nm else replace(film, thickness_nm=own_nm)
+        for film, own_nm in zip(built.stack.films, thickness_nm, strict=True)
+    )
+    return replace(built.stack, films=films), replace(built.outline, thickness_nm=thickness_nm)
 
 
 __all__ = ["rebuilt"]

@@ -323,9 +323,10 @@ def unbounded_faces(
     tuple of {"bottom", "top"}
         Empty for point zones.
     """
-    if isinstance(emitter.zone, PointZone):
-        return ()
     thickness = stack.films[emitter.film_index].thickness_nm
+    kept_away = thickness - emitter.closest_approach_nm < thickness
+    if isinstance(emitter.zone, PointZone) or kept_away:
+        return ()
     distances = absorber_distances(stack, emitter.film_index, wavelength_nm)
     interval = zone_interval(stack, emitter, wavelength_nm)
     low, high = emitter.zone.support_nm(thickness, interval)

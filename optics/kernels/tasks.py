@@ -1,6 +1,7 @@
 """Lists of integration tasks, and their sums by wavelength."""
 
-from typing import NamedTuple
+from collections.abc import Sequence
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -100,9 +101,7 @@ def dissipated_power(
     w, _, z = scale.shape
     value, miss, used = run_dissipated(problem, tasks, scale, tolerance)
     power, error = np.zeros((w, 3, z)), np.zeros(w)
-    np.add.at(power, tasks.rows, value)
-    np.add.at(error, tasks.rows, miss)
-    np.add.at(batches, tasks.rows, used)
+    _add_up(tasks.rows, (value, miss, used), (power, error, batches))
     return power, error
 
 
@@ -113,7 +112,17 @@ def every_destination(
     w, _, z = scale.shape
     value, miss, used = run_radiated(problem, tasks, scale, tolerance)
     power, error = np.zeros((w, 2, COLUMNS, z)), np.zeros(w)
-    np.add.at(power, tasks.rows, value)
-    np.add.at(error, tasks.rows, miss)
-    np.add.at(batches, tasks.rows, used)
+    _add_up(tasks.rows, (value, miss, used), (power, error, batches))
     return power, error
+
+
+def _add_up(rows: Integers, found: Sequence[NDArray[Any]], totals: Sequence[NDArray[Any]]) -> None:
+    """Add what was found by task (t, ...) to totals by wavelength (w, ...).
+
+    rows : int (t,), ascending, as those of every list of tasks are.
+    """
+    if rows.size == 0:
+        return
+    starts = np.flatnonzero(np.diff(rows, prepend=-1))
+    for values, total in zip(found, totals, strict=True):
+        total[rows[starts]] += np.add.reduceat(values, starts, axis=0)

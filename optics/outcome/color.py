@@ -9,7 +9,7 @@ from __future__ import annotations
 import os
 import secrets
 import warnings
-from functools import cache
+from functools import cache, lru_cache
 from importlib.metadata import version
 from typing import TYPE_CHECKING, Any, NamedTuple
 
@@ -116,12 +116,18 @@ def observer_at(wavelength_nm: Floats) -> Floats:
     Returns
     -------
     float (w, 3)
+        Read-only.
     """
-    table = observer()
-    columns = [
-        np.interp(wavelength_nm, table[:, 0], table[:, k], left=0.0, right=0.0) for k in (1, 2, 3)
-    ]
-    return np.stack(columns, axis=1)
+    return _observer_at(wavelength_nm.tobytes())
+
+
+@lru_cache(maxsize=64)  # studies ask thousands of times for the same wavelengths
+def _observer_at(wavelength_nm: bytes) -> Floats:
+    table, wanted = observer(), np.frombuffer(wavelength_nm)
+    columns = [np.interp(wanted, table[:, 0], table[:, k], left=0.0, right=0.0) for k in (1, 2, 3)]
+    found = np.stack(columns, axis=1)
+    found.setflags(write=False)
+    return found
 
 
 def chromaticity(tristimulus: Floats) -> tuple[Floats, Floats]:

@@ -18,7 +18,7 @@ from optics.kernels.angles import leaving
 from optics.kernels.budget import AIR_BOTTOM, AIR_TOP
 from optics.kernels.varied_directions import leaving_rates
 from optics.outcome.dual import Dual
-from optics.outcome.efficiency import orientation_average, orientation_shares
+from optics.outcome.efficiency import oriented
 from optics.outcome.light import at_rows, cores
 from optics.outcome.light_rates import rates_at_rows
 
@@ -76,13 +76,10 @@ def sources(case: Case, lit: Sequence[Lit]) -> tuple[Source, ...]:
 
 def source_of(case: Case, emitter: Emitter, light: Light, found: Emission) -> Source:
     """Light of one emitter, ready to be sent into directions; its numbers may carry rates."""
-    theta, q = emitter.horizontal_fraction, emitter.quantum_yield
-    average = found.spectrum_weight @ orientation_average(
-        light.engine.dissipation, light.bulk, theta
-    )
-    radiating = light.zone_weight * q / (1.0 - q + q * average)
+    q = emitter.quantum_yield
+    radiating = light.zone_weight * q / (1.0 - q + q * found.dissipated)
     leaves = [
-        orientation_average(light.engine.shares[..., place], light.bulk, theta) @ radiating
+        oriented(light.engine.shares[..., place], found.orientation) @ radiating
         for place in (AIR_BOTTOM, AIR_TOP)
     ]
     step_nm = trapezoid_weights(light.wavelength_nm)
@@ -93,7 +90,7 @@ def source_of(case: Case, emitter: Emitter, light: Light, found: Emission) -> So
         emitter,
         light.wavelength_nm,
         step_nm,
-        orientation_shares(light.bulk, theta),
+        found.orientation,
         light.problem,
         radiating,
         excitons * photons * HC_EV_NM / light.wavelength_nm,

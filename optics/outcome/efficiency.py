@@ -50,6 +50,8 @@ class Emission(NamedTuple):
     shares: NDArray[np.float64]  # (engine.OUTCOMES,) of the dissipated photons
     emitted_profile: NDArray[np.float64]  # (z,), sum 1, or all 0 where no light leaves
     spectrum_weight: NDArray[np.float64]  # (w,) s times trapezoid weights, sum 1
+    orientation: NDArray[np.float64]  # (w, 2) shares of the bulk rate, vertical and horizontal
+    dissipated: NDArray[np.float64]  # (z,) F, averaged over spectrum and orientation
 
 
 def orientation_average(
@@ -72,8 +74,12 @@ def orientation_average(
     -------
     float (w, z, ...)
     """
-    rate = orientation_shares(bulk, horizontal_fraction)
-    average: NDArray[np.float64] = np.einsum("wo,wzo...->wz...", rate, values)
+    return oriented(values, orientation_shares(bulk, horizontal_fraction))
+
+
+def oriented(values: NDArray[np.float64], shares: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Average (w, z, ...) of values (w, z, 2, ...) with the shares (w, 2) of both orientations."""
+    average: NDArray[np.float64] = np.einsum("wo,wzo...->wz...", shares, values)
     return average
 
 
@@ -95,10 +101,9 @@ def emission(emitter: Emitter, light: Light) -> Emission:
     """
     spectrum_weight = emitter.spectrum.weights(light.wavelength_nm)
     theta, q = emitter.horizontal_fraction, emitter.quantum_yield
-    dissipated = spectrum_weight @ orientation_average(light.engine.dissipation, light.bulk, theta)
-    shares = np.einsum(
-        "w,wzk->zk", spectrum_weight, orientation_average(light.engine.shares, light.bulk, theta)
-    )
+    orientation = orientation_shares(light.bulk, theta)
+    dissipated = spectrum_weight @ oriented(light.engine.dissipation, orientation)
+    shares = np.einsum("w,wzk->zk", spectrum_weight, oriented(light.engine.shares, orientation))
     leaving = light.zone_weight * (shares[:, engine.AIR_BOTTOM] + shares[:, engine.AIR_TOP])
     leaving = leaving / (1.0 - q + q * dissipated)
     total = leaving.sum()
@@ -106,6 +111,8 @@ def emission(emitter: Emitter, light: Light) -> Emission:
         *zone_average(q, light.zone_weight, dissipated, shares),
         emitted_profile=leaving / total if total > 0.0 else np.zeros_like(leaving),
         spectrum_weight=spectrum_weight,
+        orientation=orientation,
+        dissipated=dissipated,
     )
 
 

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from optics.device.stack import absorbs
-from optics.device.zone import absorber_distances, zone_interval, zone_quadrature
+from optics.device.zone import absorber_distances, interval_between, zone_quadrature
 from optics.kernels.budget import Budget as EngineBudget
 from optics.kernels.budget import light_budget
 from optics.kernels.exits import ABSORBING, MATCHED, OPEN, PLANAR
@@ -38,7 +38,7 @@ _SMALLEST_CHUNK = 4
 _MANY = 100
 # Rows of like devices that are computed together: enough to spread what is not compiled, few
 # enough to stay in a core's own cache.
-_ROWS_TOGETHER = 256
+_ROWS_TOGETHER = 512
 NM_PER_MM = 1e6
 
 
@@ -92,11 +92,12 @@ def quadrature(
     every = case.every_wavelength_nm
     eps = film.material.permittivity(wavelength_nm)
     index = np.sqrt(np.maximum(eps[0].real, eps[1].real))
+    distances = absorber_distances(case.stack, emitter.film_index, every)
     return zone_quadrature(
         emitter.zone,
         film.thickness_nm,
-        zone_interval(case.stack, emitter, every),
-        absorber_distances(case.stack, emitter.film_index, every),
+        interval_between(distances, film.thickness_nm, emitter.closest_approach_nm),
+        distances,
         float((wavelength_nm / (2.0 * index)).min()),
     )
 
