@@ -23,7 +23,7 @@ from optics.device.materials import TableUse, span_text
 from optics.device.salvage import known, plain_types
 from optics.device.schema import DEFAULT_UNIT, CaseModel, SideModel
 from optics.device.stack import Stack
-from optics.device.studies import check_studies
+from optics.device.studies import check_studies, check_study_names
 from optics.device.units import check_charge_balance
 
 if TYPE_CHECKING:
@@ -68,7 +68,7 @@ class Built:
         self.__dict__.update(state)
 
 
-def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
+def build(document: Mapping[str, Any], files: Files, label: str, *, is_new: bool = False) -> Built:
     """Check a document and make its objects.
 
     Parameters
@@ -79,6 +79,9 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
         Tables of the case.
     label : str
         How messages call the case.
+    is_new : bool
+        Whether it is read and not a changed copy; then the names in its studies are told with
+        other faults.
 
     Raises
     ------
@@ -92,6 +95,8 @@ def build(document: Mapping[str, Any], files: Files, label: str) -> Built:
     sides = _sides(draft)
     resolved = _resolved(draft)
     check_studies(draft, resolved)
+    if is_new and draft.faults.found:
+        check_study_names(draft, resolved)
     if draft.faults.found:
         raise CaseError(dict.fromkeys(draft.faults.found))
     # Without a fault all of these are there; the checker cannot know.

@@ -201,7 +201,7 @@ def read_case(path: str | Path) -> Case:
     except tomllib.TOMLDecodeError as error:
         raise CaseError([_syntax_fault(label, str(error), text)]) from None
     files = Files(file.parent)
-    return Case(label, file, build(document, files, label))
+    return Case(label, file, build(document, files, label, is_new=True))
 
 
 def case_from_dict(
@@ -224,7 +224,7 @@ def case_from_dict(
         With every fault.
     """
     files = Files(Path(base_folder))
-    return Case(label, None, build(document, files, label))
+    return Case(label, None, build(document, files, label, is_new=True))
 
 
 def _neighbors(file: Path) -> list[str]:

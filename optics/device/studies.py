@@ -17,7 +17,9 @@ from optics.device.address import (
 from optics.device.door import shown
 from optics.device.draft import MOST_WAVELENGTHS, STEP_SLACK, Draft
 from optics.device.errors import CaseError, Fault
-from optics.device.salvage import doubtful, known, stated
+from optics.device.outcome_names import OutcomeNames
+from optics.device.salvage import doubtful, known, plain_types, stated
+from optics.device.study_names import STUDIES, Study, name_faults
 from optics.device.study_schema import (
     AxisModel,
     ObjectiveModel,
@@ -52,6 +54,21 @@ def check_studies(draft: Draft, resolved: Mapping[str, Any]) -> None:
     for paths in studies:
         _check_orientations(draft, paths)
         _check_paths(draft, resolved, paths)
+
+
+def check_study_names(draft: Draft, resolved: Mapping[str, Any]) -> None:
+    """Note links and outcomes of the studies that are wrong whatever else is mended.
+
+    Of a case that is sound otherwise the study itself tells them, see `study_names`.
+    """
+    parts: Mapping[str, BaseModel | None] = {
+        "sweep": draft.parts.sweep,
+        "optimize": draft.parts.optimize,
+        "tolerance": draft.parts.tolerance,
+    }
+    for name, part in parts.items():
+        if part is not None:
+            _check_names(draft, resolved, STUDIES[name], part)
 
 
 def _quoted(prefix: str, path: str) -> str:
@@ -190,6 +207,29 @@ def _check_paths(draft: Draft, resolved: Mapping[str, Any], paths: Iterable[Path
             continue
         if not is_number(value):
             draft.faults.add(key, f"{shown(path)}, {shown(value)}", "the address of a number")
+
+
+def _check_names(draft: Draft, resolved: Mapping[str, Any], study: Study, part: BaseModel) -> None:
+    """Tell wrong links and outcomes beside other faults, as far as they are sure."""
+    table = plain_types(part)
+    paths = known(part, study.table)
+    names, units = draft.names("emitters"), unit_names(draft)
+    draft.faults.found += name_faults(
+        draft.faults.where,
+        study,
+        table,
+        OutcomeNames.of(
+            tuple(name for name in names if name is not None),
+            tuple(dict.fromkeys(unit for unit in units if unit is not None)),
+        ),
+        every_path=paths is not None and all(_leads(draft, resolved, path) for path in paths),
+        every_name=draft.has_sure_names("emitters") and None not in units,
+    )
+
+
+def _leads(draft: Draft, resolved: Mapping[str, Any], path: str) -> bool:
+    """Whether an address surely leads to a number; one that does not may be a misspelled other."""
+    return not _is_unsettled(draft, path) and path in numeric_addresses(resolved)
 
 
 def _is_unsettled(draft: Draft, path: str) -> bool:

@@ -14,6 +14,11 @@ from optics.present.terminal import console
 _EVERY_S = 10.0
 
 
+# The first results of several workers come nearly at once, within this time of each other, and a
+# rate rests on at least as long a time.
+_LEAST_S = 2.0
+
+
 class Show(Protocol):
     """Shows how many parts of a stage are done, and of how many."""
 
@@ -25,29 +30,59 @@ class Show(Protocol):
 def sweep_progress() -> Iterator[Show]:
     """Yield a function to call with the number of points done and of all.
 
-    A bar with the time left on a terminal, now and then a line elsewhere. The time left is
-    reckoned from the points computed in this run; those kept from an earlier one took none.
+    A bar with the time left on a terminal, now and then a line elsewhere.
     """
     out = console(sys.stderr)
     if not out.is_terminal:
         yield _Lines(out.print)
         return
     from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn
-    from rich.progress import TimeRemainingColumn as TimeLeft
 
     columns = (
-        TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(), TimeLeft(),
-        TextColumn("left"),
+        TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(),
+        TextColumn("{task.fields[left]}"),
     )  # fmt: skip
     with Progress(*columns, console=out, transient=True) as progress:
-        task = progress.add_task("points", total=None)
+        task = progress.add_task("points", total=None, left="")
+        pace = _Pace()
 
         def show(done: int, total: int, what: str = "points") -> None:
-            if progress.tasks[0].description != what:
-                progress.reset(task, description=what)
-            progress.update(task, completed=done, total=total)
+            left = pace.left(done, total, what)
+            said = "" if left is None else f"{spell(left)} left"
+            progress.update(task, completed=done, total=total, description=what, left=said)
 
         yield show
+
+
+class _Pace:
+    """Reckons the time left from what this run has done since its first results of a stage.
+
+    Results kept from an earlier run took no time in this one, and the first results may have
+    waited for the compiler.
+    """
+
+    def __init__(self) -> None:
+        self._what = ""
+        self._kept = 0
+        self._first: float | None = None  # when the first result of this run came
+        self._base = (0.0, 0)  # time and count from which the rate is reckoned
+
+    def left(self, done: int, total: int, what: str) -> float | None:
+        """Seconds left; None as long as there is nothing to reckon it from."""
+        now = time.monotonic()
+        if what != self._what:
+            self._what, self._kept, self._first = what, done, None
+        if self._first is None:
+            if done == self._kept:
+                return None
+            self._first = now
+        if now - self._first < _LEAST_S:
+            self._base = now, done
+            return None
+        began, count = self._base
+        if done == count or now - began < _LEAST_S:
+            return None
+        return (now - began) / (done - count) * (total - done)
 
 
 class _Lines:
@@ -55,23 +90,20 @@ class _Lines:
 
     def __init__(self, write: Callable[[str], None]) -> None:
         self._write = write
-        self._began = self._said = time.monotonic()
-        self._kept: int | None = None
-        self._what = "points"
+        self._said = time.monotonic()
+        self._what = ""
+        self._pace = _Pace()
 
     def __call__(self, done: int, total: int, what: str = "points") -> None:
-        now = time.monotonic()
+        left = self._pace.left(done, total, what)
         if what != self._what:
-            self._what, self._kept, self._began = what, None, now
-        if self._kept is None:
-            self._kept = done
+            self._what = what
             if done:
                 self._write(f"{done} of {total} {what} are there from an earlier run")
+        now = time.monotonic()
         if now - self._said < _EVERY_S or done == total:
             return
         self._said = now
-        fresh = done - self._kept
-        left = (now - self._began) / fresh * (total - done) if fresh else None
         self._write(f"{done} of {total} {what}" + ("" if left is None else f", {spell(left)} left"))
 
 

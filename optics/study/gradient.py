@@ -9,11 +9,12 @@ import numpy as np
 
 from optics.device.direction import Direction, NumberStep, why_not_differentiable
 from optics.device.errors import CaseError, Fault
+from optics.device.outcome_names import SIDES
 from optics.outcome.chain import budget_numbers
 from optics.outcome.derivative import VariedDevice, shine_with_rates
 from optics.outcome.dual import rates_of, value_of
 from optics.outcome.view import View
-from optics.study.outcomes import SIDES, Outcome, angles_needed, read_outcome
+from optics.study.outcomes import Outcome, angles_needed, read_outcome
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray

@@ -11,12 +11,12 @@ from optics.outcome.budget import DEFAULT_TOLERANCE
 from optics.study.evaluate import TRUST
 from optics.study.executor import executor_or_threads
 from optics.study.optimize_front import find_front
-from optics.study.optimize_goals import meets, single_goal, spreads
+from optics.study.optimize_goals import meets, spreads
 from optics.study.optimize_plan import Aim, plan_optimize
 from optics.study.optimize_reach import meet_limits
-from optics.study.optimize_result import Ends, front_optimum, single_optimum
+from optics.study.optimize_result import Ends, best_optima, front_optimum, single_optimum
 from optics.study.optimize_runner import Progress, Runner
-from optics.study.optimize_search import search, spread_points, usual_count
+from optics.study.optimize_search import spread_points, usual_count
 from optics.study.optimize_surrogate import Sample
 
 if TYPE_CHECKING:
@@ -93,6 +93,14 @@ def optimize(
 
 def run_optimize(runner: Runner, seed: int, samples: int | None = None) -> Optimum:
     """Run a checked optimization; as `optimize`, but the caller discards what is kept."""
+    ends = first_stage(runner, seed, samples)
+    if len(runner.aim.objectives) > 1:
+        return front_optimum(runner, ends, find_front(runner, ends.sample, ends.spread))
+    return single_optimum(runner, ends, best_optima(runner, ends))
+
+
+def first_stage(runner: Runner, seed: int, samples: int | None = None) -> Ends:
+    """Compute points between the bounds, and if none meets the limits, search for those that do."""
     aim = runner.aim
     count = _count(len(aim.variables), samples)
     if seed < 0:
@@ -101,11 +109,7 @@ def run_optimize(runner: Runner, seed: int, samples: int | None = None) -> Optim
     sample, spread = first.sample, spreads(first.sample.outcomes)
     if not meets(aim, sample.outcomes).any():
         sample = meet_limits(runner, sample, spread)
-    ends = Ends(sample, spread, len(first.found), first.failed, seed)
-    if len(aim.objectives) > 1:
-        return front_optimum(runner, ends, find_front(runner, sample, spread))
-    goal = single_goal(aim, aim.objectives[0], spread)
-    return single_optimum(runner, ends, goal, search(runner, goal, sample))
+    return Ends(sample, spread, len(first.found), first.failed, seed)
 
 
 class _First(NamedTuple):

@@ -9,9 +9,9 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from optics.device.errors import CaseError, Fault
+from optics.device.study_names import STUDIES, followers, name_faults
 from optics.study.evaluate import Question
-from optics.study.linked import Varied, find_followers
-from optics.study.outcomes import Outcome, find_outcomes
+from optics.study.outcomes import find_outcomes, outcome_names
 from optics.study.varied import path_unit, refused
 
 if TYPE_CHECKING:
@@ -138,21 +138,21 @@ def plan_optimize(case: Case, tolerance: float) -> Aim:
         for path, entry in study["variables"].items()
     )
     paths = tuple(one.path for one in variables)
-    faults: list[Fault] = []
-    varied = Varied(_STUDY, "variables", "varied", paths)
-    followers = find_followers(case, varied, study.get("linked") or {}, faults)
-    wanted = _wanted(study, case.label, faults)
+    faults = name_faults(case.label, STUDIES[_STUDY], study, outcome_names(case))
+    linked = followers(STUDIES[_STUDY], study)
+    wanted = _wanted(study)
     limited = study.get("constraints") or {}
-    outcomes = _outcomes(case, paths, wanted, limited, faults)
+    # An outcome may be wanted and limited.
+    names = list(dict.fromkeys([*(name for name, _ in wanted), *limited]))
     for place in range(len(variables)):
-        _check_bounds(case, variables, place, followers, faults)
+        _check_bounds(case, variables, place, linked, faults)
     if faults:
         raise CaseError(faults)
-    names = [one.name for one in outcomes]
+    outcomes = find_outcomes(case, {f"optimize ({name})": name for name in names})
     return Aim(
-        Question(case, paths, followers, outcomes, tolerance),
+        Question(case, paths, linked, outcomes, tolerance),
         variables,
-        tuple(Objective(name, sign, names.index(name)) for _, name, sign in wanted),
+        tuple(Objective(name, sign, names.index(name)) for name, sign in wanted),
         tuple(
             Limit(name, sign, float(limit[word]), names.index(name))
             for name, limit in limited.items()
@@ -162,58 +162,21 @@ def plan_optimize(case: Case, tolerance: float) -> Aim:
     )
 
 
-def _wanted(
-    study: Mapping[str, Any], label: str, faults: list[Fault]
-) -> list[tuple[str, str, int]]:
-    """Key, name and sign of every objective."""
-    listed = study.get("objectives")
-    entries = (
-        [(_STUDY, study)]
-        if listed is None
-        else [(f"optimize.objectives[{place}]", entry) for place, entry in enumerate(listed)]
-    )
-    found: list[tuple[str, str, int]] = []
-    for prefix, entry in entries:
-        for word, sign in (("maximize", 1), ("minimize", -1)):
-            name = entry.get(word)
-            if name is None:
-                continue
-            if any(name == other for _, other, _ in found):
-                faults.append(Fault(label, f"{prefix}.{word}", f"{name} again", "each once"))
-            found.append((f"{prefix}.{word}", name, sign))
-    return found
-
-
-def _outcomes(
-    case: Case,
-    paths: tuple[str, ...],
-    wanted: list[tuple[str, str, int]],
-    limited: Mapping[str, Any],
-    faults: list[Fault],
-) -> tuple[Outcome, ...]:
-    """Look up every outcome once, although it may be wanted and limited."""
-    keys: dict[str, str] = {}
-    for key, name in [
-        *((key, name) for key, name, _ in wanted),
-        *((f'optimize.constraints."{name}"', name) for name in limited),
-    ]:
-        if name in paths:
-            expected = "an outcome that is no variable"
-            faults.append(Fault(case.label, key, f"{name}, which is varied", expected))
-        elif name not in keys.values():
-            keys[key] = name
-    try:
-        return find_outcomes(case, keys)
-    except CaseError as error:
-        faults.extend(error.faults)
-        return ()
+def _wanted(study: Mapping[str, Any]) -> list[tuple[str, int]]:
+    """Name and sign of every objective."""
+    return [
+        (entry[word], sign)
+        for entry in study.get("objectives") or [study]
+        for word, sign in (("maximize", 1), ("minimize", -1))
+        if entry.get(word) is not None
+    ]
 
 
 def _check_bounds(
     case: Case,
     variables: tuple[Variable, ...],
     place: int,
-    followers: tuple[tuple[str, int], ...],
+    linked: tuple[tuple[str, int], ...],
     faults: list[Fault],
 ) -> None:
     """Note if the case refuses a bound, whether the others stand as they are or in the middle.
@@ -221,9 +184,9 @@ def _check_bounds(
     What is refused only in between, or only together with other values, is told as failed points.
     """
     one = variables[place]
-    alone = [path for path, leader in followers if leader == place]
+    alone = [path for path, leader in linked if leader == place]
     middle = {other.path: 0.5 * (other.low + other.high) for other in variables}
-    middle |= {path: middle[variables[leader].path] for path, leader in followers}
+    middle |= {path: middle[variables[leader].path] for path, leader in linked}
     for word, value in (("min", one.low), ("max", one.high)):
         changes = dict.fromkeys([one.path, *alone], value)
         found = refused(case, changes)

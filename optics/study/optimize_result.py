@@ -12,8 +12,8 @@ from optics.study.evaluate import TRUST, answer
 from optics.study.optimize_bind import find_binding
 from optics.study.optimize_flat import Summit, flat_ranges, loosest, size_of, slices
 from optics.study.optimize_front import Front, undominated
-from optics.study.optimize_goals import gradient_of_objective, meets
-from optics.study.optimize_search import close
+from optics.study.optimize_goals import gradient_of_objective, meets, single_goal
+from optics.study.optimize_search import Searched, close, search
 from optics.study.optimum import (
     ConstraintFound,
     ObjectiveFound,
@@ -28,10 +28,9 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from optics.study.optimize_bind import Binding
-    from optics.study.optimize_local import Goal
+    from optics.study.optimize_local import Polished
     from optics.study.optimize_plan import Aim
     from optics.study.optimize_runner import Runner
-    from optics.study.optimize_search import Searched
     from optics.study.optimize_settle import Settled
     from optics.study.optimize_surrogate import Sample
 
@@ -50,17 +49,35 @@ class Ends(NamedTuple):
     seed: int
 
 
-def single_optimum(runner: Runner, first: Ends, goal: Goal, found: Searched) -> Optimum:
-    """Result for one objective."""
-    aim = runner.aim
-    (objective,) = aim.objectives
+class Best(NamedTuple):
+    """Optima of one objective that are within 1 %, the best first, as found and as written."""
+
+    ends: tuple[Polished, ...]
+    settled: tuple[Settled, ...]
+    searched: Searched
+
+
+def best_optima(runner: Runner, first: Ends) -> Best:
+    """Search for the one objective of an aim, and round what is found."""
+    (objective,) = runner.aim.objectives
+    goal = single_goal(runner.aim, objective, first.spread)
+    found = search(runner, goal, first.sample)
     optima = close(found.optima)
     settled = runner.settle([(goal, one) for one in optima], "flatness")
     order = sorted(
         range(len(optima)),
         key=lambda place: -objective.sign * float(settled[place].found[objective.place]),
     )
-    best, end = settled[order[0]], optima[order[0]]
+    return Best(
+        tuple(optima[place] for place in order), tuple(settled[place] for place in order), found
+    )
+
+
+def single_optimum(runner: Runner, first: Ends, found: Best) -> Optimum:
+    """Result for one objective: what binds at the best point, and how flat it is."""
+    aim = runner.aim
+    (objective,) = aim.objectives
+    best, end = found.settled[0], found.ends[0]
     top = Summit(aim.unit_at(best.point), best.found[: -len(TRUST)])
     size = size_of(float(top.outcomes[objective.place]), float(first.spread[objective.place]))
     (slope,) = runner.slopes(end.unit[None], "flatness")
@@ -77,14 +94,14 @@ def single_optimum(runner: Runner, first: Ends, goal: Goal, found: Searched) -> 
         variables=_variables(aim, best, binding, ranges),
         constraints=_constraints(aim, best, binding),
         best=_point(aim, best.point, best.found),
-        others=tuple(_point(aim, settled[i].point, settled[i].found) for i in order[1:]),
+        others=tuple(_point(aim, one.point, one.found) for one in found.settled[1:]),
         front=(),
         loosest=direction,
         slices=cut,
-        tried=_tried(runner, first, [found], found.starts),
+        tried=_tried(runner, first, [found.searched], found.searched.starts),
         accuracy=_accuracy(best.found),
         warnings=_warnings(runner, first, [best], not end.settled),
-        frame=_frame(aim, first.sample, [best, *(settled[i] for i in order[1:])]),
+        frame=_frame(aim, first.sample, found.settled),
     )
 
 

@@ -1,49 +1,19 @@
-"""Outcomes by name, such as ``external_quantum_efficiency`` or ``bottom.delta_uv_60``.
-
-A full name says where an outcome lies: ``destinations.guided``, ``emitters.green.purcell_factor``,
-``chain.device.nonradiative``, ``bottom.x_normal``. A shorter one will do where only one outcome
-can be meant, and a bare name is the device's own value where the device has one.
-"""
+"""Outcomes of a case by their names (`optics.device.outcome_names`), and read from results."""
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, fields, replace
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-from optics.device.errors import CaseError, Fault, nearest
+from optics.device.errors import CaseError
+from optics.device.outcome_names import DESTINATIONS, SIDES, OutcomeNames
 
 if TYPE_CHECKING:
     from optics.device.case import Case
     from optics.outcome.budget import Budget
     from optics.outcome.side import SideAngular
     from optics.outcome.view import View
-
-SIDES = ("bottom", "top")
-_DEVICE = (
-    "external_quantum_efficiency",
-    "external_quantum_efficiency_bottom",
-    "external_quantum_efficiency_top",
-    "external_quantum_efficiency_matched",
-    "outcoupling_efficiency",
-)
-_EMITTER = (
-    "external_quantum_efficiency",
-    "outcoupling_efficiency",
-    "radiative_efficiency",
-    "purcell_factor",
-    "decay_rate_ratio",
-    "horizontal_fraction",
-    "vertical_fraction",
-    "order_parameter",
-    "near_field_share",
-    "lost_share",
-)
-_CHAIN = ("unbalanced", "dark_excitons", "nonradiative")
-_ACCURACY = ("energy_balance", "integration_error")
-_AT_ANGLE = re.compile(r"(?P<base>.+)_(?P<angle>\d+(\.\d+)?)")
-_MOST_LISTED = 8
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,7 +49,7 @@ class Outcome:
 
 def default_outcomes() -> tuple[str, ...]:
     """Names of what a study shows if nothing was asked for: the EQE and all destinations."""
-    return ("external_quantum_efficiency", *(f"destinations.{name}" for name in _destinations()))
+    return ("external_quantum_efficiency", *(f"destinations.{name}" for name in DESTINATIONS))
 
 
 def find_outcomes(case: Case, names: Mapping[str, str]) -> tuple[Outcome, ...]:
@@ -97,20 +67,15 @@ def find_outcomes(case: Case, names: Mapping[str, str]) -> tuple[Outcome, ...]:
         With every name that is unknown (and the nearest one), ambiguous (and what it may mean)
         or given twice.
     """
-    plain, curves = _single_numbers(case), _curves()
-    found: list[Outcome] = []
-    faults: list[Fault] = []
-    for key, name in names.items():
-        answer = _find(name, plain, curves)
-        if isinstance(answer, Outcome):
-            if any(other.name == name for other in found):
-                faults.append(Fault(case.label, key, f"{name} again", "each outcome once"))
-            found.append(answer)
-        else:
-            faults.append(replace(answer, where=case.label, key=key))
+    found, faults = outcome_names(case).find_all(names.items(), case.label)
     if faults:
         raise CaseError(faults)
-    return tuple(found)
+    return tuple(Outcome(name, place.keys, place.angle_deg) for name, place in found)
+
+
+def outcome_names(case: Case) -> OutcomeNames:
+    """Names of all outcomes of a case."""
+    return OutcomeNames.of(tuple(emitter.name for emitter in case.emitters), case.units)
 
 
 def angles_needed(outcomes: Iterable[Outcome]) -> tuple[float, ...]:
@@ -163,76 +128,3 @@ def _inside(result: Any, keys: Sequence[str]) -> Any:
     for key in keys:
         result = result[key] if isinstance(result, Mapping) else getattr(result, key)
     return result
-
-
-def _destinations() -> tuple[str, ...]:
-    from optics.outcome.efficiency import DESTINATIONS
-
-    return tuple(DESTINATIONS)
-
-
-def _single_numbers(case: Case) -> dict[str, tuple[str, ...]]:
-    """Keys of every outcome that is one number, by full name, the device's own first."""
-    places: list[tuple[str, ...]] = [(key,) for key in _DEVICE]
-    places += [("destinations", key) for key in _destinations()]
-    places += [("accuracy", key) for key in _ACCURACY]
-    for emitter in case.emitters:
-        places += [("emitters", emitter.name, key) for key in _EMITTER]
-        places += [("emitters", emitter.name, "destinations", key) for key in _destinations()]
-    for unit in case.units:
-        places += [("chain", unit, key) for key in (*_CHAIN, *_destinations())]
-    places += [(side, key) for side in SIDES for key in _side_keys("float")]
-    places += [(side, "color_rendering_index") for side in SIDES]
-    return {".".join(keys): keys for keys in places}
-
-
-def _curves() -> dict[str, tuple[str, ...]]:
-    """Keys of every outcome that has one value at each angle, by full name without the angle."""
-    return {f"{side}.{key}": (side, key) for side in SIDES for key in _side_keys("Curve")}
-
-
-def _side_keys(kind: str) -> list[str]:
-    """Names of a side's numbers (kind "float") or curves ("Curve"), by their declared types."""
-    from optics.outcome.side import SideAngular
-
-    return [one.name for one in fields(SideAngular) if str(one.type).split(" ")[0] == kind]
-
-
-def _find(
-    name: str, plain: Mapping[str, tuple[str, ...]], curves: Mapping[str, tuple[str, ...]]
-) -> Outcome | Fault:
-    """Outcome of a name, or the fault without its place."""
-    meant = _meant(name, plain)
-    if len(meant) == 1:
-        return Outcome(name, plain[meant[0]])
-    match = _AT_ANGLE.fullmatch(name)
-    if not meant and match is not None:
-        angle = float(match["angle"])
-        meant = [f"{one}_{match['angle']}" for one in _meant(match["base"], curves)]
-        if meant and angle > 90.0:
-            return Fault("", "", f"{name}, {angle:g} degrees", "an angle from 0 to 90 degrees")
-        if len(meant) == 1:
-            return Outcome(name, curves[_meant(match["base"], curves)[0]], angle)
-    if meant:
-        listed = ", ".join(meant[:_MOST_LISTED]) + (", ..." if len(meant) > _MOST_LISTED else "")
-        return Fault("", "", f"{name}, which may mean several", f"one of {listed}")
-    if _meant(name, curves):
-        return Fault("", "", f"{name} without an angle", f"such as {name}_60 for 60 degrees")
-    return Fault(
-        "", "", f"{name}, no such outcome", "the name of an outcome", _near(name, plain, curves)
-    )
-
-
-def _meant(name: str, known: Iterable[str]) -> list[str]:
-    """Full names that a name may stand for: itself, or all that end in it."""
-    names = list(known)
-    return [name] if name in names else [one for one in names if one.endswith(f".{name}")]
-
-
-def _near(name: str, plain: Iterable[str], curves: Iterable[str]) -> str | None:
-    """Return the known name that looks most like a misspelled one, at its length."""
-    match = _AT_ANGLE.fullmatch(name)
-    angled = [f"{one}_{match['angle']}" for one in curves] if match else []
-    full = [*plain, *angled]
-    last = [one.rpartition(".")[2] for one in full]
-    return nearest(name, full if "." in name else [*last, *full])

@@ -8,9 +8,10 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from optics.device.direction import Direction, IndexStep, NumberStep, ZoneStep
+from optics.device.outcome_names import SIDES
 from optics.outcome.budget import DEFAULT_TOLERANCE
 from optics.study.gradient import outcomes_and_rates
-from optics.study.outcomes import SIDES, find_outcomes
+from optics.study.outcomes import find_outcomes
 
 if TYPE_CHECKING:
     import numpy as np

@@ -10,9 +10,9 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from optics.device.errors import CaseError, Fault
+from optics.device.study_names import STUDIES, followers, name_faults
 from optics.study.evaluate import Batch, Question
-from optics.study.linked import Varied, find_followers
-from optics.study.outcomes import Outcome, default_outcomes, find_outcomes
+from optics.study.outcomes import default_outcomes, find_outcomes, outcome_names
 from optics.study.varied import path_unit, refused
 
 if TYPE_CHECKING:
@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     Floats = NDArray[np.float64]
     Integers = NDArray[np.int64]
 
+_SWEEP = STUDIES["sweep"]
 # Numbers of one result, so that it stays well below a gigabyte.
 LARGEST_RESULT = 40_000_000
 
@@ -93,12 +94,12 @@ def plan_sweep(case: Case, tolerance: float) -> Plan:
     if study is None:
         raise CaseError([Fault(case.label, "sweep", "no such table", "a table with sweep.axes")])
     axes = tuple(Axis(path, _values(entry)) for path, entry in study["axes"].items())
-    faults: list[Fault] = []
+    faults = name_faults(case.label, _SWEEP, study, outcome_names(case))
+    # Of wrong names none is left to be computed.
+    asked = () if faults else study.get("outcomes") or default_outcomes()
+    outcomes = find_outcomes(case, {f"sweep.outcomes ({name})": name for name in asked})
     paths = tuple(axis.path for axis in axes)
-    varied = Varied("sweep", "axes", "swept", paths)
-    followers = find_followers(case, varied, study.get("linked", {}), faults)
-    outcomes = _outcomes(case, axes, study.get("outcomes"), faults)
-    plan = Plan(Question(case, paths, followers, outcomes, tolerance), axes)
+    plan = Plan(Question(case, paths, followers(_SWEEP, study), outcomes, tolerance), axes)
     _check_size(plan, faults)
     for place, axis in enumerate(axes):
         twice = sorted({value for value in axis.values if axis.values.count(value) > 1})
@@ -121,25 +122,6 @@ def _values(entry: Mapping[str, Any]) -> tuple[float, ...]:
     count = round((stop - start) / step)
     # Both ends exact, and decimal steps without the dust of binary sums.
     return tuple(float(f"{start + (stop - start) * i / count:.12g}") for i in range(count + 1))
-
-
-def _outcomes(
-    case: Case, axes: tuple[Axis, ...], asked: list[str] | None, faults: list[Fault]
-) -> tuple[Outcome, ...]:
-    names = (
-        {f"sweep.outcomes[{place}]": name for place, name in enumerate(asked)}
-        if asked is not None
-        else {f"sweep.outcomes ({name})": name for name in default_outcomes()}
-    )
-    for key, name in names.items():
-        if any(axis.path == name for axis in axes):
-            expected = "an outcome that is no axis"
-            faults.append(Fault(case.label, key, f"{name}, which is swept", expected))
-    try:
-        return find_outcomes(case, names)
-    except CaseError as error:
-        faults.extend(error.faults)
-        return ()
 
 
 def _check_size(plan: Plan, faults: list[Fault]) -> None:

@@ -9,10 +9,10 @@ from typing import TYPE_CHECKING, Any, NamedTuple
 import numpy as np
 
 from optics.device.errors import CaseError, Fault
+from optics.device.study_names import STUDIES, followers, name_faults
 from optics.study.draws import Group, Spread, correlation_range
 from optics.study.evaluate import Question
-from optics.study.linked import Varied, find_followers
-from optics.study.outcomes import Outcome, find_outcomes
+from optics.study.outcomes import Outcome, find_outcomes, outcome_names
 from optics.study.sweep_plan import LARGEST_RESULT
 from optics.study.varied import refused
 
@@ -102,13 +102,14 @@ def plan_tolerance(
     if study is None:
         expected = "a table with tolerance.spread"
         raise CaseError([Fault(case.label, _STUDY, "no such table", expected)])
-    faults: list[Fault] = []
+    faults = name_faults(case.label, STUDIES[_STUDY], study, outcome_names(case))
+    # Of wrong names none is left to be computed.
+    outcomes = () if faults else _outcomes(case, study)
     paths = tuple(study["spread"])
     spreads = tuple(_spread(case, path, study["spread"][path], faults) for path in paths)
-    varied = Varied(_STUDY, "spread", "varied", paths)
-    followers = find_followers(case, varied, study.get("linked") or {}, faults)
+    linked = followers(STUDIES[_STUDY], study)
     for place, spread in enumerate(spreads):
-        alone = [path for path, leader in followers if leader == place]
+        alone = [path for path, leader in linked if leader == place]
         _check_ends(case, spread, alone, faults)
     # Every group keeps the order of the spreads.
     groups = tuple(
@@ -118,14 +119,13 @@ def plan_tolerance(
     for index, group in enumerate(groups):
         _check_correlation(case, spreads, index, group, faults)
     limited: Mapping[str, Any] = study.get("limits") or {}
-    outcomes = _outcomes(case, paths, study.get("outcomes"), limited, faults)
     count = study["samples"] if samples is None else samples
     _check_size(case, count, len(outcomes) + len(paths), faults)
     if faults:
         raise CaseError(faults)
     names = [outcome.name for outcome in outcomes]
     return Plan(
-        Question(case, paths, followers, outcomes, tolerance),
+        Question(case, paths, linked, outcomes, tolerance),
         spreads,
         groups,
         tuple(
@@ -176,28 +176,11 @@ def _check_correlation(
         faults.append(Fault(case.label, key, f"{group.correlation:.10g}", expected))
 
 
-def _outcomes(
-    case: Case,
-    paths: Sequence[str],
-    asked: Sequence[str] | None,
-    limited: Mapping[str, Any],
-    faults: list[Fault],
-) -> tuple[Outcome, ...]:
+def _outcomes(case: Case, study: Mapping[str, Any]) -> tuple[Outcome, ...]:
     """Look up the outcomes asked for, or the EQE, then those with limits, each once."""
-    keys = {f"tolerance.outcomes[{place}]": name for place, name in enumerate(asked or ())}
-    if asked is None:
-        keys[f"tolerance.outcomes ({_FIRST})"] = _FIRST
-    named = set(keys.values())
-    keys |= {f'tolerance.limits."{name}"': name for name in limited if name not in named}
-    for key, name in keys.items():
-        if name in paths:
-            expected = "an outcome that is not varied"
-            faults.append(Fault(case.label, key, f"{name}, which is varied", expected))
-    try:
-        return find_outcomes(case, keys)
-    except CaseError as error:
-        faults.extend(error.faults)
-        return ()
+    asked = (_FIRST,) if study.get("outcomes") is None else study["outcomes"]
+    names = dict.fromkeys([*asked, *(study.get("limits") or {})])
+    return find_outcomes(case, {f"tolerance ({name})": name for name in names})
 
 
 def _check_size(case: Case, samples: int, columns: int, faults: list[Fault]) -> None:

@@ -7,14 +7,13 @@ axis with its poles located, says what is right. Random stacks are invented.
 
 from __future__ import annotations
 
-from dataclasses import replace
-
 import numpy as np
 import pytest
 import reference_fields as fields
 import reference_paths as paths
 from reference import Reference, Result
 from reference_cases import load
+from reference_kept import literal
 from scipy.optimize import brentq
 from stacks import (
     DESTINATIONS,
@@ -28,6 +27,7 @@ from stacks import (
     problem_of,
     solved,
 )
+from thin_metals import BEYOND, FAR, NEAR, TRAP, WITHIN, far_metal, thin_metal
 
 from optics.kernels import budget as engine
 from optics.kernels.budget import light_budget
@@ -35,23 +35,6 @@ from optics.kernels.geometry import MediaFacts, backward_modes_possible, media_f
 from optics.kernels.problem import Problem
 
 PROMISE = 1e-6
-
-
-def thin_metal(seed: int) -> Reference:
-    """Re eps from -0.5 to -12, 5 to 40 nm, between films of n = 1.4 to 2.6; dipole 2 nm off."""
-    draw = np.random.default_rng(seed)
-    n = draw.uniform(1.4, 2.6, 3)
-    eps = complex(-draw.uniform(0.5, 12.0), 10 ** draw.uniform(-2.5, 0.0))
-    films = [
-        film(n[0], draw.uniform(5, 80)),
-        film(n[1], draw.uniform(20, 80)),
-        metal(eps, draw.uniform(5, 40)),
-        film(n[2], draw.uniform(5, 80)),
-    ]
-    below = bool(draw.integers(2))
-    own = films[1 if below else 3]
-    z_nm = draw.uniform(0.0, own[2] - 2.0) if below else draw.uniform(2.0, own[2])
-    return Reference(450.0, films, draw.uniform(1.0, 2.0) ** 2, 1.0, 1 if below else 3, z_nm)
 
 
 def misses(found: engine.Budget, right: Result) -> float:
@@ -67,7 +50,7 @@ def misses(found: engine.Budget, right: Result) -> float:
 
 def check(stack: Reference) -> None:
     try:
-        right = stack.destinations(1e-9)
+        right = literal(stack, 1e-9)
     except ArithmeticError as reason:
         pytest.skip(f"the literal model refuses: {reason}")
     found = solved(stack)
@@ -82,47 +65,33 @@ def test_random_metal_near_resonance(seed: int) -> None:
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("seed", range(8, 200))
+@pytest.mark.parametrize("seed", range(8, NEAR))
 def test_many_random_metals_near_resonance(seed: int) -> None:
     check(thin_metal(seed))
 
 
-def far_metal(seed: int, factor: float) -> Reference:
-    """A metal just beyond the factor, so the engine does not look for backward modes."""
-    stack = thin_metal(seed)
-    largest = max(*(f[0].real for f in stack.films), stack.bottom.real)
-    draw = np.random.default_rng(seed + 10_000)
-    eps = complex(-factor * largest * draw.uniform(1.0, 1.1), stack.films[2][0].imag)
-    films = [*stack.films[:2], metal(eps, stack.films[2][2]), stack.films[3]]
-    return replace(stack, films=films, _made=[])
-
-
 @pytest.mark.parametrize(
-    "seed", [0, 1, *(pytest.param(s, marks=pytest.mark.slow) for s in range(2, 60))]
+    "seed", [0, 1, *(pytest.param(s, marks=pytest.mark.slow) for s in range(2, FAR))]
 )
 def test_metal_beyond_the_factor_needs_no_second_path(seed: int) -> None:
-    stack = far_metal(seed, 4.0)
+    stack = far_metal(seed, BEYOND)
     assert not backward_modes_possible(problem_of(stack))[0]
     check(stack)
 
 
 @pytest.mark.parametrize(
-    "seed", [0, 1, *(pytest.param(s, marks=pytest.mark.slow) for s in range(2, 60))]
+    "seed", [0, 1, *(pytest.param(s, marks=pytest.mark.slow) for s in range(2, FAR))]
 )
 def test_metal_not_so_near_resonance_gets_a_second_look(seed: int) -> None:
-    stack = far_metal(seed, 1.5)
+    stack = far_metal(seed, WITHIN)
     assert backward_modes_possible(problem_of(stack))[0]
     check(stack)
-
-
-# A seed with a backward mode that an arc of depth k0 passes under, unseen by the balance.
-TRAP = 1064
 
 
 def test_the_fast_way_alone_would_be_wrong(monkeypatch: pytest.MonkeyPatch) -> None:
     """With the careful way shut off the trap closes, unseen: it is what makes the answer right."""
     stack = thin_metal(TRAP)
-    right = stack.destinations(1e-9)
+    right = literal(stack, 1e-9)
     careful = solved(stack)
     assert careful.careful[0]
     assert misses(careful, right) <= PROMISE

@@ -30,6 +30,8 @@ STACKS["one absorber"] = Reference(
 STACKS["hidden mode"] = Reference(
     385, [film(1.5, 400), film(1.75, 80), film(1.5, 2500)], 1.5**2, 1.72**2, 1, 30.0
 )
+# What resolves a hidden mode is interpreted line by line; a coarse answer takes the same lines.
+TOLERANCES = {"one absorber": 1e-9, "hidden mode": 1e-3}
 
 
 def plant(mode: str) -> None:
@@ -52,7 +54,7 @@ def plant(mode: str) -> None:
 
 
 def outcome(name: str) -> dict[str, Any]:
-    found = solved(STACKS[name], 1e-9 if name == "one absorber" else 1e-6)
+    found = solved(STACKS[name], TOLERANCES.get(name, 1e-6))
     return {
         "shares": found.shares.tolist(),
         "dissipation": found.dissipation.tolist(),

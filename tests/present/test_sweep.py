@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import json
 import signal
-import subprocess
 import sys
 import time
 from pathlib import Path
@@ -15,6 +14,7 @@ import numpy as np
 import pytest
 import xarray
 from click.testing import CliRunner, Result
+from own_process import kept_in, stopped
 from study_case import DEVICE
 
 from optics.cli import main
@@ -104,15 +104,36 @@ def test_words_name_ranges_best_points_and_failures(capsys: pytest.CaptureFixtur
     assert "Warning: take care" in said
 
 
-def test_time_left_is_reckoned_from_this_run_only(monkeypatch: pytest.MonkeyPatch) -> None:
-    clock = [0.0]
-    monkeypatch.setattr(time, "monotonic", lambda: clock[0])
+@pytest.fixture
+def clock(monkeypatch: pytest.MonkeyPatch) -> list[float]:
+    """The time in seconds, to be set."""
+    now = [0.0]
+    monkeypatch.setattr(time, "monotonic", lambda: now[0])
+    return now
+
+
+def test_time_left_is_reckoned_from_this_run_only(clock: list[float]) -> None:
     said: list[str] = []
     lines = _Lines(said.append)
     for clock[0], done in ((0.0, 50), (5.0, 60), (20.0, 70), (40.0, 100)):
         lines(done, 100)
-    assert said == ["50 of 100 points are there from an earlier run", "70 of 100 points, 30 s left"]
+    assert said == ["50 of 100 points are there from an earlier run", "70 of 100 points, 45 s left"]
     assert [spell(s) for s in (3.2, 59.6, 600.0, 7500.0)] == ["3 s", "1 min", "10 min", "2 h 5 min"]
+
+
+def test_time_left_knows_nothing_of_the_first_compilation(clock: list[float]) -> None:
+    """A minute for the compiler, then 10 points every 5 s: 160 points take 80 s."""
+    said: list[str] = []
+    lines = _Lines(said.append)
+    # Two workers that waited for the same compiler come at once, which is no rate.
+    steps = [(0.0, 0), (60.0, 10), (60.1, 20), (65.0, 20), (65.1, 30), (70.1, 40), (75.1, 50)]
+    for clock[0], done in steps:
+        lines(done, 200)
+    assert said == ["10 of 200 points", "40 of 200 points, 1 min left"]
+    # Each stage may begin with a compilation of its own.
+    for clock[0], done in ((80.0, 0), (160.0, 1), (171.0, 2)):
+        lines(done, 4, "polishing")
+    assert said[2:] == ["1 of 4 polishing", "2 of 4 polishing, 22 s left"]
 
 
 @pytest.mark.parametrize(
@@ -239,25 +260,7 @@ def test_ctrl_c_keeps_what_is_done(tmp_path: Path) -> None:
     case = tmp_path / "case.toml"
     many = '"materials.host.n" = { start = 1.6, stop = 1.9, step = 0.0001 }\n'
     case.write_text(CASE + many)
-    command = [sys.executable, "-m", "optics.cli", "sweep", str(case)]
-    environment = {"XDG_CACHE_HOME": str(tmp_path), "PATH": "", "PYTHONUNBUFFERED": "1"}
-    with subprocess.Popen(
-        command,
-        stderr=subprocess.PIPE,
-        text=True,
-        env=environment,
-        # A test run in the background inherits deafness to Ctrl-C.
-        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
-    ) as process:
-        deadline = time.monotonic() + 300
-        kept = tmp_path / "outcouple" / "studies"
-        seen: set[int] = set()
-        # Once the file has grown there are points to keep.
-        while len(seen) < 2 and time.monotonic() < deadline:
-            seen |= {part.stat().st_size for part in kept.glob("sweep-*.part")}
-            time.sleep(0.1)
-        process.send_signal(signal.SIGINT)
-        _, said = process.communicate(timeout=60)
-    assert process.returncode == 1
+    status, said = stopped(tmp_path, signal.SIGINT, "sweep", str(case))
+    assert status == 1
     assert "points are kept; the same command continues from there." in said
-    assert len(list(kept.glob("sweep-*.part"))) == 1
+    assert [part.name.split("-")[0] for part in kept_in(tmp_path)] == ["sweep"]

@@ -4,11 +4,8 @@ from __future__ import annotations
 
 import json
 import signal
-import subprocess
 import sys
-import time
 from pathlib import Path
-from typing import Any
 
 import matplotlib as mpl
 import numpy as np
@@ -16,6 +13,7 @@ import pytest
 import xarray
 from click.testing import CliRunner, Result
 from matplotlib.colors import to_hex
+from own_process import kept_in, stopped
 from study_case import DEVICE
 
 from optics.cli import main
@@ -280,33 +278,7 @@ def test_command_names_failed_samples_with_status_1_and_writes_the_rest(case: Pa
 def test_ctrl_c_keeps_what_is_done(tmp_path: Path) -> None:
     case = tmp_path / "case.toml"
     case.write_text(CASE)
-    command: list[Any] = [
-        sys.executable,
-        "-m",
-        "optics.cli",
-        "tolerance",
-        case,
-        "--samples",
-        "50000",
-    ]
-    environment = {"XDG_CACHE_HOME": str(tmp_path), "PATH": "", "PYTHONUNBUFFERED": "1"}
-    with subprocess.Popen(
-        command,
-        stderr=subprocess.PIPE,
-        text=True,
-        env=environment,
-        # A test run in the background inherits deafness to Ctrl-C.
-        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
-    ) as process:
-        deadline = time.monotonic() + 300
-        kept = tmp_path / "outcouple" / "studies"
-        seen: set[int] = set()
-        # Once the file has grown there are points to keep.
-        while len(seen) < 2 and time.monotonic() < deadline:
-            seen |= {part.stat().st_size for part in kept.glob("tolerance-*.part")}
-            time.sleep(0.1)
-        process.send_signal(signal.SIGINT)
-        _, said = process.communicate(timeout=60)
-    assert process.returncode == 1
+    status, said = stopped(tmp_path, signal.SIGINT, "tolerance", str(case), "--samples", "50000")
+    assert status == 1
     assert "points are kept; the same command continues from there." in said
-    assert len(list(kept.glob("tolerance-*.part"))) == 1
+    assert [part.name.split("-")[0] for part in kept_in(tmp_path)] == ["tolerance"]

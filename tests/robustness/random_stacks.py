@@ -19,6 +19,7 @@ from optics.device import catalogue
 from optics.device.materials import Material
 
 SEED = 20261201
+AGAINST_LITERAL = 6  # stacks of each family that the literal model repeats
 CLOSEST_NM = 0.5  # the contract's closest approach to an absorber
 METALS = ("ag-yang", "ag-mcpeak", "al-rakic", "al-mcpeak", "au-olmon", "mg-palm", "ca-mathewson")
 

@@ -14,7 +14,14 @@ import numpy as np
 import pytest
 from numpy.random import Generator
 from reference import Outcome, Reference
-from robustness.random_stacks import FAMILIES, RandomStack, mirrored, random_stack
+from reference_kept import literal
+from robustness.random_stacks import (
+    AGAINST_LITERAL,
+    FAMILIES,
+    RandomStack,
+    mirrored,
+    random_stack,
+)
 from stacks import HORIZONTAL, NAMES, VERTICAL, answers, imbalance, problem_of, solved
 
 from optics.kernels.budget import Budget, light_budget
@@ -24,7 +31,6 @@ pytestmark = pytest.mark.slow
 TOLERANCE = 1e-6
 NEGATIVE = 1e-7  # of the dissipated power, that rounding and quadrature may take below zero
 RARE = 1e-3  # share of stacks that may miss the tolerance, knowingly
-AGAINST_LITERAL = 6  # stacks of each family that the literal model repeats, some seconds each
 UPSIDE_DOWN = 40  # stacks of each family that are turned over
 
 Family = Callable[[Generator], RandomStack]
@@ -116,7 +122,7 @@ def test_literal_model_agrees(family: Family) -> None:
         stack = random_stack(family, number)
         number += 1
         try:
-            true = Reference(**stack.given()).destinations(1e-10)
+            true = literal(Reference(**stack.given()), 1e-10)
         except ArithmeticError:
             continue
         compared += 1

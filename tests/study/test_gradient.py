@@ -14,9 +14,10 @@ from optics.device.address import addresses
 from optics.device.case import Case
 from optics.device.direction import why_not_differentiable
 from optics.device.errors import CaseError
+from optics.device.outcome_names import SIDES
 from optics.study.evaluate import answer
 from optics.study.gradient import values_and_gradient, why_no_derivative, why_no_gradient
-from optics.study.outcomes import SIDES, _curves, _single_numbers, find_outcomes
+from optics.study.outcomes import find_outcomes, outcome_names
 
 # Step of a difference by the last words of a path: small on the scale on which outcomes vary,
 # large against the engine's noise.
@@ -100,8 +101,8 @@ def step_of(case: Case, path: str) -> float:
 
 def names_of(case: Case) -> list[str]:
     """Every outcome that has a derivative; curves at two angles."""
-    names = list(_single_numbers(case))
-    names += [f"{name}_{angle}" for name in _curves() for angle in (0, 55)]
+    names = list(outcome_names(case).plain)
+    names += [f"{name}_{angle}" for name in outcome_names(case).curves for angle in (0, 55)]
     found = find_outcomes(case, {name: name for name in names})
     return [outcome.name for outcome in found if why_no_derivative(outcome) is None]
 
@@ -291,7 +292,7 @@ def test_every_number_of_a_case_has_a_derivative_or_a_reason() -> None:
 
 def test_every_outcome_has_a_derivative_or_a_reason() -> None:
     case = rich_pixel("uniform")
-    found = find_outcomes(case, {name: name for name in _single_numbers(case)})
+    found = find_outcomes(case, {name: name for name in outcome_names(case).plain})
     reasons = {one.name: why_no_derivative(one) for one in found}
     without = {name for name, reason in reasons.items() if reason is not None}
     assert without == {"accuracy.energy_balance", "accuracy.integration_error"} | {

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import numpy as np
@@ -13,9 +14,12 @@ from sweep_devices import EQE, ETL, HTL
 import optics
 from optics.device.case import Case, case_from_dict
 from optics.device.errors import CaseError
+from optics.outcome.budget import DEFAULT_TOLERANCE
 from optics.study.evaluate import answers
+from optics.study.optimize import first_stage, run_optimize
 from optics.study.optimize_goals import meets
 from optics.study.optimize_plan import plan_optimize
+from optics.study.optimize_result import best_optima
 from optics.study.optimize_runner import Runner
 
 CASES = Path(__file__).parents[2] / "cases"
@@ -184,11 +188,6 @@ def test_interrupted_it_continues_with_the_same_result(tmp_path: Path) -> None:
 
 
 def test_the_best_so_far_meets_all_limits() -> None:
-    from concurrent.futures import ThreadPoolExecutor
-
-    from optics.study.optimize import run_optimize
-    from optics.study.optimize_plan import plan_optimize
-
     with ThreadPoolExecutor(2) as pool:
         runner = Runner(plan_optimize(optimized(constraints={GUIDED: {"max": 0.3}}), 1e-6), pool)
         found = run_optimize(runner, 0)
@@ -218,7 +217,7 @@ def worked(stem: str, step_nm: float) -> Case:
 
 def dense_best(device: Case, count: int) -> float:
     """Best of a grid over all variables, by single points."""
-    aim = plan_optimize(device, 1e-6)
+    aim = plan_optimize(device, DEFAULT_TOLERANCE)
     axes = [np.linspace(one.low, one.high, count) for one in aim.variables]
     points = np.stack([axis.ravel() for axis in np.meshgrid(*axes)], axis=1)
     found, failed = answers(aim.question, points)
@@ -227,12 +226,21 @@ def dense_best(device: Case, count: int) -> float:
     return float(outcomes[meets(aim, outcomes), aim.objectives[0].place].max())
 
 
+def best_of(device: Case, seed: int) -> float:
+    """What the search finds; how flat it is there costs a quarter more and is not asked."""
+    with ThreadPoolExecutor() as pool:
+        runner = Runner(plan_optimize(device, DEFAULT_TOLERANCE), pool)
+        best = best_optima(runner, first_stage(runner, seed)).settled[0]
+    return float(best.found[runner.aim.objectives[0].place])
+
+
 @pytest.mark.slow
 @pytest.mark.parametrize("stem", DENSE)
 def test_twenty_seeds_find_the_same_best_and_no_grid_a_better(stem: str) -> None:
     """Same: the objective to 1e-4 of itself, far below the gap to the next optimum."""
     device = worked(stem, 20.0)
-    bests = [optics.optimize(device, seed=seed).best.outcomes[EQE] for seed in range(20)]
+    bests = [best_of(device, seed) for seed in range(20)]
+    assert optics.optimize(device, seed=0).best.outcomes[EQE] == bests[0]
     top = max(bests)
     assert sum(best >= top * (1.0 - 1e-4) for best in bests) >= 19
     assert min(bests) >= dense_best(device, DENSE[stem])

@@ -2,12 +2,18 @@
 
 from __future__ import annotations
 
+from dataclasses import fields
+
 import pytest
 from devices import case
 from sweep_devices import coarse, two_emitters
 
 import optics
+from optics.device import outcome_names
 from optics.device.errors import CaseError
+from optics.device.outcome_names import SIDE_CURVES, SIDE_NUMBERS
+from optics.outcome.efficiency import DESTINATIONS
+from optics.outcome.side import SideAngular
 from optics.study.outcomes import angles_needed, default_outcomes, find_outcomes, read_outcome
 
 
@@ -114,3 +120,12 @@ def test_by_default_the_eqe_and_where_all_light_goes() -> None:
     eqe, *shares = (read_outcome(one, outcome) for one in found)
     assert eqe == outcome.external_quantum_efficiency
     assert sum(share or 0.0 for share in shares) == pytest.approx(1.0, abs=1e-6)
+
+
+def test_names_are_those_of_the_results() -> None:
+    """The names stand with the case, so that it can tell wrong ones; the results are elsewhere."""
+    kinds = {one.name: str(one.type).split(" ")[0] for one in fields(SideAngular)}
+    assert [name for name, kind in kinds.items() if kind == "Curve"] == list(SIDE_CURVES)
+    assert [name for name, kind in kinds.items() if kind == "float"] == list(SIDE_NUMBERS[:-1])
+    assert hasattr(SideAngular, SIDE_NUMBERS[-1])
+    assert list(DESTINATIONS) == list(outcome_names.DESTINATIONS)

@@ -12,7 +12,7 @@ from optics.device.case import Case
 from optics.kernels.combined import Combined
 from optics.study import sweep_combined
 from optics.study.evaluate import TRUST, Batch, Found, compute_batch
-from optics.study.outcomes import _single_numbers
+from optics.study.outcomes import outcome_names
 from optics.study.sweep_blocks import FEWEST_POINTS, blocks, combines, kinds_of
 from optics.study.sweep_combined import Block, compute_block
 from optics.study.sweep_plan import Plan, plan_sweep
@@ -27,7 +27,7 @@ Q, THETA, ZONE = (
 def every_outcome(device: Case) -> list[str]:
     """Full names of all numbers of a light budget."""
     sides = ("bottom.", "top.")
-    return [name for name in _single_numbers(device) if not name.startswith(sides)]
+    return [name for name in outcome_names(device).plain if not name.startswith(sides)]
 
 
 def planned(axes: dict[str, Any], document: dict[str, Any] | None = None, **table: Any) -> Plan:

@@ -209,18 +209,18 @@ def test_faults_of_the_table_come_all_at_once() -> None:
         linked={ETL: HTL},
     )
     assert said == [
-        'my.toml: tolerance.spread."materials.host.k".relative_sd: found no spread, the nominal '
-        "value is 0; expected sd",
         f'my.toml: tolerance.linked."{ETL}": found {ETL}, which is varied itself; expected a path '
         "that is not itself varied",
-        'my.toml: tolerance.spread."layers.CAT.thickness_nm": found -800 at one standard deviation '
-        "from 100; expected a number from 0 to 1e+07",
-        "my.toml: tolerance.groups[0].correlation: found -0.9; expected -0.492334 to 0.969799 for "
-        "3 numbers, normal and uniform ones",
         'my.toml: tolerance.limits."destinations.giuded": found destinations.giuded, no such '
         "outcome; expected the name of an outcome (did you mean destinations.guided?)",
         'my.toml: tolerance.limits."guided": found guided, which may mean several; expected one of '
         "destinations.guided, emitters.green.destinations.guided, chain.device.guided",
+        'my.toml: tolerance.spread."materials.host.k".relative_sd: found no spread, the nominal '
+        "value is 0; expected sd",
+        'my.toml: tolerance.spread."layers.CAT.thickness_nm": found -800 at one standard deviation '
+        "from 100; expected a number from 0 to 1e+07",
+        "my.toml: tolerance.groups[0].correlation: found -0.9; expected -0.492334 to 0.969799 for "
+        "3 numbers, normal and uniform ones",
     ]
 
 
