@@ -17,7 +17,8 @@ from optics.outcome import light
 
 from . import batch
 from .devices import Device, device
-from .map import MapPlan, section
+from .map import MapPlan
+from .map import section as map_section
 from .measure import (
     RIVAL_POINTS,
     STEP_NS,
@@ -34,6 +35,8 @@ from .measure import (
     steps,
     truth,
 )
+from .tolerance import StudyPlan
+from .tolerance import section as study_section
 
 COMMAND = "python -m tests.benchmarks"
 AIM_FASTER, AIM_CLOSER, AIM_FLOOR, AIM_ZONE = 30.0, 100.0, 3.0, 2.0
@@ -51,6 +54,7 @@ class Plan:
     spectra: tuple[int, ...] = (1, 11, 41, 81, 201, 401)
     zones: tuple[int, ...] = (1, 5, 10, 20, 40)
     map: MapPlan = field(default_factory=MapPlan)
+    study: StudyPlan = field(default_factory=StudyPlan)
 
 
 def markdown(header: list[str], rows: list[list[str]]) -> str:
@@ -83,9 +87,12 @@ def main(output: Path, arguments: list[str] | None = None) -> None:
     parser.add_argument("--repeats", type=int, default=Plan().repeats, help="of each timing")
     parser.add_argument("-o", "--output", type=Path, default=output)
     parser.add_argument("--profile", action="store_true", help="print where the time goes, only")
+    parser.add_argument("--tolerance", action="store_true", help="print the study of it, only")
     given = parser.parse_args(arguments)
-    if given.profile:
-        print("\n\n".join(_profile(Plan(repeats=given.repeats))))
+    only = _profile(Plan(repeats=given.repeats)) if given.profile else []
+    only += study_section(Plan().study) if given.tolerance else []
+    if only:
+        print("\n\n".join(only))
         return
     text = report(Plan(repeats=given.repeats))
     given.output.write_text(text, encoding="utf-8")
@@ -94,7 +101,8 @@ def main(output: Path, arguments: list[str] | None = None) -> None:
 
 def report(plan: Plan) -> str:
     """The whole page."""
-    parts = [_head(), *_against_rival(plan), *_scaling(plan), *section(plan.map), *_profile(plan)]
+    parts = [_head(), *_against_rival(plan), *_scaling(plan), *map_section(plan.map)]
+    parts += [*study_section(plan.study), *_profile(plan)]
     return "\n\n".join(parts) + "\n"
 
 

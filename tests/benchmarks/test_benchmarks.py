@@ -14,6 +14,7 @@ from benchmarks.measure import (
     truth,
 )
 from benchmarks.report import Plan, report
+from benchmarks.tolerance import StudyPlan, cost, spread
 
 pytestmark = pytest.mark.slow
 
@@ -42,15 +43,25 @@ def test_extrapolation_follows_the_power_law() -> None:
     assert points_for(1e-8, (100, 10_000), (1e-2, 1e-4)) == pytest.approx(1e8)
 
 
+def test_a_study_is_scaled_from_what_was_measured() -> None:
+    plan = StudyPlan(samples=64, measured=16, wavelengths=2, repeats=1)
+    found = cost(plan)
+    assert found.whole_s(1000) == 1000 * found.wall_s + found.statistics_s
+    assert 0.0 < found.cpu_s < 1.0
+    assert found.energy_balance < 1e-6
+    assert len(spread(2).document["tolerance"]["spread"]) == 8
+
+
 def test_report_is_written_from_measurements() -> None:
     plan = Plan(wavelengths=2, samples=1, repeats=1, grids=(500, 1000), films=(3,), spectra=(1,),
-                zones=(1, 20), map=MapPlan(3, 2, 2, 4))  # fmt: skip
+                zones=(1, 20), map=MapPlan(3, 2, 2, 4), study=StudyPlan(64, 16, 2, 1))  # fmt: skip
     text = report(plan)
     for heading in (
         "Against the rival",
         "At equal accuracy",
         "Scaling",
         "A map",
+        "A tolerance study",
         "Where the time goes",
     ):
         assert heading in text
