@@ -125,4 +125,8 @@ def _add_up(rows: Integers, found: Sequence[NDArray[Any]], totals: Sequence[NDAr
         return
     starts = np.flatnonzero(np.diff(rows, prepend=-1))
     for values, total in zip(found, totals, strict=True):
-        total[rows[starts]] += np.add.reduceat(values, starts, axis=0)
+        sums = values if starts.size == rows.size else np.add.reduceat(values, starts, axis=0)
+        if starts.size == len(total):  # every wavelength
+            total += sums
+        else:
+            total[rows[starts]] += sums

@@ -3,7 +3,10 @@
 from __future__ import annotations
 
 import pickle
+from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -12,7 +15,17 @@ from sweep_devices import EQE, ETL, HTL, coarse, swept
 import optics
 from optics.device.case import Case
 from optics.device.errors import CaseError
-from optics.study.evaluate import TRUST, Question, answer, answers, layout_of, store_for
+from optics.study import evaluate
+from optics.study.evaluate import (
+    TRUST,
+    Batch,
+    Question,
+    answer,
+    answers,
+    compute_batch,
+    layout_of,
+    store_for,
+)
 from optics.study.outcomes import find_outcomes
 
 CAT = "layers.CAT.thickness_nm"
@@ -46,6 +59,39 @@ def test_an_impossible_point_raises_alone_and_is_named_among_others(question: Qu
     assert list(failed) == [1]
     assert "layers.ETL.thickness_nm: found -1" in failed[1]
     assert values[2].tobytes() == answer(question, POINTS[2]).tobytes()
+
+
+def test_points_together_are_each_alone(question: Question) -> None:
+    outcomes = find_outcomes(
+        question.case, {name: name for name in (EQE, "bottom.x_normal", "bottom.delta_uv_60")}
+    )
+    wider = replace(question, outcomes=outcomes)
+    found = compute_batch(Batch(wider, np.array([5, 0, 3, 2]), POINTS))
+    assert found.places.tolist() == [5, 3, 2]
+    for place, point, values in zip(found.places, POINTS[[0, 2, 3]], found.values, strict=True):
+        assert values.tobytes() == answer(wider, point).tobytes(), place
+
+
+def test_a_point_that_breaks_is_named_and_the_others_are_computed(
+    question: Question, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    whole = compute_batch(Batch(question, np.arange(4), POINTS))
+
+    def breaking(cases: Sequence[Case], *args: Any, **kwargs: Any) -> Any:
+        if any(case.value(ETL) == POINTS[2, 1] for case in cases):
+            raise ArithmeticError("no such light")
+        return together(cases, *args, **kwargs)
+
+    together = evaluate.shine_together
+    monkeypatch.setattr(evaluate, "shine_together", breaking)
+    monkeypatch.setattr(
+        evaluate, "shine", lambda case, *rest, **more: breaking([case], *rest, **more)[0]
+    )
+    found = compute_batch(Batch(question, np.arange(4), POINTS))
+    assert found.places.tolist() == [0, 3]
+    assert dict(found.failed)[2] == "ArithmeticError: no such light"
+    assert "found -1" in dict(found.failed)[1]
+    assert found.values.tobytes() == whole.values[[0, 2]].tobytes()
 
 
 def test_kept_points_are_not_computed_again(question: Question, tmp_path: Path) -> None:
