@@ -10,10 +10,10 @@ and the sign s by channel.
 At real nodes kz of the lossless emitter film is real or imaginary, never both.
 
 What depends on a device (g, b g, shares) and what depends on a position (phases, weights) come in
-products only. Sums over a panel's nodes are therefore products of two matrices, positions x nodes
-and nodes x devices, which the linear algebra library does many times faster than any loop.
-Devices come in blocks of a fixed length, along the last axis, so that loops vectorize: one upper
-half each with neighboring lower ones, filled up with whatever follows.
+products only. Sums over a panel's nodes are therefore products of two matrices, positions x terms
+and terms x devices, which the linear algebra library does many times faster than any loop.
+Devices come in blocks, along the last axis, so that loops vectorize: one upper half each with
+lower ones that lie side by side in their table.
 """
 
 from typing import NamedTuple
@@ -21,6 +21,7 @@ from typing import NamedTuple
 import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats, Integers
+from optics.kernels.combine_tables import BLOCK, R_IM, R_RE
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.elementary import exp_i
 from optics.kernels.halfstack import P, sqrt_upper
@@ -33,8 +34,8 @@ from optics.kernels.source import channel, dissipated_factor
 TOTAL_PART, GUIDED_PART, BEYOND_PART, NEAR_PART = range(4)
 PARTS = 4
 
-# Devices that are computed together.
-BLOCK = 32
+# Real terms a node of the dissipated power.
+_TERMS = 4
 
 
 class Nodes(NamedTuple):
@@ -49,11 +50,21 @@ class Nodes(NamedTuple):
 
 
 class Blocks(NamedTuple):
-    """Devices in their order: one upper half each block, `length` lower halves from `first` on."""
+    """Devices in their order: one upper half each block, and lower ones of one segment."""
 
     up: Integers  # (b,)
-    first: Integers  # (b,)
-    length: Integers  # (b,) at most BLOCK
+    segment: Integers  # (b,) of the lower halves' table
+    begin: Integers  # (b + 1,) first device of every block, and the end
+    by_segment: Integers  # (b,) numbers of the blocks, those of one segment together
+    lane: Integers  # (p,) place of every device's lower half in its segment
+    lanes: int  # length of all segments
+
+
+class Sums(NamedTuple):
+    """Sums of one channel of one block."""
+
+    product: Floats  # (z + DEGREES, lanes)
+    moments: Floats  # (DEGREES, lanes)
 
 
 @inline
@@ -64,47 +75,84 @@ def emitter_kz(source: Source, pol: int, u: complex) -> complex:
 
 
 @inline
-def resonance(x: complex, b: Floats, low: int, into: Floats, n: int) -> None:
-    """Fill rows n to n + 3 of `into` with g and b g, real and imaginary parts.
+def resonance(x: complex, b: Floats, into: Floats, n: int) -> None:
+    """Fill rows n to n + 3 of `into` (terms, lanes) with real and imaginary parts of g and b g.
 
-    x = a P; b (2, v) holds real and imaginary parts, the block's from low on.
+    x = a P; b (2 * BLOCK,) of the lower halves' table.
     """
     xr, xi = x.real, x.imag
-    # Cut to length first: an index low + p might be negative, and the loop would not vectorize.
-    br, bi = b[0][low : low + BLOCK], b[1][low : low + BLOCK]
-    for p in range(BLOCK):
-        r, i = br[p], bi[p]
-        yr, yi = xr * r - xi * i, xr * i + xi * r
-        dr = 1.0 - yr
-        m = 1.0 / (dr * dr + yi * yi)
-        gr, gi = dr * m, yi * m
-        into[n, p], into[n + 1, p] = gr, gi
+    # In two loops: too many rows that might overlap keep one from vectorizing.
+    for p in range(into.shape[1]):
+        r, i = b[R_RE * BLOCK + p], b[R_IM * BLOCK + p]
+        dr, di = 1.0 - (xr * r - xi * i), xr * i + xi * r
+        m = 1.0 / (dr * dr + di * di)
+        into[n, p], into[n + 1, p] = dr * m, di * m
+    for p in range(into.shape[1]):
+        r, i = b[R_RE * BLOCK + p], b[R_IM * BLOCK + p]
+        gr, gi = into[n, p], into[n + 1, p]
         into[n + 2, p], into[n + 3, p] = r * gr - i * gi, r * gi + i * gr
 
 
 @inline
-def add_misses(moments: Floats, misses: Floats) -> None:
-    """Add a panel's estimated error to misses (l,), l <= BLOCK, from moments (DEGREES, BLOCK)."""
-    for p in range(misses.size):
-        misses[p] += panel_miss(moments[0, p], moments[1, p], moments[2, p], moments[3, p])
+def sums_of(rows: int, lanes: int) -> Sums:
+    """Work space for so many rows of weights."""
+    return Sums(np.zeros((rows, lanes)), np.zeros((DEGREES, lanes)))
 
 
 @inline
-def add_product(
-    product: Floats, flat: Floats, target: Floats, moments: Floats, begin: int, length: int
+def add_channel(
+    weights: Floats,
+    terms: Floats,
+    flat: Floats,
+    lane: Integers,
+    sums: Sums,
+    target: Floats,
+    begin: int,
 ) -> None:
-    """Add a block's product (z + DEGREES, BLOCK), plus flat, to target (z, p) and to moments.
+    """Add one channel of a panel to a block's sums.
 
-    Factors of the values stand first, then those of the moments (DEGREES, BLOCK).
+    Parameters
+    ----------
+    weights : float (z + DEGREES, t)
+        Factors of the values stand first, then those of the moments.
+    terms : float (t, lanes)
+    flat : float (z + DEGREES,)
+        What comes to it for every device.
+    lane : int (l,)
+        Of the block's devices.
+    sums : Sums
+        Moments are added to.
+    target : float (z, p), output
+        Added to from device number begin on; whole, since a part would lose that its rows are
+        unbroken.
     """
-    z = target.shape[0]
+    z, end = target.shape[0], begin + lane.size
+    product, moments = sums
+    np.dot(weights, terms, product)
+    unbroken = lane[-1] - lane[0] == lane.size - 1
     for q in range(z):
-        row = target[q][begin : begin + length]
-        for p in range(length):
-            row[p] += flat[q] + product[q, p]
+        row, mine, level = target[q][begin:end], product[q], flat[q]
+        if unbroken:
+            near = mine[lane[0] : lane[-1] + 1]
+            for p in range(row.size):
+                row[p] += level + near[p]
+        else:
+            for p in range(row.size):
+                row[p] += level + mine[lane[p]]
     for d in range(DEGREES):
-        for p in range(BLOCK):
-            moments[d, p] += flat[z + d] + product[z + d, p]
+        row, mine, level = moments[d], product[z + d], flat[z + d]
+        for p in range(row.size):
+            row[p] += level + mine[p]
+
+
+@inline
+def add_misses(lane: Integers, sums: Sums, misses: Floats) -> None:
+    """Add a panel's estimated error to misses (l,) of a block, and begin moments anew."""
+    moments = sums.moments
+    for p in range(lane.size):
+        j = lane[p]
+        misses[p] += panel_miss(moments[0, j], moments[1, j], moments[2, j], moments[3, j])
+    moments[:, :] = 0.0
 
 
 @inline
@@ -141,56 +189,92 @@ def ways_of(source: Source, nodes: Nodes, k: int) -> Complexes:
 
 
 @inline
-def _weigh_waves(
-    source: Source,
+def _factors(source: Source, nodes: Nodes, k: int) -> Complexes:
+    """Factors before the bracket of waves, by channel and node of a panel (3, nodes)."""
+    first = nodes.first[k]
+    factors = np.zeros((3, nodes.first[k + 1] - first), dtype=np.complex128)
+    for c in range(3):
+        for i in range(factors.shape[1]):
+            u, du = complex(nodes.u[first + i]), complex(nodes.du[first + i])
+            kz = emitter_kz(source, channel(c)[0], u)
+            factors[c, i] = dissipated_factor(c, source, u, kz) * du
+    return factors
+
+
+@inline
+def _weigh_below(
     nodes: Nodes,
     k: int,
     c: int,
-    a: Floats,
+    factors: Complexes,
     ways: Complexes,
     zone: Floats,
     flat: Floats,
     weights: Floats,
 ) -> None:
-    """Fill what multiplies the waves of a channel, for one upper half.
+    """Fill what multiplies b g in a channel, and the sums without any waves.
 
     Parameters
     ----------
-    a : float (n, 2, 2)
-        Its reflections.
+    factors : complex (nodes,)
+        Of the channel, from `_factors`.
+    ways : complex (nodes, 2, 2, z)
+        From `ways_of`.
     flat : float (z + DEGREES,), output
         The panel's sums without any waves.
-    weights : float (z + DEGREES, 4 * nodes), output
-        Factors of the rows that `resonance` fills: at every position, times the weight of the
-        node; then averaged over positions, times its rows of degrees.
+    weights : float (z + DEGREES, _TERMS * nodes), output
+        Factors of the last two of the rows that `resonance` fills for a node: at every position,
+        times the weight of the node; then averaged over positions, times its rows of degrees.
     """
     first, z = nodes.first[k], zone.size
     pol, sign = channel(c)
-    flat[:] = 0.0
-    for i in range(ways.shape[0]):
-        n = first + i
-        kz = emitter_kz(source, pol, complex(nodes.u[n]))
-        factor = dissipated_factor(c, source, complex(nodes.u[n]), kz) * nodes.du[n]
-        above = sign * factor * complex(a[n, pol, 0], a[n, pol, 1])
-        to_top, to_bottom = ways[i, pol, 0], ways[i, pol, 1]
+    for i in range(factors.size):
+        n, factor = first + i, factors[i]
         level = -factor.real if nodes.part[k] != NEAR_PART else -2.0 * factor.real
-        x, y = 0j, 0j
+        mean = 0j
         for q in range(z):
-            w = nodes.weight[n]
-            at_x, at_y = 2.0 * factor + above * to_top[q], sign * factor * to_bottom[q]
-            x, y = x + zone[q] * at_x, y + zone[q] * at_y
-            _weigh(w, at_x, at_y, weights[q], 4 * i)
-            flat[q] += w * level
+            wave = sign * factor * ways[i, pol, 1, q]
+            mean += zone[q] * wave
+            _weigh(nodes.weight[n], wave, weights[q], _TERMS * i + 2)
+            flat[q] += nodes.weight[n] * level
         for d in range(DEGREES):
-            _weigh(nodes.degrees[d, n], x, y, weights[z + d], 4 * i)
+            _weigh(nodes.degrees[d, n], mean, weights[z + d], _TERMS * i + 2)
             flat[z + d] += nodes.degrees[d, n] * level
 
 
 @inline
-def _weigh(w: float, x: complex, y: complex, into: Floats, n: int) -> None:
-    """Fill four factors, from n on, whose products with `resonance`'s rows are real parts."""
+def _weigh_above(
+    nodes: Nodes,
+    k: int,
+    c: int,
+    factors: Complexes,
+    a: Floats,
+    ways: Complexes,
+    zone: Floats,
+    weights: Floats,
+) -> None:
+    """Fill what multiplies g in a channel, for one upper half with reflections a (n, 2, 2).
+
+    As `_weigh_below`, for the first two rows of every node.
+    """
+    first, z = nodes.first[k], zone.size
+    pol, sign = channel(c)
+    for i in range(factors.size):
+        n, twice = first + i, 2.0 * factors[i]
+        above = sign * factors[i] * complex(a[n, pol, R_RE], a[n, pol, R_IM])
+        mean = 0j
+        for q in range(z):
+            wave = twice + above * ways[i, pol, 0, q]
+            mean += zone[q] * wave
+            _weigh(nodes.weight[n], wave, weights[q], _TERMS * i)
+        for d in range(DEGREES):
+            _weigh(nodes.degrees[d, n], mean, weights[z + d], _TERMS * i)
+
+
+@inline
+def _weigh(w: float, x: complex, into: Floats, n: int) -> None:
+    """Fill two factors, from n on, whose products with `resonance`'s rows are real parts."""
     into[n], into[n + 1] = w * x.real, -w * x.imag
-    into[n + 2], into[n + 3] = w * y.real, -w * y.imag
 
 
 @kernel
@@ -211,8 +295,8 @@ def combine_dissipated(
     source : Source
         Of one wavelength, with z positions.
     nodes : Nodes
-    r_up, r_down : float (n, 2, 2, v)
-        From `combine_tables.tabulate_reflection`; the lower ones with BLOCK more at the end.
+    r_up, r_down : float (n, 2, segments, 2, BLOCK)
+        From `combine_tables.tabulate_reflection`.
     blocks : Blocks
         Of p devices in all.
     zone : float (z,)
@@ -222,34 +306,36 @@ def combine_dissipated(
     misses : float (PARTS, 3, p), output
         Estimated errors, added to.
     """
-    rows = source.kz_positions.size + DEGREES
-    product, moments = np.zeros((rows, BLOCK)), np.zeros((DEGREES, BLOCK))
+    rows, lanes = source.kz_positions.size + DEGREES, blocks.lanes
+    sums = sums_of(rows, lanes)
+    below = r_down.reshape(nodes.u.size, 2, r_down.shape[2], 2 * BLOCK)
     for k in range(nodes.part.size):
-        part, begin, first = nodes.part[k], 0, nodes.first[k]
+        part, first = nodes.part[k], nodes.first[k]
         count = nodes.first[k + 1] - first
         ways, through = ways_of(source, nodes, k), film_waves(source, nodes, k)[1]
-        waves = np.zeros((2, 4 * count, BLOCK))
-        flat, weights = np.zeros((3, rows)), np.zeros((3, rows, 4 * count))
+        waves = np.zeros((2, _TERMS * count, lanes))
+        flat, weights = np.zeros((3, rows)), np.zeros((3, rows, _TERMS * count))
+        factors = _factors(source, nodes, k)
+        for c in range(3):
+            _weigh_below(nodes, k, c, factors[c], ways, zone, flat[c], weights[c])
         known = -1
         for block in range(blocks.up.size):
-            iu, low, length = blocks.up[block], blocks.first[block], blocks.length[block]
-            if iu != known:
-                known = iu
+            up, segment = blocks.up[block], blocks.segment[block]
+            r = r_up[:, :, up // lanes, :, up % lanes]
+            if up != known:
+                known = up
                 for c in range(3):
-                    _weigh_waves(
-                        source, nodes, k, c, r_up[:, :, :, iu], ways, zone, flat[c], weights[c]
-                    )
+                    _weigh_above(nodes, k, c, factors[c], r, ways, zone, weights[c])
             for i in range(count):
                 n = first + i
                 if nodes.weight[n] == 0.0:
                     continue
                 for pol in range(2):
-                    turn = through[i, pol] * through[i, pol]
-                    x = complex(r_up[n, pol, 0, iu], r_up[n, pol, 1, iu]) * turn
-                    resonance(x, r_down[n, pol], low, waves[pol], 4 * i)
+                    x = complex(r[n, pol, R_RE], r[n, pol, R_IM]) * through[i, pol] ** 2
+                    resonance(x, below[n, pol, segment], waves[pol], _TERMS * i)
+            begin, end = blocks.begin[block], blocks.begin[block + 1]
+            lane = blocks.lane[begin:end]
             for c in range(3):
-                moments[:, :] = 0.0
-                np.dot(weights[c], waves[channel(c)[0]], product)
-                add_product(product, flat[c], value[part, c], moments, begin, length)
-                add_misses(moments, misses[part, c, begin : begin + length])
-            begin += length
+                terms = waves[channel(c)[0]]
+                add_channel(weights[c], terms, flat[c], lane, sums, value[part, c], begin)
+                add_misses(lane, sums, misses[part, c, begin:end])

@@ -1,6 +1,8 @@
 """First arrivals outside a block of devices, and what becomes of them, at one real node.
 
-As `source.share_out`, with everything that does not depend on the films done once a node.
+As `source.share_by_faces`, with everything that does not depend on the films done once a node,
+and what depends on one half stack only taken from its table. Rows of work space lie BLOCK apart,
+so that the compiler can tell that they do not overlap.
 """
 
 from typing import NamedTuple
@@ -8,23 +10,23 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from optics.kernels.arrays import Complexes, Floats, Integers
-from optics.kernels.combine import BLOCK
+from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.combine_tables import (
+    BACK_IM,
+    BACK_RE,
+    BLOCK,
     CROSS_IM,
     CROSS_RE,
-    FLUX,
+    IN,
+    IN_LOSS,
     LOSS,
     OUT,
     OUTSIDE,
     R_IM,
-    R_OUT_IM,
-    R_OUT_RE,
     R_RE,
-    T_IN_IM,
-    T_IN_RE,
-    T_OUT_IM,
-    T_OUT_RE,
+    SIZE,
+    WAY_IM,
+    WAY_RE,
 )
 from optics.kernels.compiled import inline
 from optics.kernels.exits import (
@@ -33,45 +35,43 @@ from optics.kernels.exits import (
     AIR_BOTTOM,
     AIR_TOP,
     COLUMNS,
-    COVER,
-    MATCHED,
     MATCHED_BOTTOM,
     MATCHED_TOP,
     PLANAR,
-    SUBSTRATE,
-    bounces,
+    STUCK,
+    TINY_LOSS,
+    beside_matched,
     exit_line,
-    face_reflectance,
-    once_through,
     passage,
-    whole_stack,
 )
+from optics.kernels.halfstack import S, abs2
 from optics.kernels.problem import Sides
-from optics.kernels.source import light_returns, share_out
+from optics.kernels.source import light_returns, share_by_faces, side_face
 
-# Rows of `combine_tables` up to those that are needed of a half: by itself, passed by light from
-# the other side, and lit from its own side too.
-_ALONE, _PASSED, _LIT = LOSS + 1, T_OUT_IM + 1, CROSS_IM + 1
-
-
-class Faces(NamedTuple):
-    """What the slabs do with light of one in-plane wavevector and polarization."""
-
-    leaves: bool  # whether it can leave somewhere
-    bottom: tuple[float, float, float]  # of unit flux into the slab: leaves, lost, comes back
-    top: tuple[float, float, float]
-    once: tuple[float, float]  # transmittance of one pass through the slab: bottom, top
-    beside: tuple[float, float]  # what the other slab sends back if this one is matched
+# Rows of work space: g, |g|^2 = G and factors of what is sent up, from `combine_radiated`; 1 - R
+# and absorptance of the whole stack from below and above, T; then G times what goes to each
+# destination of light sent down, and of light sent up.
+G_RE, G_IM, G, SENT_UP = range(4)
+LACK_B, LACK_T, LOSS_B, LOSS_T, THROUGH, DOWN = range(SENT_UP + 3, SENT_UP + 9)
+UP = DOWN + COLUMNS
+ROWS = UP + COLUMNS
 
 
 class Outsides(NamedTuple):
     """What does not depend on the films, at the nodes of a panel."""
 
-    returns: NDArray[np.bool_]  # (nodes,) whether light comes back to the films
-    faces: Floats  # (nodes, 2, 11) where it does: the numbers of `Faces` in their order
-    rows: Floats  # (nodes, 2, 2, COLUMNS) where it does not: destinations of unit flux down, up
-    known: Integers  # (nodes,) how many rows of `combine_tables` are needed of the lower halves
+    bounces: NDArray[np.bool_]  # (nodes,) whether light comes back to the films and can leave
+    faces: Floats  # (nodes, 2, 6) of unit flux into the slab: leaves, lost, comes back; the top's
+    rows: Floats  # (nodes, 2, 2, COLUMNS) destinations of unit flux down, up without bounces
+    beside: Floats  # (nodes, 2, 2) what the slab beside sends back if the bottom, top is matched
     goes: NDArray[np.bool_]  # (nodes, COLUMNS) which destinations anything can go to
+    below: NDArray[np.bool_]  # (nodes,) whether the films may be lit from below
+
+
+@inline
+def row_of(w: Floats, row: int) -> Floats:
+    """One row of work space; a number not known to the compiler has to be cut out, not added."""
+    return w[row * BLOCK : (row + 1) * BLOCK]
 
 
 @inline
@@ -79,198 +79,203 @@ def outsides(sides: Sides, u: Complexes) -> Outsides:
     """Look at what stands outside at real nodes u (nodes,)."""
     n = u.size
     found = Outsides(
-        np.zeros(n, dtype=np.bool_),
-        np.zeros((n, 2, 11)),
-        np.zeros((n, 2, 2, COLUMNS)),
-        np.zeros(n, dtype=np.int64),
-        np.zeros((n, COLUMNS), dtype=np.bool_),
+        np.zeros(n, dtype=np.bool_), np.zeros((n, 2, 6)), np.zeros((n, 2, 2, COLUMNS)),
+        np.zeros((n, 2, 2)), np.zeros((n, COLUMNS), dtype=np.bool_), np.zeros(n, dtype=np.bool_),
+    )  # fmt: skip
+    lines = (
+        exit_line(sides.kind[0], sides.n_outer[0], sides.n_out[0]),
+        exit_line(sides.kind[1], sides.n_outer[1], sides.n_out[1]),
     )
-    from_bottom = sides.kind[0] == PLANAR
     for i in range(n):
-        found.returns[i] = light_returns(sides, u[i].real)
-        found.known[i] = _ALONE if not found.returns[i] else _LIT if from_bottom else _PASSED
-        found.goes[i, ABSORBED] = True
+        at = u[i].real
+        returns = light_returns(sides, at)
+        found.bounces[i] = returns and at < max(lines[0], lines[1])
+        found.below[i] = sides.kind[0] == PLANAR and at < sides.n_outer[0]
         for pol in range(2):
-            if found.returns[i]:
-                _note_faces(sides, pol, u[i].real, found.faces[i, pol])
-            else:
-                nothing = (0.0, 0.0, 0.0, 0.0, 0.0)
-                share_out(sides, pol, u[i].real, nothing, 1.0, 1.0, found.rows[i, pol])
-                for k in range(COLUMNS):
-                    if found.rows[i, pol, 0, k] != 0.0 or found.rows[i, pol, 1, k] != 0.0:
-                        found.goes[i, k] = True
-        if found.returns[i]:
-            leaves = found.faces[i, 0, 0] > 0.0
-            found.goes[i, AIR_BOTTOM] = found.goes[i, AIR_TOP] = leaves
-            found.goes[i, SUBSTRATE] = found.goes[i, COVER] = not leaves
-            found.goes[i, MATCHED_BOTTOM] = sides.kind[0] in (PLANAR, MATCHED)
-            found.goes[i, MATCHED_TOP] = sides.kind[1] in (PLANAR, MATCHED)
+            _note_node(sides, lines, pol, at, returns, found.faces[i, pol], found.rows[i, pol],
+                       found.beside[i, pol])  # fmt: skip
+            for column in range(COLUMNS):
+                for way in range(2):
+                    if found.rows[i, pol, way, column] != 0.0:
+                        found.goes[i, column] = True
+        found.goes[i, ABSORBED] = True
     return found
 
 
 @inline
-def _note_faces(sides: Sides, pol: int, u: float, note: Floats) -> None:
-    """Write down `Faces`."""
-    kind_b, kind_t = sides.kind[0], sides.kind[1]
-    n_b, n_t = float(sides.n_outer[0]), float(sides.n_outer[1])
-    out_b, out_t = float(sides.n_out[0]), float(sides.n_out[1])
-    line_b, line_t = exit_line(kind_b, n_b, out_b), exit_line(kind_t, n_t, out_t)
-    once_b = once_through(u, n_b, float(sides.loss[0]))
-    once_t = once_through(u, n_t, float(sides.loss[1]))
-    rho_b, rho_t = 1.0, 1.0
-    if kind_b == PLANAR and u < n_b:
-        rho_b = face_reflectance(pol, u, n_b, out_b)
-    if kind_t == PLANAR and u < n_t:
-        rho_t = face_reflectance(pol, u, n_t, out_t)
-    note[0] = 1.0 if u < max(line_b, line_t) else 0.0
-    note[1], note[2], note[3] = passage(kind_b, rho_b, once_b)
-    note[4], note[5], note[6] = passage(kind_t, rho_t, once_t)
-    note[7], note[8] = once_b, once_t
-    note[9] = note[6] if u < max(n_b, line_t) else 0.0
-    note[10] = note[3] if u < max(n_t, line_b) else 0.0
-
-
-@inline
-def _read_faces(note: Floats) -> Faces:
-    return Faces(
-        note[0] > 0.0, (note[1], note[2], note[3]), (note[4], note[5], note[6]),
-        (note[7], note[8]), (note[9], note[10]),
-    )  # fmt: skip
-
-
-@inline
-def first_arrivals(
+def _note_node(
     sides: Sides,
+    lines: tuple[float, float],
+    pol: int,
+    u: float,
+    returns: bool,
+    faces: Floats,
+    rows: Floats,
+    beside: Floats,
+) -> None:
+    """Write down the rows of `Outsides` of one node and polarization."""
+    once_b, s_b, p_b = side_face(sides, 0, u)
+    once_t, s_t, p_t = side_face(sides, 1, u)
+    once, rho = (once_b, once_t), (s_b, s_t) if pol == S else (p_b, p_t)
+    # Nothing arrives beyond a light line.
+    arrives_b = 1.0 if sides.kind[0] == ABSORBING or u < sides.n_outer[0] else 0.0
+    arrives_t = 1.0 if sides.kind[1] == ABSORBING or u < sides.n_outer[1] else 0.0
+    dark = (0.0, 0.0, 0.0, 0.0, 0.0)
+    share_by_faces(sides, u, once, rho, dark, arrives_b, arrives_t, rows)
+    if not returns:
+        return
+    for side in range(2):
+        leaves, lost, back = passage(sides.kind[side], rho[side], once[side])
+        faces[3 * side], faces[3 * side + 1], faces[3 * side + 2] = leaves, lost, back
+    beside[0] = beside_matched(u, sides.n_outer[0], lines[1], faces[5])
+    beside[1] = beside_matched(u, sides.n_outer[1], lines[0], faces[2])
+
+
+@inline
+def arrivals(
     outside: Outsides,
     i: int,
     pol: int,
     up: Floats,
-    half: Floats,
+    down: Floats,
     phase: complex,
-    stack: Floats,
-    shares: Floats,
+    w: Floats,
+    lanes: int,
 ) -> None:
-    """Destinations per |amplitude|^2 sent down, up by every device of a block at node i.
+    """Fill rows DOWN and UP of w with destinations of a block's light at node i.
+
+    Of those destinations that anything goes to; G times what goes there per |amplitude|^2.
 
     Parameters
     ----------
     up : float (KNOWN_OF_HALF,)
         The upper half.
-    half : float (KNOWN_OF_HALF, BLOCK)
+    down : float (KNOWN_OF_HALF * BLOCK,)
         The block's lower halves.
     phase : complex
         exp(i kz d) of the emitter film.
-    stack : float (5, BLOCK)
-        Work space.
-    shares : float (2, COLUMNS, BLOCK), output
-        Row 0 for what is sent down; of those destinations that anything goes to.
+    w : float (ROWS * BLOCK,)
+        Work space, with G and g.
+    lanes : int
+        How many lower halves there are.
     """
-    if outside.returns[i]:
-        for p in range(BLOCK):
-            shares[0, ABSORBED, p] = half[LOSS, p]
-            shares[1, ABSORBED, p] = up[LOSS]
-        _whole_stacks(sides, up, half, phase, stack)
-        _add_returning(sides, _read_faces(outside.faces[i, pol]), up[OUT], half[OUT], stack, shares)
-        return
-    # Where no light comes back, what happens outside does not depend on the films.
-    to_down, to_up = outside.rows[i, pol, 0], outside.rows[i, pol, 1]
-    for k in range(COLUMNS):
-        if not outside.goes[i, k]:
-            continue
-        inside = 1.0 if k == ABSORBED else 0.0
-        from_up, share = to_up[k] * up[OUT] + inside * up[LOSS], to_down[k]
-        for p in range(BLOCK):
-            shares[0, k, p] = share * half[OUT, p] + inside * half[LOSS, p]
-            shares[1, k, p] = from_up
+    rows, beside, bounces = outside.rows[i, pol], outside.beside[i, pol], outside.bounces[i]
+    for column in range(1, COLUMNS):
+        if outside.goes[i, column] and (column >= MATCHED_BOTTOM or not bounces):
+            inside = 1.0 if column == ABSORBED else 0.0
+            from_up = rows[1, column] * up[OUT] + inside * up[LOSS]
+            _arrive(column, rows[0, column], inside, from_up, down, w, lanes)
+    if bounces or beside[0] > 0.0 or beside[1] > 0.0:
+        _whole_stacks(outside.below[i], up, down, phase, w, lanes)
+    if bounces:
+        _bounce(outside.faces[i, pol], up, down, w, lanes)
+    if beside[0] > 0.0:
+        once, back = rows[0, MATCHED_BOTTOM] * up[OUT], beside[0]
+        for p in range(lanes):
+            passed = _beside(w[LACK_T * BLOCK + p], w[THROUGH * BLOCK + p], back)
+            w[(UP + MATCHED_BOTTOM) * BLOCK + p] = w[G * BLOCK + p] * passed * once
+    if beside[1] > 0.0:
+        once, back = rows[1, MATCHED_TOP], beside[1]
+        for p in range(lanes):
+            passed = _beside(w[LACK_B * BLOCK + p], w[THROUGH * BLOCK + p], back)
+            arrives = w[G * BLOCK + p] * down[OUT * BLOCK + p]
+            w[(DOWN + MATCHED_TOP) * BLOCK + p] = arrives * passed * once
 
 
 @inline
-def _whole_stacks(sides: Sides, up: Floats, half: Floats, phase: complex, stack: Floats) -> None:
-    """Fill rows R from the bottom, R from the top, T, A from the bottom, A from the top."""
-    a, t_up = complex(up[R_RE], up[R_IM]), complex(up[T_OUT_RE], up[T_OUT_IM])
-    flux_t, loss_t = up[FLUX], up[LOSS]
-    for p in range(BLOCK):
-        stack[0, p], stack[1, p] = 1.0, 1.0
-        stack[2, p], stack[3, p], stack[4, p] = 0.0, 0.0, 0.0
-    if sides.kind[1] == PLANAR and flux_t > 0.0:
-        ports = (t_up, complex(up[T_IN_RE], up[T_IN_IM]), complex(up[R_OUT_RE], up[R_OUT_IM]))
-        form = (loss_t, up[OUTSIDE], complex(up[CROSS_RE], up[CROSS_IM]))
-        for p in range(BLOCK):
-            b, t = (
-                complex(half[R_RE, p], half[R_IM, p]),
-                complex(half[T_OUT_RE, p], half[T_OUT_IM, p]),
-            )
-            r, through, absorbed = whole_stack(
-                phase, b, a, (half[FLUX, p], flux_t), t, ports, half[LOSS, p], form
-            )
-            stack[1, p], stack[2, p], stack[4, p] = r, through, absorbed
-    if sides.kind[0] == PLANAR:
-        for p in range(BLOCK):
-            b, t = (
-                complex(half[R_RE, p], half[R_IM, p]),
-                complex(half[T_OUT_RE, p], half[T_OUT_IM, p]),
-            )
-            t_in, r_out = (
-                complex(half[T_IN_RE, p], half[T_IN_IM, p]),
-                complex(half[R_OUT_RE, p], half[R_OUT_IM, p]),
-            )
-            form = (half[LOSS, p], half[OUTSIDE, p], complex(half[CROSS_RE, p], half[CROSS_IM, p]))
-            flux_b = half[FLUX, p]
-            lit = flux_b > 0.0
-            r, through, absorbed = whole_stack(
-                phase, a, b, (flux_t, flux_b if lit else 1.0), t_up, (t, t_in, r_out), loss_t, form
-            )
-            stack[0, p] = r if lit else stack[0, p]
-            stack[2, p] = through if lit else stack[2, p]
-            stack[3, p] = absorbed if lit else stack[3, p]
-
-
-@inline
-def _add_trapped(sides: Sides, p_t: float, out: Floats, shares: Floats) -> None:
-    """First arrivals of light that cannot leave; `share_out` names them alike."""
-    shares[:, SUBSTRATE] = 0.0
-    shares[:, COVER] = 0.0
-    to_b = ABSORBED if sides.kind[0] == ABSORBING else SUBSTRATE
-    to_t = ABSORBED if sides.kind[1] == ABSORBING else COVER
-    for p in range(BLOCK):
-        shares[0, to_b, p] += out[p]
-        shares[1, to_t, p] += p_t
-
-
-@inline
-def _add_returning(
-    sides: Sides, face: Faces, p_t: float, out: Floats, stack: Floats, shares: Floats
+def _arrive(
+    column: int, share: float, inside: float, from_up: float, down: Floats, w: Floats, lanes: int
 ) -> None:
-    """Add destinations of light that bounces between slabs and films.
+    """Fill a destination's rows DOWN and UP with light that does not bounce."""
+    to_down, to_up = row_of(w, DOWN + column), row_of(w, UP + column)
+    for p in range(lanes):
+        g = w[G * BLOCK + p]
+        to_down[p] = g * (share * down[OUT * BLOCK + p] + inside * down[LOSS * BLOCK + p])
+        to_up[p] = g * from_up
 
-    out (BLOCK,), p_t: flux carried out below and above; stack of `_whole_stacks`.
-    """
-    slab_b = sides.kind[0] == PLANAR or sides.kind[0] == MATCHED
-    slab_t = sides.kind[1] == PLANAR or sides.kind[1] == MATCHED
-    out_b, lost_b, back_b = face.bottom
-    out_t, lost_t, back_t = face.top
-    if not face.leaves:
-        _add_trapped(sides, p_t, out, shares)
-    for p in range(BLOCK if face.leaves else 0):
-        p_b = out[p]
-        powers = (stack[0, p], stack[1, p], stack[2, p], stack[3, p], stack[4, p])
-        bb, bt, tb, tt = bounces(back_b, back_t, powers)
-        gone_b, gone_t = lost_b + back_b * powers[3], lost_t + back_t * powers[4]
-        shares[0, AIR_BOTTOM, p] = bb * p_b * out_b
-        shares[1, AIR_BOTTOM, p] = bt * p_t * out_b
-        shares[0, AIR_TOP, p] = tb * p_b * out_t
-        shares[1, AIR_TOP, p] = tt * p_t * out_t
-        shares[0, ABSORBED, p] += (bb * gone_b + tb * gone_t) * p_b
-        shares[1, ABSORBED, p] += (bt * gone_b + tt * gone_t) * p_t
-    if slab_b:
-        for p in range(BLOCK):
-            powers = (stack[0, p], stack[1, p], stack[2, p], stack[3, p], stack[4, p])
-            bb, bt, tb, tt = bounces(0.0, face.beside[0], powers)
-            shares[0, MATCHED_BOTTOM, p] = bb * out[p] * face.once[0]
-            shares[1, MATCHED_BOTTOM, p] = bt * p_t * face.once[0]
-    if slab_t:
-        for p in range(BLOCK):
-            powers = (stack[0, p], stack[1, p], stack[2, p], stack[3, p], stack[4, p])
-            bb, bt, tb, tt = bounces(face.beside[1], 0.0, powers)
-            shares[0, MATCHED_TOP, p] = tb * out[p] * face.once[1]
-            shares[1, MATCHED_TOP, p] = tt * p_t * face.once[1]
+
+@inline
+def _beside(lack: float, through: float, back: float) -> float:
+    """What passes the films after bounces at one slab, per first arrival there: see `bounces`."""
+    det = lack + (1.0 - lack) * (1.0 - back)
+    return 0.0 if det <= STUCK else through * back / det
+
+
+@inline
+def _whole_stacks(
+    below: bool, up: Floats, down: Floats, phase: complex, w: Floats, lanes: int
+) -> None:
+    """Fill rows LACK_B to THROUGH; the formulas are those of `exits.whole_stack`, `bounces`."""
+    turn, size = phase * phase, abs2(phase)
+    a = complex(up[R_RE], up[R_IM]) * turn
+    way = complex(up[WAY_RE], up[WAY_IM]) * turn
+    cross = complex(up[CROSS_RE], up[CROSS_IM]) * turn.conjugate()
+    a_r, a_i, way_r, way_i, cross_r, cross_i = (
+        a.real,
+        a.imag,
+        way.real,
+        way.imag,
+        cross.real,
+        cross.imag,
+    )
+    above_r, above_i, above = up[BACK_RE], up[BACK_IM], up[OUTSIDE]
+    far_loss, own_loss = size * up[LOSS], abs2(a)
+    down_loss, back_loss = size * up[IN], size * size * up[IN_LOSS]
+    # T is the same both ways.
+    by_in, by_out = (size * up[OUT], 0.0) if below else (0.0, size * up[IN])
+    for p in range(lanes):
+        gr, gi, g = w[G_RE * BLOCK + p], w[G_IM * BLOCK + p], w[G * BLOCK + p]
+        xr, xi = a_r * gr - a_i * gi, a_r * gi + a_i * gr
+        ways_r, ways_i = down[WAY_RE * BLOCK + p], down[WAY_IM * BLOCK + p]
+        r = down[BACK_RE * BLOCK + p] + (ways_r * xr - ways_i * xi)
+        i = down[BACK_IM * BLOCK + p] + (ways_r * xi + ways_i * xr)
+        lost = far_loss * down[IN * BLOCK + p] + own_loss * down[IN_LOSS * BLOCK + p]
+        lost = down[OUTSIDE * BLOCK + p] + g * lost
+        lost += xr * down[CROSS_RE * BLOCK + p] + xi * down[CROSS_IM * BLOCK + p]
+        through = g * (by_in * down[IN * BLOCK + p] + by_out * down[OUT * BLOCK + p])
+        lack = 1.0 - (r * r + i * i)
+        w[LACK_B * BLOCK + p] = through + lost if lack < TINY_LOSS else lack
+        w[LOSS_B * BLOCK + p], w[THROUGH * BLOCK + p] = lost, through
+    for p in range(lanes):
+        gr, gi, g = w[G_RE * BLOCK + p], w[G_IM * BLOCK + p], w[G * BLOCK + p]
+        br, bi = down[R_RE * BLOCK + p], down[R_IM * BLOCK + p]
+        xr, xi = br * gr - bi * gi, br * gi + bi * gr
+        r, i = above_r + (way_r * xr - way_i * xi), above_i + (way_r * xi + way_i * xr)
+        lost = down_loss * down[LOSS * BLOCK + p] + back_loss * down[SIZE * BLOCK + p]
+        lost = above + g * lost + (xr * cross_r + xi * cross_i)
+        lack = 1.0 - (r * r + i * i)
+        w[LACK_T * BLOCK + p] = w[THROUGH * BLOCK + p] + lost if lack < TINY_LOSS else lack
+        w[LOSS_T * BLOCK + p] = lost
+
+
+@inline
+def _bounce(faces: Floats, up: Floats, down: Floats, w: Floats, lanes: int) -> None:
+    """Fill rows of light that bounces between slabs and films: see `exits.bounces`."""
+    leaves_b, lost_b, back_b = faces[0], faces[1], faces[2]
+    leaves_t, lost_t, back_t = faces[3], faces[4], faces[5]
+    up_out, up_loss = up[OUT], up[LOSS]
+    for p in range(lanes):
+        g, through = w[G * BLOCK + p], w[THROUGH * BLOCK + p]
+        lack_b, lack_t = w[LACK_B * BLOCK + p], w[LACK_T * BLOCK + p]
+        diag_b = lack_b + (1.0 - lack_b) * (1.0 - back_b)
+        diag_t = lack_t + (1.0 - lack_t) * (1.0 - back_t)
+        det = diag_b * diag_t - through * through * back_b * back_t
+        stuck = det <= STUCK
+        per_det = 1.0 / (1.0 if stuck else det)
+        diag_b, diag_t = 1.0 if stuck else diag_b, 1.0 if stuck else diag_t
+        through = 0.0 if stuck else through
+        p_b, p_t = g * down[OUT * BLOCK + p] * per_det, g * up_out * per_det
+        bb, tb, bt, tt = diag_t * p_b, through * back_b * p_b, through * back_t * p_t, diag_b * p_t
+        gone_b = lost_b + back_b * w[LOSS_B * BLOCK + p]
+        gone_t = lost_t + back_t * w[LOSS_T * BLOCK + p]
+        w[(DOWN + AIR_BOTTOM) * BLOCK + p], w[(UP + AIR_BOTTOM) * BLOCK + p] = (
+            bb * leaves_b,
+            bt * leaves_b,
+        )
+        w[(DOWN + AIR_TOP) * BLOCK + p], w[(UP + AIR_TOP) * BLOCK + p] = (
+            tb * leaves_t,
+            tt * leaves_t,
+        )
+        kept = g * down[LOSS * BLOCK + p]
+        w[(DOWN + ABSORBED) * BLOCK + p] = kept + (bb * gone_b + tb * gone_t)
+        w[(UP + ABSORBED) * BLOCK + p] = g * up_loss + (bt * gone_b + tt * gone_t)

@@ -1,26 +1,42 @@
 """Where the light of many devices goes: tabulated half stacks combined in pairs, at real nodes.
 
-See `combine` for the formulas and the order of loops.
+See `combine` for the formulas and the order of loops. Written out, what a dipole sends down is
+K |g|^2 times 1 + |a|^2 + 2 s Re(a P exp(-2 i kz z)) with kz real; with kz imaginary, where
+exp(2 i kz z) = B and exp(2 i kz (d - z)) = T are real and B T = |P| everywhere, it is
+B + |a|^2 |P| T + 2 s Re(a) |P|; up likewise with b, T and B exchanged and the phase turned the
+other way. Either way three terms that depend on the place, the same for both ways and all
+devices, times what depends on devices only.
 """
 
-import math
 from typing import NamedTuple
 
 import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats
 from optics.kernels.combine import (
-    BLOCK,
     Blocks,
     Nodes,
+    add_channel,
     add_misses,
-    add_product,
     emitter_kz,
     film_waves,
+    sums_of,
     ways_of,
 )
-from optics.kernels.combine_outside import Outsides, first_arrivals, outsides
-from optics.kernels.combine_tables import KNOWN_OF_HALF, R_IM, R_RE
+from optics.kernels.combine_outside import (
+    DOWN,
+    G_IM,
+    G_RE,
+    ROWS,
+    SENT_UP,
+    UP,
+    G,
+    Outsides,
+    arrivals,
+    outsides,
+    row_of,
+)
+from optics.kernels.combine_tables import BLOCK, KNOWN_OF_HALF, R_IM, R_RE, SIZE
 from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
 from optics.kernels.halfstack import abs2
@@ -28,64 +44,18 @@ from optics.kernels.problem import Sides, Source
 from optics.kernels.rules import DEGREES
 from optics.kernels.source import channel, outgoing_factor
 
-
-class _Work(NamedTuple):
-    """What is known of a block at one node."""
-
-    half: Floats  # (KNOWN_OF_HALF, BLOCK)
-    stack: Floats  # (5, BLOCK)
-    sent: Floats  # (4, BLOCK)
-    shares: Floats  # (2, COLUMNS, BLOCK)
+# Terms a node.
+_TERMS = 3
 
 
-@inline
-def _weigh_sent(
-    source: Source,
-    nodes: Nodes,
-    k: int,
-    c: int,
-    a: Floats,
-    ways: Complexes,
-    zone: Floats,
-    weights: Floats,
-) -> None:
-    """Fill what multiplies the light of a channel, for one upper half.
+class _Panel(NamedTuple):
+    """What holds for all devices at a panel's nodes."""
 
-    Sent down goes K |g|^2 |to_b|^2 |1 + s a to_t^2|^2; sent up K |g|^2 |to_t|^2 |1 + s b to_b^2|^2
-    with kz real, where |to_t| = 1, or imaginary, where to_b and to_t are real and |to_b to_t|^2
-    is the same everywhere.
-
-    Parameters
-    ----------
-    a : float (n, 2, KNOWN_OF_HALF)
-        From its table.
-    ways : complex (nodes, 2, 2, z)
-        From `ways_of`.
-    weights : float (z + DEGREES, 4 * nodes), output
-        Factors of the rows that `_fill_light` fills: at every position, times the weight of the
-        node; then averaged over positions, times its rows of degrees.
-    """
-    first, z = nodes.first[k], zone.size
-    pol, sign = channel(c)
-    for i in range(ways.shape[0]):
-        n = first + i
-        u, w = complex(nodes.u[n]), nodes.weight[n]
-        kz = emitter_kz(source, pol, u)
-        carried = outgoing_factor(c, source, u.real, kz) * nodes.du[n].real
-        above = sign * complex(a[n, pol, R_RE], a[n, pol, R_IM])
-        weights[z:, 4 * i : 4 * i + 4] = 0.0
-        for q in range(z):
-            to_top, to_bottom = ways[i, pol, 0, q], ways[i, pol, 1, q]
-            down = math.sqrt(abs2(to_bottom)) * abs2(1.0 + above * to_top)
-            if oscillates(kz):
-                sent = (down, 1.0, sign * to_bottom.real, -sign * to_bottom.imag)
-            else:
-                sent = (down, math.sqrt(abs2(to_top)), sign, math.sqrt(abs2(to_bottom)))
-            for j in range(4):
-                weights[q, 4 * i + j] = w * carried * sent[j]
-                for d in range(DEGREES):
-                    share = zone[q] * nodes.degrees[d, n]
-                    weights[z + d, 4 * i + j] += share * carried * sent[j]
+    first: int  # of its nodes among all
+    kz: Complexes  # (nodes, 2) of the emitter film
+    phase: Complexes  # (nodes, 2) exp(i kz d)
+    outside: Outsides
+    used: Floats  # (nodes,) 0 where a node only fills up a batch
 
 
 @inline
@@ -95,84 +65,104 @@ def oscillates(kz: complex) -> bool:
 
 
 @inline
-def _cut_out(down: Floats, low: int, known: int, half: Floats) -> None:
-    """Copy the first rows of what is known of a block's lower halves."""
-    for f in range(known):
-        row = down[f][low : low + BLOCK]
-        for p in range(BLOCK):
-            half[f, p] = row[p]
+def _weigh_places(
+    source: Source, nodes: Nodes, k: int, c: int, ways: Complexes, zone: Floats, weights: Floats
+) -> None:
+    """Fill what multiplies the terms of a channel.
+
+    Parameters
+    ----------
+    ways : complex (nodes, 2, 2, z)
+        From `ways_of`.
+    weights : float (z + DEGREES, _TERMS * nodes), output
+        At every position, times the weight of the node; then averaged over positions, times its
+        rows of degrees.
+    """
+    z = zone.size
+    pol, sign = channel(c)
+    for i in range(ways.shape[0]):
+        n = nodes.first[k] + i
+        u = complex(nodes.u[n])
+        kz = emitter_kz(source, pol, u)
+        carried = outgoing_factor(c, source, u.real, kz) * nodes.du[n].real
+        signed = sign * carried
+        for q in range(z):
+            to_top, to_bottom = ways[i, pol, 0, q], ways[i, pol, 1, q]
+            if oscillates(kz):
+                terms = (carried, signed * to_bottom.real, signed * to_bottom.imag)
+            else:
+                terms = (signed, carried * to_bottom.real, carried * to_top.real)
+            for j in range(_TERMS):
+                weights[q, _TERMS * i + j] = nodes.weight[n] * terms[j]
+                for d in range(DEGREES):
+                    share = zone[q] * nodes.degrees[d, n]
+                    weights[z + d, _TERMS * i + j] += share * terms[j]
 
 
 @inline
-def _fill_sent(real: bool, turn: float, x: complex, half: Floats, sent: Floats) -> None:
-    """Fill rows (4, BLOCK) of |g|^2 times what is sent down, and up; x = a P. See `_weigh_sent`.
-
-    real : whether kz is; turn : |exp(i kz d)|^2.
-    """
+def _fill_g(real: bool, turn: float, x: complex, down: Floats, w: Floats, lanes: int) -> None:
+    """Fill rows G_RE to SENT_UP + 2; x = a P, turn = |P|, real : whether kz is."""
     xr, xi = x.real, x.imag
-    for p in range(BLOCK):
-        r, i = half[R_RE, p], half[R_IM, p]
+    for p in range(lanes):
+        r, i, size = down[R_RE * BLOCK + p], down[R_IM * BLOCK + p], down[SIZE * BLOCK + p]
         dr, di = 1.0 - (xr * r - xi * i), xr * i + xi * r
         g = 1.0 / (dr * dr + di * di)
-        size, twice = g * (r * r + i * i), 2.0 * g * r
-        sent[0, p] = g
-        sent[1, p] = g + size if real else g
-        sent[2, p] = twice if real else turn * twice
-        sent[3, p] = 2.0 * g * i if real else turn * size
+        w[G_RE * BLOCK + p], w[G_IM * BLOCK + p], w[G * BLOCK + p] = dr * g, di * g, g
+        w[SENT_UP * BLOCK + p] = 1.0 + size if real else 2.0 * turn * r
+        w[(SENT_UP + 1) * BLOCK + p] = 2.0 * r if real else turn * size
+        w[(SENT_UP + 2) * BLOCK + p] = -2.0 * i if real else 1.0
 
 
 @inline
-def _fill_light(sent: Floats, to_down: Floats, to_up: Floats, light: Floats, n: int) -> None:
-    """Fill rows n to n + 3 with what goes to one destination."""
-    for p in range(BLOCK):
-        light[n, p] = sent[0, p] * to_down[p]
-        light[n + 1, p] = sent[1, p] * to_up[p]
-        light[n + 2, p] = sent[2, p] * to_up[p]
-        light[n + 3, p] = sent[3, p] * to_up[p]
+def _fill_terms(
+    sent: tuple[float, float, float], column: int, w: Floats, light: Floats, n: int
+) -> None:
+    """Fill rows n to n + 2 of `light` (terms, lanes) with what goes to one destination."""
+    down, up = row_of(w, DOWN + column), row_of(w, UP + column)
+    for j in range(_TERMS):
+        row, sent_down, sent_up = light[n + j], sent[j], row_of(w, SENT_UP + j)
+        for p in range(row.size):
+            row[p] = sent_down * down[p] + sent_up[p] * up[p]
 
 
 @inline
 def _light_of_block(
-    sides: Sides,
-    nodes: Nodes,
-    k: int,
-    outside: Outsides,
-    waves: tuple[Complexes, Complexes],
-    up: Floats,
-    down: Floats,
-    low: int,
-    work: _Work,
-    light: Floats,
+    panel: _Panel, up: Floats, down: Floats, segment: int, w: Floats, light: Floats
 ) -> None:
     """Fill the light of a block of devices at a panel's nodes.
 
     Parameters
     ----------
-    waves : (complex, complex)
-        From `film_waves`.
-    up : float (n, 2, KNOWN_OF_HALF)
+    up : float (nodes, 2, KNOWN_OF_HALF)
         The upper half.
-    down, low
-        Lower halves; the block's begin at low.
-    light : float (COLUMNS, 2, 4 * nodes, BLOCK), output
+    down : float (n, 2, segments, KNOWN_OF_HALF * BLOCK)
+        The lower halves at all nodes; whole, since a part would lose that its rows are unbroken.
+    segment : int
+        The block's.
+    w : float (ROWS * BLOCK,)
+        Work space.
+    light : float (COLUMNS, 2, _TERMS * nodes, lanes), output
         By destination and polarization.
     """
-    half, stack, sent, shares = work
-    for i in range(outside.returns.size):
-        n = nodes.first[k] + i
-        if nodes.weight[n] == 0.0:
+    outside, lanes = panel.outside, light.shape[3]
+    for i in range(panel.used.size):
+        if panel.used[i] == 0.0:
             continue
         for pol in range(2):
-            real, phase = oscillates(waves[0][i, pol]), waves[1][i, pol]
-            x = complex(up[n, pol, R_RE], up[n, pol, R_IM]) * phase * phase
-            _cut_out(down[n, pol], low, outside.known[i], half)
-            _fill_sent(real, abs2(phase), x, half, sent)
-            first_arrivals(sides, outside, i, pol, up[n, pol], half, phase, stack, shares)
+            above, phase, real = up[i, pol], panel.phase[i, pol], oscillates(panel.kz[i, pol])
+            below = down[panel.first + i, pol, segment]
+            a, turn = complex(above[R_RE], above[R_IM]), abs2(phase)
+            x = a * phase * phase
+            _fill_g(real, turn, x, below, w, lanes)
+            arrivals(outside, i, pol, above, below, phase, w, lanes)
+            size = abs2(a)
+            if real:
+                sent = (1.0 + size, 2.0 * x.real, 2.0 * x.imag)
+            else:
+                sent = (2.0 * turn * a.real, 1.0, turn * size)
             for column in range(1, COLUMNS):
-                if not outside.goes[i, column]:
-                    continue
-                lit = light[column, pol]
-                _fill_light(sent, shares[0, column], shares[1, column], lit, 4 * i)
+                if outside.goes[i, column]:
+                    _fill_terms(sent, column, w, light[column, pol], _TERMS * i)
 
 
 @kernel
@@ -195,8 +185,8 @@ def combine_radiated(
         Of one wavelength, with z positions.
     sides : Sides
     nodes : Nodes
-    up, down : float (n, 2, KNOWN_OF_HALF, v)
-        From `combine_tables.tabulate_half`; the lower ones with BLOCK more at the end.
+    up, down : float (n, 2, segments, KNOWN_OF_HALF, BLOCK)
+        From `combine_tables.tabulate_half`.
     blocks : Blocks
         Of p devices in all.
     zone : float (z,)
@@ -207,39 +197,33 @@ def combine_radiated(
     misses : float (2, COLUMNS, p), output
         Estimated errors, added to.
     """
-    rows = source.kz_positions.size + DEGREES
-    work = _Work(
-        np.zeros((KNOWN_OF_HALF, BLOCK)), np.zeros((5, BLOCK)), np.zeros((4, BLOCK)),
-        np.zeros((2, COLUMNS, BLOCK)),
-    )  # fmt: skip
-    product, moments = np.zeros((rows, BLOCK)), np.zeros((2, DEGREES, BLOCK))
-    nothing = np.zeros(rows)
+    rows, lanes = source.kz_positions.size + DEGREES, blocks.lanes
+    sums, nothing, w = sums_of(rows, lanes), np.zeros(rows), np.zeros(ROWS * BLOCK)
+    below = down.reshape(nodes.u.size, 2, down.shape[2], KNOWN_OF_HALF * BLOCK)
     for k in range(nodes.part.size):
-        begin, first = 0, nodes.first[k]
-        count = nodes.first[k + 1] - first
-        ways, outside = ways_of(source, nodes, k), outsides(sides, nodes.u[first : first + count])
-        waves = film_waves(source, nodes, k)
+        here = slice(nodes.first[k], nodes.first[k + 1])
+        kz, phase = film_waves(source, nodes, k)
+        outside = outsides(sides, nodes.u[here])
+        panel = _Panel(nodes.first[k], kz, phase, outside, nodes.weight[here])
         some = outside.goes.sum(axis=0) > 0
-        light = np.zeros((COLUMNS, 2, 4 * count, BLOCK))
-        weights = np.zeros((3, rows, 4 * count))
-        known = -1
-        for block in range(blocks.up.size):
-            iu, low, length = blocks.up[block], blocks.first[block], blocks.length[block]
-            if iu != known:
-                known = iu
-                for c in range(3):
-                    _weigh_sent(source, nodes, k, c, up[:, :, :, iu], ways, zone, weights[c])
-            _light_of_block(
-                sides, nodes, k, outside, waves, up[:, :, :, iu], down, low, work, light
-            )
+        ways, terms = ways_of(source, nodes, k), _TERMS * panel.used.size
+        light, weights = np.zeros((COLUMNS, 2, terms, lanes)), np.zeros((3, rows, terms))
+        for c in range(3):
+            _weigh_places(source, nodes, k, c, ways, zone, weights[c])
+        # What is known of a segment stays near at hand while upper halves take turns.
+        for block in blocks.by_segment:
+            one, segment = blocks.up[block], blocks.segment[block]
+            above = up[here, :, one // lanes, :, one % lanes]
+            _light_of_block(panel, above, below, segment, w, light)
+            begin, end = blocks.begin[block], blocks.begin[block + 1]
+            lane = blocks.lane[begin:end]
             for column in range(1, COLUMNS):
                 if not some[column]:
                     continue
-                moments[:, :, :] = 0.0
                 for c in range(3):
-                    o = min(c, 1)
-                    np.dot(weights[c], light[column, channel(c)[0]], product)
-                    add_product(product, nothing, value[o, column], moments[o], begin, length)
-                for o in range(2):
-                    add_misses(moments[o], misses[o, column, begin : begin + length])
-            begin += length
+                    target = value[min(c, 1), column]
+                    shown = light[column, channel(c)[0]]
+                    add_channel(weights[c], shown, nothing, lane, sums, target, begin)
+                    if c != 1:
+                        # Both polarizations of the horizontal dipole together.
+                        add_misses(lane, sums, misses[min(c, 1), column, begin:end])

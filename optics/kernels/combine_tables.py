@@ -1,46 +1,66 @@
 """What half stacks are at fixed nodes, for many of them at once; and nodes good for many stacks.
 
 A half stack does not depend on the dipole's place or on the other half, so a grid over films on
-both sides of an emitter needs each half once. Tables keep real and imaginary parts apart and the
-half stacks as the last axis, so that loops over them vectorize.
+both sides of an emitter needs each half once. Tables keep real and imaginary parts apart and half
+stacks side by side, so that loops over them vectorize. Their rows lie BLOCK apart, a number that
+the compiler knows: it can then tell that rows do not overlap.
 """
 
 import numpy as np
 from numpy.typing import NDArray
 
 from optics.kernels.arrays import Complexes, Floats
-from optics.kernels.compiled import kernel
+from optics.kernels.compiled import inline, kernel
 from optics.kernels.exits import COLUMNS
-from optics.kernels.halfstack import abs2, reflection, waves
+from optics.kernels.halfstack import abs2, one_pass, reflection, waves
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.paths import TAIL, panel_error, place, probed_columns
-from optics.kernels.problem import Half, Problem, scratch_space, work_space
+from optics.kernels.problem import Half, Problem, Work, scratch_space, work_space
 from optics.kernels.rules import NODES, STAGES
-from optics.kernels.source import dissipated, radiated, solve_half
+from optics.kernels.source import dissipated, radiated, solve_waves
 
 # As in `integrate`: how often a panel is halved, and when a further stage is not tried.
 _DEEPEST = 48
 _HOPELESS = 10.0
 
 
-# What is known of a half stack at a real node, in the order of a table's third axis.
+# Longest list of half stacks that lie side by side, so that loops over them vectorize.
+BLOCK = 104
+
+# What is known of a half stack at a real node, in the order of a table's rows. Light from the
+# emitter film has |amplitude|^2 = 1; light from outside has unit flux, for the other rows to be
+# products already. A half that is not lit from outside stands as a mirror there.
 (
     R_RE, R_IM,  # reflection seen from the emitter film
-    OUT,  # flux carried out per |amplitude|^2 sent from the emitter film
-    LOSS,  # absorbed, likewise
-    FLUX,  # Re Y of the outer medium
-    T_OUT_RE, T_OUT_IM,  # transmission outward; light from the other side leaves through it too
-    T_IN_RE, T_IN_IM,  # lit from outside, where this side's slab sends light back: inward
-    R_OUT_RE, R_OUT_IM,  # reflection
-    OUTSIDE,  # absorbed per |amplitude|^2 sent from outside
-    CROSS_RE, CROSS_IM,  # cross term of both
+    SIZE,  # |reflection|^2
+    OUT,  # flux carried out
+    LOSS,  # absorbed
+    IN,  # |amplitude|^2 that arrives in the emitter film from outside
+    IN_LOSS,  # times LOSS
+    OUTSIDE,  # absorbed of light from outside
+    CROSS_RE, CROSS_IM,  # cross term of both, 2 conj(t inward) a_cross
+    WAY_RE, WAY_IM,  # transmission inward times outward
+    BACK_RE, BACK_IM,  # reflection seen from outside
 ) = range(14)  # fmt: skip
 KNOWN_OF_HALF = 14
 
 
+@inline
+def next_waves(
+    j: int, u: Complexes, eps_o: Complexes, eps_e: Complexes, kd: Floats, work: Work
+) -> None:
+    """Waves of half stack j of kd (v, m) at nodes u, those of j - 1 being at hand."""
+    if j == 0:
+        waves(u, eps_o, eps_e, kd[0], work.kz, work.y, work.e)
+        return
+    for film in range(1, eps_o.size - 1):
+        if kd[j, film] != kd[j - 1, film]:
+            one_pass(film, kd[j, film], eps_o[film] == eps_e[film], work.kz, work.e)
+
+
 @kernel
 def tabulate_reflection(
-    eps_o: Complexes, eps_e: Complexes, kd: Floats, u: Complexes, r: Floats
+    eps_o: Complexes, eps_e: Complexes, kd: Floats, u: Complexes, lanes: int, r: Floats
 ) -> None:
     """Reflection of half stacks that differ in thicknesses only.
 
@@ -52,18 +72,21 @@ def tabulate_reflection(
         k0 times thickness, 0 at both ends.
     u : complex (n,)
         Nodes over k0, a multiple of NODES.
-    r : float (n, 2, 2, v or more), output
-        s, p; real and imaginary part.
+    lanes : int
+        How many half stacks lie side by side, BLOCK at most.
+    r : float (n, 2, v / lanes, 2, BLOCK), output
+        s, p; half stacks in order, `lanes` in each segment; real and imaginary part.
     """
     work = work_space(eps_o.size)
-    for j in range(kd.shape[0]):
-        for start in range(0, u.size, NODES):
-            waves(u[start : start + NODES], eps_o, eps_e, kd[j], work.kz, work.y, work.e)
+    for start in range(0, u.size, NODES):
+        for j in range(kd.shape[0]):
+            next_waves(j, u[start : start + NODES], eps_o, eps_e, kd, work)
             reflection(work.y, work.e, work.r)
+            segment, lane = j // lanes, j % lanes
             for i in range(NODES):
                 for pol in range(2):
-                    r[start + i, pol, 0, j] = work.r[pol, i].real
-                    r[start + i, pol, 1, j] = work.r[pol, i].imag
+                    r[start + i, pol, segment, R_RE, lane] = work.r[pol, i].real
+                    r[start + i, pol, segment, R_IM, lane] = work.r[pol, i].imag
 
 
 @kernel
@@ -72,41 +95,60 @@ def tabulate_half(
     eps_e: Complexes,
     kd: Floats,
     u: Complexes,
-    returns: NDArray[np.bool_],
+    lit: NDArray[np.bool_],
+    lanes: int,
     table: Floats,
 ) -> None:
     """Everything about half stacks at real nodes.
 
     Parameters
     ----------
-    eps_o, eps_e, kd, u
+    eps_o, eps_e, kd, u, lanes
         As of `tabulate_reflection`.
-    returns : bool (n,)
+    lit : bool (n,)
         Where the half stack may be lit from outside.
-    table : float (n, 2, KNOWN_OF_HALF, v or more), output
+    table : float (n, 2, v / lanes, KNOWN_OF_HALF, BLOCK), output
     """
     work = work_space(eps_o.size)
-    for j in range(kd.shape[0]):
-        half = Half(eps_o, eps_e, kd[j])
-        for start in range(0, u.size, NODES):
-            some = False
+    for start in range(0, u.size, NODES):
+        some = bool(lit[start : start + NODES].any())
+        for j in range(kd.shape[0]):
+            half = Half(eps_o, eps_e, kd[j])
+            next_waves(j, u[start : start + NODES], eps_o, eps_e, kd, work)
+            solve_waves(half, work, u[start : start + NODES], some)
+            segment, lane = j // lanes, j % lanes
             for i in range(NODES):
-                some = some or returns[start + i]
-            solve_half(half, work, u[start : start + NODES], some)
-            for i in range(NODES):
-                n = start + i
                 for pol in range(2):
-                    known = table[n, pol]
-                    r, t, flux = work.r_far[pol, 0, i], work.t[pol, i], work.y[pol, -1, i].real
-                    known[R_RE, j], known[R_IM, j] = r.real, r.imag
-                    known[OUT, j], known[LOSS, j] = abs2(t) * flux, work.form[0, pol, i].real
-                    known[FLUX, j], known[T_OUT_RE, j], known[T_OUT_IM, j] = flux, t.real, t.imag
-                    if some:
-                        t, r, cross = work.g[pol, 0, i], work.r_out[pol, i], work.form[2, pol, i]
-                        known[T_IN_RE, j], known[T_IN_IM, j] = t.real, t.imag
-                        known[R_OUT_RE, j], known[R_OUT_IM, j] = r.real, r.imag
-                        known[OUTSIDE, j] = work.form[1, pol, i].real
-                        known[CROSS_RE, j], known[CROSS_IM, j] = cross.real, cross.imag
+                    known = table[start + i, pol, segment]
+                    _note_inside(work, pol, i, known, lane)
+                    if lit[start + i]:
+                        _note_outside(work, pol, i, known, lane)
+                    else:
+                        known[BACK_RE, lane] = 1.0
+
+
+@inline
+def _note_inside(work: Work, pol: int, i: int, known: Floats, lane: int) -> None:
+    """Write down what becomes of light from the emitter film."""
+    r = work.r_far[pol, 0, i]
+    known[R_RE, lane], known[R_IM, lane], known[SIZE, lane] = r.real, r.imag, abs2(r)
+    known[OUT, lane] = abs2(work.t[pol, i]) * work.y[pol, -1, i].real
+    known[LOSS, lane] = work.form[0, pol, i].real
+
+
+@inline
+def _note_outside(work: Work, pol: int, i: int, known: Floats, lane: int) -> None:
+    """Write down what becomes of light from outside."""
+    per_flux = 1.0 / work.y[pol, -1, i].real
+    inward, back = work.g[pol, 0, i], work.r_out[pol, i]
+    cross = 2.0 * per_flux * inward.conjugate() * work.form[2, pol, i]
+    way = inward * work.t[pol, i]
+    known[IN, lane] = per_flux * abs2(inward)
+    known[IN_LOSS, lane] = known[IN, lane] * known[LOSS, lane]
+    known[OUTSIDE, lane] = per_flux * work.form[1, pol, i].real
+    known[CROSS_RE, lane], known[CROSS_IM, lane] = cross.real, cross.imag
+    known[WAY_RE, lane], known[WAY_IM, lane] = way.real, way.imag
+    known[BACK_RE, lane], known[BACK_IM, lane] = back.real, back.imag
 
 
 @kernel

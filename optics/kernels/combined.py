@@ -6,7 +6,6 @@ parts, so that whoever misses the wanted accuracy can be told, and computed by `
 """
 
 from collections.abc import Iterator
-from itertools import pairwise
 from typing import NamedTuple
 
 import numpy as np
@@ -15,7 +14,6 @@ from optics.kernels.arrays import Floats, Integers
 from optics.kernels.budget import light_budget
 from optics.kernels.combine import (
     BEYOND_PART,
-    BLOCK,
     GUIDED_PART,
     NEAR_PART,
     PARTS,
@@ -27,6 +25,7 @@ from optics.kernels.combine import (
 from optics.kernels.combine_collect import add_averages, collect
 from optics.kernels.combine_radiated import combine_radiated
 from optics.kernels.combine_tables import (
+    BLOCK,
     KNOWN_OF_HALF,
     finest,
     leaves,
@@ -53,6 +52,9 @@ _MOST_LEAVES = 400
 _ATTEMPTS = 4  # to find nodes for all devices at a wavelength,
 _MORE_PROBES = 4  # each time with the panels of so many that have missed the tolerance
 _STRICTER = 0.1  # by so much stricter
+# Lanes of a vector of numbers, and positions times lanes of the products of a panel: twice as many
+# and the linear algebra library would start threads of its own beside the sweep's.
+_LANES, _LARGEST_PRODUCT = 8, 2048
 _FREE = -1  # in the place of a part: the real axis below the outer light lines
 
 
@@ -142,19 +144,22 @@ class _Found(NamedTuple):
 def _at_nodes(family: Family, w: int, panels: _Panels, places: Integers, zone: Floats) -> _Found:
     """Compute devices, given by their places in sorted order, at the nodes of these panels."""
     pairs = family.pairs[places]
-    blocks = _blocks(pairs)
     points, z = places.size, zone.size
+    blocks = _blocks(pairs, family.kd_down.shape[1], z + DEGREES)
+    lanes = blocks.lanes
     source, sides, up, down = _one(family.problem, w)
     kd_up, kd_down = family.kd_up[w], family.kd_down[w]
     found, missed = np.zeros((PARTS, 3, z, points)), np.zeros((PARTS, 3, points))
     nodes = _nodes(panels, free=False)
-    r_up, r_down = _reflections(up, kd_up, nodes), _reflections(down, kd_down, nodes)
+    r_up, r_down = (
+        _reflections(half, kd, nodes, lanes) for half, kd in ((up, kd_up), (down, kd_down))
+    )
     combine_dissipated(source, nodes, r_up, r_down, blocks, zone, found, missed)
     free, missed_free = np.zeros((2, COLUMNS, z, points)), np.zeros((2, COLUMNS, points))
     nodes = _nodes(panels, free=True)
     if nodes.part.size:
-        above = _halves(up, kd_up, nodes, sides, 1)
-        below = _halves(down, kd_down, nodes, sides, 0)
+        above = _halves(up, kd_up, nodes, sides, 1, lanes)
+        below = _halves(down, kd_down, nodes, sides, 0, lanes)
         combine_radiated(source, sides, nodes, above, below, blocks, zone, free, missed_free)
     result = _Found(np.zeros(points), np.zeros(points), np.zeros((2, KNOWN, z, points)))
     collect(found, missed, free, missed_free, panels.plasmon, zone, *result)
@@ -256,29 +261,33 @@ def _nodes(panels: _Panels, *, free: bool) -> Nodes:
     )
 
 
-def _reflections(half: Half, kd: Floats, nodes: Nodes) -> Floats:
-    table = np.zeros((nodes.u.size, 2, 2, kd.shape[0] + BLOCK))
-    tabulate_reflection(half.eps_o, half.eps_e, kd, nodes.u, table)
+def _reflections(half: Half, kd: Floats, nodes: Nodes, lanes: int) -> Floats:
+    table = np.zeros((nodes.u.size, 2, -(-kd.shape[0] // lanes), 2, BLOCK))
+    tabulate_reflection(half.eps_o, half.eps_e, kd, nodes.u, lanes, table)
     return table
 
 
-def _halves(half: Half, kd: Floats, nodes: Nodes, sides: Sides, side: int) -> Floats:
+def _halves(half: Half, kd: Floats, nodes: Nodes, sides: Sides, side: int, lanes: int) -> Floats:
     """Table of the half stacks on one side (0 bottom, 1 top), lit from its slab where it can be."""
-    table = np.zeros((nodes.u.size, 2, KNOWN_OF_HALF, kd.shape[0] + BLOCK))
+    table = np.zeros((nodes.u.size, 2, -(-kd.shape[0] // lanes), KNOWN_OF_HALF, BLOCK))
     lit = np.zeros(nodes.u.size, dtype=np.bool_)
     if sides.kind[side] == PLANAR:
         lit = nodes.u.real < sides.n_outer[side]
-    tabulate_half(half.eps_o, half.eps_e, kd, nodes.u, lit, table)
+    tabulate_half(half.eps_o, half.eps_e, kd, nodes.u, lit, lanes, table)
     return table
 
 
-def _blocks(pairs: Integers) -> Blocks:
-    """Blocks of sorted pairs: one upper half with neighboring lower ones."""
-    up, down = pairs[:, 0], pairs[:, 1]
-    new = np.flatnonzero((np.diff(up) != 0) | (np.diff(down) != 1)) + 1
-    ends = np.concatenate([[0], new, [up.size]])
-    begin = np.concatenate([np.arange(a, b, BLOCK) for a, b in pairwise(ends)])
-    return Blocks(up[begin], down[begin], np.diff(np.append(begin, up.size)))
+def _blocks(pairs: Integers, halves: int, rows: int) -> Blocks:
+    """Blocks of sorted pairs: one upper half with lower ones of one segment, of `halves` in all."""
+    most = int(np.clip(_LARGEST_PRODUCT // rows // _LANES * _LANES, _LANES, BLOCK))
+    segments = -(-halves // most)
+    lanes = -(-halves // segments // _LANES) * _LANES
+    up, segment = pairs[:, 0], pairs[:, 1] // lanes
+    new = np.flatnonzero((np.diff(up) != 0) | (np.diff(segment) != 0)) + 1
+    begin = np.concatenate([[0], new])
+    by_segment = np.argsort(segment[begin], kind="stable")
+    ends = np.append(begin, up.size)
+    return Blocks(up[begin], segment[begin], ends, by_segment, pairs[:, 1] % lanes, lanes)
 
 
 def _device(family: Family, pair: Integers) -> Problem:

@@ -19,9 +19,9 @@ TOTAL, AIR_BOTTOM, AIR_TOP, SUBSTRATE, COVER, ABSORBED, MATCHED_BOTTOM, MATCHED_
 COLUMNS = 8
 
 # Where 1 - R falls below this, rounding of R shows; then T + A says the same, exactly.
-_TINY_LOSS = 1e-8
+TINY_LOSS = 1e-8
 # Light in a slab between perfect mirrors has nowhere to go; it is left where it arrived.
-_STUCK = 1e-280
+STUCK = 1e-280
 
 
 @inline
@@ -77,6 +77,15 @@ def passage(kind: int, rho: float, once: float) -> tuple[float, float, float]:
 
 
 @inline
+def beside_matched(u: float, n_outer: float, other_line: float, other_back: float) -> float:
+    """What the other slab sends back while this one, of index n_outer, stands `matched`.
+
+    Beyond that slab's index and the other side's exit line all light counts as trapped.
+    """
+    return other_back if u < max(n_outer, other_line) else 0.0
+
+
+@inline
 def bounces(back_b: float, back_t: float, stack: StackPowers) -> tuple[float, float, float, float]:
     """Total fluxes into the outer media per first arrival there.
 
@@ -88,15 +97,15 @@ def bounces(back_b: float, back_t: float, stack: StackPowers) -> tuple[float, fl
         return 1.0, 0.0, 0.0, 1.0
     r_b, r_t, through, a_b, a_t = stack
     lack_b, lack_t = 1.0 - r_b, 1.0 - r_t
-    if lack_b < _TINY_LOSS:
+    if lack_b < TINY_LOSS:
         lack_b = through + a_b
-    if lack_t < _TINY_LOSS:
+    if lack_t < TINY_LOSS:
         lack_t = through + a_t
     # 1 - R g as a sum of non-negative terms, so that nothing cancels.
     diag_b = lack_b + (1.0 - lack_b) * (1.0 - back_b)
     diag_t = lack_t + (1.0 - lack_t) * (1.0 - back_t)
     det = diag_b * diag_t - through * through * back_b * back_t
-    if det <= _STUCK:
+    if det <= STUCK:
         return 1.0, 0.0, 0.0, 1.0
     return diag_t / det, through * back_t / det, through * back_b / det, diag_b / det
 

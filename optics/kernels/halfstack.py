@@ -111,14 +111,21 @@ def waves_from(
                 kz[P, j, i] = k
                 y[P, j, i] = k * inv
         if 0 < j < last:
-            for i in range(n):
-                e[S, j, i] = exp_i(kz[S, j, i] * kd[j])
-            if isotropic:
-                for i in range(n):
-                    e[P, j, i] = e[S, j, i]
-            else:
-                for i in range(n):
-                    e[P, j, i] = exp_i(kz[P, j, i] * kd[j])
+            one_pass(j, kd[j], isotropic, kz, e)
+
+
+@inline
+def one_pass(j: int, kd: float, isotropic: bool, kz: Complexes, e: Complexes) -> None:
+    """Fill the one-pass phase factors e of film j from its kz, both as of `waves`."""
+    n = kz.shape[2]
+    for i in range(n):
+        e[S, j, i] = exp_i(kz[S, j, i] * kd)
+    if isotropic:
+        for i in range(n):
+            e[P, j, i] = e[S, j, i]
+    else:
+        for i in range(n):
+            e[P, j, i] = exp_i(kz[P, j, i] * kd)
 
 
 @inline

@@ -23,6 +23,7 @@ from optics.kernels.exits import (
     MATCHED_TOP,
     PLANAR,
     SUBSTRATE,
+    beside_matched,
     bounces,
     exit_line,
     face_reflectances,
@@ -277,12 +278,12 @@ def share_by_faces(
         shares[1, ABSORBED if kind_t == ABSORBING else COVER] += p_t
     # The same light if one slab's face were replaced by an index-matched hemisphere.
     if kind_b in (PLANAR, MATCHED):
-        back = back_t if u < max(n_b, line_t) else 0.0
+        back = beside_matched(u, n_b, line_t, back_t)
         bb, bt, _, _ = bounces(0.0, back, stack)
         shares[0, MATCHED_BOTTOM] += bb * p_b * once_b
         shares[1, MATCHED_BOTTOM] += bt * p_t * once_b
     if kind_t in (PLANAR, MATCHED):
-        back = back_b if u < max(n_t, line_b) else 0.0
+        back = beside_matched(u, n_t, line_b, back_b)
         _, _, tb, tt = bounces(back, 0.0, stack)
         shares[0, MATCHED_TOP] += tb * p_b * once_t
         shares[1, MATCHED_TOP] += tt * p_t * once_t
