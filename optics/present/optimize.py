@@ -11,7 +11,7 @@ from optics.present.wording import MISSING
 if TYPE_CHECKING:
     from rich.console import Console, RenderableType
 
-    from optics.study.optimum import Optimum, Point, VariableFound
+    from optics.study.optimum import Direction, Optimum, Point
 
 
 def print_optimum(out: Console, found: Optimum) -> None:
@@ -31,7 +31,7 @@ def optimum_view(found: Optimum) -> RenderableType:
     parts += [Text(line, style="bold green") for line in _headlines(found)]
     parts.append(Text())
     if not single:
-        parts += [*_points("Pareto front", found.front, found), Text()]
+        parts += [*_points("Pareto front", found.front, found), Text(), *_held(found), Text()]
     parts += [_variables(found), Text()]
     if found.constraints:
         parts += [_constraints(found), Text()]
@@ -76,7 +76,7 @@ def _variables(found: Optimum) -> RenderableType:
         if single:
             known = one.flat_from is not None and one.flat_to is not None
             row.append(f"{one.flat_from:.4g} .. {one.flat_to:.4g}" if known else MISSING)
-            gain = _percent(one.gain_per_unit / size)
+            gain = _percent((one.gain_per_unit or 0.0) / size)
             unit = "1" if one.units == "1" else f"1 {one.units}"
             row.append("" if one.binds is None else f"{one.binds}: {unit} beyond gains {gain}")
         table.add_row(*row)
@@ -99,7 +99,7 @@ def _constraints(found: Optimum) -> RenderableType:
             f"{one.limit:.6g}", digits(one.value),
         ]  # fmt: skip
         if single:
-            gain = _percent(0.1 * abs(one.limit) * one.gain_per_unit / size)
+            gain = _percent(0.1 * abs(one.limit) * (one.gain_per_unit or 0.0) / size)
             row.append(f"yes: a tenth looser gains {gain}" if one.binds else "no")
         table.add_row(*row)
     return titled("Constraints", table)
@@ -109,22 +109,46 @@ def _flatness(found: Optimum) -> Iterator[str]:
     """Sentence on the joint change that costs least."""
     if found.loosest is None:
         return
-    units = {one.path: one.units for one in found.variables}
-    largest = max((abs(step) / (one.max - one.min) for one, step in _steps(found)), default=0.0)
-    moved = ", ".join(
-        f"{short_name(one.path)} {step:+.3g}{'' if units[one.path] == '1' else f' {one.units}'}"
-        for one, step in _steps(found)
-        if abs(step) / (one.max - one.min) > 0.01 * largest
-    )
-    losses = [found.loosest.loss_forward, found.loosest.loss_backward]
-    told = " and ".join(MISSING if one is None else _percent(one) for one in losses)
-    yield f"Loosest together: {moved}; that and its opposite lose {told}."
+    told = " and ".join(_losses(found.loosest))
+    yield f"Loosest together: {_moves(found, found.loosest)}; that and its opposite lose {told}."
     yield ""
 
 
-def _steps(found: Optimum) -> list[tuple[VariableFound, float]]:
-    steps = {} if found.loosest is None else found.loosest.steps
-    return [(one, steps[one.path]) for one in found.variables if one.path in steps]
+def _moves(found: Optimum, way: Direction) -> str:
+    """Changes of the variables, but for those that hardly move in units of their ranges."""
+    shares = {one.path: abs(way.steps[one.path]) / (one.max - one.min) for one in found.variables}
+    largest = max(shares.values())
+    return ", ".join(
+        f"{short_name(one.path)} {way.steps[one.path]:+.3g}"
+        + ("" if one.units == "1" else f" {one.units}")
+        for one in found.variables
+        if shares[one.path] > 0.01 * largest
+    )
+
+
+def _losses(way: Direction) -> list[str]:
+    return [
+        MISSING if one is None else _percent(one) for one in (way.loss_forward, way.loss_backward)
+    ]
+
+
+def _held(found: Optimum) -> Iterator[RenderableType]:
+    """Table of what holds the points of a front back, and how flat they are."""
+    from rich.text import Text
+
+    from optics.present.tables import plain_table, titled
+
+    table = plain_table("", "held back by", "loosest together", "loses", "opposite")
+    for place in (1, 2):
+        table.columns[place].justify = "left"
+    words = {one.path: short_name(one.path) for one in found.variables}
+    for number, point in enumerate(found.front, 1):
+        held = [f"{words.get(one.name, one.name)} {one.kind}" for one in point.held_by]
+        way = point.loosest
+        rest = [MISSING] * 3 if way is None else [_moves(found, way), *_losses(way)]
+        table.add_row(str(number), ", ".join(held) or "nothing", *rest)
+    yield titled("What holds them, and how flat they are", table)
+    yield Text("Loosest: all objectives stay, to first order; the one that loses most is told.")
 
 
 def _points(caption: str, points: Sequence[Point], found: Optimum) -> Iterator[RenderableType]:

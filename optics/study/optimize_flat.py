@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
@@ -13,7 +14,7 @@ if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from optics.study.optimize_bind import Binding
-    from optics.study.optimize_plan import Objective
+    from optics.study.optimize_plan import Aim, Objective
     from optics.study.optimize_runner import Runner
 
     Floats = NDArray[np.float64]
@@ -115,35 +116,90 @@ def flat_ranges(
 
 
 def loosest(
-    runner: Runner, top: Summit, objective: Objective, binding: Binding, size: float
-) -> Direction | None:
-    """Joint change that costs least, along which all that binds stays as it is, to first order.
+    runner: Runner, tops: Sequence[Summit], bindings: Sequence[Binding], spread: Floats
+) -> list[Direction | None]:
+    """At each point the joint change that costs least, all that binds staying as it is.
 
-    The curvature is that of the Lagrangian, from differences of derivatives, in the space that
-    what binds leaves free; variables are measured in ranges of their bounds.
+    To first order, that is, and of several objectives each stays as well. The curvature is that of
+    the Lagrangian, from differences of derivatives, in the space that what binds leaves free;
+    variables are measured in ranges of their bounds.
+
+    Parameters
+    ----------
+    runner : Runner
+    tops : sequence of Summit
+    bindings : sequence of Binding
+        Of each of them.
+    spread : float (k,)
     """
-    free = binding.freedom
-    if top.unit.size < 2 or free.shape[1] == 0:
-        return None
-    curvature = free.T @ _hessian(runner, top, binding) @ free
+    ways = [
+        _Way(place, *_softest(hessian, binding.freedom))
+        for place, (hessian, binding) in enumerate(
+            zip(_hessians(runner, tops, bindings), bindings, strict=True)
+        )
+        if hessian is not None
+    ]
+    found: list[Direction | None] = [None] * len(tops)
+    if not ways:
+        return found
+    aim = runner.aim
+    wanted = np.array([_wanted_loss(aim, tops[one.place], bindings[one.place], spread)
+                       for one in ways])  # fmt: skip
+    steps = [_step(one, tops[one.place], loss) for one, loss in zip(ways, wanted, strict=True)]
+    ends = np.stack([tops[one.place].unit + side * step
+                     for one, step in zip(ways, steps, strict=True)
+                     for side in (1.0, -1.0)])  # fmt: skip
+    outcomes, _ = runner.answers(ends, "flatness")
+    for one, step, (forth, back) in zip(
+        ways, steps, outcomes.reshape(len(ways), 2, -1), strict=True
+    ):
+        top = tops[one.place]
+        losses = (_largest_loss(aim, top, end, spread) for end in (forth, back))
+        changes = step * (aim.high - aim.low)
+        found[one.place] = Direction(
+            dict(zip(aim.question.paths, changes.tolist(), strict=True)),
+            *(loss if np.isfinite(loss) else None for loss in losses),
+        )
+    return found
+
+
+class _Way(NamedTuple):
+    """Softest direction at a point, and the curvature along it."""
+
+    place: int
+    along: Floats  # (p,)
+    curvature: float
+
+
+def _softest(hessian: Floats, free: Floats) -> tuple[Floats, float]:
+    """Direction (p,) among the free ones (p, d) along which least is lost, and how fast."""
+    curvature = free.T @ hessian @ free
     values, vectors = np.linalg.eigh(0.5 * (curvature + curvature.T))
     along = free @ vectors[:, 0]
-    along *= np.sign(along[np.abs(along).argmax()])
-    room = _room(top.unit, along)
-    # The objective is in units of its spread there, and so is the loss.
-    wanted = np.sqrt(2.0 * LOSS * size / binding.spread / values[0]) if values[0] > 0.0 else np.inf
-    step = min(float(wanted), room)
-    found, _ = runner.answers(
-        np.stack([top.unit + step * along, top.unit - step * along]), "flatness"
+    return along * np.sign(along[np.abs(along).argmax()]), float(values[0])
+
+
+def _wanted_loss(aim: Aim, top: Summit, binding: Binding, spread: Floats) -> float:
+    """Loss of the Lagrangian that stands for a share of each objective, by their weights."""
+    return LOSS * sum(
+        float(share * size_of(float(top.outcomes[one.place]), float(spread[one.place])))
+        / float(spread[one.place])
+        for share, one in zip(binding.shares, aim.objectives, strict=True)
     )
-    lost = objective.sign * (top.outcomes[objective.place] - found[:, objective.place]) / size
-    ranges = runner.aim.high - runner.aim.low
-    return Direction(
-        {
-            one.path: float(change)
-            for one, change in zip(runner.aim.variables, step * along * ranges, strict=True)
-        },
-        *(float(one) if np.isfinite(one) else None for one in lost),
+
+
+def _step(way: _Way, top: Summit, loss: float) -> Floats:
+    """Change (p,) in the unit box by which that much is lost, or as far as the bounds allow."""
+    wanted = np.sqrt(2.0 * loss / way.curvature) if way.curvature > 0.0 else np.inf
+    return np.asarray(min(float(wanted), _room(top.unit, way.along)) * way.along)
+
+
+def _largest_loss(aim: Aim, top: Summit, end: Floats, spread: Floats) -> float:
+    """Share that an objective really loses there; of several, the one that loses most."""
+    return max(
+        float(one.sign * (top.outcomes[one.place] - end[one.place]))
+        / size_of(float(top.outcomes[one.place]), float(spread[one.place]))
+        for one in aim.objectives
     )
 
 
@@ -153,13 +209,32 @@ def _room(unit: Floats, along: Floats) -> float:
     return float(np.min(np.minimum(unit, 1.0 - unit)[moves] / np.abs(along[moves])))
 
 
-def _hessian(runner: Runner, top: Summit, binding: Binding) -> Floats:
-    """Second derivatives (p, p) of the Lagrangian, whose gradient is the weighted slopes."""
-    size = top.unit.size
-    ends = np.repeat(top.unit[None, None], 2, axis=0).repeat(size, axis=1)
+def _hessians(
+    runner: Runner, tops: Sequence[Summit], bindings: Sequence[Binding]
+) -> list[Floats | None]:
+    """Second derivatives (p, p) of the Lagrangian at each point, whose gradient is the slopes'.
+
+    None where there is but one variable or nothing is left free.
+    """
+    size = len(runner.aim.variables)
+    asked = [place for place, one in enumerate(bindings) if size > 1 and one.freedom.shape[1]]
+    found: list[Floats | None] = [None] * len(tops)
+    if not asked:
+        return found
+    ends = np.stack([_around(tops[place].unit) for place in asked])  # (n, 2, p, p)
+    slopes = runner.slopes(ends.reshape(-1, size), "flatness")
+    slopes = slopes.reshape(len(asked), 2, size, -1, size)
+    for place, end, slope in zip(asked, ends, slopes, strict=True):
+        gradients = np.einsum("k,snkp->snp", bindings[place].weights, slope)
+        widths = np.diagonal(end[1] - end[0])
+        found[place] = np.asarray((gradients[1] - gradients[0]) / widths[:, None])
+    return found
+
+
+def _around(unit: Floats) -> Floats:
+    """Points (2, p, p) before and after one along every variable, within the box."""
+    size = unit.size
+    ends = np.broadcast_to(unit, (2, size, size)).copy()
     for side, step in enumerate((-_CURVATURE_STEP, _CURVATURE_STEP)):
-        ends[side, range(size), range(size)] = np.clip(top.unit + step, 0.0, 1.0)
-    widths = np.diagonal(ends[1] - ends[0])
-    slopes = runner.slopes(ends.reshape(2 * size, size), "flatness")
-    gradients = np.einsum("k,nkp->np", binding.weights, slopes).reshape(2, size, size)
-    return np.asarray((gradients[1] - gradients[0]) / widths[:, None])
+        ends[side, range(size), range(size)] = np.clip(unit + step, 0.0, 1.0)
+    return ends

@@ -16,6 +16,8 @@ from optics.study.optimize_goals import gradient_of_objective, meets, single_goa
 from optics.study.optimize_search import Searched, close, search
 from optics.study.optimum import (
     ConstraintFound,
+    FrontPoint,
+    Held,
     ObjectiveFound,
     Optimum,
     Point,
@@ -80,11 +82,10 @@ def single_optimum(runner: Runner, first: Ends, found: Best) -> Optimum:
     best, end = found.settled[0], found.ends[0]
     top = Summit(aim.unit_at(best.point), best.found[: -len(TRUST)])
     size = size_of(float(top.outcomes[objective.place]), float(first.spread[objective.place]))
-    (slope,) = runner.slopes(end.unit[None], "flatness")
-    binding = find_binding(aim, objective, first.spread, end, slope)
+    (binding,) = _bindings(runner, first, [end])
     cut = slices(runner, top)
     ranges = flat_ranges(runner, top, objective, cut, size)
-    direction = loosest(runner, top, objective, binding, size)
+    (direction,) = loosest(runner, [top], [binding], first.spread)
     return Optimum(
         title=aim.case.title,
         case_sha256=aim.case.sha256,
@@ -101,7 +102,7 @@ def single_optimum(runner: Runner, first: Ends, found: Best) -> Optimum:
         tried=_tried(runner, first, [found.searched], found.searched.starts),
         accuracy=_accuracy(best.found),
         warnings=_warnings(runner, first, [best], not end.settled),
-        frame=_frame(aim, first.sample, found.settled),
+        frame=_frame(aim, first.sample, found.settled, ()),
     )
 
 
@@ -115,25 +116,61 @@ def front_optimum(runner: Runner, first: Ends, front: Front) -> Optimum:
     settled, values = [settled[place] for place in kept], values[kept]
     ranges = np.where(np.ptp(values, axis=0) > 0.0, np.ptp(values, axis=0), 1.0)
     far = np.linalg.norm((values - values.min(axis=0)) / ranges, axis=1)
-    best = settled[int(far.argmin())]
+    number = int(far.argmin())
+    best = settled[number]
+    bindings = _bindings(runner, first, [front.ends[place][1] for place in kept])
+    points = _front_points(runner, first, settled, bindings)
     return Optimum(
         title=aim.case.title,
         case_sha256=aim.case.sha256,
         seed=first.seed,
         tolerance=aim.question.tolerance,
         objectives=_objectives(aim, best),
-        variables=_variables(aim, best, None, None),
-        constraints=_constraints(aim, best, None),
-        best=_point(aim, best.point, best.found),
+        variables=_variables(aim, best, bindings[number], None),
+        constraints=_constraints(aim, best, bindings[number]),
+        best=points[number],
         others=(),
-        front=tuple(_point(aim, one.point, one.found) for one in settled),
+        front=points,
         loosest=None,
         slices={},
         tried=_tried(runner, first, front.anchors, front.starts),
         accuracy=_accuracy(best.found),
         warnings=_warnings(runner, first, settled, unsettled=False),
-        frame=_frame(aim, first.sample, settled),
+        frame=_frame(aim, first.sample, settled, points),
     )
+
+
+def _bindings(runner: Runner, first: Ends, ends: Sequence[Polished]) -> list[Binding]:
+    """What binds at each end."""
+    slopes = runner.slopes(np.array([end.unit for end in ends]), "flatness")
+    return [
+        find_binding(runner.aim, first.spread, end, slope)
+        for end, slope in zip(ends, slopes, strict=True)
+    ]
+
+
+def _front_points(
+    runner: Runner, first: Ends, settled: Sequence[Settled], bindings: Sequence[Binding]
+) -> tuple[FrontPoint, ...]:
+    """Points of a front, with what holds each back and how flat it is."""
+    aim = runner.aim
+    tops = [Summit(aim.unit_at(one.point), one.found[: -len(TRUST)]) for one in settled]
+    ways = loosest(runner, tops, bindings, first.spread)
+    points = [_point(aim, one.point, one.found) for one in settled]
+    return tuple(
+        FrontPoint(point.values, point.outcomes, _held_by(aim, binding), way)
+        for point, binding, way in zip(points, bindings, ways, strict=True)
+    )
+
+
+def _held_by(aim: Aim, binding: Binding) -> tuple[Held, ...]:
+    """Constraints and bounds that bind."""
+    limits = zip(aim.limits, binding.limits, strict=True)
+    held = [Held(one.name, one.kind) for one, gain in limits if gain > 0.0]
+    for kind, gains in (("min", binding.lower), ("max", binding.upper)):
+        places = np.flatnonzero(gains > 0.0).tolist()
+        held += [Held(aim.variables[place].path, kind) for place in places]
+    return tuple(held)
 
 
 def _point(aim: Aim, values: Floats, found: Floats) -> Point:
@@ -162,13 +199,12 @@ def _objectives(aim: Aim, best: Settled) -> tuple[ObjectiveFound, ...]:
 def _variables(
     aim: Aim,
     best: Settled,
-    binding: Binding | None,
+    binding: Binding,
     ranges: Sequence[tuple[float, float]] | None,
 ) -> tuple[VariableFound, ...]:
     found = []
     for place, one in enumerate(aim.variables):
-        lower = 0.0 if binding is None else float(binding.lower[place])
-        upper = 0.0 if binding is None else float(binding.upper[place])
+        lower, upper = float(binding.lower[place]), float(binding.upper[place])
         flat = (None, None) if ranges is None else ranges[place]
         found.append(
             VariableFound(
@@ -179,7 +215,7 @@ def _variables(
                 start=float(aim.start[place]),
                 best=float(best.point[place]),
                 binds="min" if lower > 0.0 else "max" if upper > 0.0 else None,
-                gain_per_unit=max(lower, upper),
+                gain_per_unit=_gain(aim, max(lower, upper)),
                 flat_from=flat[0],
                 flat_to=flat[1],
             )
@@ -187,8 +223,7 @@ def _variables(
     return tuple(found)
 
 
-def _constraints(aim: Aim, best: Settled, binding: Binding | None) -> tuple[ConstraintFound, ...]:
-    gains = np.zeros(len(aim.limits)) if binding is None else binding.limits
+def _constraints(aim: Aim, best: Settled, binding: Binding) -> tuple[ConstraintFound, ...]:
     return tuple(
         ConstraintFound(
             name=one.name,
@@ -197,10 +232,15 @@ def _constraints(aim: Aim, best: Settled, binding: Binding | None) -> tuple[Cons
             limit=one.value,
             value=float(best.found[one.place]),
             binds=bool(gain > 0.0),
-            gain_per_unit=float(gain),
+            gain_per_unit=_gain(aim, float(gain)),
         )
-        for one, gain in zip(aim.limits, gains, strict=True)
+        for one, gain in zip(aim.limits, binding.limits, strict=True)
     )
+
+
+def _gain(aim: Aim, gain: float) -> float | None:
+    """Gain of the objective; of several there is no unit for it."""
+    return gain if len(aim.objectives) == 1 else None
 
 
 def _tried(runner: Runner, first: Ends, searches: Sequence[Searched], starts: int) -> Tried:
@@ -248,22 +288,42 @@ def _warnings(
     return tuple(said)
 
 
-def _frame(aim: Aim, sample: Sample, written: Sequence[Settled]) -> pandas.DataFrame:
+def _frame(
+    aim: Aim, sample: Sample, written: Sequence[Settled], front: Sequence[FrontPoint]
+) -> pandas.DataFrame:
     """Every point of the first stage, and the result: the best first, or the front."""
     import pandas
 
-    best = "front" if len(aim.objectives) > 1 else "best"
-    kinds = ["sample"] * len(sample.units) + [best] * len(written[:1])
-    kinds += ["front" if len(aim.objectives) > 1 else "other"] * len(written[1:])
+    kinds = ["best", *["other"] * (len(written) - 1)] if not front else ["front"] * len(front)
     values = np.concatenate([aim.values_at(sample.units), [one.point for one in written]])
     outcomes = np.concatenate([sample.outcomes, [one.found[: -len(TRUST)] for one in written]])
     linked = {path: values[:, place] for path, place in aim.question.followers}
-    return pandas.DataFrame(
+    frame = pandas.DataFrame(
         {
-            "kind": kinds,
+            "kind": ["sample"] * len(sample.units) + kinds,
             **{path: values[:, place] for place, path in enumerate(aim.question.paths)},
             **linked,
             **{one.name: outcomes[:, place] for place, one in enumerate(aim.question.outcomes)},
             "allowed": meets(aim, outcomes),
         }
     )
+    if not front:
+        return frame
+    told = pandas.DataFrame(
+        [_told(one) for one in front], index=range(len(sample.units), len(frame))
+    )
+    return frame.join(told)
+
+
+def _told(point: FrontPoint) -> dict[str, str | float | None]:
+    """What a row of the front says beside its numbers."""
+    row: dict[str, str | float | None] = {
+        "held_by": "; ".join(f"{one.name} {one.kind}" for one in point.held_by)
+    }
+    if point.loosest is not None:
+        row |= {f"loosest {path}": step for path, step in point.loosest.steps.items()}
+        row |= {
+            "loss_forward": point.loosest.loss_forward,
+            "loss_backward": point.loosest.loss_backward,
+        }
+    return row

@@ -31,6 +31,37 @@ class Point:
 
 
 @dataclass(frozen=True, slots=True)
+class Held:
+    """A constraint or bound that holds a point back.
+
+    Attributes
+    ----------
+    name, kind : str
+        Outcome or path; "min" or "max".
+    """
+
+    name: str
+    kind: str
+
+
+@dataclass(frozen=True, slots=True)
+class FrontPoint(Point):
+    """A point of a Pareto front.
+
+    Attributes
+    ----------
+    held_by : tuple of Held
+        Without these a point would be within reach that is better in all objectives.
+    loosest : Direction or None
+        Joint change of the variables that costs least; None for a single variable and where
+        nothing is left free.
+    """
+
+    held_by: tuple[Held, ...]
+    loosest: Direction | None
+
+
+@dataclass(frozen=True, slots=True)
 class Slice:
     """One variable moved through its bounds, all others at the best.
 
@@ -61,9 +92,10 @@ class VariableFound:
         Value in the case file.
     best : float
     binds : str or None
-        "min" or "max" where the objective would gain from a wider bound.
-    gain_per_unit : float
+        "min" or "max" where the objective, or all of several, would gain from a wider bound.
+    gain_per_unit : float or None
         What the objective would gain for each unit that this bound is moved outward; 0 if none.
+        None for a Pareto front.
     flat_from, flat_to : float or None
         Range around the best in which the objective loses less than 1 % of its value, whatever
         the constraints, all other variables fixed. None for a Pareto front.
@@ -76,7 +108,7 @@ class VariableFound:
     start: float
     best: float
     binds: str | None
-    gain_per_unit: float
+    gain_per_unit: float | None
     flat_from: float | None
     flat_to: float | None
 
@@ -91,9 +123,10 @@ class ConstraintFound:
         Outcome; "min" or "max"; its unit.
     limit, value : float
     binds : bool
-        Whether the objective would gain from a looser limit.
-    gain_per_unit : float
-        What the objective would gain for each unit that the limit is loosened, at first.
+        Whether the objective, or all of several, would gain from a looser limit.
+    gain_per_unit : float or None
+        What the objective would gain for each unit that the limit is loosened, at first. None for
+        a Pareto front.
     """
 
     name: str
@@ -102,7 +135,7 @@ class ConstraintFound:
     limit: float
     value: float
     binds: bool
-    gain_per_unit: float
+    gain_per_unit: float | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -129,14 +162,16 @@ class ObjectiveFound:
 class Direction:
     """Joint change of the variables that costs least, along which binding limits stay.
 
+    At a point of a front each objective stays as well, to first order.
+
     Attributes
     ----------
     steps : mapping of str to float
-        Change of each variable that by the curvature at the best loses 1 % of the objective, or
-        less where bounds are nearer.
+        Change of each variable that by the curvature there loses 1 % of the objective (of several,
+        by their weights at this point), or less where bounds are nearer.
     loss_forward, loss_backward : float or None
-        Share of the objective that is really lost there and at the opposite steps; None where
-        undefined or beyond bounds.
+        Share of the objective that is really lost there and at the opposite steps, of several the
+        largest; None where undefined or beyond bounds.
     """
 
     steps: Mapping[str, float]
@@ -191,7 +226,7 @@ class Optimum:
         Of a front, the compromise nearest to the ideal, objectives in units of their range.
     others : tuple of Point
         Other optima whose objective is within 1 % of the best, best first. Empty for a front.
-    front : tuple of Point
+    front : tuple of FrontPoint
         No objective of any of them can be better without another being worse, as far as was
         found; in the order of the first objective. Empty for one objective.
     loosest : Direction or None
@@ -216,7 +251,7 @@ class Optimum:
     constraints: tuple[ConstraintFound, ...]
     best: Point
     others: tuple[Point, ...]
-    front: tuple[Point, ...]
+    front: tuple[FrontPoint, ...]
     loosest: Direction | None
     slices: Mapping[str, Slice]
     tried: Tried
@@ -236,9 +271,9 @@ class Optimum:
             "objectives": [asdict(one) for one in self.objectives],
             "variables": [asdict(one) for one in self.variables],
             "constraints": [asdict(one) for one in self.constraints],
-            "best": _plain(self.best),
-            "others": [_plain(one) for one in self.others],
-            "front": [_plain(one) for one in self.front],
+            "best": asdict(self.best),
+            "others": [asdict(one) for one in self.others],
+            "front": [asdict(one) for one in self.front],
             "loosest": None if self.loosest is None else asdict(self.loosest),
             "slices": {
                 path: {
@@ -252,7 +287,3 @@ class Optimum:
             "accuracy": dict(self.accuracy),
             "warnings": list(self.warnings),
         }
-
-
-def _plain(point: Point) -> dict[str, dict[str, float]]:
-    return {"values": dict(point.values), "outcomes": dict(point.outcomes)}

@@ -21,6 +21,7 @@ from optics.study.optimize_goals import meets
 from optics.study.optimize_plan import plan_optimize
 from optics.study.optimize_result import best_optima
 from optics.study.optimize_runner import Runner
+from optics.study.optimum import FrontPoint, Optimum
 
 CASES = Path(__file__).parents[2] / "cases"
 ONE = {HTL: {"min": 20, "max": 120}}
@@ -123,6 +124,106 @@ def test_no_point_of_a_front_betters_another() -> None:
     assert found.best in found.front
     alone = optics.optimize(optimized())
     assert -pairs[0][0] == pytest.approx(alone.best.outcomes[EQE], rel=1e-4)
+
+
+PLASMON = "destinations.surface_plasmon"
+
+
+@pytest.fixture(scope="module")
+def held_front() -> Optimum:
+    """A front that begins free, follows a limit and ends at a bound."""
+    wanted = [{"maximize": EQE}, {"minimize": PLASMON}]
+    return optics.optimize(optimized(objectives=wanted, constraints={GUIDED: {"max": 0.3}}))
+
+
+def test_a_front_says_what_holds_each_point(held_front: Optimum) -> None:
+    held = [{(one.name, one.kind) for one in point.held_by} for point in held_front.front]
+    assert {frozenset(one) for one in held} >= {
+        frozenset(), frozenset({(GUIDED, "max")}), frozenset({(HTL, "max")}),
+    }  # fmt: skip
+    for names, point in zip(held, held_front.front, strict=True):
+        at_bound = point.values[HTL] == BOUNDS[HTL]["max"]
+        at_limit = point.outcomes[GUIDED] > 0.3 - 1e-3
+        assert ((HTL, "max") in names) <= at_bound
+        assert ((GUIDED, "max") in names) <= at_limit
+        assert bool(names) == (at_bound or at_limit)
+    (constraint,) = held_front.constraints
+    assert constraint.gain_per_unit is None
+
+
+@pytest.mark.parametrize("held_by", [GUIDED, HTL])
+def test_what_holds_a_point_of_a_front_keeps_better_ones_away(
+    held_front: Optimum, held_by: str
+) -> None:
+    """A little beyond it there is a device better in both; of a free point there is none around."""
+    device = optimized()
+    points = [one for one in held_front.front if [held.name for held in one.held_by] == [held_by]]
+    point = points[len(points) // 2]
+    around = [(a, b) for a in np.linspace(-2.0, 2.0, 9) for b in np.linspace(-2.0, 2.0, 9)]
+
+    def betters(start: FrontPoint) -> list[dict[str, float]]:
+        found = []
+        for step in around:
+            moved = {p: start.values[p] + s for p, s in zip((HTL, ETL), step, strict=True)}
+            budget = optics.budget(device.replace_all(moved))
+            shares = {name: budget.destinations[name] for name in ("guided", "surface_plasmon")}
+            if (
+                budget.external_quantum_efficiency > start.outcomes[EQE] + 1e-6
+                and shares["surface_plasmon"] < start.outcomes[PLASMON] - 1e-6
+            ):
+                found.append({**moved, GUIDED: shares["guided"]})
+        return found
+
+    better = betters(point)
+    assert better
+    limit = {GUIDED: 0.3, HTL: BOUNDS[HTL]["max"]}[held_by]
+    assert all(one[held_by] > limit for one in better)
+    free = next(one for one in held_front.front[1:] if not one.held_by)
+    assert betters(free) == []
+
+
+def test_a_front_says_how_flat_each_point_is(held_front: Optimum) -> None:
+    """Losses are real, and no other change so long costs less in both."""
+    device = optimized()
+    ranges = {path: bounds["max"] - bounds["min"] for path, bounds in BOUNDS.items()}
+
+    def lost(point: FrontPoint, steps: dict[str, float]) -> float:
+        moved = {path: point.values[path] + steps[path] for path in steps}
+        budget = optics.budget(device.replace_all(moved))
+        return max(
+            1.0 - budget.external_quantum_efficiency / point.outcomes[EQE],
+            (budget.destinations["surface_plasmon"] or 0.0) / point.outcomes[PLASMON] - 1.0,
+        )
+
+    free = [point for point in held_front.front if not point.held_by]
+    assert len(free) > 3
+    # With two variables, one held and both objectives level leave no way.
+    assert all(point.loosest is None for point in held_front.front if point.held_by)
+    for point in (free[0], free[len(free) // 2]):
+        assert point.loosest is not None
+        steps = dict(point.loosest.steps)
+        back = {path: -step for path, step in steps.items()}
+        assert lost(point, steps) == pytest.approx(point.loosest.loss_forward, abs=1e-5)
+        assert lost(point, back) == pytest.approx(point.loosest.loss_backward, abs=1e-5)
+        length = np.hypot(*(steps[path] / ranges[path] for path in (HTL, ETL)))
+        at = np.arctan2(steps[ETL] / ranges[ETL], steps[HTL] / ranges[HTL])
+        for turn in (0.3, 0.6, 1.0, 1.57, 2.2, 2.8):
+            other = {
+                HTL: length * np.cos(at + turn) * ranges[HTL],
+                ETL: length * np.sin(at + turn) * ranges[ETL],
+            }
+            both = (lost(point, other), lost(point, {p: -s for p, s in other.items()}))
+            assert max(both) > max(lost(point, steps), lost(point, back))
+
+
+def test_a_table_of_a_front_says_what_holds_it(held_front: Optimum) -> None:
+    rows = held_front.frame[held_front.frame["kind"] == "front"]
+    assert f"{GUIDED} max" in set(rows["held_by"])
+    point, row = held_front.front[1], rows.iloc[1]
+    assert point.loosest is not None
+    assert row[f"loosest {HTL}"] == point.loosest.steps[HTL]
+    assert row["loss_forward"] == point.loosest.loss_forward
+    assert held_front.frame["held_by"].isna().sum() == held_front.tried.samples
 
 
 def test_faults_are_told_all_at_once() -> None:
