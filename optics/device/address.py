@@ -14,6 +14,8 @@ _SECTIONS = (
     "title", "wavelength", "materials", "substrate", "cover", "surroundings", "sides", "layers",
     "emitters", "drive",
 )  # fmt: skip
+# A plain dictionary is told without asking what an abstract class takes for a table.
+_TABLE = (dict, Mapping)
 # Keys without a default: they may be set although the file leaves them out.
 _OPTIONAL = frozenset(
     {
@@ -160,12 +162,12 @@ def _locate(document: Mapping[str, Any], path: str, where: str) -> tuple[Any, st
 
 def _step(container: Any, key: str) -> str | int | None:
     """Key or index of an entry, by name where the entries have names."""
-    if isinstance(container, Mapping):
+    if isinstance(container, _TABLE):
         return key if key in container else None
     if not isinstance(container, list):
         return None
     for index, item in enumerate(container):
-        if isinstance(item, Mapping) and item.get("name") == key:
+        if isinstance(item, _TABLE) and item.get("name") == key:
             return index
     if key.isascii() and key.isdigit() and int(key) < len(container):
         return None if isinstance(container[int(key)], Mapping) else int(key)
