@@ -302,6 +302,32 @@ def test_arguments_out_of_range_are_refused(wrong: dict[str, float]) -> None:
         optics.optimize(optimized(), **wrong)
 
 
+@pytest.mark.slow  # starts a cluster
+@pytest.mark.filterwarnings("ignore")  # of the cluster's own libraries
+def test_a_cluster_of_two_processes_gives_the_same_bits_even_if_one_dies() -> None:
+    distributed = pytest.importorskip("distributed")
+    from optics.study.executor import cluster_executor
+
+    device = optimized(constraints={GUIDED: {"max": 0.17}})
+    own = optics.optimize(device).to_dict()
+    with distributed.LocalCluster(
+        n_workers=2, threads_per_worker=1, processes=True, dashboard_address=None
+    ) as cluster:
+        with cluster_executor(cluster.scheduler_address) as executor:
+            assert optics.optimize(device, executor=executor).to_dict() == own
+        killed = []
+
+        def kill_one(stage: str, done: int, _total: int) -> None:
+            if stage == "polishing" and done and not killed:
+                killed.append(next(iter(cluster.workers.values())))
+                killed[0].process.process._process.kill()
+
+        with cluster_executor(cluster.scheduler_address) as executor:
+            again = optics.optimize(device, executor=executor, progress=kill_one)
+        assert killed
+        assert again.to_dict() == own
+
+
 # Values of each variable of the dense grids.
 DENSE = {"optimize-two-antinodes": 45, "optimize-color": 6, "optimize-front": 10}
 
