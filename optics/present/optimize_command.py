@@ -12,9 +12,11 @@ import click
 from optics.device.case import read_case
 from optics.device.errors import CaseError, Fault
 from optics.present import files, pictures
-from optics.present.study_command import say_beside, say_compiling
+from optics.present.study_command import publish, say_beside, say_compiling
 
 if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
     from optics.device.case import Case
     from optics.study.optimize_plan import Aim
     from optics.study.optimize_runner import Runner
@@ -152,22 +154,16 @@ def _picked(case: Case, found: Optimum, pick: int | None) -> Point:
 def _write(case: Case, found: Optimum, outputs: Sequence[Path], point: Point) -> None:
     from optics.present.case_text import write_case
 
-    writers: dict[str, files.Writer] = {
-        ".json": lambda path: files.write_json(found.to_dict(), path),
-        ".csv": lambda path: found.frame.to_csv(path, index=False),
-    }
-    if any(path.suffix.lower() in pictures.SUFFIXES for path in outputs):
+    def draw() -> Figure:
         from optics.present.optimize_pictures import optimum_figure
 
-        figure = optimum_figure(found)
-        writers |= {end: lambda path: pictures.write(figure, path) for end in pictures.SUFFIXES}
+        return optimum_figure(found)
 
     def improved(final: Path) -> files.Writer:
         return lambda path: write_case(case, point.values, path, final)
 
-    files.publish(
-        {
-            path: improved(path) if path.suffix.lower() == CASE else writers[path.suffix.lower()]
-            for path in outputs
-        }
-    )
+    writers: dict[str, files.Writer] = {
+        ".json": lambda path: files.write_json(found.to_dict(), path),
+        ".csv": lambda path: found.frame.to_csv(path, index=False),
+    }
+    publish(outputs, writers, draw, {CASE: improved})

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import Executor
 from contextlib import contextmanager, nullcontext
 from typing import TYPE_CHECKING
@@ -11,8 +11,13 @@ from typing import TYPE_CHECKING
 import click
 
 from optics.device.errors import CaseError, Fault, nearest
+from optics.present import files, pictures
 
 if TYPE_CHECKING:
+    from pathlib import Path
+
+    from matplotlib.figure import Figure
+
     from optics.study.evaluate import Progress, Question
     from optics.study.store import Store
 
@@ -107,3 +112,32 @@ def say_beside(kinds: Iterable[tuple[str, Iterable[str]]]) -> None:
     for kind, lines in kinds:
         for line in lines:
             click.echo(f"{kind}: {line}", err=True)
+
+
+def publish(
+    outputs: Sequence[Path],
+    writers: Mapping[str, files.Writer],
+    draw: Callable[[], Figure],
+    named: Mapping[str, Callable[[Path], files.Writer]] | None = None,
+) -> None:
+    """Write a study's files, all complete or none.
+
+    Parameters
+    ----------
+    outputs : sequence of Path
+    writers : mapping of str to Writer
+        By suffix.
+    draw : callable
+        Makes the picture, once, if one is asked for.
+    named : mapping of str to callable, optional
+        By suffix, makes the writer of a file whose content depends on where it will lie.
+    """
+    every = dict(writers)
+    if any(path.suffix.lower() in pictures.SUFFIXES for path in outputs):
+        figure = draw()
+        every |= dict.fromkeys(pictures.SUFFIXES, lambda path: pictures.write(figure, path))
+    made = {path: (named or {}).get(path.suffix.lower()) for path in outputs}
+    files.publish(
+        {path: every[path.suffix.lower()] if make is None else make(path)
+         for path, make in made.items()}
+    )  # fmt: skip

@@ -12,6 +12,7 @@ from optics.device.case import read_case
 from optics.present import files, pictures
 from optics.present.study_command import (
     check_shown,
+    publish,
     say_beside,
     say_compiling,
     saying_what_is_kept,
@@ -20,6 +21,7 @@ from optics.present.study_command import (
 
 if TYPE_CHECKING:
     import xarray
+    from matplotlib.figure import Figure
 
 FORMATS = (".json", ".csv", ".nc", *pictures.SUFFIXES)
 
@@ -92,14 +94,14 @@ def run(
 def _write(found: xarray.Dataset, outputs: Sequence[Path], shown: Sequence[str]) -> None:
     from optics.present.sweep import sweep_dict, sweep_frame
 
+    def draw() -> Figure:
+        from optics.present.sweep_pictures import sweep_figure
+
+        return sweep_figure(found, shown)
+
     writers: dict[str, files.Writer] = {
         ".json": lambda path: files.write_json(sweep_dict(found), path),
         ".csv": lambda path: sweep_frame(found).to_csv(path, index=False),
         ".nc": lambda path: found.to_netcdf(path, engine="h5netcdf"),
     }
-    if any(path.suffix.lower() in pictures.SUFFIXES for path in outputs):
-        from optics.present.sweep_pictures import sweep_figure
-
-        figure = sweep_figure(found, shown)
-        writers |= {end: lambda path: pictures.write(figure, path) for end in pictures.SUFFIXES}
-    files.publish({path: writers[path.suffix.lower()] for path in outputs})
+    publish(outputs, writers, draw)

@@ -12,6 +12,7 @@ from optics.device.case import read_case
 from optics.present import files, pictures
 from optics.present.study_command import (
     check_shown,
+    publish,
     say_beside,
     say_compiling,
     saying_what_is_kept,
@@ -19,6 +20,8 @@ from optics.present.study_command import (
 )
 
 if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
     from optics.study.tolerance_result import Tolerance
 
 FORMATS = (".json", ".csv", ".nc", *pictures.SUFFIXES)
@@ -96,14 +99,14 @@ def run(
 
 
 def _write(found: Tolerance, outputs: Sequence[Path], shown: Sequence[str]) -> None:
+    def draw() -> Figure:
+        from optics.present.tolerance_pictures import tolerance_figure
+
+        return tolerance_figure(found, shown)
+
     writers: dict[str, files.Writer] = {
         ".json": lambda path: files.write_json(found.to_dict(), path),
         ".csv": lambda path: found.to_frame().to_csv(path, index=False),
         ".nc": lambda path: found.data.to_netcdf(path, engine="h5netcdf"),
     }
-    if any(path.suffix.lower() in pictures.SUFFIXES for path in outputs):
-        from optics.present.tolerance_pictures import tolerance_figure
-
-        figure = tolerance_figure(found, shown)
-        writers |= {end: lambda path: pictures.write(figure, path) for end in pictures.SUFFIXES}
-    files.publish({path: writers[path.suffix.lower()] for path in outputs})
+    publish(outputs, writers, draw)
