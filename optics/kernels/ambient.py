@@ -15,10 +15,10 @@ from optics.kernels.exits import (
     PLANAR,
     face_reflectance,
     once_through,
+    share_out,
 )
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.problem import Problem
-from optics.kernels.source import share_out
 
 
 @kernel

@@ -4,11 +4,11 @@ import numpy as np
 
 from optics.kernels.arrays import Floats
 from optics.kernels.compiled import CACHE_FOLDER, cache_is_warm, kernel
+from optics.kernels.dipole import channel
 from optics.kernels.directions import lit_from_outside, sent_into_directions
-from optics.kernels.exits import AIR_BOTTOM, AIR_TOP, COLUMNS, PLANAR
+from optics.kernels.exits import AIR_BOTTOM, AIR_TOP, COLUMNS, PLANAR, share_out
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.problem import Problem
-from optics.kernels.source import channel, share_out
 
 
 @kernel

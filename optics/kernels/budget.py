@@ -12,7 +12,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from optics.kernels import settle
+from optics.kernels import places, settle
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import mark_cache_warm
 from optics.kernels.exits import COLUMNS, TOTAL
@@ -23,7 +23,7 @@ from optics.kernels.geometry import (
     nearest_absorber,
 )
 from optics.kernels.paths import ARC, ARC_BETWEEN_LINES, ARC_FROM_LINE, TAIL
-from optics.kernels.problem import Problem
+from optics.kernels.problem import Problem, rows_of
 from optics.kernels.second_look import SecondLook
 from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_destination
 
@@ -43,7 +43,7 @@ from optics.kernels.tasks import Tasks, along_arcs, dissipated_power, every_dest
 OUTCOMES = 10
 
 # Column of the radiated integrals for each of those that they hold.
-_RADIATED = {
+RADIATED = {
     AIR_BOTTOM: 1,
     AIR_TOP: 2,
     SUBSTRATE: 3,
@@ -102,6 +102,55 @@ def light_budget(problem: Problem, tolerance: float) -> Budget:
     tolerance : float
         Wanted accuracy of every destination as a fraction of the dissipated power.
     """
+    few = places.fewer(problem)
+    if few is None:
+        return _at_each_place(problem, tolerance)
+    direct = places.hopeless(problem, tolerance)
+    found = _empty(problem)
+    some = np.flatnonzero(~direct)
+    if some.size:
+        nodes = places.Places(rows_of(few.problem, some), few.basis[some])
+        between, error = _between(nodes, _at_each_place(nodes.problem, tolerance))
+        good = places.precise(error, tolerance)
+        _fill(found, some, between._replace(error=between.error + error))
+        direct[some[~good]] = True
+    rest = np.flatnonzero(direct)
+    if rest.size:
+        _fill(found, rest, _at_each_place(rows_of(problem, rest), tolerance))
+    return found
+
+
+def _empty(problem: Problem) -> Budget:
+    w, z = problem.source.kz_positions.shape
+    shape = (w, z, 2)
+    return Budget(
+        np.empty((*shape, OUTCOMES)),
+        np.empty(shape),
+        np.empty(w),
+        np.zeros(w, dtype=np.int64),
+        np.zeros(w, dtype=np.bool_),
+    )
+
+
+def _fill(found: Budget, rows: Integers, part: Budget) -> None:
+    """Write down the results of some wavelengths."""
+    found.shares[rows], found.dissipation[rows], found.error[rows] = part[:3]
+    found.batches[rows] += part.batches
+    found.careful[rows] = part.careful
+
+
+def _between(nodes: places.Places, at_nodes: Budget) -> tuple[Budget, Floats]:
+    """Budget at the places asked for, and what interpolation errs over F (w,)."""
+    shares, miss = places.at_places(nodes, at_nodes.shares)
+    dissipation, miss_dissipation = places.at_places(nodes, at_nodes.dissipation)
+    scale = np.maximum(np.abs(at_nodes.dissipation).min(axis=1), _SMALLEST_SCALE)
+    error = np.maximum(miss.max(axis=2), miss_dissipation) / scale
+    between = at_nodes._replace(shares=shares, dissipation=dissipation)
+    return between, error.max(axis=1)
+
+
+def _at_each_place(problem: Problem, tolerance: float) -> Budget:
+    """As `light_budget`, with every dipole computed."""
     w = problem.source.eps_o.size
     rows = np.arange(w)
     media = media_facts(problem)
@@ -215,7 +264,7 @@ def _collect(
     """Sort the integrals into destinations."""
     w, _, z = parts.total.shape
     shares = np.zeros((w, 2, OUTCOMES, z))
-    for place, column in _RADIATED.items():
+    for place, column in RADIATED.items():
         shares[:, :, place] = parts.free[:, :, column]
     tail = parts.beyond + parts.near
     magnetic = tail[:, :2]  # TM of the vertical and the horizontal dipole

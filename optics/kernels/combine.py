@@ -23,12 +23,12 @@ import numpy as np
 from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.combine_tables import BLOCK, R_IM, R_RE
 from optics.kernels.compiled import inline, kernel
+from optics.kernels.dipole import channel, dissipated_factor
 from optics.kernels.elementary import exp_i
 from optics.kernels.halfstack import P, sqrt_upper
-from optics.kernels.paths import panel_miss
+from optics.kernels.panel import panel_miss
 from optics.kernels.problem import Source
 from optics.kernels.rules import DEGREES
-from optics.kernels.source import channel, dissipated_factor
 
 # Parts of the dissipated power, in the order of panels' `part`.
 TOTAL_PART, GUIDED_PART, BEYOND_PART, NEAR_PART = range(4)

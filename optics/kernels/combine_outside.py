@@ -1,6 +1,6 @@
 """First arrivals outside a block of devices, and what becomes of them, at one real node.
 
-As `source.share_by_faces`, with everything that does not depend on the films done once a node,
+As `exits.fates`, with everything that does not depend on the films done once a node,
 and what depends on one half stack only taken from its table. Rows of work space lie BLOCK apart,
 so that the compiler can tell that they do not overlap.
 """
@@ -42,11 +42,14 @@ from optics.kernels.exits import (
     TINY_LOSS,
     beside_matched,
     exit_line,
+    fates,
+    light_returns,
+    open_ways,
     passage,
+    slab_faces,
 )
 from optics.kernels.halfstack import S, abs2
 from optics.kernels.problem import Sides
-from optics.kernels.source import light_returns, share_by_faces, side_face
 
 # Rows of work space: g, |g|^2 = G and factors of what is sent up, from `combine_radiated`; 1 - R
 # and absorptance of the whole stack from below and above, T; then G times what goes to each
@@ -114,18 +117,21 @@ def _note_node(
     beside: Floats,
 ) -> None:
     """Write down the rows of `Outsides` of one node and polarization."""
-    once_b, s_b, p_b = side_face(sides, 0, u)
-    once_t, s_t, p_t = side_face(sides, 1, u)
+    once_b, s_b, p_b = slab_faces(sides.kind[0], sides.n_outer[0], sides.n_out[0], sides.loss[0], u)
+    once_t, s_t, p_t = slab_faces(sides.kind[1], sides.n_outer[1], sides.n_out[1], sides.loss[1], u)
     once, rho = (once_b, once_t), (s_b, s_t) if pol == S else (p_b, p_t)
     # Nothing arrives beyond a light line.
     arrives_b = 1.0 if sides.kind[0] == ABSORBING or u < sides.n_outer[0] else 0.0
     arrives_t = 1.0 if sides.kind[1] == ABSORBING or u < sides.n_outer[1] else 0.0
     dark = (0.0, 0.0, 0.0, 0.0, 0.0)
-    share_by_faces(sides, u, once, rho, dark, arrives_b, arrives_t, rows)
+    found = fates(open_ways(sides, u), once, rho, dark, arrives_b, arrives_t)
+    for way in range(2):
+        for k in range(COLUMNS - 1):
+            rows[way, AIR_BOTTOM + k] = found[way][k]
     if not returns:
         return
     for side in range(2):
-        leaves, lost, back = passage(sides.kind[side], rho[side], once[side])
+        leaves, lost, back = passage(rho[side], once[side])
         faces[3 * side], faces[3 * side + 1], faces[3 * side + 2] = leaves, lost, back
     beside[0] = beside_matched(u, sides.n_outer[0], lines[1], faces[5])
     beside[1] = beside_matched(u, sides.n_outer[1], lines[0], faces[2])
@@ -205,7 +211,7 @@ def _beside(lack: float, through: float, back: float) -> float:
 def _whole_stacks(
     below: bool, up: Floats, down: Floats, phase: complex, w: Floats, lanes: int
 ) -> None:
-    """Fill rows LACK_B to THROUGH; the formulas are those of `exits.whole_stack`, `bounces`."""
+    """Fill rows LACK_B to THROUGH; docs/theory.md, section 5, and `exits.bounces`."""
     turn, size = phase * phase, abs2(phase)
     a = complex(up[R_RE], up[R_IM]) * turn
     way = complex(up[WAY_RE], up[WAY_IM]) * turn

@@ -38,11 +38,11 @@ from optics.kernels.combine_outside import (
 )
 from optics.kernels.combine_tables import BLOCK, KNOWN_OF_HALF, R_IM, R_RE, SIZE
 from optics.kernels.compiled import inline, kernel
+from optics.kernels.dipole import channel, outgoing_factor
 from optics.kernels.exits import COLUMNS
 from optics.kernels.halfstack import abs2
 from optics.kernels.problem import Sides, Source
 from optics.kernels.rules import DEGREES
-from optics.kernels.source import channel, outgoing_factor
 
 # Terms a node.
 _TERMS = 3

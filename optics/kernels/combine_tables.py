@@ -10,14 +10,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from optics.kernels.arrays import Complexes, Floats
-from optics.kernels.compiled import inline, kernel
-from optics.kernels.exits import COLUMNS
-from optics.kernels.halfstack import abs2, one_pass, reflection, waves
+from optics.kernels.compiled import borrowing, kernel
+from optics.kernels.field import absorbs, crossed_in_film
+from optics.kernels.halfstack import abs2, phase_factors, reflection, waves
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.paths import TAIL, panel_error, place, probed_columns
+from optics.kernels.panel import light_error, light_space, panel_error
+from optics.kernels.paths import TAIL, place
+from optics.kernels.planar import ROW, at
 from optics.kernels.problem import Half, Problem, Work, scratch_space, work_space
-from optics.kernels.rules import NODES, STAGES
-from optics.kernels.source import dissipated, radiated, solve_waves
+from optics.kernels.rules import DEGREES, NODES, STAGES
+from optics.kernels.source import dissipated, radiated
+from optics.kernels.whole import light_half, solve_half
 
 # As in `integrate`: how often a panel is halved, and when a further stage is not tried.
 _DEEPEST = 48
@@ -45,17 +48,17 @@ BLOCK = 104
 KNOWN_OF_HALF = 14
 
 
-@inline
+@borrowing
 def next_waves(
     j: int, u: Complexes, eps_o: Complexes, eps_e: Complexes, kd: Floats, work: Work
 ) -> None:
     """Waves of half stack j of kd (v, m) at nodes u, those of j - 1 being at hand."""
     if j == 0:
-        waves(u, eps_o, eps_e, kd[0], work.kz, work.y, work.e)
+        waves(0, u, eps_o, eps_e, kd[0], work.kz, work.y, work.e)
         return
     for film in range(1, eps_o.size - 1):
         if kd[j, film] != kd[j - 1, film]:
-            one_pass(film, kd[j, film], eps_o[film] == eps_e[film], work.kz, work.e)
+            phase_factors(work.kz[film], kd[j, film], eps_o[film] == eps_e[film], work.e[film])
 
 
 @kernel
@@ -85,8 +88,9 @@ def tabulate_reflection(
             segment, lane = j // lanes, j % lanes
             for i in range(NODES):
                 for pol in range(2):
-                    r[start + i, pol, segment, R_RE, lane] = work.r[pol, i].real
-                    r[start + i, pol, segment, R_IM, lane] = work.r[pol, i].imag
+                    found = at(work.r, pol * NODES + i)
+                    r[start + i, pol, segment, R_RE, lane] = found.real
+                    r[start + i, pol, segment, R_IM, lane] = found.imag
 
 
 @kernel
@@ -109,43 +113,64 @@ def tabulate_half(
         Where the half stack may be lit from outside.
     table : float (n, 2, v / lanes, KNOWN_OF_HALF, BLOCK), output
     """
-    work = work_space(eps_o.size)
+    work, alone, cross = work_space(eps_o.size), np.zeros(ROW), np.zeros(ROW)
     for start in range(0, u.size, NODES):
         some = bool(lit[start : start + NODES].any())
         for j in range(kd.shape[0]):
             half = Half(eps_o, eps_e, kd[j])
             next_waves(j, u[start : start + NODES], eps_o, eps_e, kd, work)
-            solve_waves(half, work, u[start : start + NODES], some)
+            solve_half(half, work, u[start : start + NODES])
+            if some:
+                _light_alone(half, work, alone, cross)
             segment, lane = j // lanes, j % lanes
             for i in range(NODES):
                 for pol in range(2):
                     known = table[start + i, pol, segment]
-                    _note_inside(work, pol, i, known, lane)
+                    _note_inside(work, pol * NODES + i, known, lane)
                     if lit[start + i]:
-                        _note_outside(work, pol, i, known, lane)
+                        _note_outside(work, cross, pol * NODES + i, known, lane)
                     else:
                         known[BACK_RE, lane] = 1.0
 
 
-@inline
-def _note_inside(work: Work, pol: int, i: int, known: Floats, lane: int) -> None:
+@borrowing
+def _light_alone(half: Half, work: Work, alone: Floats, cross: Floats) -> None:
+    """Light a half stack from outside, by itself: nothing comes back from the other half.
+
+    alone : zeros (ROW,); cross : (ROW,), output, `field.crossed_in_film` of all films.
+    """
+    light_half(half, alone, work)
+    for lane in range(ROW):
+        cross[lane] = 0.0
+    for j in range(1, half.kd.size - 1):
+        if absorbs(half.eps_o[j], half.eps_e[j]):
+            crossed_in_film(
+                work.e[j], work.r_far[j], work.f[j], work.r_near[j], work.g[j], work.alpha[j],
+                work.beta[j], cross,
+            )  # fmt: skip
+
+
+@borrowing
+def _note_inside(work: Work, place: int, known: Floats, lane: int) -> None:
     """Write down what becomes of light from the emitter film."""
-    r = work.r_far[pol, 0, i]
+    last = work.y.shape[0] - 1
+    r = at(work.r_far[0], place)
     known[R_RE, lane], known[R_IM, lane], known[SIZE, lane] = r.real, r.imag, abs2(r)
-    known[OUT, lane] = abs2(work.t[pol, i]) * work.y[pol, -1, i].real
-    known[LOSS, lane] = work.form[0, pol, i].real
+    known[OUT, lane] = abs2(at(work.f[last], place)) * work.y[last, place]
+    known[LOSS, lane] = work.absorbed[place]
 
 
-@inline
-def _note_outside(work: Work, pol: int, i: int, known: Floats, lane: int) -> None:
+@borrowing
+def _note_outside(work: Work, crossed: Floats, place: int, known: Floats, lane: int) -> None:
     """Write down what becomes of light from outside."""
-    per_flux = 1.0 / work.y[pol, -1, i].real
-    inward, back = work.g[pol, 0, i], work.r_out[pol, i]
-    cross = 2.0 * per_flux * inward.conjugate() * work.form[2, pol, i]
-    way = inward * work.t[pol, i]
+    last = work.y.shape[0] - 1
+    per_flux = 1.0 / work.y[last, place]
+    inward, back = at(work.g[0], place), at(work.r_near[last], place)
+    cross = (2.0 * per_flux) * (inward.conjugate() * at(crossed, place))
+    way = inward * at(work.f[last], place)
     known[IN, lane] = per_flux * abs2(inward)
     known[IN_LOSS, lane] = known[IN, lane] * known[LOSS, lane]
-    known[OUTSIDE, lane] = per_flux * work.form[1, pol, i].real
+    known[OUTSIDE, lane] = per_flux * work.absorbed_outside[place]
     known[CROSS_RE, lane], known[CROSS_IM, lane] = cross.real, cross.imag
     known[WAY_RE, lane], known[WAY_IM, lane] = way.real, way.imag
     known[BACK_RE, lane], known[BACK_IM, lane] = back.real, back.imag
@@ -186,11 +211,12 @@ def leaves(
     """
     source, sides, up, down = at_wavelength(problem, w)
     work_up, work_down = work_space(up.kd.size), work_space(down.kd.size)
-    scratch = scratch_space(source.kz_positions.size, COLUMNS)
+    scratch, positions = scratch_space(), source.kz_positions.size
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
-    values = np.zeros((STAGES * NODES, scale.size))
-    moments, misses = np.zeros((4, scale.size)), np.zeros(scale.size)
-    probed = probed_columns(scale.size, 1)
+    light, power = light_space(positions), np.zeros((3, positions, STAGES * NODES))
+    by_column = power.reshape(3 * positions, STAGES * NODES)
+    probed = np.arange(positions if everything else 3 * positions)
+    moments, misses = np.zeros((DEGREES, probed.size)), np.zeros(scale.size)
     ends = np.zeros((2, 2 * _DEEPEST))
     ends[1, 0] = 1.0
     waiting, count = 1, 0
@@ -203,13 +229,16 @@ def leaves(
                 break
             stage += 1
             place(path[0], path[1], path[2], path[3], a, b, stage, u, du)
-            batch = values[stage * NODES : (stage + 1) * NODES]
+            first = stage * NODES
             if everything:
-                radiated(source, sides, up, down, work_up, work_down, scratch, u, du, batch)
+                radiated(source, sides, up, down, work_up, work_down, scratch, u, du, first, light)
+                worst = light_error(light, stage, scale, probed, moments, misses)
             else:
-                beyond = path[0] == TAIL
-                dissipated(source, up, down, work_up, work_down, scratch, u, du, beyond, batch)
-            worst = panel_error(values, stage, scale, probed, moments, misses)
+                dissipated(
+                    source, up, down, work_up, work_down, scratch, u, du, path[0] == TAIL, first,
+                    power,
+                )  # fmt: skip
+                worst = panel_error(by_column, stage, scale, probed, misses)
         if worst > tolerance and b - a > 0.5**_DEEPEST and count + waiting + 2 <= found.shape[0]:
             ends[0, waiting], ends[1, waiting] = a, 0.5 * (a + b)
             ends[0, waiting + 1], ends[1, waiting + 1] = 0.5 * (a + b), b

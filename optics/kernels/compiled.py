@@ -18,6 +18,7 @@ from typing import Any, TypeVar
 
 import llvmlite
 import numba
+from numba.core.compiler import Compiler
 
 # The compiler declares no types for its settings and half of its options.
 _compiler: Any = numba
@@ -85,6 +86,10 @@ def mark_cache_warm(job: str = "budget") -> None:
 # No division check: it would stop the loops from vectorizing, and every divisor is guarded.
 # No fastmath: it gains nothing here and breaks the tests for NaN.
 _OPTIONS = {"nogil": True, "error_model": "numpy"}
+# Only kernels call helpers: these need no cache entry and no entry from Python.
+_HELPER = {**_OPTIONS, "no_cpython_wrapper": True, "no_cfunc_wrapper": True}
+# Whose arrays outlive a helper need not count its views of them, which costs as much as a loop.
+_BORROWING = {**_HELPER, "_nrt": False}
 
 
 def kernel(function: _F) -> _F:
@@ -94,8 +99,42 @@ def kernel(function: _F) -> _F:
 
 
 def inline(function: _F) -> _F:
-    """Compile a helper that only kernels call: no cache entry and no entry from Python."""
-    compiled: _F = _compiler.njit(no_cpython_wrapper=True, no_cfunc_wrapper=True, **_OPTIONS)(
-        function
-    )
+    """Compile a helper that only kernels call."""
+    compiled: _F = _compiler.njit(**_HELPER)(function)
+    return compiled
+
+
+def borrowing(function: _F) -> _F:
+    """Compile a helper as `inline` does that makes no arrays and returns no view of one."""
+    compiled: _F = _compiler.njit(**_BORROWING)(function)
+    return compiled
+
+
+def scalar(function: _F) -> _F:
+    """Compile a helper of single numbers as `borrowing` does, always in place: loops vectorize."""
+    compiled: _F = _compiler.njit(forceinline=True, **_BORROWING)(function)
+    return compiled
+
+
+def reduction(function: _F) -> _F:
+    """Compile a helper as `scalar` does whose sums may be taken in any order, as SIMD needs."""
+    compiled: _F = _compiler.njit(forceinline=True, fastmath={"reassoc"}, **_BORROWING)(function)
+    return compiled
+
+
+class _Apart(Compiler):
+    """Tells the compiler's back end that arrays given to a function do not overlap."""
+
+    def define_pipelines(self) -> Any:
+        self.state.flags.noalias = True
+        pipelines: Any = super()
+        return pipelines.define_pipelines()
+
+
+def rowwise(function: _F) -> _F:
+    """Compile a helper as `borrowing` does whose arrays never overlap: loops vectorize unchecked.
+
+    No array that it writes may share memory with another of its arrays.
+    """
+    compiled: _F = _compiler.njit(pipeline_class=_Apart, **_BORROWING)(function)
     return compiled

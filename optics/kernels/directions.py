@@ -6,30 +6,28 @@ per wavevector, node by node, before anything that slabs do to the light.
 
 import numpy as np
 
-from optics.kernels.arrays import Floats
-from optics.kernels.compiled import inline, kernel
-from optics.kernels.elementary import exp_i
-from optics.kernels.exits import ABSORBING
-from optics.kernels.halfstack import abs2, outward, reciprocal, waves
-from optics.kernels.integrate import at_wavelength
-from optics.kernels.problem import Problem, Sides, work_space
-from optics.kernels.rules import NODES
-from optics.kernels.source import (
+from optics.kernels.arrays import Complexes, Floats
+from optics.kernels.compiled import borrowing, kernel
+from optics.kernels.dipole import (
     channel,
-    outgoing_factor,
-    solve_half,
-    stack_from_outside,
+    fades_out,
+    fill_carried,
+    fill_inverse,
+    fill_phases,
+    first_lane,
+    put_sent,
 )
+from optics.kernels.exits import ABSORBING
+from optics.kernels.halfstack import abs2, outward
+from optics.kernels.integrate import at_wavelength
+from optics.kernels.planar import LANES, at
+from optics.kernels.problem import Problem, Sides, Work, scratch_space, work_space
+from optics.kernels.rules import NODES, STAGES
+from optics.kernels.whole import solve_half, solve_stack, solve_waves
 
 # Stands for u = 0, where the power per du over u is 0/0. Its square vanishes beside every
 # permittivity and its cube is 0 in double precision, so the normal direction is exact.
 _NORMAL = 1e-120
-
-
-@inline
-def _carries(sides: Sides, side: int, u: float) -> bool:
-    """Whether waves of in-plane wavevector u propagate in an outer medium; at 90 deg the limit."""
-    return u < sides.n_outer[side]
 
 
 @kernel
@@ -49,47 +47,49 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
         propagates. Into absorbing surroundings: the flux at their face.
     """
     n = u.shape[1]
-    together = max(1, min(n, NODES))
-    work_up = work_space(problem.up.kd.shape[1], together)
-    work_down = work_space(problem.down.kd.shape[1], together)
-    positions = problem.source.kz_positions.shape[1]
-    to_bottom = np.zeros(positions, dtype=np.complex128)
-    to_top = np.zeros(positions, dtype=np.complex128)
-    nodes = np.zeros(together, dtype=np.complex128)
+    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    scratch, sent = scratch_space(), np.zeros(2 * STAGES * NODES)
+    nodes, per = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
+    flux = np.zeros((2, LANES))
     for w in range(u.shape[0]):
         source, sides, up, down = at_wavelength(problem, w)
-        for start in range(0, n, together):
-            for i in range(together):
+        for start in range(0, n, NODES):
+            for i in range(NODES):
                 nodes[i] = max(u[w, min(start + i, n - 1)], _NORMAL)
-            waves(nodes, up.eps_o, up.eps_e, up.kd, work_up.kz, work_up.y, work_up.e)
-            waves(nodes, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
-            outward(work_up.y, work_up.e, work_up.r_far, work_up.f, work_up.t)
-            outward(work_down.y, work_down.e, work_down.r_far, work_down.f, work_down.t)
-            for pol in range(2):
-                for i in range(min(together, n - start)):
-                    at = nodes[i].real
-                    kz = work_up.kz[pol, 0, i]
-                    through = exp_i(kz * source.kd)
-                    for q in range(positions):
-                        to_bottom[q] = exp_i(kz * source.kz_positions[q])
-                        to_top[q] = exp_i(kz * (source.kd - source.kz_positions[q]))
-                    a_face, b_face = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
-                    inv = reciprocal(1.0 - a_face * b_face * through * through)
-                    flux_t = abs2(work_up.t[pol, i]) * work_up.y[pol, -1, i].real
-                    flux_b = abs2(work_down.t[pol, i]) * work_down.y[pol, -1, i].real
-                    flux_b = flux_b if _carries(sides, 0, at) else 0.0
-                    flux_t = flux_t if _carries(sides, 1, at) else 0.0
-                    for c in range(3):
-                        channel_pol, sign = channel(c)
-                        if channel_pol != pol:
-                            continue
-                        factor = outgoing_factor(c, source, at, kz) / at * abs2(inv)
-                        for q in range(positions):
-                            to_b, to_t = to_bottom[q], to_top[q]
-                            a = 1.0 + sign * a_face * to_t * to_t
-                            b = 1.0 + sign * b_face * to_b * to_b
-                            power[w, 0, c, start + i, q] = factor * abs2(to_b * a) * flux_b
-                            power[w, 1, c, start + i, q] = factor * abs2(to_t * b) * flux_t
+                per[i] = 1.0 / nodes[i].real
+            solve_waves(source, up, down, work_up, work_down, nodes)
+            outward(work_up.y, work_up.e, work_up.r_far, work_up.f)
+            outward(work_down.y, work_down.e, work_down.r_far, work_down.f)
+            _fill_flux(sides, 0, nodes, work_down, flux[0])
+            _fill_flux(sides, 1, nodes, work_up, flux[1])
+            kz, through = work_up.kz[0], work_up.e[0]
+            r_up, r_down = work_up.r_far[0], work_down.r_far[0]
+            fill_inverse(r_up, r_down, through, scratch.inverse)
+            fill_carried(source, r_up, r_down, kz, nodes, per, scratch)
+            fading = fades_out(source, kz)
+            for q in range(source.kz_positions.size):
+                fill_phases(q, source, kz, through, fading, scratch)
+                for c in range(3):
+                    lane, pol = first_lane(c, source), channel(c)[0]
+                    put_sent(
+                        scratch.carried[c], scratch.mirrored[c, 0], scratch.mirrored[c, 1],
+                        scratch.crossed[c, 0], scratch.crossed[c, 1], scratch.by_bottom[lane:],
+                        scratch.by_top[lane:], scratch.fade_bottom[lane:],
+                        scratch.fade_top[lane:], sent,
+                    )  # fmt: skip
+                    for i in range(min(NODES, n - start)):
+                        at_lane = pol * NODES + i
+                        power[w, 0, c, start + i, q] = sent[i] * flux[0, at_lane]
+                        power[w, 1, c, start + i, q] = sent[STAGES * NODES + i] * flux[1, at_lane]
+
+
+@borrowing
+def _fill_flux(sides: Sides, side: int, u: Complexes, work: Work, flux: Floats) -> None:
+    """Flux into the outer medium per unit amplitude from the emitter film; 0 where none goes."""
+    last = work.y.shape[0] - 1
+    for lane in range(LANES):
+        carries = u[lane % NODES].real < sides.n_outer[side]
+        flux[lane] = abs2(at(work.f[last], lane)) * work.y[last, lane] if carries else 0.0
 
 
 @kernel
@@ -107,28 +107,21 @@ def lit_from_outside(problem: Problem, u: Floats, powers: Floats) -> None:
         wave propagates R = 1 and the rest is 0.
     """
     n = u.shape[1]
-    together = max(1, min(n, NODES))
-    work_up = work_space(problem.up.kd.shape[1], together)
-    work_down = work_space(problem.down.kd.shape[1], together)
-    nodes = np.zeros(together, dtype=np.complex128)
+    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    nodes, stack = np.zeros(NODES, dtype=np.complex128), np.zeros(5 * LANES)
     for w in range(u.shape[0]):
         source, sides, up, down = at_wavelength(problem, w)
-        for start in range(0, n, together):
-            for i in range(together):
+        for start in range(0, n, NODES):
+            for i in range(NODES):
                 nodes[i] = u[w, min(start + i, n - 1)]
-            solve_half(up, work_up, nodes, True)
-            solve_half(down, work_down, nodes, True)
+            solve_waves(source, up, down, work_up, work_down, nodes)
+            solve_half(up, work_up, nodes)
+            solve_half(down, work_down, nodes)
+            solve_stack(
+                sides.kind[0] != ABSORBING, sides.kind[1] != ABSORBING, up, down, work_up,
+                work_down, stack,
+            )  # fmt: skip
             for pol in range(2):
-                for i in range(min(together, n - start)):
-                    phase = exp_i(work_up.kz[pol, 0, i] * source.kd)
-                    found = stack_from_outside(
-                        sides.kind[0] != ABSORBING,
-                        sides.kind[1] != ABSORBING,
-                        work_up,
-                        work_down,
-                        phase,
-                        pol,
-                        i,
-                    )
+                for i in range(min(NODES, n - start)):
                     for k in range(5):
-                        powers[w, pol, start + i, k] = found[k]
+                        powers[w, pol, start + i, k] = stack[k * LANES + pol * NODES + i]

@@ -9,7 +9,7 @@ import math
 
 import numpy as np
 
-from optics.kernels.compiled import inline
+from optics.kernels.compiled import scalar
 
 _BITS = 5
 _FINE = 1 << _BITS  # parts of one decay constant
@@ -31,7 +31,7 @@ _SIN = np.sin(np.arange(_PARTS) * _PART)
 _C2, _C3, _C4, _C5, _C6, _C7, _C8 = (1.0 / math.factorial(n) for n in range(2, 9))
 
 
-@inline
+@scalar
 def decay(x: float) -> float:
     """exp(-x) for x >= 0."""
     x = x if x < _LARGEST else _LARGEST  # whatever is no number never gets to the table
@@ -41,7 +41,7 @@ def decay(x: float) -> float:
     return _COARSE_DECAY[i >> _BITS] * _FINE_DECAY[i & (_FINE - 1)] * series
 
 
-@inline
+@scalar
 def turn(t: float) -> complex:
     """exp(i t) for real t up to about 1e6 in size."""
     step = math.floor(t * _PER_PART + 0.5)
@@ -53,7 +53,7 @@ def turn(t: float) -> complex:
     return complex(_COS[i] * c - _SIN[i] * s, _SIN[i] * c + _COS[i] * s)
 
 
-@inline
+@scalar
 def exp_i(z: complex) -> complex:
     """exp(i z) for Im z >= 0: the phase factor of every wave."""
     w = turn(z.real)

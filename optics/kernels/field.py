@@ -1,28 +1,58 @@
 """Power absorbed in each film: the closed-form volume integral of Im eps |E|^2.
 
-A half stack can be lit from both ends. Its absorption for amplitudes x (from the emitter film)
-and w (from outside) is the Hermitian form  a_in |x|^2 + a_out |w|^2 + 2 Re(conj(x) w a_cross),
-film by film, in the units of flux Re(Y) |amplitude|^2.
+In the units of flux Re(Y) |amplitude|^2, for unit amplitude of the wave that arrives.
 """
 
-import math
-
 from optics.kernels.arrays import Complexes, Floats
-from optics.kernels.compiled import inline
-from optics.kernels.halfstack import P, S, abs2
+from optics.kernels.compiled import borrowing, rowwise, scalar
+from optics.kernels.halfstack import abs2
+from optics.kernels.planar import LANES, at, put
+from optics.kernels.rules import NODES
 
 # Up to this one-pass attenuation exponent the integral over a film is taken from its series.
 _THIN = 1e-4
+_STILL = 1e-8  # up to this phase the two waves of a film keep their phase all through it
 
 
-@inline
+@scalar
+def _overlaps(kz: complex, e: complex, d: float) -> tuple[float, float]:
+    """Integrals over a film of |exp(i kz z)|^2 and of the cross term of both waves, both real.
+
+    The one-pass factor e already holds the exponential and the sine. Choices rather than
+    branches, so that loops vectorize.
+    """
+    x = 2.0 * kz.imag * d
+    passed = abs2(e)
+    thin = x < _THIN
+    series = 1.0 - 0.5 * x * (1.0 - x / 3.0)
+    same = d * (series if thin else (1.0 - passed) / (1.0 if thin else x))
+    still = abs(kz.real * d) < _STILL
+    turning = e.imag / (1.0 if still else kz.real)
+    return same, d * e.real if still else turning
+
+
+@scalar
+def _put_s(i: int, loss: float, same: float, cross: float, alpha: Floats, beta: Floats) -> None:
+    """Coefficients of s at one node, from the overlaps."""
+    alpha[i], beta[i] = loss * same, loss * cross
+
+
+@scalar
+def _put_p(
+    i: int, plane: float, normal: float, same: float, cross: float, alpha: Floats, beta: Floats
+) -> None:
+    """Coefficients of p at one node, from the overlaps and the losses of both field components."""
+    alpha[NODES + i], beta[NODES + i] = (normal + plane) * same, (normal - plane) * cross
+
+
+@rowwise
 def film_coefficients(
     u: Complexes,
-    eps_o: Complexes,
-    eps_e: Complexes,
-    kd: Floats,
-    kz: Complexes,
-    e: Complexes,
+    eps_o: complex,
+    eps_e: complex,
+    kd: float,
+    kz: Floats,
+    e: Floats,
     alpha: Floats,
     beta: Floats,
 ) -> None:
@@ -35,107 +65,66 @@ def film_coefficients(
 
     Parameters
     ----------
-    u : complex (n,)
+    u : complex (NODES,)
         Real in-plane wavevectors over k0 (imaginary parts are not used).
-    eps_o, eps_e : complex (m,)
-    kd : float (m,)
-    kz, e : complex (2, m, n)
+    eps_o, eps_e, kd
+        Of the film.
+    kz, e : float (ROW,)
         From `waves`.
-    alpha, beta : float (2, m, n), output
-        Zero for lossless films and for both ends.
+    alpha, beta : float (LANES,), output
     """
-    last = eps_o.size - 1
-    for j in range(last + 1):
-        loss_o, loss_e = eps_o[j].imag, eps_e[j].imag
-        if j == 0 or j == last or (loss_o == 0.0 and loss_e == 0.0):
-            alpha[:, j, :] = 0.0
-            beta[:, j, :] = 0.0
-            continue
-        d = kd[j]
-        inv_o, inv_e = 1.0 / abs2(eps_o[j]), 1.0 / abs2(eps_e[j])
-        for pol in range(2):
-            for i in range(u.size):
-                k = kz[pol, j, i]
-                x = 2.0 * k.imag * d
-                # Integrals of |e^{i kz z}|^2 and of the cross term, both real; the one-pass
-                # factor already holds the exponential and the sine. Choices rather than
-                # branches, so that the loop vectorizes.
-                passed = abs2(e[pol, j, i])
-                thin = x < _THIN
-                series = 1.0 - 0.5 * x * (1.0 - x / 3.0)
-                same = d * (series if thin else (1.0 - passed) / (1.0 if thin else x))
-                still = abs(k.real * d) < 1e-8
-                turning = e[pol, j, i].imag / (1.0 if still else k.real)
-                cross = d * math.sqrt(passed) if still else turning
-                if pol == S:
-                    alpha[S, j, i] = loss_o * same
-                    beta[S, j, i] = loss_o * cross
-                else:
-                    plane = loss_o * inv_o * abs2(k)
-                    normal = loss_e * inv_e * u[i].real * u[i].real
-                    alpha[P, j, i] = (normal + plane) * same
-                    beta[P, j, i] = (normal - plane) * cross
+    loss, plane, normal = eps_o.imag, eps_o.imag / abs2(eps_o), eps_e.imag / abs2(eps_e)
+    if eps_e == eps_o:
+        for i in range(NODES):
+            k, along = at(kz, i), u[i].real * u[i].real
+            same, cross = _overlaps(k, at(e, i), kd)
+            _put_s(i, loss, same, cross, alpha, beta)
+            _put_p(i, plane * abs2(k), normal * along, same, cross, alpha, beta)
+        return
+    for i in range(NODES):
+        same, cross = _overlaps(at(kz, i), at(e, i), kd)
+        _put_s(i, loss, same, cross, alpha, beta)
+    for i in range(NODES):
+        k, along = at(kz, NODES + i), u[i].real * u[i].real
+        same, cross = _overlaps(k, at(e, NODES + i), kd)
+        _put_p(i, plane * abs2(k), normal * along, same, cross, alpha, beta)
 
 
-@inline
-def lossless(alpha: Floats, beta: Floats) -> bool:
-    """Tell a film that absorbs nothing by its coefficients (n,): all are 0, or none is."""
-    return alpha[0] == 0.0 and beta[0] == 0.0 and alpha[-1] == 0.0 and beta[-1] == 0.0
+@borrowing
+def absorbs(eps_o: complex, eps_e: complex) -> bool:
+    """Whether a film absorbs at all."""
+    return eps_o.imag != 0.0 or eps_e.imag != 0.0
 
 
-@inline
-def absorbed_alone(
-    e: Complexes, back: Complexes, amplitude: Complexes, alpha: Floats, beta: Floats, a: Floats
+@rowwise
+def absorbed_in_film(
+    e: Floats, back: Floats, amplitude: Floats, alpha: Floats, beta: Floats, total: Floats
 ) -> None:
-    """Absorption in each film for unit amplitude from one end: a (2, m, n).
+    """Add what a film absorbs to total (LANES,).
 
-    back is the reflection at each film's other face, amplitude the wave where it enters the
-    film: r_far and f of `outward` for light from medium 0, r_near and g of `inward` for light
-    from the last medium.
+    back is the reflection at the film's other face, amplitude the wave where it enters the
+    film: r_far and f of `outward`, r_near and g of `inward`.
     """
-    for pol in range(2):
-        for j in range(1, e.shape[1] - 1):
-            if lossless(alpha[pol, j], beta[pol, j]):
-                a[pol, j, :] = 0.0
-                continue
-            for i in range(e.shape[2]):
-                q = back[pol, j, i] * e[pol, j, i]
-                power = alpha[pol, j, i] * (1.0 + abs2(q)) + 2.0 * beta[pol, j, i] * q.real
-                a[pol, j, i] = power * abs2(amplitude[pol, j, i])
+    for lane in range(LANES):
+        q = at(back, lane) * at(e, lane)
+        power = alpha[lane] * (1.0 + abs2(q)) + (2.0 * beta[lane]) * q.real
+        total[lane] += power * abs2(at(amplitude, lane))
 
 
-@inline
-def absorbed_cross(
-    e: Complexes,
-    r_far: Complexes,
-    f: Complexes,
-    r_near: Complexes,
-    g: Complexes,
-    alpha: Floats,
-    beta: Floats,
-    a_cross: Complexes,
-) -> None:
-    """Cross term between both ways of lighting the half stack: a_cross, complex (2, m, n)."""
-    for pol in range(2):
-        for j in range(1, e.shape[1] - 1):
-            if lossless(alpha[pol, j], beta[pol, j]):
-                a_cross[pol, j, :] = 0.0
-                continue
-            for i in range(e.shape[2]):
-                f1 = f[pol, j, i]
-                g1 = r_far[pol, j, i] * e[pol, j, i] * f1
-                g2 = g[pol, j, i]
-                f2 = r_near[pol, j, i] * e[pol, j, i] * g2
-                a_cross[pol, j, i] = alpha[pol, j, i] * (
-                    f1.conjugate() * f2 + g1.conjugate() * g2
-                ) + beta[pol, j, i] * (f1.conjugate() * g2 + g1.conjugate() * f2)
+@rowwise
+def crossed_in_film(
+    e: Floats, r_far: Floats, f: Floats, r_near: Floats, g: Floats, alpha: Floats, beta: Floats,
+    total: Floats,
+) -> None:  # fmt: skip
+    """Add the cross term between both ways of lighting a half stack to total (ROW,).
 
-
-@inline
-def sum_films(a: Floats | Complexes, total: Complexes) -> None:
-    """Add up the films of a half stack: total (2, n) from a (2, m, n)."""
-    total[:, :] = 0.0
-    for pol in range(2):
-        for j in range(1, a.shape[1] - 1):
-            for i in range(a.shape[2]):
-                total[pol, i] += a[pol, j, i]
+    A half stack lit from both ends absorbs a_in |x|^2 + a_out |w|^2 + 2 Re(conj(x) w a_cross)
+    for amplitudes x from the emitter film and w from outside.
+    """
+    for lane in range(LANES):
+        once = at(e, lane)
+        f1, g2 = at(f, lane), at(g, lane)
+        g1, f2 = at(r_far, lane) * once * f1, at(r_near, lane) * once * g2
+        same = alpha[lane] * (f1.conjugate() * f2 + g1.conjugate() * g2)
+        cross = beta[lane] * (f1.conjugate() * g2 + g1.conjugate() * f2)
+        put(total, lane, at(total, lane) + same + cross)

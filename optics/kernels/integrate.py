@@ -6,9 +6,16 @@ The kernel of the main job. A task is one path at one wavelength; tasks are inde
 import numpy as np
 
 from optics.kernels.arrays import Floats, Integers
-from optics.kernels.compiled import inline, kernel
-from optics.kernels.exits import COLUMNS
-from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place, probed_columns
+from optics.kernels.compiled import borrowing, inline, kernel
+from optics.kernels.panel import (
+    light_error,
+    light_space,
+    light_sum,
+    panel_error,
+    panel_sum,
+    probed_columns,
+)
+from optics.kernels.paths import TAIL, first_split, place
 from optics.kernels.problem import (
     Half,
     Problem,
@@ -17,7 +24,7 @@ from optics.kernels.problem import (
     scratch_space,
     work_space,
 )
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import DEGREES, NODES, STAGES
 from optics.kernels.source import dissipated, radiated
 
 # A panel is halved at most this often, and no path takes more batches of nodes than this.
@@ -39,6 +46,19 @@ def at_wavelength(problem: Problem, w: int) -> tuple[Source, Sides, Half, Half]:
         Half(up.eps_o[w], up.eps_e[w], up.kd[w]),
         Half(down.eps_o[w], down.eps_e[w], down.kd[w]),
     )
+
+
+@borrowing
+def _largest(missed: Floats, measure: Floats) -> float:
+    """Largest ratio, or NaN if any is."""
+    largest = 0.0
+    for column in range(missed.size):
+        ratio = missed[column] / measure[column]
+        if not ratio <= largest:
+            largest = ratio
+            if ratio != ratio:
+                break
+    return largest
 
 
 @kernel
@@ -66,29 +86,34 @@ def integrate(
     paths : float (t, 4)
         kind, lo, hi, depth or split of each path, see `paths`.
     everything : bool
-        False: dissipated power, q = 3 * positions columns as of `source.dissipated`. True, for
+        False: dissipated power, q = 3 * positions columns channel * positions + position. True, for
         real paths below the outer light lines: every destination, q = 2 * COLUMNS * positions
-        columns as of `source.radiated`.
-    scale : float (t, q)
-        What errors are measured against.
+        columns (orientation * COLUMNS + destination) * positions + position.
+    scale : float (w, q)
+        What errors are measured against, by wavelength.
     tolerance : float
         Largest error of one panel over scale.
-    result, error : float (t, q), output
-        Integrals and their estimated errors are added.
+    result : float (t, q), output
+        Integrals are added.
+    error : float (t,), output
+        Largest estimated error over scale.
     batches : int (t,), output
         Batches of NODES nodes that were evaluated.
     """
-    columns = result.shape[1]
+    columns, positions = result.shape[1], problem.source.kz_positions.shape[1]
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
-    scratch = scratch_space(problem.source.kz_positions.shape[1], COLUMNS)
+    scratch = scratch_space()
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
-    values = np.zeros((STAGES * NODES, columns))
-    positions = problem.source.kz_positions.shape[1]
-    probed = probed_columns(columns // positions, positions)
-    moments, misses = np.zeros((4, probed.size)), np.zeros(columns)
+    light, power = light_space(positions), np.zeros((3, positions, STAGES * NODES))
+    by_column = power.reshape(3 * positions, STAGES * NODES)
+    probed = probed_columns(1 if everything else 3, positions)
+    moments, misses = np.zeros((DEGREES, probed.size)), np.zeros(columns)
+    missed = np.zeros(columns)
     ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
+        measure = scale[rows[task]]
+        missed[:] = 0.0
         kind, lo, hi, depth = paths[task, 0], paths[task, 1], paths[task, 2], paths[task, 3]
         ends[0, 0], ends[1, 0] = 0.0, 1.0
         waiting, count = 1, 0
@@ -106,17 +131,25 @@ def integrate(
                 stage += 1
                 count += 1
                 place(kind, lo, hi, depth, a, b, stage, u, du)
-                batch = values[stage * NODES : (stage + 1) * NODES]
+                first = stage * NODES
                 if everything:
-                    radiated(source, sides, up, down, work_up, work_down, scratch, u, du, batch)
+                    radiated(
+                        source, sides, up, down, work_up, work_down, scratch, u, du, first, light
+                    )
+                    worst = light_error(light, stage, measure, probed, moments, misses)
                 else:
-                    beyond = kind == TAIL
-                    dissipated(source, up, down, work_up, work_down, scratch, u, du, beyond, batch)
-                worst = panel_error(values, stage, scale[task], probed, moments, misses)
+                    dissipated(
+                        source, up, down, work_up, work_down, scratch, u, du, kind == TAIL, first,
+                        power,
+                    )  # fmt: skip
+                    worst = panel_error(by_column, stage, measure, probed, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_BATCHES:
                 ends[0, waiting], ends[1, waiting] = a, 0.5 * (a + b)
                 ends[0, waiting + 1], ends[1, waiting + 1] = 0.5 * (a + b), b
                 waiting += 2
+            elif everything:
+                light_sum(light, stage, misses, result[task], missed)
             else:
-                panel_sum(values, stage, misses, result[task], error[task])
+                panel_sum(by_column, stage, misses, result[task], missed)
         batches[task] = count
+        error[task] = _largest(missed, measure)

@@ -10,6 +10,7 @@ import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats, Integers
 from optics.kernels.compiled import inline
+from optics.kernels.planar import LANES, ROW
 from optics.kernels.rules import NODES
 
 
@@ -50,59 +51,69 @@ class Problem(NamedTuple):
 
 
 class Work(NamedTuple):
-    """Arrays that one half stack needs at the nodes of one panel."""
+    """Rows (`planar`) of one half stack at the nodes of one panel, by medium."""
 
-    kz: Complexes
-    y: Complexes
-    e: Complexes
-    r: Complexes
-    r_far: Complexes
-    f: Complexes
-    t: Complexes
-    r_near: Complexes
-    g: Complexes
-    r_out: Complexes
-    alpha: Floats
-    beta: Floats
-    a_in: Floats
-    a_out: Floats
-    a_cross: Complexes
-    form: Complexes
+    kz: Floats  # (m, ROW)
+    y: Floats  # (m, ROW)
+    e: Floats  # (m, ROW)
+    r: Floats  # (ROW,) reflection of the half stack
+    r_far: Floats  # (m, ROW), `halfstack.outward`
+    f: Floats  # (m, ROW)
+    r_near: Floats  # (m, ROW), `halfstack.inward`
+    g: Floats  # (m, ROW)
+    alpha: Floats  # (m, LANES), `field.film_coefficients`
+    beta: Floats  # (m, LANES)
+    absorbed: Floats  # (LANES,) in all films, lit from the emitter film
+    absorbed_outside: Floats  # (LANES,) in all films, lit from outside
 
 
 class Scratch(NamedTuple):
-    """Arrays that the source terms of one panel need."""
+    """Arrays that the source terms of one panel need; n nodes."""
 
-    to_bottom: Complexes  # (NODES, z) phase factor from the dipole to the bottom face
-    to_top: Complexes  # (NODES, z)
-    shares: Floats  # (2, COLUMNS) destinations of light sent down, up
-    sent: Floats  # (2, z) power sent down, up
-    faces: Floats  # (2, 3, NODES) by side: `source.side_face`
+    # From one dipole to either face and back: phase factor; size of the one way's, squared.
+    by_bottom: Floats  # (ROW,)
+    by_top: Floats  # (ROW,)
+    fade_bottom: Floats  # (LANES,)
+    fade_top: Floats  # (LANES,)
+    inverse: Floats  # (ROW,) 1/(1 - ab), all round trips in the emitter film
+    # By channel: power without the phases of ways to a face and back, and what stands before
+    # these, bottom and top; dissipated power, and power sent down, up.
+    plain: Floats  # (3, n)
+    before: Floats  # (3, 2, 2n), complex
+    carried: Floats  # (3, n)
+    mirrored: Floats  # (3, 2, n) before the size of the way's phase factor, squared
+    crossed: Floats  # (3, 2, 2n), complex
+    stack: Floats  # (5, LANES) as one row: the whole stack lit from outside, `StackPowers`
+    faces: Floats  # (2, 3n) by side: `exits.fill_faces`
 
 
 @inline
-def work_space(m: int, nodes: int = NODES) -> Work:
-    """Work arrays for a half stack of m media, at so many nodes together."""
-    big = np.zeros((8, 2, m, nodes), dtype=np.complex128)
-    small = np.zeros((3, 2, nodes), dtype=np.complex128)
-    real = np.zeros((4, 2, m, nodes))
-    form = np.zeros((3, 2, nodes), dtype=np.complex128)
+def work_space(m: int) -> Work:
+    """Work arrays for a half stack of m media."""
+    rows = np.zeros((7, m, ROW))
+    lanes = np.zeros((2, m, LANES))
     return Work(
-        big[0], big[1], big[2], small[0], big[3], big[4], small[1], big[5], big[6],
-        small[2], real[0], real[1], real[2], real[3], big[7], form,
+        rows[0], rows[1], rows[2], np.zeros(ROW), rows[3], rows[4], rows[5], rows[6],
+        lanes[0], lanes[1], np.zeros(LANES), np.zeros(LANES),
     )  # fmt: skip
 
 
 @inline
-def scratch_space(positions: int, columns: int) -> Scratch:
-    """Arrays for so many positions and columns of destinations."""
-    phases = np.zeros((2, NODES, positions), dtype=np.complex128)
+def scratch_space() -> Scratch:
+    """Set up the arrays."""
     return Scratch(
-        phases[0],
-        phases[1],
-        np.zeros((2, columns)),
-        np.zeros((2, positions)),
-        np.zeros((2, 3, NODES)),
+        np.zeros(ROW),
+        np.zeros(ROW),
+        np.zeros(LANES),
+        np.zeros(LANES),
+        np.zeros(ROW),
+        np.zeros((3, NODES)),
+        np.zeros((3, 2, 2 * NODES)),
+        np.zeros((3, NODES)),
+        np.zeros((3, 2, NODES)),
+        np.zeros((3, 2, 2 * NODES)),
+        np.zeros(5 * LANES),
+        np.zeros((2, 3 * NODES)),
     )
 
 
@@ -208,6 +219,17 @@ def stacked(problems: Sequence[Problem]) -> Problem:
         Sides(problems[0].sides.kind, *joined(one.sides[1:] for one in problems)),
         Half(*joined(one.up for one in problems)),
         Half(*joined(one.down for one in problems)),
+    )
+
+
+def rows_of(problem: Problem, rows: Integers) -> Problem:
+    """Only some wavelengths of a problem."""
+    up, down = problem.up, problem.down
+    return Problem(
+        Source(*(part[rows] for part in problem.source)),
+        Sides(problem.sides.kind, *(part[rows] for part in problem.sides[1:])),
+        Half(up.eps_o[rows], up.eps_e[rows], up.kd[rows]),
+        Half(down.eps_o[rows], down.eps_e[rows], down.kd[rows]),
     )
 
 

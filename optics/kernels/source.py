@@ -1,110 +1,48 @@
-"""Power of a dipole per in-plane wavevector: dissipated, and carried to either side.
+"""Power of dipoles at the nodes of a panel: dissipated, and what reaches every destination.
 
-Methods: Lukosz & Kunz, J. Opt. Soc. Am. 67, 1607 (1977); Chance, Prock & Silbey, Adv. Chem.
-Phys. 37, 1 (1978); Neyts, J. Opt. Soc. Am. A 15, 962 (1998); uniaxial emitter films after
-Penninck et al., Opt. Express 19, 18558 (2011) (from memory).
-
-Channels: 0 vertical (p), 1 horizontal p, 2 horizontal s. Everything is divided by the rate of
-the same dipole in the unbounded emitter medium.
+Puts together `dipole`, the half stacks (`whole`) and what lies outside the films (`exits`).
 """
 
-from optics.kernels.arrays import Complexes, Floats, StackPowers
-from optics.kernels.compiled import inline
-from optics.kernels.elementary import exp_i
+from optics.kernels.arrays import Complexes, Floats
+from optics.kernels.compiled import borrowing, reduction, rowwise, scalar
+from optics.kernels.dipole import (
+    fades_out,
+    fill_carried,
+    fill_dissipated,
+    fill_phases,
+    first_lane,
+    put_dissipated,
+    put_sent,
+)
 from optics.kernels.exits import (
     ABSORBED,
-    ABSORBING,
     AIR_BOTTOM,
     AIR_TOP,
     COLUMNS,
     COVER,
-    MATCHED,
     MATCHED_BOTTOM,
     MATCHED_TOP,
     PLANAR,
     SUBSTRATE,
-    beside_matched,
-    bounces,
-    exit_line,
-    face_reflectances,
-    once_through,
-    passage,
-    whole_stack,
+    TOTAL,
+    Fate,
+    Ways,
+    fates,
+    fill_faces,
+    light_returns,
+    open_ways,
 )
-from optics.kernels.field import absorbed_alone, absorbed_cross, film_coefficients, sum_films
-from optics.kernels.halfstack import (
-    P,
-    S,
-    abs2,
-    inward,
-    outward,
-    reciprocal,
-    reflection,
-    waves,
-    waves_from,
-)
+from optics.kernels.halfstack import abs2, reflection
+from optics.kernels.panel import Light
+from optics.kernels.planar import LANES, at
 from optics.kernels.problem import Half, Scratch, Sides, Source, Work
-from optics.kernels.rules import NODES
+from optics.kernels.rules import NODES, STAGES
+from optics.kernels.whole import solve_half, solve_stack, solve_waves
 
-_FADED = 15.0  # Im kz d of the emitter film up to which its phase factors may be divided
-
-
-@inline
-def channel(c: int) -> tuple[int, float]:
-    """Polarization of a channel and the sign with which its reflections enter."""
-    return (S, 1.0) if c == 2 else (P, 1.0 if c == 0 else -1.0)
+_ALL = STAGES * NODES
 
 
-@inline
-def dissipated_factor(c: int, source: Source, u: complex, kz: complex) -> complex:
-    """Factor before the reflection bracket in the dissipated power per du."""
-    if c == 0:
-        return 1.5 * u * u * u * source.eps_o / (source.eps_e**2 * source.bulk[0]) * reciprocal(kz)
-    if c == 1:
-        return 0.75 / (source.eps_o * source.bulk[1]) * u * kz
-    return 0.75 / source.bulk[1] * u * reciprocal(kz)
-
-
-@inline
-def outgoing_factor(c: int, source: Source, u: float, kz: complex) -> float:
-    """Factor before |amplitude|^2 in the power carried to one side per du (u real)."""
-    if c == 0:
-        return 0.75 * u**3 * (source.eps_o / source.eps_e) ** 2 / (abs2(kz) * source.bulk[0])
-    if c == 1:
-        return 0.375 * u / source.bulk[1]
-    return 0.375 * u / (abs2(kz) * source.bulk[1])
-
-
-@inline
-def fill_phases(pol: int, source: Source, work: Work, scratch: Scratch) -> None:
-    """Phase factors from every dipole to both faces of the emitter film, at every node."""
-    if pol == P and source.eps_o == source.eps_e:
-        return  # those of s, which came first
-    for i in range(NODES):
-        kz = work.kz[pol, 0, i]
-        for q in range(source.kz_positions.size):
-            scratch.to_bottom[i, q] = exp_i(kz * source.kz_positions[q])
-        if kz.imag * source.kd < _FADED:
-            # Both ways together lead through the film: a quotient costs less than a wave.
-            through = exp_i(kz * source.kd)
-            for q in range(source.kz_positions.size):
-                scratch.to_top[i, q] = through * reciprocal(scratch.to_bottom[i, q])
-            continue
-        for q in range(source.kz_positions.size):
-            scratch.to_top[i, q] = exp_i(kz * (source.kd - source.kz_positions[q]))
-
-
-@inline
-def waves_below(down: Half, work_up: Work, work_down: Work, u: Complexes) -> None:
-    """Waves of the lower half; those of the emitter film are the upper half's own."""
-    for pol in range(2):
-        for i in range(NODES):
-            work_down.kz[pol, 0, i] = work_up.kz[pol, 0, i]
-            work_down.y[pol, 0, i] = work_up.y[pol, 0, i]
-    waves_from(1, u, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
-
-
-@inline
+@borrowing
 def dissipated(
     source: Source,
     up: Half,
@@ -115,6 +53,7 @@ def dissipated(
     u: Complexes,
     du: Complexes,
     beyond_bulk: bool,
+    first: int,
     values: Floats,
 ) -> None:
     """Dissipated power at the nodes of a panel on any path.
@@ -126,184 +65,29 @@ def dissipated(
     beyond_bulk : bool
         Leave out the bulk term. Right on the real axis beyond the emitter's own light lines,
         where it carries no power but would drown what does.
-    values : float (NODES, 3 * positions), output
-        Re(integrand * du); column channel * positions + position.
+    first : int
+        Place of the first of these nodes.
+    values : float (3, positions, nodes), output
+        Re(integrand * du) by channel.
     """
-    waves(u, up.eps_o, up.eps_e, up.kd, work_up.kz, work_up.y, work_up.e)
-    waves_below(down, work_up, work_down, u)
+    solve_waves(source, up, down, work_up, work_down, u)
     reflection(work_up.y, work_up.e, work_up.r)
     reflection(work_down.y, work_down.e, work_down.r)
-    positions = source.kz_positions.size
-    # The bracket of a reflection with either sign, 1 +- (a + b) + ab or what is beyond the bulk.
-    own, both = (0.0, 2.0) if beyond_bulk else (1.0, 1.0)
-    for pol in range(2):
-        fill_phases(pol, source, work_up, scratch)
-        for i in range(NODES):
-            kz = work_up.kz[pol, 0, i]
-            a_face, b_face = work_up.r[pol, i], work_down.r[pol, i]
-            through = scratch.to_bottom[i, 0] * scratch.to_top[i, 0]
-            inv = du[i] * reciprocal(1.0 - a_face * b_face * through * through)
-            if pol == S:
-                plus = inv * dissipated_factor(2, source, u[i], kz)
-                for q in range(positions):
-                    a = a_face * scratch.to_top[i, q] * scratch.to_top[i, q]
-                    b = b_face * scratch.to_bottom[i, q] * scratch.to_bottom[i, q]
-                    even = own + both * (a * b)
-                    values[i, 2 * positions + q] = (plus * (even + (a + b))).real
-                continue
-            plus = inv * dissipated_factor(0, source, u[i], kz)
-            minus = inv * dissipated_factor(1, source, u[i], kz)
-            for q in range(positions):
-                a = a_face * scratch.to_top[i, q] * scratch.to_top[i, q]
-                b = b_face * scratch.to_bottom[i, q] * scratch.to_bottom[i, q]
-                even, odd = own + both * (a * b), a + b
-                values[i, q] = (plus * (even + odd)).real
-                values[i, positions + q] = (minus * (even - odd)).real
+    kz, through = work_up.kz[0], work_up.e[0]
+    own = 0.0 if beyond_bulk else 1.0
+    fill_dissipated(source, work_up.r, work_down.r, kz, through, u, du, own, scratch)
+    fading = fades_out(source, kz)
+    for q in range(source.kz_positions.size):
+        fill_phases(q, source, kz, through, fading, scratch)
+        for c in range(3):
+            lane = first_lane(c, source)
+            put_dissipated(
+                scratch.plain[c], scratch.before[c, 0], scratch.before[c, 1],
+                scratch.by_bottom[lane:], scratch.by_top[lane:], values[c, q, first:],
+            )  # fmt: skip
 
 
-@inline
-def solve_half(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> None:
-    """Fill the work space of one half stack at real nodes."""
-    waves(u, half.eps_o, half.eps_e, half.kd, work.kz, work.y, work.e)
-    solve_waves(half, work, u, lit_from_outside)
-
-
-@inline
-def solve_waves(half: Half, work: Work, u: Complexes, lit_from_outside: bool) -> None:
-    """As `solve_half`, with the waves at hand."""
-    outward(work.y, work.e, work.r_far, work.f, work.t)
-    film_coefficients(u, half.eps_o, half.eps_e, half.kd, work.kz, work.e, work.alpha, work.beta)
-    absorbed_alone(work.e, work.r_far, work.f, work.alpha, work.beta, work.a_in)
-    if lit_from_outside:
-        inward(work.y, work.e, work.r_near, work.g, work.r_out)
-        absorbed_alone(work.e, work.r_near, work.g, work.alpha, work.beta, work.a_out)
-        absorbed_cross(
-            work.e, work.r_far, work.f, work.r_near, work.g, work.alpha, work.beta, work.a_cross
-        )
-        sum_films(work.a_out, work.form[1])
-        sum_films(work.a_cross, work.form[2])
-    sum_films(work.a_in, work.form[0])
-
-
-@inline
-def stack_from_outside(
-    from_bottom: bool,
-    from_top: bool,
-    work_up: Work,
-    work_down: Work,
-    phase: complex,
-    pol: int,
-    i: int,
-) -> StackPowers:
-    """Solve the whole stack at one node, lit from either side: (R_b, R_t, T, A_b, A_t).
-
-    A side that light does not come from stands as R = 1, A = 0. T is the same both ways between
-    transparent media; from an absorbing one no light comes.
-    """
-    flux_t, flux_b = work_up.y[pol, -1, i].real, work_down.y[pol, -1, i].real
-    r_a, r_b = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
-    out_up, out_down = work_up.t[pol, i], work_down.t[pol, i]
-    ports_up = (out_up, work_up.g[pol, 0, i], work_up.r_out[pol, i])
-    ports_down = (out_down, work_down.g[pol, 0, i], work_down.r_out[pol, i])
-    in_up, in_down = work_up.form[0, pol, i].real, work_down.form[0, pol, i].real
-    form_up = (in_up, work_up.form[1, pol, i].real, work_up.form[2, pol, i])
-    form_down = (in_down, work_down.form[1, pol, i].real, work_down.form[2, pol, i])
-    rb, rt, through, ab, at = 1.0, 1.0, 0.0, 0.0, 0.0
-    if from_top and flux_t > 0.0:
-        rt, through, at = whole_stack(
-            phase, r_b, r_a, (flux_b, flux_t), out_down, ports_up, in_down, form_up
-        )
-    if from_bottom and flux_b > 0.0:
-        rb, through, ab = whole_stack(
-            phase, r_a, r_b, (flux_t, flux_b), out_up, ports_down, in_up, form_down
-        )
-    return rb, rt, through, ab, at
-
-
-@inline
-def share_out(
-    sides: Sides, pol: int, u: float, stack: StackPowers, p_b: float, p_t: float, shares: Floats
-) -> None:
-    """Where light goes that arrives first with p_b in the bottom, p_t in the top medium.
-
-    shares : float (2, COLUMNS), added to; row 0 for p_b, row 1 for p_t.
-    """
-    once_b, s_b, p_b_face = side_face(sides, 0, u)
-    once_t, s_t, p_t_face = side_face(sides, 1, u)
-    rho = (s_b, s_t) if pol == S else (p_b_face, p_t_face)
-    share_by_faces(sides, u, (once_b, once_t), rho, stack, p_b, p_t, shares)
-
-
-@inline
-def side_face(sides: Sides, side: int, u: float) -> tuple[float, float, float]:
-    """One side's transmittance of one pass, and reflectance of its outer face for s and p."""
-    n_outer = sides.n_outer[side]
-    rho_s, rho_p = 1.0, 1.0
-    if sides.kind[side] == PLANAR:
-        rho_s, rho_p = face_reflectances(u, n_outer, sides.n_out[side])
-    return once_through(u, n_outer, sides.loss[side]), rho_s, rho_p
-
-
-@inline
-def share_by_faces(
-    sides: Sides,
-    u: float,
-    once: tuple[float, float],
-    rho: tuple[float, float],
-    stack: StackPowers,
-    p_b: float,
-    p_t: float,
-    shares: Floats,
-) -> None:
-    """As `share_out`, with both sides' transmittance and reflectance of `side_face` at hand."""
-    kind_b, kind_t = sides.kind[0], sides.kind[1]
-    n_b, n_t = sides.n_outer[0], sides.n_outer[1]
-    line_b, line_t = exit_line(kind_b, n_b, sides.n_out[0]), exit_line(kind_t, n_t, sides.n_out[1])
-    once_b, once_t = once
-    out_b, lost_b, back_b = passage(kind_b, rho[0], once_b)
-    out_t, lost_t, back_t = passage(kind_t, rho[1], once_t)
-    if u < max(line_b, line_t):
-        bb, bt, tb, tt = bounces(back_b, back_t, stack)
-        lost_b += back_b * stack[3]
-        lost_t += back_t * stack[4]
-        for row in range(2):
-            i_b = bb * p_b if row == 0 else bt * p_t
-            i_t = tb * p_b if row == 0 else tt * p_t
-            shares[row, AIR_BOTTOM] += i_b * out_b
-            shares[row, AIR_TOP] += i_t * out_t
-            shares[row, ABSORBED] += i_b * lost_b + i_t * lost_t
-    else:
-        # Trapped: counted at first arrival in a slab, or swallowed by absorbing surroundings.
-        shares[0, ABSORBED if kind_b == ABSORBING else SUBSTRATE] += p_b
-        shares[1, ABSORBED if kind_t == ABSORBING else COVER] += p_t
-    # The same light if one slab's face were replaced by an index-matched hemisphere.
-    if kind_b in (PLANAR, MATCHED):
-        back = beside_matched(u, n_b, line_t, back_t)
-        bb, bt, _, _ = bounces(0.0, back, stack)
-        shares[0, MATCHED_BOTTOM] += bb * p_b * once_b
-        shares[1, MATCHED_BOTTOM] += bt * p_t * once_b
-    if kind_t in (PLANAR, MATCHED):
-        back = beside_matched(u, n_t, line_b, back_b)
-        _, _, tb, tt = bounces(back, 0.0, stack)
-        shares[0, MATCHED_TOP] += tb * p_b * once_t
-        shares[1, MATCHED_TOP] += tt * p_t * once_t
-
-
-@inline
-def light_returns(sides: Sides, u: float) -> bool:
-    """Tell whether some slab sends light back at in-plane wavevector u (in any variant)."""
-    for side in range(2):
-        if sides.kind[side] == PLANAR and u < sides.n_outer[side]:
-            other = 1 - side
-            beyond = max(sides.n_outer[other], sides.n_out[other])
-            if sides.kind[other] == ABSORBING:
-                beyond = 0.0
-            if u < max(sides.n_out[side], beyond):
-                return True
-    return False
-
-
-@inline
+@borrowing
 def radiated(
     source: Source,
     sides: Sides,
@@ -314,67 +98,105 @@ def radiated(
     scratch: Scratch,
     u: Complexes,
     du: Complexes,
-    values: Floats,
+    first: int,
+    light: Light,
 ) -> None:
     """Dissipated power and all destinations at real nodes below the outer light lines.
 
     Parameters
     ----------
-    u, du : complex (NODES,), real-valued
-    values : float (NODES, 2 * COLUMNS * positions), output
-        Column (orientation * COLUMNS + destination) * positions + position.
+    u, du : complex (NODES,), real-valued, between two neighboring light lines
+    first : int
+        Place of the first of these nodes.
+    light : output
     """
-    positions = source.kz_positions.size
-    any_return = light_returns(sides, u[0].real) or light_returns(sides, u[-1].real)
-    from_bottom = any_return and sides.kind[0] == PLANAR
-    from_top = any_return and sides.kind[1] == PLANAR
-    solve_half(up, work_up, u, from_top)
-    waves_below(down, work_up, work_down, u)
-    solve_waves(down, work_down, u, from_bottom)
-    shares, faces = scratch.shares, scratch.faces
+    solve_waves(source, up, down, work_up, work_down, u)
+    solve_half(up, work_up, u)
+    solve_half(down, work_down, u)
+    returns = light_returns(sides, u[0].real) or light_returns(sides, u[-1].real)
+    from_bottom = returns and sides.kind[0] == PLANAR
+    from_top = returns and sides.kind[1] == PLANAR
+    solve_stack(from_bottom, from_top, up, down, work_up, work_down, scratch.stack)
+    kz, through = work_up.kz[0], work_up.e[0]
     for side in range(2):
-        for i in range(NODES):
-            passed, rho_s, rho_p = side_face(sides, side, u[i].real)
-            faces[side, 0, i], faces[side, 1, i], faces[side, 2, i] = passed, rho_s, rho_p
-    values[:, :] = 0.0
+        fill_faces(
+            sides.kind[side], sides.n_outer[side], sides.n_out[side], sides.loss[side], u,
+            scratch.faces[side],
+        )  # fmt: skip
+    r_up, r_down = work_up.r_far[0], work_down.r_far[0]
+    ways = open_ways(sides, u[NODES // 2].real)  # the same all over a panel
+    last_b, last_t = down.kd.size - 1, up.kd.size - 1
     for pol in range(2):
-        fill_phases(pol, source, work_up, scratch)
-        for i in range(NODES):
-            kz = work_up.kz[pol, 0, i]
-            phase = scratch.to_bottom[i, 0] * scratch.to_top[i, 0]
-            a_face, b_face = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
-            inv = reciprocal(1.0 - a_face * b_face * phase * phase)
-            stack = (0.0, 0.0, 0.0, 0.0, 0.0)
-            if any_return and light_returns(sides, u[i].real):
-                stack = stack_from_outside(from_bottom, from_top, work_up, work_down, phase, pol, i)
-            shares[:, :] = 0.0
-            shares[0, ABSORBED] = work_down.form[0, pol, i].real
-            shares[1, ABSORBED] = work_up.form[0, pol, i].real
-            p_t = abs2(work_up.t[pol, i]) * work_up.y[pol, -1, i].real
-            p_b = abs2(work_down.t[pol, i]) * work_down.y[pol, -1, i].real
-            once = faces[0, 0, i], faces[1, 0, i]
-            rho = faces[0, 1 + pol, i], faces[1, 1 + pol, i]
-            share_by_faces(sides, u[i].real, once, rho, stack, p_b, p_t, shares)
-            for c in range(3):
-                channel_pol, sign = channel(c)
-                if channel_pol != pol:
-                    continue
-                base = 0 if c == 0 else COLUMNS * positions
-                through = dissipated_factor(c, source, u[i], kz) * du[i] * inv
-                carried = outgoing_factor(c, source, u[i].real, kz) * du[i].real * abs2(inv)
-                for q in range(positions):
-                    to_b, to_t = scratch.to_bottom[i, q], scratch.to_top[i, q]
-                    a = 1.0 + sign * a_face * to_t * to_t
-                    b = 1.0 + sign * b_face * to_b * to_b
-                    scratch.sent[0, q] = carried * abs2(to_b * a)
-                    scratch.sent[1, q] = carried * abs2(to_t * b)
-                    values[i, base + q] += (through * a * b).real
-                for k in range(1, COLUMNS):
-                    down_share, up_share = shares[0, k], shares[1, k]
-                    if down_share == 0.0 and up_share == 0.0:
-                        continue
-                    first = base + k * positions
-                    for q in range(positions):
-                        values[i, first + q] += (
-                            scratch.sent[0, q] * down_share + scratch.sent[1, q] * up_share
-                        )
+        lane, face, shares = pol * NODES, (1 + pol) * NODES, light.shares[pol]
+        _fill_shares(
+            ways, work_down.f[last_b, lane:], work_down.y[last_b, lane:], work_up.f[last_t, lane:],
+            work_up.y[last_t, lane:], work_down.absorbed[lane:], work_up.absorbed[lane:],
+            scratch.faces[0], scratch.faces[1], scratch.faces[0, face:], scratch.faces[1, face:],
+            scratch.stack[lane:], shares[first:],
+        )  # fmt: skip
+        light.live[pol, TOTAL] = True
+        for k in range(1, COLUMNS):
+            start = k * 2 * _ALL + first
+            live = plain_sum(shares[start:]) + plain_sum(shares[start + _ALL :])
+            light.live[pol, k] = live > 0.0
+    fill_dissipated(source, r_up, r_down, kz, through, u, du, 1.0, scratch)
+    fill_carried(source, r_up, r_down, kz, u, du, scratch)
+    fading = fades_out(source, kz)
+    for q in range(source.kz_positions.size):
+        fill_phases(q, source, kz, through, fading, scratch)
+        for c in range(3):
+            lane = first_lane(c, source)
+            by_bottom, by_top = scratch.by_bottom[lane:], scratch.by_top[lane:]
+            put_dissipated(
+                scratch.plain[c], scratch.before[c, 0], scratch.before[c, 1], by_bottom, by_top,
+                light.total[c, q, first:],
+            )  # fmt: skip
+            put_sent(
+                scratch.carried[c], scratch.mirrored[c, 0], scratch.mirrored[c, 1],
+                scratch.crossed[c, 0], scratch.crossed[c, 1], by_bottom, by_top,
+                scratch.fade_bottom[lane:], scratch.fade_top[lane:], light.sent[c, q, first:],
+            )  # fmt: skip
+
+
+@rowwise
+def _fill_shares(
+    ways: Ways, f_down: Floats, y_down: Floats, f_up: Floats, y_up: Floats, absorbed_down: Floats,
+    absorbed_up: Floats, once_b: Floats, once_t: Floats, rho_b: Floats, rho_t: Floats,
+    stack: Floats, shares: Floats,
+) -> None:  # fmt: skip
+    """Destinations of one polarization's light per unit sent down, up, at each node.
+
+    f, y : amplitude and admittance in the last medium of each half; once, rho : of `fill_faces`.
+    All begin with the polarization's first lane, or the first node of the stage.
+    """
+    for i in range(NODES):
+        p_b = abs2(at(f_down, i)) * y_down[i]
+        p_t = abs2(at(f_up, i)) * y_up[i]
+        powers = (
+            stack[i], stack[LANES + i], stack[2 * LANES + i], stack[3 * LANES + i],
+            stack[4 * LANES + i],
+        )  # fmt: skip
+        down, up = fates(ways, (once_b[i], once_t[i]), (rho_b[i], rho_t[i]), powers, p_b, p_t)
+        _put_fate(shares, i, down, absorbed_down[i])
+        _put_fate(shares, _ALL + i, up, absorbed_up[i])
+
+
+@scalar
+def _put_fate(shares: Floats, place: int, fate: Fate, absorbed: float) -> None:
+    row = 2 * _ALL
+    shares[AIR_BOTTOM * row + place] = fate[0]
+    shares[AIR_TOP * row + place] = fate[1]
+    shares[SUBSTRATE * row + place] = fate[2]
+    shares[COVER * row + place] = fate[3]
+    shares[ABSORBED * row + place] = fate[4] + absorbed
+    shares[MATCHED_BOTTOM * row + place] = fate[5]
+    shares[MATCHED_TOP * row + place] = fate[6]
+
+
+@reduction
+def plain_sum(row: Floats) -> float:
+    """Sum of the values at the nodes of one stage, in any order."""
+    total = 0.0
+    for i in range(NODES):
+        total += row[i]
+    return total

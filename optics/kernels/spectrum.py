@@ -13,7 +13,6 @@ import numpy as np
 
 from optics.kernels.arrays import Floats, Integers
 from optics.kernels.compiled import inline, kernel
-from optics.kernels.exits import COLUMNS
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.problem import Problem, Source, scratch_space, work_space
 from optics.kernels.rules import NODES
@@ -54,18 +53,18 @@ def dissipated_spectrum(
     """
     n, positions = u.size, problem.source.kz_positions.shape[1]
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
-    scratch = scratch_space(positions, COLUMNS)
+    scratch = scratch_space()
     nodes, du = np.zeros(NODES, dtype=np.complex128), np.ones(NODES, dtype=np.complex128)
-    values = np.zeros((NODES, 3 * positions))
+    values = np.zeros((3, positions, NODES))
     for t in range(rows.size):
         source, _, up, down = at_wavelength(problem, rows[t])
         for start in range(0, n, NODES):
             for i in range(NODES):
                 # The last batch is filled up with its last node.
                 nodes[i] = complex(u[min(start + i, n - 1)], -depth)
-            dissipated(source, up, down, work_up, work_down, scratch, nodes, du, False, values)
+            dissipated(source, up, down, work_up, work_down, scratch, nodes, du, False, 0, values)
             for i in range(min(NODES, n - start)):
                 for c in range(3):
                     excess = feigned(c, source, u[start + i], depth)
                     for q in range(positions):
-                        power[t, c, start + i, q] = values[i, c * positions + q] - excess
+                        power[t, c, start + i, q] = values[c, q, i] - excess

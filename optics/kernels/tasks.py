@@ -67,7 +67,7 @@ def run_dissipated(
     scale : float (w, 2, z)
     """
     z = scale.shape[2]
-    by_channel = scale[:, [0, 1, 1]].reshape(-1, 3 * z)[tasks.rows]
+    by_channel = scale[:, [0, 1, 1]].reshape(-1, 3 * z)
     value, error, batches = _run(problem, tasks, False, by_channel, tolerance)
     return value.reshape(-1, 3, z), error, batches
 
@@ -77,7 +77,7 @@ def run_radiated(
 ) -> tuple[Floats, Floats, Integers]:
     """Every destination of every task (t, 2, COLUMNS, z), its error over scale, batches."""
     z = scale.shape[2]
-    by_column = np.repeat(scale, COLUMNS, axis=1).reshape(-1, 2 * COLUMNS * z)[tasks.rows]
+    by_column = np.repeat(scale, COLUMNS, axis=1).reshape(-1, 2 * COLUMNS * z)
     value, error, batches = _run(problem, tasks, True, by_column, tolerance)
     return value.reshape(-1, 2, COLUMNS, z), error, batches
 
@@ -85,10 +85,10 @@ def run_radiated(
 def _run(
     problem: Problem, tasks: Tasks, everything: bool, scale: Floats, tolerance: float
 ) -> tuple[Floats, Floats, Integers]:
-    value, miss = np.zeros_like(scale), np.zeros_like(scale)
-    batches = np.zeros(tasks.rows.size, dtype=np.int64)
-    integrate(problem, tasks.rows, tasks.paths, everything, scale, tolerance, value, miss, batches)
-    return value, (miss / scale).max(axis=1, initial=0.0), batches
+    count = tasks.rows.size
+    value, error, batches = np.zeros((count, scale.shape[1])), np.zeros(count), np.zeros(count, int)
+    integrate(problem, tasks.rows, tasks.paths, everything, scale, tolerance, value, error, batches)
+    return value, error, batches
 
 
 def dissipated_power(

@@ -12,10 +12,10 @@ from numpy.typing import NDArray
 
 from optics.kernels.arrays import Floats
 from optics.kernels.budget import (
-    _RADIATED,
     GUIDED,
     NEAR_FIELD,
     OUTCOMES,
+    RADIATED,
     SURFACE_PLASMON,
     Budget,
     by_orientation,
@@ -146,7 +146,7 @@ def _hides_something(
     free, _ = every_destination(
         problem, kept(ranges.free), power, _PANEL_SHARE * tolerance, batches
     )
-    for place, column in _RADIATED.items():
+    for place, column in RADIATED.items():
         found[:, :, place] = free[:, :, column]
     found[:, :, NEAR_FIELD] = trapped(ranges.near)
     found[:, :, GUIDED] = trapped(ranges.guided) + trapped(ranges.beyond) + found[:, :, NEAR_FIELD]
@@ -242,7 +242,7 @@ def _collect(
     """Sort the integrals into destinations, as `budget` does: shares and dissipation."""
     w, directions, _, z = total.shape
     shares = np.zeros((w, directions, 2, OUTCOMES, z))
-    for place, column in _RADIATED.items():
+    for place, column in RADIATED.items():
         shares[:, :, :, place] = free[:, :, :, column]
     tail = beyond + near
     plasmon = has_plasmon(problem)[:, None, None, None]

@@ -7,15 +7,16 @@ wavevector when the index there changes: u = n sin(angle).
 import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats
-from optics.kernels.compiled import inline, kernel
+from optics.kernels.compiled import borrowing, kernel
+from optics.kernels.dipole import channel
 from optics.kernels.exits import AIR_BOTTOM, AIR_TOP, exit_line
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.problem import Problem, work_space
+from optics.kernels.problem import Problem
 from optics.kernels.rules import NODES
-from optics.kernels.source import channel
 from optics.kernels.variation import Rates, rates_at
 from optics.kernels.varied_radiated import sent_rates, shares_of_panel, solve_varied
 from optics.kernels.varied_response import find_moves, moves_space, response_space
+from optics.kernels.varied_solved import solved_space
 from optics.kernels.varied_source import SENT_DOWN, SENT_UP, VariedScratch, varied_scratch
 
 # Stands for u = 0, where the power per du over u is 0/0; as in `directions`.
@@ -55,7 +56,8 @@ def _leaving_rates(
     """Fill out (w, p, 3, n, z) of `leaving_rates`."""
     directions, n = u_rate.shape[1], u.shape[1]
     positions = problem.source.kz_positions.shape[1]
-    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    solved_up = solved_space(problem.up.kd.shape[1])
+    solved_down = solved_space(problem.down.kd.shape[1])
     vary_up, vary_down = response_space(directions), response_space(directions)
     scratch = varied_scratch(directions, positions)
     flags, ends = moves_space(directions), np.zeros((directions, 2))
@@ -72,17 +74,17 @@ def _leaving_rates(
         for start in range(0, n, NODES):
             _place(w, start, u, u_rate, nodes, du, moves, stretch)
             solve_varied(
-                here, flags, sides, up, down, work_up, work_down, vary_up, vary_down, nodes,
-                moves, scratch.lit,
+                source, here, flags, sides, up, down, solved_up, solved_down, vary_up, vary_down,
+                nodes, moves, scratch.lit,
             )  # fmt: skip
             for c in (2, 0, 1):
                 if c != 1:
                     shares_of_panel(
-                        channel(c)[0], source, here, flags, sides, work_up, work_down, vary_up,
+                        channel(c)[0], source, here, flags, sides, solved_up, solved_down, vary_up,
                         vary_down, nodes, moves, scratch,
                     )  # fmt: skip
                 sent_rates(
-                    c, source, here, flags, work_up, work_down, vary_up, vary_down, nodes, du,
+                    c, source, here, flags, solved_up, solved_down, vary_up, vary_down, nodes, du,
                     moves, stretch, scratch,
                 )  # fmt: skip
                 for i in range(min(NODES, n - start)):
@@ -90,7 +92,7 @@ def _leaving_rates(
                         _book(column, i, scratch, out[w, :, c, start + i])
 
 
-@inline
+@borrowing
 def _place(
     w: int, start: int, u: Floats, u_rate: Floats, nodes: Complexes, du: Complexes, moves: Floats,
     stretch: Floats,
@@ -105,15 +107,15 @@ def _place(
             stretch[p, i] = -moves[p, i] / nodes[i].real / nodes[i].real
 
 
-@inline
+@borrowing
 def _book(column: int, i: int, scratch: VariedScratch, out: Floats) -> None:
     """Rates (p, z) of what leaves at one node."""
     rates, sent, shares, d_shares = scratch.rates, scratch.sent, scratch.shares, scratch.d_shares
     for p in range(out.shape[0]):
         for q in range(out.shape[1]):
             out[p, q] = (
-                rates[SENT_DOWN, p, i, q] * shares[column, i, 0]
-                + rates[SENT_UP, p, i, q] * shares[column, i, 1]
-                + sent[0, i, q] * d_shares[p, column, i, 0]
-                + sent[1, i, q] * d_shares[p, column, i, 1]
+                rates[SENT_DOWN, p, q, i] * shares[column, 0, i]
+                + rates[SENT_UP, p, q, i] * shares[column, 1, i]
+                + sent[0, q, i] * d_shares[p, column, 0, i]
+                + sent[1, q, i] * d_shares[p, column, 1, i]
             )

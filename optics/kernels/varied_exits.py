@@ -6,7 +6,7 @@ The twin of `exits`, which gives the values.
 import math
 
 from optics.kernels.arrays import Complexes, Flags, Floats
-from optics.kernels.compiled import inline
+from optics.kernels.compiled import borrowing
 from optics.kernels.exits import (
     ABSORBING,
     AIR_BOTTOM,
@@ -19,14 +19,15 @@ from optics.kernels.exits import (
     SUBSTRATE,
     bounces,
     exit_line,
-    face_reflectance,
-    once_through,
+    passage,
+    slab_faces,
 )
 from optics.kernels.halfstack import S, abs2, reciprocal
-from optics.kernels.problem import Sides, Source, Work
+from optics.kernels.problem import Sides, Source
 from optics.kernels.rules import NODES
 from optics.kernels.variation import Rates
 from optics.kernels.varied_response import Response
+from optics.kernels.varied_solved import Solved
 
 Two = tuple[float, float]
 Three = tuple[float, float, float]
@@ -34,13 +35,13 @@ Four = tuple[float, float, float, float]
 Ports = tuple[complex, complex, complex, complex]
 
 
-@inline
+@borrowing
 def _re(a: complex, b: complex) -> float:
     """Re(a b)."""
     return a.real * b.real - a.imag * b.imag
 
 
-@inline
+@borrowing
 def _reflected(phase: complex, r_a: complex, b: Ports) -> tuple[float, Ports, complex, complex]:
     """Reflectance R of the whole stack lit from outside half b, and what changes it.
 
@@ -70,7 +71,7 @@ def _reflected(phase: complex, r_a: complex, b: Ports) -> tuple[float, Ports, co
     return abs2(r), ports, by_a, 2.0 * weight * t * t_in * r_a * there * inv
 
 
-@inline
+@borrowing
 def _transmitted(
     phase: complex, r_a: complex, t_a: complex, r_b: complex, in_b: complex, ratio: float
 ) -> tuple[float, Ports, complex]:
@@ -91,7 +92,7 @@ def _transmitted(
     return abs2(x) * ratio, ports, by_phase
 
 
-@inline
+@borrowing
 def face_rate(
     pol: int, u: float, du: float, n_slab: float, dn_slab: float, n_out: float, dn_out: float
 ) -> float:
@@ -111,7 +112,7 @@ def face_rate(
     return 4.0 * (y1 - y2) * (d1 * y2 - y1 * d2) / (total * total * total)
 
 
-@inline
+@borrowing
 def once_rate(
     once: float, u: float, du: float, n_outer: float, dn_outer: float, loss: float, dloss: float
 ) -> float:
@@ -124,7 +125,7 @@ def once_rate(
     return -once * (dloss + loss * sine * sine_rate / (cosine * cosine)) / cosine
 
 
-@inline
+@borrowing
 def _side(
     kind: int, matched: bool, pol: int, u: float, n_outer: float, n_out: float, loss: float
 ) -> Four:
@@ -133,18 +134,13 @@ def _side(
     matched : bool
         As if an index-matched hemisphere stood on the slab.
     """
-    if kind == ABSORBING:
-        return 0.0, 0.0, 0.0, 0.0
-    if kind == OPEN:
-        return 1.0, 0.0, 1.0, 0.0
-    once = once_through(u, n_outer, loss)
-    if matched or kind == MATCHED:
-        return once, 0.0, once, 0.0
-    rho = face_reflectance(pol, u, n_outer, n_out) if u < n_outer else 1.0
-    return once, rho, once * (1.0 - rho), once * once * rho
+    once, rho_s, rho_p = slab_faces(MATCHED if matched else kind, n_outer, n_out, loss, u)
+    rho = rho_s if pol == S else rho_p
+    leaves, _, back = passage(rho, once)
+    return once, rho, leaves, back
 
 
-@inline
+@borrowing
 def _side_rates(
     side: Four, kind: int, matched: bool, pol: int, u: float, du: float,
     n_outer: Two, n_out: Two, loss: Two,
@@ -163,7 +159,7 @@ def _side_rates(
     return d_once * (1.0 - rho) - once * d_rho, once * (2.0 * d_once * rho + once * d_rho)
 
 
-@inline
+@borrowing
 def _bounce_rates(m: Four, backs: Two, back_rates: Two, stack: Three, stack_rates: Three) -> Four:
     """Rates of `exits.bounces`: m is the inverse of 1 - K, so that dm = m dK m.
 
@@ -184,7 +180,7 @@ def _bounce_rates(m: Four, backs: Two, back_rates: Two, stack: Three, stack_rate
     )
 
 
-@inline
+@borrowing
 def _book(
     m: Four, d_m: Four, arrived: Two, d_arrived: Two, leaves: Two, d_leaves: Two, row: int
 ) -> tuple[float, float, float, float]:
@@ -199,9 +195,9 @@ def _book(
     )
 
 
-@inline
+@borrowing
 def lit_from_outside(
-    pol: int, side: int, source: Source, kd_rate: Floats, phase: Complexes, near: Work, far: Work,
+    pol: int, side: int, source: Source, kd_rate: Floats, near: Solved, far: Solved,
     vary: Response, vary_far: Response, lit: Flags, stack: Floats, rates: Floats,
 ) -> None:  # fmt: skip
     """Reflectance and transmittance of the whole stack lit from one side, and their rates.
@@ -212,9 +208,7 @@ def lit_from_outside(
         0: the bottom one, 1: the top one.
     kd_rate : float (p,)
         Rates of k0 d of the emitter film.
-    phase : complex (n,)
-        exp(i kz d) of the emitter film.
-    near, far : Work
+    near, far : Solved
         Half stack on the side that is lit, and the other; vary, vary_far their rates.
     lit : bool (n,)
         Nodes where it is asked for.
@@ -226,7 +220,7 @@ def lit_from_outside(
         y_near, y_far = near.y[pol, -1, i].real, far.y[pol, -1, i].real
         if not lit[i] or y_near <= 0.0:
             continue
-        kz, e, ratio = near.kz[pol, 0, i], phase[i], y_far / y_near
+        kz, e, ratio = near.kz[pol, 0, i], near.e[pol, 0, i], y_far / y_near
         r, r_far, t_in = near.r_far[pol, 0, i], far.r_far[pol, 0, i], near.g[pol, 0, i]
         ports = (r, near.t[pol, i], t_in, near.r_out[pol, i])
         stack[side, i], by, by_far, by_phase = _reflected(e, r_far, ports)
@@ -247,9 +241,9 @@ def lit_from_outside(
             )  # fmt: skip
 
 
-@inline
+@borrowing
 def arrival_rates(
-    pol: int, down: Work, up: Work, vary_down: Response, vary_up: Response, arrived: Floats,
+    pol: int, down: Solved, up: Solved, vary_down: Response, vary_up: Response, arrived: Floats,
     rates: Floats,
 ) -> None:  # fmt: skip
     """Flux into the outer media per unit amplitude from the emitter film: bottom, top.
@@ -271,7 +265,7 @@ def arrival_rates(
                 rates[p, side, i] = _re(weight, dt) + abs2(t) * dy.real
 
 
-@inline
+@borrowing
 def share_rates(
     pol: int, u: Complexes, u_rate: Floats, sides: Sides, rates: Rates, moving: Flags,
     arrived: Floats, d_arrived: Floats, stack: Floats, d_stack: Floats, shares: Floats,
@@ -287,9 +281,9 @@ def share_rates(
         From `arrival_rates`.
     stack, d_stack
         From `lit_from_outside`.
-    shares : float (COLUMNS, n, 2), output
-        By destination; last axis: sent down, up. Column ABSORBED stays 0.
-    d_shares : float (p, COLUMNS, n, 2), output
+    shares : float (COLUMNS, 2, n), output
+        By destination; sent down, up. Column ABSORBED stays 0.
+    d_shares : float (p, COLUMNS, 2, n), output
     """
     shares[:, :, :] = 0.0
     d_shares[:, :, :, :] = 0.0
@@ -303,7 +297,7 @@ def share_rates(
             )  # fmt: skip
 
 
-@inline
+@borrowing
 def _share_at_node(
     variant: int, i: int, pol: int, u: float, u_rate: Floats, sides: Sides, rates: Rates,
     moving: Flags, arrived: Floats, d_arrived: Floats, stack: Floats, d_stack: Floats,
@@ -351,22 +345,24 @@ def _share_at_node(
         for row in range(2):
             b, t, rate_b, rate_t = _book(m, d_m, power, d_power, leaves, d_leaves, row)
             if variant != 2:
-                shares[column_b, i, row] = b
-                d_shares[p, column_b, i, row] = rate_b
+                shares[column_b, row, i] = b
+                d_shares[p, column_b, row, i] = rate_b
             if variant != 1:
-                shares[column_t, i, row] = t
-                d_shares[p, column_t, i, row] = rate_t
+                shares[column_t, row, i] = t
+                d_shares[p, column_t, row, i] = rate_t
 
 
-@inline
+@borrowing
 def _book_trapped(
     i: int, kind_b: int, kind_t: int, arrived: Floats, d_arrived: Floats, shares: Floats,
     d_shares: Floats,
 ) -> None:  # fmt: skip
     """Light beyond every exit light line counts where it arrives first."""
     if kind_b != ABSORBING:
-        shares[SUBSTRATE, i, 0] = arrived[0, i]
-        d_shares[:, SUBSTRATE, i, 0] = d_arrived[:, 0, i]
+        shares[SUBSTRATE, 0, i] = arrived[0, i]
+        for p in range(d_shares.shape[0]):
+            d_shares[p, SUBSTRATE, 0, i] = d_arrived[p, 0, i]
     if kind_t != ABSORBING:
-        shares[COVER, i, 1] = arrived[1, i]
-        d_shares[:, COVER, i, 1] = d_arrived[:, 1, i]
+        shares[COVER, 1, i] = arrived[1, i]
+        for p in range(d_shares.shape[0]):
+            d_shares[p, COVER, 1, i] = d_arrived[p, 1, i]

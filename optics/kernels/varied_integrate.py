@@ -8,14 +8,16 @@ and the length of a tail, stay: an integral does not depend on them.
 import numpy as np
 
 from optics.kernels.arrays import Complexes, Floats, Integers
-from optics.kernels.compiled import inline, kernel
+from optics.kernels.compiled import borrowing, kernel
 from optics.kernels.integrate import at_wavelength
-from optics.kernels.paths import TAIL, first_split, panel_error, panel_sum, place, probed_columns
-from optics.kernels.problem import Problem, work_space
+from optics.kernels.panel import panel_error, panel_sum, probed_columns
+from optics.kernels.paths import TAIL, first_split, place
+from optics.kernels.problem import Problem
 from optics.kernels.rules import NODES, STAGES
 from optics.kernels.variation import Rates, rates_at
 from optics.kernels.varied_radiated import varied_radiated
 from optics.kernels.varied_response import find_moves, moves_space, response_space
+from optics.kernels.varied_solved import solved_space
 from optics.kernels.varied_source import varied_dissipated, varied_scratch
 
 # A panel is halved at most this often, and no path takes more batches of nodes than this.
@@ -25,7 +27,7 @@ _MOST_BATCHES = 1200
 _HOPELESS = 10.0
 
 
-@inline
+@borrowing
 def move(
     kind: float, lo: float, hi: float, ends: Floats, u: Complexes, du: Complexes,
     u_rate: Floats, du_rate: Floats,
@@ -78,15 +80,15 @@ def integrate_rates(
         Integrals and their estimated errors are added.
     """
     columns, directions = result.shape[1], ends.shape[1]
-    work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
+    solved_up = solved_space(problem.up.kd.shape[1])
+    solved_down = solved_space(problem.down.kd.shape[1])
     vary_up, vary_down = response_space(directions), response_space(directions)
     scratch = varied_scratch(directions, problem.source.kz_positions.shape[1])
     moves = moves_space(directions)
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     u_rate, du_rate = np.zeros((directions, NODES)), np.zeros((directions, NODES))
-    values = np.zeros((STAGES * NODES, columns))
-    probed = probed_columns(columns, 1)
-    moments, misses = np.zeros((4, columns)), np.zeros(columns)
+    values = np.zeros((columns, STAGES * NODES))
+    probed, misses = probed_columns(columns, 1), np.zeros(columns)
     open_ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):
         source, sides, up, down = at_wavelength(problem, rows[task])
@@ -110,18 +112,18 @@ def integrate_rates(
                 count += 1
                 place(kind, lo, hi, depth, a, b, stage, u, du)
                 move(kind, lo, hi, ends[task], u, du, u_rate, du_rate)
-                batch = values[stage * NODES : (stage + 1) * NODES]
+                first = stage * NODES
                 if everything:
                     varied_radiated(
-                        source, here, moves, sides, up, down, work_up, work_down, vary_up,
-                        vary_down, scratch, u, du, u_rate, du_rate, batch,
+                        source, here, moves, sides, up, down, solved_up, solved_down, vary_up,
+                        vary_down, scratch, u, du, u_rate, du_rate, first, values,
                     )  # fmt: skip
                 else:
                     varied_dissipated(
-                        source, here, moves, up, down, work_up, work_down, vary_up, vary_down,
-                        scratch, u, du, u_rate, du_rate, kind == TAIL, batch,
+                        source, here, moves, up, down, solved_up, solved_down, vary_up, vary_down,
+                        scratch, u, du, u_rate, du_rate, kind == TAIL, first, values,
                     )  # fmt: skip
-                worst = panel_error(values, stage, scale[task], probed, moments, misses)
+                worst = panel_error(values, stage, scale[task], probed, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_BATCHES:
                 open_ends[0, waiting], open_ends[1, waiting] = a, 0.5 * (a + b)
                 open_ends[0, waiting + 1], open_ends[1, waiting + 1] = 0.5 * (a + b), b

@@ -6,26 +6,26 @@ volume integral; but what follows from an identity may be differentiated by it.
 """
 
 from optics.kernels.arrays import Complexes, Flags, Floats
-from optics.kernels.compiled import inline
+from optics.kernels.compiled import borrowing, rowwise
+from optics.kernels.dipole import channel, outgoing_factor
 from optics.kernels.exits import (
     ABSORBED,
     AIR_BOTTOM,
     AIR_TOP,
     COLUMNS,
     COVER,
-    MATCHED,
     PLANAR,
     SUBSTRATE,
     TOTAL,
-    exit_line,
+    light_returns,
 )
-from optics.kernels.halfstack import abs2, inward, outward, reciprocal, waves
-from optics.kernels.problem import Half, Sides, Source, Work
+from optics.kernels.halfstack import abs2, reciprocal
+from optics.kernels.problem import Half, Sides, Source
 from optics.kernels.rules import NODES
-from optics.kernels.source import channel, outgoing_factor
 from optics.kernels.variation import Rates
 from optics.kernels.varied_exits import arrival_rates, lit_from_outside, share_rates
 from optics.kernels.varied_response import FORMS, THROUGH, Moves, Response, respond
+from optics.kernels.varied_solved import Solved, light_inward, solve_outward
 from optics.kernels.varied_source import (
     BY_DOWN,
     BY_FILM,
@@ -34,7 +34,6 @@ from optics.kernels.varied_source import (
     BY_UP,
     ITSELF,
     SENT_DOWN,
-    SENT_UP,
     TOTAL_POWER,
     VariedScratch,
     combine,
@@ -43,28 +42,16 @@ from optics.kernels.varied_source import (
 )
 
 
-@inline
-def _comes_back(sides: Sides, u: float) -> bool:
-    """Whether some slab sends light of in-plane wavevector u back, in any variant of its faces."""
-    line_b = exit_line(sides.kind[0], sides.n_outer[0], sides.n_out[0])
-    line_t = exit_line(sides.kind[1], sides.n_outer[1], sides.n_out[1])
-    free = u < max(line_b, line_t)
-    slab_b, slab_t = sides.kind[0] in (PLANAR, MATCHED), sides.kind[1] in (PLANAR, MATCHED)
-    from_b = free or (slab_t and u < max(sides.n_outer[1], line_b))
-    from_t = free or (slab_b and u < max(sides.n_outer[0], line_t))
-    back_b = sides.kind[0] == PLANAR and u < sides.n_outer[0] and from_b
-    return back_b or (sides.kind[1] == PLANAR and u < sides.n_outer[1] and from_t)
-
-
-@inline
+@borrowing
 def solve_varied(
+    source: Source,
     rates: Rates,
     moves: Moves,
     sides: Sides,
     up: Half,
     down: Half,
-    work_up: Work,
-    work_down: Work,
+    solved_up: Solved,
+    solved_down: Solved,
     vary_up: Response,
     vary_down: Response,
     u: Complexes,
@@ -74,27 +61,24 @@ def solve_varied(
     """Both half stacks, lit from either end, and their rates; where light comes back (n,)."""
     forms = THROUGH + 1
     for i in range(NODES):
-        lit[i] = _comes_back(sides, u[i].real)
+        lit[i] = light_returns(sides, u[i].real)
         forms = FORMS if lit[i] else forms
-    waves(u, up.eps_o, up.eps_e, up.kd, work_up.kz, work_up.y, work_up.e)
-    waves(u, down.eps_o, down.eps_e, down.kd, work_down.kz, work_down.y, work_down.e)
-    outward(work_up.y, work_up.e, work_up.r_far, work_up.f, work_up.t)
-    outward(work_down.y, work_down.e, work_down.r_far, work_down.f, work_down.t)
-    inward(work_up.y, work_up.e, work_up.r_near, work_up.g, work_up.r_out)
-    inward(work_down.y, work_down.e, work_down.r_near, work_down.g, work_down.r_out)
-    respond(u, u_rate, up, rates.up, moves, work_up, forms, vary_up)
-    respond(u, u_rate, down, rates.down, moves, work_down, forms, vary_down)
+    solve_outward(source, up, down, solved_up, solved_down, u)
+    light_inward(solved_up)
+    light_inward(solved_down)
+    respond(u, u_rate, up, rates.up, moves, solved_up, forms, vary_up)
+    respond(u, u_rate, down, rates.down, moves, solved_down, forms, vary_down)
 
 
-@inline
+@borrowing
 def shares_of_panel(
     pol: int,
     source: Source,
     rates: Rates,
     moves: Moves,
     sides: Sides,
-    work_up: Work,
-    work_down: Work,
+    solved_up: Solved,
+    solved_down: Solved,
     vary_up: Response,
     vary_down: Response,
     u: Complexes,
@@ -102,19 +86,21 @@ def shares_of_panel(
     scratch: VariedScratch,
 ) -> None:
     """Fill phases and shares of one polarization."""
-    fill_phases(pol, source, work_up, work_down, scratch)
-    arrival_rates(pol, work_down, work_up, vary_down, vary_up, scratch.arrived, scratch.d_arrived)
+    fill_phases(pol, source, solved_up, solved_down, scratch)
+    arrival_rates(
+        pol, solved_down, solved_up, vary_down, vary_up, scratch.arrived, scratch.d_arrived
+    )
     scratch.stack[:2] = 1.0
     scratch.stack[2] = 0.0
     scratch.d_stack[:, :, :] = 0.0
-    if scratch.lit.any() and sides.kind[1] == PLANAR:
+    if sides.kind[1] == PLANAR:
         lit_from_outside(
-            pol, 1, source, rates.kd, scratch.phase, work_up, work_down, vary_up, vary_down,
+            pol, 1, source, rates.kd, solved_up, solved_down, vary_up, vary_down,
             scratch.lit, scratch.stack, scratch.d_stack,
         )  # fmt: skip
-    if scratch.lit.any() and sides.kind[0] == PLANAR:
+    if sides.kind[0] == PLANAR:
         lit_from_outside(
-            pol, 0, source, rates.kd, scratch.phase, work_down, work_up, vary_down, vary_up,
+            pol, 0, source, rates.kd, solved_down, solved_up, vary_down, vary_up,
             scratch.lit, scratch.stack, scratch.d_stack,
         )  # fmt: skip
     share_rates(
@@ -123,13 +109,13 @@ def shares_of_panel(
     )  # fmt: skip
 
 
-@inline
+@borrowing
 def _sent_terms(
     c: int,
     side: int,
     source: Source,
-    work_up: Work,
-    work_down: Work,
+    solved_up: Solved,
+    solved_down: Solved,
     u: Complexes,
     du: Complexes,
     scratch: VariedScratch,
@@ -139,19 +125,21 @@ def _sent_terms(
     terms = scratch.terms[SENT_DOWN + side]
     by_face, by_far = (BY_UP, BY_DOWN) if side == 0 else (BY_DOWN, BY_UP)
     for i in range(NODES):
-        kz, inv, phase = work_up.kz[pol, 0, i], scratch.inverse[i], scratch.phase[i]
-        face, far = work_up.r_far[pol, 0, i], work_down.r_far[pol, 0, i]
+        kz = solved_up.kz[pol, 0, i]
+        scratch.factor[i] = outgoing_factor(c, source, u[i].real, kz) * du[i].real
+    for q in range(source.kz_positions.size):
+        near_way, far_way = source.kz_positions[q], source.kd - source.kz_positions[q]
         if side == 1:
-            face, far = far, face
-        factor = outgoing_factor(c, source, u[i].real, kz) * du[i].real
-        loop = inv * phase * phase
-        whole = face * far * loop * 2j
-        for q in range(source.kz_positions.size):
-            near_way, far_way = source.kz_positions[q], source.kd - source.kz_positions[q]
-            to_near, to_far = scratch.to_bottom[i, q], scratch.to_top[i, q]
+            near_way, far_way = far_way, near_way
+        for i in range(NODES):
+            kz, inv, phase = solved_up.kz[pol, 0, i], scratch.inverse[i], solved_up.e[pol, 0, i]
+            face, far = solved_up.r_far[pol, 0, i], solved_down.r_far[pol, 0, i]
+            to_near, to_far = scratch.to_bottom[q, i], scratch.to_top[q, i]
             if side == 1:
-                near_way, far_way = far_way, near_way
+                face, far = far, face
                 to_near, to_far = to_far, to_near
+            factor, loop = scratch.factor[i].real, inv * phase * phase
+            whole = face * far * loop * 2j
             mirror = sign * inv * to_near * to_far * to_far
             e = to_near * inv + face * mirror
             weight = 2.0 * factor * e.conjugate()
@@ -159,27 +147,27 @@ def _sent_terms(
             echo = weight * face * mirror * 2j
             around = weight * e * whole
             power = factor * abs2(e)
-            scratch.sent[side, i, q] = power
-            terms[ITSELF, i, q] = power
-            terms[by_face, i, q] = weight * (mirror + e * loop * far)
-            terms[by_far, i, q] = weight * e * loop * face
-            terms[BY_KZ, i, q] = direct * near_way + echo * far_way + around * source.kd
+            scratch.sent[side, q, i] = power
+            terms[ITSELF, q, i] = power
+            terms[by_face, q, i] = weight * (mirror + e * loop * far)
+            terms[by_far, q, i] = weight * e * loop * face
+            terms[BY_KZ, q, i] = direct * near_way + echo * far_way + around * source.kd
             if side == 0:
-                terms[BY_FILM, i, q] = kz * (echo + around)
-                terms[BY_PLACE, i, q] = kz * (direct - echo)
+                terms[BY_FILM, q, i] = kz * (echo + around)
+                terms[BY_PLACE, q, i] = kz * (direct - echo)
             else:
-                terms[BY_FILM, i, q] = kz * (direct + around)
-                terms[BY_PLACE, i, q] = kz * (echo - direct)
+                terms[BY_FILM, q, i] = kz * (direct + around)
+                terms[BY_PLACE, q, i] = kz * (echo - direct)
 
 
-@inline
+@borrowing
 def _factor_rates(
     c: int,
     source: Source,
     rates: Rates,
     moves: Moves,
     vary: Response,
-    work: Work,
+    solved: Solved,
     u: Complexes,
     du: Complexes,
     u_rate: Floats,
@@ -194,7 +182,7 @@ def _factor_rates(
         own_film = 2.0 * (rates.eps[p, 0] / source.eps_o - rates.eps[p, 1] / source.eps_e)
         for i in range(NODES):
             steps = u_rate[p, i] / u[i].real
-            turn = 2.0 * (vary.kz[pol, p, i] * reciprocal(work.kz[pol, 0, i])).real
+            turn = 2.0 * (vary.kz[pol, p, i] * reciprocal(solved.kz[pol, 0, i])).real
             rate = steps - rates.bulk[p, 1] - turn
             if c == 0:
                 rate = 3.0 * steps + own_film - rates.bulk[p, 0] - turn
@@ -203,14 +191,14 @@ def _factor_rates(
             own[p, i] = rate + du_rate[p, i] / du[i].real
 
 
-@inline
+@borrowing
 def sent_rates(
     c: int,
     source: Source,
     rates: Rates,
     moves: Moves,
-    work_up: Work,
-    work_down: Work,
+    solved_up: Solved,
+    solved_down: Solved,
     vary_up: Response,
     vary_down: Response,
     u: Complexes,
@@ -221,13 +209,13 @@ def sent_rates(
 ) -> None:
     """Power sent down and up by one channel at real nodes, and its rates, into scratch."""
     pol = channel(c)[0]
-    _factor_rates(c, source, rates, moves, vary_up, work_up, u, du, u_rate, du_rate, scratch.own)
+    _factor_rates(c, source, rates, moves, vary_up, solved_up, u, du, u_rate, du_rate, scratch.own)
     for side in range(2):
-        _sent_terms(c, side, source, work_up, work_down, u, du, scratch)
+        _sent_terms(c, side, source, solved_up, solved_down, u, du, scratch)
         combine(SENT_DOWN + side, pol, rates, moves, vary_up, vary_down, scratch)
 
 
-@inline
+@borrowing
 def varied_radiated(
     source: Source,
     rates: Rates,
@@ -235,8 +223,8 @@ def varied_radiated(
     sides: Sides,
     up: Half,
     down: Half,
-    work_up: Work,
-    work_down: Work,
+    solved_up: Solved,
+    solved_down: Solved,
     vary_up: Response,
     vary_down: Response,
     scratch: VariedScratch,
@@ -244,6 +232,7 @@ def varied_radiated(
     du: Complexes,
     u_rate: Floats,
     du_rate: Floats,
+    first: int,
     values: Floats,
 ) -> None:
     """Rates of dissipated power and all destinations at real nodes below the outer light lines.
@@ -252,67 +241,98 @@ def varied_radiated(
     ----------
     u, du : complex (NODES,), real-valued
     u_rate, du_rate : float (p, NODES)
-    values : float (NODES, p * 2 * COLUMNS * positions), output
+    first : int
+        Place of the first of these nodes.
+    values : float (p * 2 * COLUMNS * positions, nodes), output
         Column ((direction * 2 + orientation) * COLUMNS + destination) * positions + position.
     """
     solve_varied(
-        rates, moves, sides, up, down, work_up, work_down, vary_up, vary_down, u, u_rate,
-        scratch.lit,
+        source, rates, moves, sides, up, down, solved_up, solved_down, vary_up, vary_down, u,
+        u_rate, scratch.lit,
     )  # fmt: skip
-    values[:, :] = 0.0
+    values[:, first : first + NODES] = 0.0
     for c in (2, 0, 1):
         if c != 1:
             shares_of_panel(
-                channel(c)[0], source, rates, moves, sides, work_up, work_down, vary_up,
+                channel(c)[0], source, rates, moves, sides, solved_up, solved_down, vary_up,
                 vary_down, u, u_rate, scratch,
             )  # fmt: skip
         total_rates(
-            c, source, rates, moves, work_up, work_down, vary_up, vary_down, u, du, u_rate,
+            c, source, rates, moves, solved_up, solved_down, vary_up, vary_down, u, du, u_rate,
             du_rate, False, scratch,
         )  # fmt: skip
         sent_rates(
-            c, source, rates, moves, work_up, work_down, vary_up, vary_down, u, du, u_rate,
+            c, source, rates, moves, solved_up, solved_down, vary_up, vary_down, u, du, u_rate,
             du_rate, scratch,
         )  # fmt: skip
-        _book_destinations(0 if c == 0 else 1, scratch, values)
-    _book_absorbed(u_rate.shape[0], source.kz_positions.size, values)
+        _book_destinations(0 if c == 0 else 1, scratch, first, values)
+    _book_absorbed(u_rate.shape[0], source.kz_positions.size, first, values)
 
 
-@inline
-def _book_destinations(orientation: int, scratch: VariedScratch, values: Floats) -> None:
+@borrowing
+def _book_destinations(
+    orientation: int, scratch: VariedScratch, first: int, values: Floats
+) -> None:
     """Add one channel's rates to the columns of `varied_radiated`."""
-    _, directions, _, positions = scratch.rates.shape
+    _, directions, positions, _ = scratch.rates.shape
     rates, sent, shares, d_shares = scratch.rates, scratch.sent, scratch.shares, scratch.d_shares
+    for p in range(directions):
+        for k in range(COLUMNS):
+            column = ((p * 2 + orientation) * COLUMNS + k) * positions
+            if k == TOTAL:
+                for q in range(positions):
+                    _add_row(rates[TOTAL_POWER, p, q], values[column + q, first:])
+                continue
+            for side in range(2):
+                if _blank(shares[k, side]) and _blank(d_shares[p, k, side]):
+                    continue
+                for q in range(positions):
+                    _add_arrived(
+                        rates[SENT_DOWN + side, p, q], shares[k, side], sent[side, q],
+                        d_shares[p, k, side], values[column + q, first:],
+                    )  # fmt: skip
+
+
+@borrowing
+def _blank(row: Floats) -> bool:
+    """Whether nothing gets there at any node."""
+    found = 0.0
     for i in range(NODES):
-        for p in range(directions):
-            base = (p * 2 + orientation) * COLUMNS * positions
-            for q in range(positions):
-                values[i, base + TOTAL * positions + q] += rates[TOTAL_POWER, p, i, q]
-            for k in range(1, COLUMNS):
-                down, up = shares[k, i, 0], shares[k, i, 1]
-                d_down, d_up = d_shares[p, k, i, 0], d_shares[p, k, i, 1]
-                first = base + k * positions
-                if down != 0.0 or d_down != 0.0:
-                    for q in range(positions):
-                        values[i, first + q] += (
-                            rates[SENT_DOWN, p, i, q] * down + sent[0, i, q] * d_down
-                        )
-                if up != 0.0 or d_up != 0.0:
-                    for q in range(positions):
-                        values[i, first + q] += rates[SENT_UP, p, i, q] * up + sent[1, i, q] * d_up
+        found = max(found, abs(row[i]))
+    return found == 0.0
 
 
-@inline
-def _book_absorbed(directions: int, positions: int, values: Floats) -> None:
+@rowwise
+def _add_row(row: Floats, total: Floats) -> None:
+    for i in range(NODES):
+        total[i] += row[i]
+
+
+@rowwise
+def _add_arrived(
+    rate: Floats, share: Floats, sent: Floats, share_rate: Floats, total: Floats
+) -> None:
+    """Add the rate of what is sent times the share of it that arrives."""
+    for i in range(NODES):
+        total[i] += rate[i] * share[i] + sent[i] * share_rate[i]
+
+
+@borrowing
+def _book_absorbed(directions: int, positions: int, first: int, values: Floats) -> None:
     """Set the absorbed column to what the other destinations leave of the total."""
-    for i in range(values.shape[0]):
-        for block in range(2 * directions):
-            base = block * COLUMNS * positions
-            for q in range(positions):
-                values[i, base + ABSORBED * positions + q] = (
-                    values[i, base + TOTAL * positions + q]
-                    - values[i, base + AIR_BOTTOM * positions + q]
-                    - values[i, base + AIR_TOP * positions + q]
-                    - values[i, base + SUBSTRATE * positions + q]
-                    - values[i, base + COVER * positions + q]
-                )
+    for block in range(2 * directions):
+        base = block * COLUMNS * positions
+        for q in range(base, base + positions):
+            _put_rest(
+                values[q + TOTAL * positions, first:], values[q + AIR_BOTTOM * positions, first:],
+                values[q + AIR_TOP * positions, first:], values[q + SUBSTRATE * positions, first:],
+                values[q + COVER * positions, first:], values[q + ABSORBED * positions, first:],
+            )  # fmt: skip
+
+
+@rowwise
+def _put_rest(
+    total: Floats, bottom: Floats, top: Floats, substrate: Floats, cover: Floats, rest: Floats
+) -> None:
+    for i in range(NODES):
+        rest[i] = total[i] - bottom[i] - top[i] - substrate[i] - cover[i]

@@ -13,11 +13,12 @@ from typing import NamedTuple
 import numpy as np
 
 from optics.kernels.arrays import Complexes, Flags, Floats
-from optics.kernels.compiled import inline
+from optics.kernels.compiled import borrowing, inline
 from optics.kernels.halfstack import S, abs2, reciprocal
-from optics.kernels.problem import Half, Work
+from optics.kernels.problem import Half
 from optics.kernels.rules import NODES
 from optics.kernels.variation import HalfRates, Rates
+from optics.kernels.varied_solved import Solved
 
 # Waves sent in: from the emitter film at both ends of the pair, from either end, from outside.
 INSIDE, THROUGH, OUTSIDE = 0, 1, 2
@@ -48,7 +49,6 @@ class Moves(NamedTuple):
     nodes: Flags  # (p,) the nodes move, or the emitter film's index changes
     outer: Flags  # (p,) that, or the index of an outer medium changes
     sides: Flags  # (p,) or whatever else stands outside
-    places: Flags  # (p,) the dipoles move
 
 
 @inline
@@ -72,11 +72,11 @@ def response_space(directions: int) -> Response:
 @inline
 def moves_space(directions: int) -> Moves:
     """Flags for so many directions."""
-    flags = np.zeros((4, directions), dtype=np.bool_)
-    return Moves(flags[0], flags[1], flags[2], flags[3])
+    flags = np.zeros((3, directions), dtype=np.bool_)
+    return Moves(flags[0], flags[1], flags[2])
 
 
-@inline
+@borrowing
 def find_moves(rates: Rates, ends: Floats, moves: Moves) -> None:
     """Fill the flags of a path whose ends move at the rates ends (p, 2)."""
     for p in range(ends.shape[0]):
@@ -86,21 +86,17 @@ def find_moves(rates: Rates, ends: Floats, moves: Moves) -> None:
         sides = outer
         for side in range(2):
             sides |= rates.n_out[p, side] != 0.0 or rates.loss[p, side] != 0.0
-        places = False
-        for q in range(rates.kz_positions.shape[1]):
-            places |= rates.kz_positions[p, q] != 0.0
-        moves.nodes[p], moves.outer[p] = nodes, outer
-        moves.sides[p], moves.places[p] = sides, places
+        moves.nodes[p], moves.outer[p], moves.sides[p] = nodes, outer, sides
 
 
-@inline
+@borrowing
 def respond(
     u: Complexes,
     u_rate: Floats,
     half: Half,
     rates: HalfRates,
     moves: Moves,
-    work: Work,
+    solved: Solved,
     forms: int,
     found: Response,
 ) -> None:
@@ -111,8 +107,8 @@ def respond(
     u : complex (NODES,)
     u_rate : float (p, NODES)
         Motion of the nodes.
-    work : Work
-        After `outward`; with more than one form also after `inward`.
+    solved : Solved
+        Lit outward; with more than one form also inward.
     forms : int
         1: only r. THROUGH + 1: t and t_in too. FORMS: everything.
     """
@@ -129,48 +125,50 @@ def respond(
                 thickness |= rates.kd[p, j] != 0.0
             if not (index or thickness or moving):
                 continue
-            _standing_terms(pol, j, half, work, forms, found)
+            _standing_terms(pol, j, half, solved, forms, found)
             if index or moving:
-                _running_terms(pol, j, u, half, work, forms, found)
+                _running_terms(pol, j, u, half, solved, forms, found)
             _add_film(pol, j, rates, forms, found)
         if moving:
             _add_motion(u_rate, forms, found)
-        _finish(pol, u, u_rate, half, rates, moves, work, forms, found)
+        _finish(pol, u, u_rate, half, rates, moves, solved, forms, found)
 
 
-@inline
-def _standing_terms(pol: int, j: int, half: Half, work: Work, forms: int, found: Response) -> None:
+@borrowing
+def _standing_terms(
+    pol: int, j: int, half: Half, solved: Solved, forms: int, found: Response
+) -> None:
     """Rates of Y S by one film's thickness; leaves the waves and f1 g2 + g1 f2 for others."""
     terms, waves = found.terms, found.waves
     inv_o = complex(1.0, 0.0) if pol == S else reciprocal(half.eps_o[j])
     for i in range(NODES):
-        e = work.e[pol, j, i]
-        waves[0, i] = work.f[pol, j, i]
-        waves[1, i] = work.r_far[pol, j, i] * e * work.f[pol, j, i]
+        e = solved.e[pol, j, i]
+        waves[0, i] = solved.f[pol, j, i]
+        waves[1, i] = solved.r_far[pol, j, i] * e * solved.f[pol, j, i]
     if forms > 1:
         for i in range(NODES):
-            e = work.e[pol, j, i]
-            waves[3, i] = work.g[pol, j, i]
-            waves[2, i] = work.r_near[pol, j, i] * e * work.g[pol, j, i]
+            e = solved.e[pol, j, i]
+            waves[3, i] = solved.g[pol, j, i]
+            waves[2, i] = solved.r_near[pol, j, i] * e * solved.g[pol, j, i]
     for s in range(forms):
         one, other = 2 * (s == OUTSIDE), 2 * (s != INSIDE)
         for i in range(NODES):
-            kz = work.kz[pol, j, i]
+            kz = solved.kz[pol, j, i]
             f1, g1, f2, g2 = waves[one, i], waves[one + 1, i], waves[other, i], waves[other + 1, i]
-            standing = (f1 * g2 + g1 * f2) * work.e[pol, j, i]
+            standing = (f1 * g2 + g1 * f2) * solved.e[pol, j, i]
             terms[0, s, i] = standing
             terms[2, s, i] = 1j * kz * kz * inv_o * standing
 
 
-@inline
+@borrowing
 def _running_terms(
-    pol: int, j: int, u: Complexes, half: Half, work: Work, forms: int, found: Response
+    pol: int, j: int, u: Complexes, half: Half, solved: Solved, forms: int, found: Response
 ) -> None:
     """Rates of Y S by one film's permittivities; those by u are added up over the films."""
     terms, waves = found.terms, found.waves
     d, inv_e, inv_o = half.kd[j], reciprocal(half.eps_e[j]), reciprocal(half.eps_o[j])
     for i in range(NODES):
-        kz, e, at = work.kz[pol, j, i], work.e[pol, j, i], u[i]
+        kz, e, at = solved.kz[pol, j, i], solved.e[pol, j, i], u[i]
         phase = kz * d
         if abs2(phase) < _THIN:
             q = 1j * phase
@@ -191,7 +189,7 @@ def _running_terms(
             terms[3, s, i] += by_u * psi
 
 
-@inline
+@borrowing
 def _add_film(pol: int, j: int, rates: HalfRates, forms: int, found: Response) -> None:
     """Add one film's part along every direction in which it changes."""
     terms = found.terms
@@ -213,7 +211,7 @@ def _add_film(pol: int, j: int, rates: HalfRates, forms: int, found: Response) -
                     found.forms[s, p, i] += terms[1, s, i] * in_plane
 
 
-@inline
+@borrowing
 def _add_motion(u_rate: Floats, forms: int, found: Response) -> None:
     """Add what the nodes' own motion does in all films."""
     for s in range(forms):
@@ -222,7 +220,7 @@ def _add_motion(u_rate: Floats, forms: int, found: Response) -> None:
                 found.forms[s, p, i] += found.terms[3, s, i] * u_rate[p, i]
 
 
-@inline
+@borrowing
 def _finish(
     pol: int,
     u: Complexes,
@@ -230,15 +228,15 @@ def _finish(
     half: Half,
     rates: HalfRates,
     moves: Moves,
-    work: Work,
+    solved: Solved,
     forms: int,
     found: Response,
 ) -> None:
     """Divide by the admittances, and add what the media at both ends do."""
     last = half.kd.size - 1
     for i in range(NODES):
-        found.waves[0, i] = reciprocal(work.y[pol, 0, i])
-        found.waves[1, i] = reciprocal(work.y[pol, last, i])
+        found.waves[0, i] = reciprocal(solved.y[pol, 0, i])
+        found.waves[1, i] = reciprocal(solved.y[pol, last, i])
     for p in range(u_rate.shape[0]):
         for i in range(NODES):
             found.r[pol, p, i] = found.forms[INSIDE, p, i] * found.waves[0, i]
@@ -250,14 +248,14 @@ def _finish(
             for i in range(NODES):
                 found.r_out[pol, p, i] = found.forms[OUTSIDE, p, i] * found.waves[1, i]
         if moves.outer[p]:
-            _ends(pol, p, u, u_rate, half, rates, work, forms, found)
+            _ends(pol, p, u, u_rate, half, rates, solved, forms, found)
         else:
             found.kz[pol, p, :] = 0.0
             found.y_in[pol, p, :] = 0.0
             found.y_out[pol, p, :] = 0.0
 
 
-@inline
+@borrowing
 def _outer_wave(
     pol: int, eps_o: complex, eps_e: complex, d_o: complex, d_e: complex, at: complex, kz: complex
 ) -> tuple[complex, complex, complex, complex]:
@@ -273,7 +271,7 @@ def _outer_wave(
     return own, (own - kz * inv_o * d_o) * inv_o, by_u, by_u * inv_o
 
 
-@inline
+@borrowing
 def _ends(
     pol: int,
     p: int,
@@ -281,7 +279,7 @@ def _ends(
     u_rate: Floats,
     half: Half,
     rates: HalfRates,
-    work: Work,
+    solved: Solved,
     forms: int,
     found: Response,
 ) -> None:
@@ -298,9 +296,11 @@ def _ends(
         rates.eps_e[p, last],
     )
     for i in range(NODES):
-        r, t = work.r_far[pol, 0, i], work.t[pol, i]
-        kz, in_rate, kz_u, in_u = _outer_wave(pol, o_0, e_0, do_0, de_0, u[i], work.kz[pol, 0, i])
-        _, out_rate, _, out_u = _outer_wave(pol, o_l, e_l, do_l, de_l, u[i], work.kz[pol, last, i])
+        r, t = solved.r_far[pol, 0, i], solved.t[pol, i]
+        kz, in_rate, kz_u, in_u = _outer_wave(pol, o_0, e_0, do_0, de_0, u[i], solved.kz[pol, 0, i])
+        _, out_rate, _, out_u = _outer_wave(
+            pol, o_l, e_l, do_l, de_l, u[i], solved.kz[pol, last, i]
+        )
         in_rate += in_u * u_rate[p, i]
         out_rate += out_u * u_rate[p, i]
         found.kz[pol, p, i] = kz + kz_u * u_rate[p, i]
@@ -309,7 +309,7 @@ def _ends(
         half_out = 0.5 * out_rate * found.waves[0, i]
         found.r[pol, p, i] += face_in * (1.0 - r * r) - half_out * t * t
         if forms > THROUGH:
-            t_in, r_out = work.g[pol, 0, i], work.r_out[pol, i]
+            t_in, r_out = solved.g[pol, 0, i], solved.r_out[pol, i]
             found.t[pol, p, i] += t * (face_in * (1.0 - r) - face_out * (1.0 + r_out))
             found.t_in[pol, p, i] += t_in * (face_out * (1.0 - r_out) - face_in * (1.0 + r))
             if forms > OUTSIDE:

@@ -13,13 +13,14 @@ from typing import TYPE_CHECKING, NamedTuple, cast
 import numpy as np
 
 from optics.kernels.budget import Budget as EngineBudget
+from optics.kernels.problem import rows_of
 from optics.kernels.variation import Rates, Variation, make_rates
 from optics.kernels.varied_budget import Derivatives, light_budget_with_derivatives
 from optics.outcome.budget import Accuracy, Lit, check_tolerance
 from optics.outcome.directional import Source, sources
 from optics.outcome.dual import Dual
 from optics.outcome.efficiency import emission, energy_balance
-from optics.outcome.light import Light, at_rows, chunks_of, problem_of, quadrature, run_engine
+from optics.outcome.light import Light, chunks_of, problem_of, quadrature, run_engine
 from optics.outcome.light_rates import light_rates, rates_at_rows
 from optics.outcome.varied_case import varied_case
 
@@ -172,7 +173,7 @@ def _engine(
 
     def some(rows: NDArray[np.int64]) -> tuple[EngineBudget, Derivatives]:
         part = rates_at_rows(rates, rows)
-        return light_budget_with_derivatives(at_rows(problem, rows), part, tolerance)
+        return light_budget_with_derivatives(rows_of(problem, rows), part, tolerance)
 
     if workers == 1:
         found = [some(rows) for rows in chunks]

@@ -16,10 +16,11 @@ from optics.device.constants import HC_EV_NM
 from optics.device.spectrum import trapezoid_weights
 from optics.kernels.angles import leaving
 from optics.kernels.budget import AIR_BOTTOM, AIR_TOP
+from optics.kernels.problem import rows_of
 from optics.kernels.varied_directions import leaving_rates
 from optics.outcome.dual import Dual
 from optics.outcome.efficiency import oriented
-from optics.outcome.light import at_rows, cores
+from optics.outcome.light import cores
 from optics.outcome.light_rates import rates_at_rows
 
 if TYPE_CHECKING:
@@ -162,7 +163,7 @@ def radiance_over_bulk(
 def _some_wavelengths(
     case: Case, source: Source, side: int, angle_deg: Floats, rows: Rows
 ) -> Floats:
-    problem = at_rows(source.problem, rows)
+    problem = rows_of(source.problem, rows)
     n = index_outside(case, problem, side)
     sine = np.sin(np.deg2rad(angle_deg))
     if source.rates is None:

@@ -14,11 +14,10 @@ from optics.kernels.budget import Budget as EngineBudget
 from optics.kernels.budget import light_budget
 from optics.kernels.exits import ABSORBING, MATCHED, OPEN, PLANAR
 from optics.kernels.problem import (
-    Half,
     Problem,
     Sides,
-    Source,
     make_problem,
+    rows_of,
     shape_of,
     stacked,
 )
@@ -164,7 +163,7 @@ def run_engine(problem: Problem, tolerance: float, threads: int | None = None) -
     if workers == 1:
         return light_budget(problem, tolerance)
     with ThreadPoolExecutor(workers) as pool:
-        found = list(pool.map(lambda rows: light_budget(at_rows(problem, rows), tolerance), chunks))
+        found = list(pool.map(lambda rows: light_budget(rows_of(problem, rows), tolerance), chunks))
     return EngineBudget(*(np.concatenate(parts) for parts in zip(*found, strict=True)))
 
 
@@ -203,20 +202,6 @@ def chunks_of(problem: Problem, threads: int | None = None) -> tuple[list[NDArra
     # Smaller pieces even out what some wavelengths take longer; each costs what is not compiled.
     pieces = 2 if rows.size >= _MANY * workers else 1
     return np.array_split(rows, pieces * workers), workers
-
-
-def at_rows(problem: Problem, rows: NDArray[np.int64]) -> Problem:
-    """The same problem at some of its wavelengths, neighbors of each other."""
-    first, last = rows[0], rows[-1] + 1
-    source, sides, up, down = problem
-    return Problem(
-        Source(*(part[first:last] for part in source)),
-        Sides(sides.kind, *(part[first:last] for part in sides[1:])),
-        *(
-            Half(half.eps_o[first:last], half.eps_e[first:last], half.kd[first:last])
-            for half in (up, down)
-        ),
-    )
 
 
 def cores() -> int:

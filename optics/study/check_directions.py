@@ -9,9 +9,9 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from optics.kernels.geometry import light_lines
+from optics.kernels.problem import rows_of
 from optics.outcome.budget import DEFAULT_TOLERANCE, Budget
 from optics.outcome.directional import SIDES, Source, index_outside, radiance_over_bulk, sources
-from optics.outcome.light import at_rows
 from optics.study.check_rows import Place, Row, compared, not_checked
 
 if TYPE_CHECKING:
@@ -55,7 +55,7 @@ def _one_wavelength(source: Source, row: int) -> Source:
         orientation=source.orientation[kept],
         watts=source.watts[kept],
         leaves=source.leaves[kept],
-        problem=at_rows(source.problem, np.array([row])),
+        problem=rows_of(source.problem, np.array([row])),
     )
 
 

@@ -9,10 +9,10 @@ from typing import Any
 import numba
 import numpy as np
 
-from optics.kernels import halfstack, integrate, paths, source
+from optics.kernels import halfstack, integrate, panel, paths, source, whole
 from optics.kernels.exits import COLUMNS
 from optics.kernels.problem import Problem, scratch_space, work_space
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import DEGREES, NODES, STAGES
 
 _compiled: Any = numba.njit(error_model="numpy")
 # Changes a node by next to nothing, so that no compiler can do a part once for all rounds.
@@ -22,10 +22,10 @@ _NUDGE = 1e-16
 @_compiled
 def _setup(problem: Problem, w: int) -> Any:
     own, sides, up, down = integrate.at_wavelength(problem, w)
-    work_up, work_down = work_space(up.kd.size), work_space(down.kd.size)
-    scratch = scratch_space(own.kz_positions.size, COLUMNS)
+    works = work_space(up.kd.size), work_space(down.kd.size)
     u, du = np.zeros(NODES, np.complex128), np.zeros(NODES, np.complex128)
-    return own, sides, (up, down), (work_up, work_down), scratch, u, du
+    light = panel.light_space(own.kz_positions.size)
+    return own, sides, (up, down), works, scratch_space(), u, du, light
 
 
 @_compiled
@@ -35,18 +35,17 @@ def _place(n, kind, hi, depth, u, du):  # type: ignore[no-untyped-def]
 
 
 @_compiled
-def _waves(n, halves, works, u):  # type: ignore[no-untyped-def]
+def _waves(n, own, halves, works, u):  # type: ignore[no-untyped-def]
     for _ in range(n):
         u[0] += _NUDGE
-        for h, w in zip(halves, works):  # noqa: B905 - not known to the compiler
-            halfstack.waves(u, h.eps_o, h.eps_e, h.kd, w.kz, w.y, w.e)
+        whole.solve_waves(own, halves[0], halves[1], works[0], works[1], u)
 
 
 @_compiled
 def _reflection(n, works):  # type: ignore[no-untyped-def]
     for _ in range(n):
         for w in works:
-            w.y[0, 0, 0] += _NUDGE
+            w.y[0, 0] += _NUDGE
             halfstack.reflection(w.y, w.e, w.r)
 
 
@@ -54,24 +53,26 @@ def _reflection(n, works):  # type: ignore[no-untyped-def]
 def _outward(n, works):  # type: ignore[no-untyped-def]
     for _ in range(n):
         for w in works:
-            w.y[0, 0, 0] += _NUDGE
-            halfstack.outward(w.y, w.e, w.r_far, w.f, w.t)
+            w.y[0, 0] += _NUDGE
+            halfstack.outward(w.y, w.e, w.r_far, w.f)
 
 
 @_compiled
-def _inward(n, works):  # type: ignore[no-untyped-def]
+def _inward(n, near, far):  # type: ignore[no-untyped-def]
     for _ in range(n):
-        for w in works:
-            w.y[0, 0, 0] += _NUDGE
-            halfstack.inward(w.y, w.e, w.r_near, w.g, w.r_out)
+        near.y[0, 0] += _NUDGE
+        halfstack.inward(near.y, near.e, far.r_far[0], near.r_near, near.g)
 
 
 @_compiled
-def _halves(n, halves, works, u):  # type: ignore[no-untyped-def]
+def _solve(n, halves, works, u):  # type: ignore[no-untyped-def]
+    """Everything about the films but their waves: lit from the emitter film, and from below."""
     for _ in range(n):
         u[0] += _NUDGE
         for h, w in zip(halves, works):  # noqa: B905 - not known to the compiler
-            source.solve_half(h, w, u, True)
+            w.y[0, 0] += _NUDGE
+            whole.solve_half(h, w, u)
+        whole.light_half(halves[1], works[0].r_far[0], works[1])
 
 
 @_compiled
@@ -79,29 +80,48 @@ def _dissipated(n, own, halves, works, scratch, u, du, values):  # type: ignore[
     for _ in range(n):
         u[0] += _NUDGE
         source.dissipated(
-            own, halves[0], halves[1], works[0], works[1], scratch, u, du, False, values
+            own, halves[0], halves[1], works[0], works[1], scratch, u, du, False, 0, values
         )
 
 
 @_compiled
-def _radiated(n, own, sides, halves, works, scratch, u, du, values):  # type: ignore[no-untyped-def]
+def _radiated(n, own, sides, halves, works, scratch, u, du, light):  # type: ignore[no-untyped-def]
     for _ in range(n):
         u[0] += _NUDGE
         source.radiated(
-            own, sides, halves[0], halves[1], works[0], works[1], scratch, u, du, values
+            own, sides, halves[0], halves[1], works[0], works[1], scratch, u, du, 0, light
         )
 
 
 @_compiled
 def _probed(groups, positions):  # type: ignore[no-untyped-def]
-    return paths.probed_columns(groups, positions)
+    return panel.probed_columns(groups, positions)
 
 
 @_compiled
-def _error(n, values, scale, probed, moments, misses):  # type: ignore[no-untyped-def]
+def _error(n, values, scale, probed, misses):  # type: ignore[no-untyped-def]
     for _ in range(n):
         values[0, 0] += _NUDGE
-        paths.panel_error(values, 0, scale, probed, moments, misses)
+        panel.panel_error(values, 0, scale, probed, misses)
+
+
+@_compiled
+def _light_error(n, light, scale, probed, moments, misses):  # type: ignore[no-untyped-def]
+    for _ in range(n):
+        light.total[0, 0, 0] += _NUDGE
+        panel.light_error(light, 0, scale, probed, moments, misses)
+
+
+@_compiled
+def _sum(n, values, misses, result, error):  # type: ignore[no-untyped-def]
+    for _ in range(n):
+        panel.panel_sum(values, 0, misses, result, error)
+
+
+@_compiled
+def _light_sum(n, light, misses, result, error):  # type: ignore[no-untyped-def]
+    for _ in range(n):
+        panel.light_sum(light, 0, misses, result, error)
 
 
 @dataclass(frozen=True, slots=True)
@@ -110,10 +130,12 @@ class Kind:
 
     parts: dict[str, float]
     whole: float
+    error: float  # estimate of a panel's error after one batch
+    sums: float  # of a panel of one batch
 
     @property
     def rest(self) -> float:
-        """Source terms, destinations, bounces: what the parts leave of the whole."""
+        """Source terms, slab faces, destinations: what the parts leave of the whole."""
         return self.whole - sum(self.parts.values())
 
 
@@ -123,8 +145,6 @@ class Batch:
 
     below_axis: Kind
     real: Kind
-    error_below_axis: float
-    error_real: float
     interfaces: int
 
     @property
@@ -149,66 +169,67 @@ def _us(jobs: dict[str, tuple[Any, ...]], calls: int, repeats: int) -> dict[str,
 
 def batch(problem: Problem, w: int, calls: int = 300, repeats: int = 25) -> Batch:
     """Time every part at wavelength number w."""
-    own, sides, halves, works, scratch, u, du = _setup(problem, w)
+    own, sides, halves, works, scratch, u, du, light = _setup(problem, w)
     z = own.kz_positions.size
-    few, many = np.zeros((STAGES * NODES, 3 * z)), np.zeros((STAGES * NODES, 2 * COLUMNS * z))
-
-    def error(values: Any) -> tuple[Any, ...]:
-        columns = values.shape[1]
-        probed = _probed(columns // z, z)
-        return (
-            _error,
-            values,
-            np.ones(columns),
-            probed,
-            np.zeros((4, probed.size)),
-            np.zeros(columns),
-        )
-
+    power = np.zeros((3, z, STAGES * NODES))
+    by_column = power.reshape(3 * z, STAGES * NODES)
+    few, many = np.ones((4, 3 * z)), np.ones((4, 2 * COLUMNS * z))
+    probed = _probed(1, z)
+    waves = {"waves": (_waves, own, halves, works, u)}
     arc = _us(
         {
             "nodes": (_place, paths.ARC, 3.5, 1.0, u, du),
-            "waves": (_waves, halves, works, u),
+            **waves,
             "reflection": (_reflection, works),
-            "whole": (_dissipated, own, halves, works, scratch, u, du, few[:NODES]),
-            "error": error(few),
+            "whole": (_dissipated, own, halves, works, scratch, u, du, power),
+            "error": (_error, by_column, few[0], _probed(3, z), few[1]),
+            "sums": (_sum, by_column, few[1], few[2], few[3]),
         },
         calls,
         repeats,
     )
-    # Up to the light line of air: the slab sends light back at every node.
+    # Up to the light line of air: the slab below sends light back at every node.
     real = _us(
         {
             "nodes": (_place, paths.REAL_FROM_ZERO, 1.0, 0.0, u, du),
-            "waves": (_waves, halves, works, u),
+            **waves,
             "outward": (_outward, works),
-            "inward": (_inward, works),
-            "halves": (_halves, halves, works, u),
-            "whole": (_radiated, own, sides, halves, works, scratch, u, du, many[:NODES]),
-            "error": error(many),
+            "inward": (_inward, works[1], works[0]),
+            "films": (_solve, halves, works, u),
+            "whole": (_radiated, own, sides, halves, works, scratch, u, du, light),
+            "error": (
+                _light_error, light, many[0], probed, np.zeros((DEGREES, probed.size)), many[1]
+            ),
+            "sums": (_light_sum, light, many[1], many[2], many[3]),
         },
         calls,
         repeats,
-    )
-    real["fields"] = real.pop("halves") - real["waves"] - real["outward"] - real["inward"]
-    errors = arc.pop("error"), real.pop("error")
-    wholes = arc.pop("whole") + arc["nodes"], real.pop("whole") + real["nodes"]
+    )  # fmt: skip
+    real["fields"] = real.pop("films") - real["outward"] - real["inward"]
     interfaces = sum(half.kd.size - 1 for half in halves)
-    return Batch(Kind(arc, wholes[0]), Kind(real, wholes[1]), *errors, interfaces)
+    return Batch(_kind(arc), _kind(real), interfaces)
+
+
+def _kind(us: dict[str, float]) -> Kind:
+    """Sort what was timed; `whole` was timed at nodes that were placed before."""
+    beside = {"whole", "error", "sums"}
+    parts = {name: time_us for name, time_us in us.items() if name not in beside}
+    return Kind(parts, us["whole"] + us["nodes"], us["error"], us["sums"])
 
 
 def table(found: Batch) -> str:
     """Both kinds of batch side by side, in Markdown."""
     rows = ["| part | below the axis, us | on the axis, us |", "| --- | --- | --- |"]
-    names = list(dict.fromkeys([*found.below_axis.parts, *found.real.parts]))
-    for name in names:
-        cells = [kind.parts.get(name) for kind in (found.below_axis, found.real)]
+    below, real = found.below_axis, found.real
+    for name in dict.fromkeys([*below.parts, *real.parts]):
+        cells = [kind.parts.get(name) for kind in (below, real)]
         shown = ["" if us is None else f"{us:.2f}" for us in cells]
         rows.append(f"| {name} | {shown[0]} | {shown[1]} |")
-    rows.append(
-        f"| dipole, destinations, bounces (the rest) | {found.below_axis.rest:.2f} "
-        f"| {found.real.rest:.2f} |"
-    )
-    rows.append(f"| **together** | **{found.below_axis.whole:.2f}** | **{found.real.whole:.2f}** |")
-    rows.append(f"| error estimate | {found.error_below_axis:.2f} | {found.error_real:.2f} |")
+    rows += [
+        f"| source terms, slab faces, destinations (the rest) | {below.rest:.2f} "
+        f"| {real.rest:.2f} |",
+        f"| **together** | **{below.whole:.2f}** | **{real.whole:.2f}** |",
+        f"| error estimate of a panel | {below.error:.2f} | {real.error:.2f} |",
+        f"| sums of a panel | {below.sums:.2f} | {real.sums:.2f} |",
+    ]
     return "\n".join(rows)

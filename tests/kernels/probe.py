@@ -8,11 +8,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from optics.kernels.compiled import kernel
+from optics.kernels.field import absorbed_in_film, absorbs
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.paths import NODES, REAL
+from optics.kernels.planar import LANES, ROW, at
 from optics.kernels.problem import Problem, work_space
-from optics.kernels.source import solve_half
 from optics.kernels.tasks import Tasks, run_radiated
+from optics.kernels.whole import light_half, solve_half, solve_waves
 
 Floats = NDArray[np.float64]
 Complexes = NDArray[np.complex128]
@@ -61,18 +63,30 @@ def half_stack(problem: Problem, upper: bool, u: list[complex]) -> HalfStack:
 def _half_stack(
     problem: Problem, upper: bool, u: Complexes, ports: Complexes, films: Floats
 ) -> None:
-    _, _, up, down = at_wavelength(problem, 0)
-    half = up if upper else down
-    work = work_space(half.kd.size)
-    solve_half(half, work, u, True)
+    source, _, up, down = at_wavelength(problem, 0)
+    work_up, work_down = work_space(up.kd.size), work_space(down.kd.size)
+    half, work = (up, work_up) if upper else (down, work_down)
+    solve_waves(source, up, down, work_up, work_down, u)
+    last = half.kd.size - 1
+    solve_half(half, work, u)
+    light_half(half, np.zeros(ROW), work)
     for pol in range(2):
         for i in range(NODES):
-            ports[0, pol, i] = work.r_far[pol, 0, i]
-            ports[1, pol, i] = work.t[pol, i]
-            ports[2, pol, i] = work.r_out[pol, i]
-            ports[3, pol, i] = work.g[pol, 0, i]
-            ports[4, pol, i] = work.y[pol, 0, i]
-            ports[5, pol, i] = work.y[pol, -1, i]
-            for j in range(half.kd.size):
-                films[0, pol, j, i] = work.a_in[pol, j, i]
-                films[1, pol, j, i] = work.a_out[pol, j, i]
+            lane = pol * NODES + i
+            ports[0, pol, i] = at(work.r_far[0], lane)
+            ports[1, pol, i] = at(work.f[last], lane)
+            ports[2, pol, i] = at(work.r_near[last], lane)
+            ports[3, pol, i] = at(work.g[0], lane)
+            ports[4, pol, i] = at(work.y[0], lane)
+            ports[5, pol, i] = at(work.y[last], lane)
+    alone = np.zeros(LANES)
+    for j in range(1, last):
+        if not absorbs(half.eps_o[j], half.eps_e[j]):
+            continue
+        films_of = (work.r_far[j], work.f[j]), (work.r_near[j], work.g[j])
+        for way in range(2):
+            alone[:] = 0.0
+            back, amplitude = films_of[way]
+            absorbed_in_film(work.e[j], back, amplitude, work.alpha[j], work.beta[j], alone)
+            for pol in range(2):
+                films[way, pol, j] = alone[pol * NODES : (pol + 1) * NODES]

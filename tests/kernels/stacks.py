@@ -94,8 +94,10 @@ def problem_of(stack: Stack, z_nm: list[float] | None = None) -> Problem:
     )
 
 
-def solved(stack: Stack, tolerance: float = 1e-6) -> engine.Budget:
-    return engine.light_budget(problem_of(stack), tolerance)
+def solved(
+    stack: Stack, tolerance: float = 1e-6, positions_nm: list[float] | None = None
+) -> engine.Budget:
+    return engine.light_budget(problem_of(stack, positions_nm), tolerance)
 
 
 def answers(budget: engine.Budget, orientation: int, row: int = 0, z: int = 0) -> dict[str, float]:

@@ -89,6 +89,7 @@ ALL = (
     "zero_thickness",
     "backward_lossless_metal",
     "hidden mode",
+    "many dipoles",
 )
 
 
@@ -113,6 +114,7 @@ OF_THE_BUDGET = (
     "arrays",
     "budget",
     "compiled",
+    "dipole",
     "directions",
     "elementary",
     "exits",
@@ -120,12 +122,16 @@ OF_THE_BUDGET = (
     "geometry",
     "halfstack",
     "integrate",
+    "panel",
     "paths",
+    "places",
+    "planar",
     "problem",
     "rules",
     "settle",
     "source",
     "tasks",
+    "whole",
 )
 
 

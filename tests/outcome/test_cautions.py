@@ -120,7 +120,7 @@ def test_spectrum_beyond_the_grid() -> None:
 def test_missed_tolerance() -> None:
     """A result that misses its tolerance says so; one that meets it does not."""
     thick = quiet()
-    thick["layers"][0]["thickness_nm"] = 10_000
+    thick["layers"][0]["thickness_nm"] = 30_000
     result = budget(case(thick), 1e-12)
     missed = result.accuracy.integration_error > 1e-12
     assert missed

@@ -57,17 +57,17 @@ DEVICE = {
 }
 
 # module, helper, body of the changed helper
-NOTHING = ("source", "outgoing_factor", "return real(*given)")
-FACTOR = ("source", "outgoing_factor", "return 1.001 * real(*given)")
+NOTHING = ("dipole", "outgoing_factor", "return real(*given)")
+FACTOR = ("dipole", "outgoing_factor", "return 1.001 * real(*given)")
 SIGN = (
-    "source",
+    "dipole",
     "channel",
     "pol, sign = real(*given)\nreturn pol, (-sign if given[0] == 1 else sign)",
 )
 FILM = (
     "field",
     "film_coefficients",
-    "real(*given)\ngiven[6][:, 1, :] = 0.0\ngiven[7][:, 1, :] = 0.0",
+    "real(*given)\ngiven[6][:] = 0.0\ngiven[7][:] = 0.0",
 )
 FACE = ("exits", "face_reflectances", "s, p = real(*given)\nreturn 0.999 * s, 0.999 * p")
 PASS = ("exits", "once_through", "return (1.0 - 1e-5) * real(*given)")
