@@ -44,13 +44,17 @@ def fewer(problem: Problem) -> Places | None:
     places = problem.source.kz_positions
     if places.shape[1] < _MANY:
         return None
-    lo, hi = places.min(axis=1, keepdims=True), places.max(axis=1, keepdims=True)
-    if not (hi > lo).all():
-        return None
-    nodes = lo + (hi - lo) * (0.5 * (_X + 1.0))
-    x = np.clip(2.0 * (places - lo) / (hi - lo) - 1.0, -1.0, 1.0)
+    lo, span = places.min(axis=1, keepdims=True), np.ptp(places, axis=1, keepdims=True)
+    nodes = lo + span * (0.5 * (_X + 1.0))
+    x = np.clip(2.0 * (places - lo) / _some(span) - 1.0, -1.0, 1.0)
     source = problem.source._replace(kz_positions=nodes)
     return Places(problem._replace(source=source), chebyshev.chebvander(x, _NODES - 1))
+
+
+def _some(span: Floats) -> Floats:
+    """Span of the dipoles; any for dipoles that all lie in one place, where powers are constant."""
+    given: Floats = np.where(span > 0.0, span, 1.0)
+    return given
 
 
 def hopeless(problem: Problem, tolerance: float) -> NDArray[np.bool_]:
@@ -59,8 +63,7 @@ def hopeless(problem: Problem, tolerance: float) -> NDArray[np.bool_]:
     Its face is a pole of the power; coefficients fall by the parameter of the ellipse through it.
     """
     places = problem.source.kz_positions
-    span = places.max(axis=1) - places.min(axis=1)
-    x = 1.0 + 2.0 * nearest_absorber(problem) / span
+    x = 1.0 + 2.0 * nearest_absorber(problem) / _some(np.ptp(places, axis=1))
     falling = x - np.sqrt(x * x - 1.0)
     wrong: NDArray[np.bool_] = falling**_NODES > _SHARE * tolerance
     return wrong

@@ -71,6 +71,21 @@ def test_each_wavelength_decides_for_itself() -> None:
     )
 
 
+def test_dipoles_in_one_place_change_nothing_at_other_wavelengths() -> None:
+    spread, one_place = device(520.0, 40.0, 24.0, 20), device(520.0, 40.0, 24.0, 20)
+    middle = np.full_like(spread.source.kz_positions, 0.5 * spread.source.kd[0])
+    one_place = one_place._replace(source=one_place.source._replace(kz_positions=middle))
+    together = light_budget(stacked([spread, one_place]), TOLERANCE)
+    for row, alone in enumerate((spread, one_place)):
+        found = light_budget(alone, TOLERANCE)
+        assert np.array_equal(together.shares[row], found.shares[0])
+        assert together.error[row] == found.error[0]
+    assert np.ptp(together.shares[1], axis=0).max() <= 1e-14
+    single = one_place.source._replace(kz_positions=middle[:, :1])
+    exact = light_budget(one_place._replace(source=single), TOLERANCE)
+    assert np.abs(together.shares[1, 0] - exact.shares[0, 0]).max() <= 1e-13
+
+
 def test_interpolation_of_a_known_function() -> None:
     """1/(z - a) between 0 and 1: coefficients fall by a known rate, and the estimate holds."""
     problem = device(520.0, 40.0, 24.0, 20)
