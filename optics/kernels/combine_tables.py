@@ -15,10 +15,10 @@ from optics.kernels.field import absorbs, crossed_in_film
 from optics.kernels.halfstack import abs2, phase_factors, reflection, waves
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.panel import light_error, light_space, panel_error
-from optics.kernels.paths import TAIL, place
+from optics.kernels.paths import place
 from optics.kernels.planar import ROW, at
 from optics.kernels.problem import Half, Problem, Work, scratch_space, work_space
-from optics.kernels.rules import DEGREES, NODES, STAGES
+from optics.kernels.rules import DEGREES, NODES, PANEL_NODES, STAGES
 from optics.kernels.source import dissipated, radiated
 from optics.kernels.whole import light_half, solve_half
 
@@ -213,8 +213,8 @@ def leaves(
     work_up, work_down = work_space(up.kd.size), work_space(down.kd.size)
     scratch, positions = scratch_space(), source.kz_positions.size
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
-    light, power = light_space(positions), np.zeros((3, positions, STAGES * NODES))
-    by_column = power.reshape(3 * positions, STAGES * NODES)
+    light, power = light_space(positions), np.zeros((3, positions, PANEL_NODES))
+    by_column = power.reshape(3 * positions, PANEL_NODES)
     probed = np.arange(positions if everything else 3 * positions)
     moments, misses = np.zeros((DEGREES, probed.size)), np.zeros(scale.size)
     ends = np.zeros((2, 2 * _DEEPEST))
@@ -235,8 +235,7 @@ def leaves(
                 worst = light_error(light, stage, scale, probed, moments, misses)
             else:
                 dissipated(
-                    source, up, down, work_up, work_down, scratch, u, du, path[0] == TAIL, first,
-                    power,
+                    source, up, down, work_up, work_down, scratch, u, du, first, power,
                 )  # fmt: skip
                 worst = panel_error(by_column, stage, scale, probed, misses)
         if worst > tolerance and b - a > 0.5**_DEEPEST and count + waiting + 2 <= found.shape[0]:
@@ -251,7 +250,7 @@ def leaves(
 
 @kernel
 def nodes_of(path: Floats, a: float, b: float, u: Complexes, du: Complexes) -> None:
-    """All stages' nodes u, derivatives du (both (STAGES * NODES,)) of a panel of a path."""
+    """All stages' nodes u, derivatives du (both (PANEL_NODES,)) of a panel of a path."""
     for stage in range(STAGES):
         batch = slice(stage * NODES, (stage + 1) * NODES)
         place(path[0], path[1], path[2], path[3], a, b, stage, u[batch], du[batch])

@@ -38,7 +38,7 @@ from optics.kernels.exits import COLUMNS, PLANAR
 from optics.kernels.geometry import has_plasmon, largest_index, light_lines, nearest_absorber
 from optics.kernels.paths import ARC, ARC_FROM_LINE, TAIL
 from optics.kernels.problem import Half, Problem, Sides, Source
-from optics.kernels.rules import DEGREE_ROWS, DEGREES, NODES, STAGES, WEIGHT
+from optics.kernels.rules import DEGREE_ROWS, DEGREES, NODES, PANEL_NODES, WEIGHT
 from optics.kernels.tasks import Tasks, along_arcs
 
 #: What is known of every device: the outcomes of `budget`, then F.
@@ -243,7 +243,7 @@ def _nodes(panels: _Panels, *, free: bool) -> Nodes:
             continue
         for a, b, stage in found:
             count = (int(stage) + 1) * NODES
-            nodes, slope = np.zeros((2, STAGES * NODES), dtype=np.complex128)
+            nodes, slope = np.zeros((2, PANEL_NODES), dtype=np.complex128)
             nodes_of(path, a, b, nodes, slope)
             u.append(nodes[:count])
             du.append(slope[:count])

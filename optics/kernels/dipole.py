@@ -14,9 +14,8 @@ from optics.kernels.elementary import exp_i
 from optics.kernels.halfstack import P, S, abs2, reciprocal
 from optics.kernels.planar import LANES, at, put
 from optics.kernels.problem import Scratch, Source
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import NODES, PANEL_NODES
 
-_ALL = STAGES * NODES
 _FADED = 15.0  # Im kz d of the emitter film up to which its phase factors may be divided
 
 
@@ -116,60 +115,39 @@ def fill_inverse(a: Floats, b: Floats, through: Floats, inverse: Floats) -> None
 @borrowing
 def fill_dissipated(
     source: Source, r_up: Floats, r_down: Floats, kz: Floats, through: Floats, u: Complexes,
-    du: Complexes, own: float, scratch: Scratch,
+    du: Complexes, scratch: Scratch,
 ) -> None:  # fmt: skip
     """Dissipated power at all nodes but for the phases that depend on the dipole's place.
 
-    Factor times own + (2 ab +- (a + b)) / (1 - ab); ab is the same for every dipole. The bulk
+    Factor times 1 + (2 ab +- (a + b)) / (1 - ab); ab is the same for every dipole. The bulk
     term stands apart because it carries no power at real nodes beyond the emitter's light line:
-    there the factor is imaginary.
+    there the factor is imaginary, and what it would drown stays.
     """
     fill_inverse(r_up, r_down, through, scratch.inverse)
     for c in range(3):
+        lane = channel(c)[0] * NODES
         _put_before(
-            c, source, r_up, r_down, kz, through, u, du, own, scratch.inverse,
-            scratch.plain[c], scratch.before[c, 0], scratch.before[c, 1],
+            c, source, r_up[lane:], r_down[lane:], kz[lane:], through[lane:], u, du,
+            scratch.inverse[lane:], scratch.plain[c], scratch.before[c, 0], scratch.before[c, 1],
         )  # fmt: skip
 
 
 @rowwise
 def _put_before(
     c: int, source: Source, r_up: Floats, r_down: Floats, kz: Floats, through: Floats,
-    u: Complexes, du: Complexes, own: float, inverse: Floats, plain: Floats,
-    bottom: Floats, top: Floats,
+    u: Complexes, du: Complexes, inverse: Floats, plain: Floats, bottom: Floats, top: Floats,
 ) -> None:  # fmt: skip
+    """One channel of `fill_dissipated`; rows begin with its polarization's first lane."""
     _, sign = channel(c)
-    # A loop for each channel, so that loops hold no choice between them.
-    if c == 0:
-        for i in range(NODES):
-            z = dissipated_factor(0, source, u[i], at(kz, NODES + i)) * du[i]
-            _put_terms(
-                i, NODES + i, sign, z, r_up, r_down, through, own, inverse, plain, bottom, top
-            )
-    elif c == 1:
-        for i in range(NODES):
-            z = dissipated_factor(1, source, u[i], at(kz, NODES + i)) * du[i]
-            _put_terms(
-                i, NODES + i, sign, z, r_up, r_down, through, own, inverse, plain, bottom, top
-            )
-    else:
-        for i in range(NODES):
-            z = dissipated_factor(2, source, u[i], at(kz, i)) * du[i]
-            _put_terms(i, i, sign, z, r_up, r_down, through, own, inverse, plain, bottom, top)
-
-
-@scalar
-def _put_terms(
-    i: int, lane: int, sign: float, factor: complex, r_up: Floats, r_down: Floats,
-    through: Floats, own: float, inverse: Floats, plain: Floats, bottom: Floats, top: Floats,
-) -> None:  # fmt: skip
-    front = factor * at(inverse, lane)
-    phase, a, b = at(through, lane), at(r_up, lane), at(r_down, lane)
-    plain[i] = own * factor.real + 2.0 * (front * (a * b * (phase * phase))).real
-    z = sign * (front * b)
-    bottom[i], bottom[NODES + i] = z.real, z.imag
-    z = sign * (front * a)
-    top[i], top[NODES + i] = z.real, z.imag
+    for i in range(NODES):
+        factor = dissipated_factor(c, source, u[i], at(kz, i)) * du[i]
+        front = factor * at(inverse, i)
+        phase, a, b = at(through, i), at(r_up, i), at(r_down, i)
+        plain[i] = factor.real + 2.0 * (front * (a * b * (phase * phase))).real
+        z = sign * (front * b)
+        bottom[i], bottom[NODES + i] = z.real, z.imag
+        z = sign * (front * a)
+        top[i], top[NODES + i] = z.real, z.imag
 
 
 @borrowing
@@ -182,56 +160,31 @@ def fill_carried(
     Factor times |1 +- a|^2 / |1 - ab|^2 downward, with b upward; `fill_inverse` comes first.
     """
     for c in range(3):
-        _put_size(
-            c, source, r_up, r_down, kz, u, du, scratch.inverse, scratch.carried[c],
-            scratch.mirrored[c, 0], scratch.mirrored[c, 1], scratch.crossed[c, 0],
-            scratch.crossed[c, 1],
+        lane = channel(c)[0] * NODES
+        _put_carried(
+            c, source, r_up[lane:], r_down[lane:], kz[lane:], u, du, scratch.inverse[lane:],
+            scratch.carried[c], scratch.mirrored[c, 0], scratch.mirrored[c, 1],
+            scratch.crossed[c, 0], scratch.crossed[c, 1],
         )  # fmt: skip
 
 
 @rowwise
-def _put_size(
+def _put_carried(
     c: int, source: Source, r_up: Floats, r_down: Floats, kz: Floats, u: Complexes,
     du: Complexes, inverse: Floats, carried: Floats, by_down: Floats, by_up: Floats,
     cross_down: Floats, cross_up: Floats,
 ) -> None:  # fmt: skip
+    """One channel of `fill_carried`; rows begin with its polarization's first lane."""
     _, sign = channel(c)
-    # A loop for each channel, as in `_put_before`.
-    if c == 0:
-        for i in range(NODES):
-            size = outgoing_factor(0, source, u[i].real, at(kz, NODES + i)) * du[i].real
-            _put_carried(
-                i, NODES + i, sign, size, r_up, r_down, inverse, carried, by_down, by_up,
-                cross_down, cross_up,
-            )  # fmt: skip
-    elif c == 1:
-        for i in range(NODES):
-            size = outgoing_factor(1, source, u[i].real, at(kz, NODES + i)) * du[i].real
-            _put_carried(
-                i, NODES + i, sign, size, r_up, r_down, inverse, carried, by_down, by_up,
-                cross_down, cross_up,
-            )  # fmt: skip
-    else:
-        for i in range(NODES):
-            size = outgoing_factor(2, source, u[i].real, at(kz, i)) * du[i].real
-            _put_carried(
-                i, i, sign, size, r_up, r_down, inverse, carried, by_down, by_up, cross_down,
-                cross_up,
-            )  # fmt: skip
-
-
-@scalar
-def _put_carried(
-    i: int, lane: int, sign: float, size: float, r_up: Floats, r_down: Floats, inverse: Floats,
-    carried: Floats, by_down: Floats, by_up: Floats, cross_down: Floats, cross_up: Floats,
-) -> None:  # fmt: skip
-    size = size * abs2(at(inverse, lane))
-    a, b = at(r_up, lane), at(r_down, lane)
-    carried[i] = size
-    by_down[i], by_up[i] = size * abs2(b), size * abs2(a)
-    twice = 2.0 * sign * size
-    cross_down[i], cross_down[NODES + i] = twice * b.real, twice * b.imag
-    cross_up[i], cross_up[NODES + i] = twice * a.real, twice * a.imag
+    for i in range(NODES):
+        size = outgoing_factor(c, source, u[i].real, at(kz, i)) * du[i].real
+        size *= abs2(at(inverse, i))
+        a, b = at(r_up, i), at(r_down, i)
+        carried[i] = size
+        by_down[i], by_up[i] = size * abs2(b), size * abs2(a)
+        twice = 2.0 * sign * size
+        cross_down[i], cross_down[NODES + i] = twice * b.real, twice * b.imag
+        cross_up[i], cross_up[NODES + i] = twice * a.real, twice * a.imag
 
 
 @rowwise
@@ -263,4 +216,4 @@ def put_sent(
         mixed = cross_up[i] * up.real - cross_up[NODES + i] * up.imag
         sent[i] = (carried[i] + by_up[i] * (fade_t * fade_t) + mixed) * fade_b
         mixed = cross_down[i] * down.real - cross_down[NODES + i] * down.imag
-        sent[_ALL + i] = (carried[i] + by_down[i] * (fade_b * fade_b) + mixed) * fade_t
+        sent[PANEL_NODES + i] = (carried[i] + by_down[i] * (fade_b * fade_b) + mixed) * fade_t

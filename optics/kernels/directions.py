@@ -22,7 +22,7 @@ from optics.kernels.halfstack import abs2, outward
 from optics.kernels.integrate import at_wavelength
 from optics.kernels.planar import LANES, at
 from optics.kernels.problem import Problem, Sides, Work, scratch_space, work_space
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import NODES, PANEL_NODES
 from optics.kernels.whole import solve_half, solve_stack, solve_waves
 
 # Stands for u = 0, where the power per du over u is 0/0. Its square vanishes beside every
@@ -48,7 +48,7 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
     """
     n = u.shape[1]
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
-    scratch, sent = scratch_space(), np.zeros(2 * STAGES * NODES)
+    scratch, sent = scratch_space(), np.zeros(2 * PANEL_NODES)
     nodes, per = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     flux = np.zeros((2, LANES))
     for w in range(u.shape[0]):
@@ -80,7 +80,7 @@ def sent_into_directions(problem: Problem, u: Floats, power: Floats) -> None:
                     for i in range(min(NODES, n - start)):
                         at_lane = pol * NODES + i
                         power[w, 0, c, start + i, q] = sent[i] * flux[0, at_lane]
-                        power[w, 1, c, start + i, q] = sent[STAGES * NODES + i] * flux[1, at_lane]
+                        power[w, 1, c, start + i, q] = sent[PANEL_NODES + i] * flux[1, at_lane]
 
 
 @borrowing

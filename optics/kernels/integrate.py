@@ -15,7 +15,7 @@ from optics.kernels.panel import (
     panel_sum,
     probed_columns,
 )
-from optics.kernels.paths import TAIL, first_split, place
+from optics.kernels.paths import first_split, place
 from optics.kernels.problem import (
     Half,
     Problem,
@@ -24,7 +24,7 @@ from optics.kernels.problem import (
     scratch_space,
     work_space,
 )
-from optics.kernels.rules import DEGREES, NODES, STAGES
+from optics.kernels.rules import DEGREES, NODES, PANEL_NODES, STAGES
 from optics.kernels.source import dissipated, radiated
 
 # A panel is halved at most this often, and no path takes more batches of nodes than this.
@@ -104,8 +104,8 @@ def integrate(
     work_up, work_down = work_space(problem.up.kd.shape[1]), work_space(problem.down.kd.shape[1])
     scratch = scratch_space()
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
-    light, power = light_space(positions), np.zeros((3, positions, STAGES * NODES))
-    by_column = power.reshape(3 * positions, STAGES * NODES)
+    light, power = light_space(positions), np.zeros((3, positions, PANEL_NODES))
+    by_column = power.reshape(3 * positions, PANEL_NODES)
     probed = probed_columns(1 if everything else 3, positions)
     moments, misses = np.zeros((DEGREES, probed.size)), np.zeros(columns)
     missed = np.zeros(columns)
@@ -139,8 +139,7 @@ def integrate(
                     worst = light_error(light, stage, measure, probed, moments, misses)
                 else:
                     dissipated(
-                        source, up, down, work_up, work_down, scratch, u, du, kind == TAIL, first,
-                        power,
+                        source, up, down, work_up, work_down, scratch, u, du, first, power,
                     )  # fmt: skip
                     worst = panel_error(by_column, stage, measure, probed, misses)
             if worst > tolerance and b - a > 0.5**_DEEPEST and count < _MOST_BATCHES:

@@ -44,7 +44,7 @@ from optics.kernels.problem import (
     scratch_space,
     work_space,
 )
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import NODES, PANEL_NODES
 from optics.kernels.whole import solve_half, solve_stack, solve_waves
 
 # Columns in front of those of the films: dissipated power; then bottom, top of each: leaves the
@@ -169,13 +169,13 @@ def fill_emitted(
 ) -> None:  # fmt: skip
     """Dissipated power, and squared amplitudes sent down and up: emitted (3, LANES).
 
-    du : complex (NODES,), ones; sent : float (2 * STAGES * NODES,), work space.
+    du : complex (NODES,), ones; sent : float (2 * PANEL_NODES,), work space.
     """
     for k in range(3):
         for lane in range(LANES):
             emitted[k, lane] = 0.0
     kz, through, r_up, r_down = up.kz[0], up.e[0], up.r_far[0], down.r_far[0]
-    fill_dissipated(source, r_up, r_down, kz, through, u, du, 1.0, scratch)
+    fill_dissipated(source, r_up, r_down, kz, through, u, du, scratch)
     fill_carried(source, r_up, r_down, kz, u, du, scratch)
     fading = fades_out(source, kz)
     for q in range(source.kz_positions.size):
@@ -194,7 +194,7 @@ def fill_emitted(
                 scratch.fade_bottom[lane:], scratch.fade_top[lane:], sent,
             )  # fmt: skip
             add_weighted(share, sent, emitted[1, start:])
-            add_weighted(share, sent[STAGES * NODES :], emitted[2, start:])
+            add_weighted(share, sent[PANEL_NODES:], emitted[2, start:])
 
 
 @rowwise
@@ -276,7 +276,7 @@ def power_by_film(
     source, sides, up, down = at_wavelength(problem, w)
     work_up, work_down = work_space(up.kd.size), work_space(down.kd.size)
     lit_up, lit_down = lit_space(up.kd.size), lit_space(down.kd.size)
-    scratch, emitted, sent = scratch_space(), np.zeros((3, LANES)), np.zeros(2 * STAGES * NODES)
+    scratch, emitted, sent = scratch_space(), np.zeros((3, LANES)), np.zeros(2 * PANEL_NODES)
     nodes, du = np.zeros(NODES, dtype=np.complex128), np.ones(NODES, dtype=np.complex128)
     n = u.size
     power[:, :] = 0.0

@@ -12,14 +12,13 @@ from optics.kernels.arrays import Flags, Floats, Integers
 from optics.kernels.compiled import borrowing, inline, reduction
 from optics.kernels.exits import COLUMNS, TOTAL
 from optics.kernels.halfstack import P, S
-from optics.kernels.rules import DEGREE_ROWS, DEGREES, NODES, STAGES, WEIGHT
+from optics.kernels.rules import DEGREE_ROWS, DEGREES, NODES, PANEL_NODES, WEIGHT
 
-_ALL = STAGES * NODES
 _PROBED = 4  # of so many neighboring positions one is looked at for errors
 
 
 class Light(NamedTuple):
-    """Power at all nodes of a panel on the real axis; n = STAGES * NODES, sides down, up."""
+    """Power at all nodes of a panel on the real axis; n = PANEL_NODES, sides down, up."""
 
     total: Floats  # (3, z, n) dissipated, by channel
     sent: Floats  # (3, z, 2n) sent to either side, by channel
@@ -31,9 +30,9 @@ class Light(NamedTuple):
 def light_space(positions: int) -> Light:
     """Arrays for so many positions."""
     return Light(
-        np.zeros((3, positions, _ALL)),
-        np.zeros((3, positions, 2 * _ALL)),
-        np.zeros((2, COLUMNS * 2 * _ALL)),
+        np.zeros((3, positions, PANEL_NODES)),
+        np.zeros((3, positions, 2 * PANEL_NODES)),
+        np.zeros((2, COLUMNS * 2 * PANEL_NODES)),
         np.zeros((2, COLUMNS), dtype=np.bool_),
     )
 
@@ -102,7 +101,7 @@ def panel_error(
 
     Parameters
     ----------
-    values : float (q, STAGES * NODES)
+    values : float (q, PANEL_NODES)
     stage : int
         How many stages are filled in, less one.
     scale : float (q,)
@@ -137,7 +136,9 @@ def _arrived(weights: Floats, sent: Floats, shares: Floats, count: int) -> float
     """Weighted sum of what arrives from both sides, over the first `count` nodes."""
     total = 0.0
     for i in range(count):
-        total += weights[i] * (sent[i] * shares[i] + sent[_ALL + i] * shares[_ALL + i])
+        total += weights[i] * (
+            sent[i] * shares[i] + sent[PANEL_NODES + i] * shares[PANEL_NODES + i]
+        )
     return total
 
 
@@ -187,10 +188,16 @@ def light_error(
             if o == 1:
                 _total_moments(stage, light.total[2], probed, moments)
         elif o == 0 and light.live[P, k]:
-            _add_moments(stage, light.sent[0], light.shares[P, k * 2 * _ALL :], probed, moments)
+            _add_moments(
+                stage, light.sent[0], light.shares[P, k * 2 * PANEL_NODES :], probed, moments
+            )
         elif o == 1 and (light.live[P, k] or light.live[S, k]):
-            _add_moments(stage, light.sent[1], light.shares[P, k * 2 * _ALL :], probed, moments)
-            _add_moments(stage, light.sent[2], light.shares[S, k * 2 * _ALL :], probed, moments)
+            _add_moments(
+                stage, light.sent[1], light.shares[P, k * 2 * PANEL_NODES :], probed, moments
+            )
+            _add_moments(
+                stage, light.sent[2], light.shares[S, k * 2 * PANEL_NODES :], probed, moments
+            )
         for j in range(probed.size):
             column = group * positions + probed[j]
             misses[column] = panel_miss(moments[0, j], moments[1, j], moments[2, j], moments[3, j])
@@ -213,7 +220,13 @@ def light_sum(light: Light, stage: int, misses: Floats, result: Floats, error: F
                 if o == 1:
                     sums[q] += weighted(weights, light.total[2, q], count)
         elif o == 0 and light.live[P, k]:
-            _add_arrived(weights, light.sent[0], light.shares[P, k * 2 * _ALL :], count, sums)
+            _add_arrived(
+                weights, light.sent[0], light.shares[P, k * 2 * PANEL_NODES :], count, sums
+            )
         elif o == 1 and (light.live[P, k] or light.live[S, k]):
-            _add_arrived(weights, light.sent[1], light.shares[P, k * 2 * _ALL :], count, sums)
-            _add_arrived(weights, light.sent[2], light.shares[S, k * 2 * _ALL :], count, sums)
+            _add_arrived(
+                weights, light.sent[1], light.shares[P, k * 2 * PANEL_NODES :], count, sums
+            )
+            _add_arrived(
+                weights, light.sent[2], light.shares[S, k * 2 * PANEL_NODES :], count, sums
+            )

@@ -12,6 +12,7 @@ from optics.kernels.arrays import Floats
 
 NODES = 16
 STAGES = 2
+PANEL_NODES = STAGES * NODES
 _GAUSS = NODES - 1
 #: Degrees from the earlier to the last coefficients that tell how fast a panel converges.
 BEFORE = 4
@@ -49,7 +50,7 @@ def _nested() -> tuple[Floats, Floats]:
 
 
 X, _ROWS = _nested()
-#: Nodes X on -1..1 (STAGES * NODES,); by stage (STAGES, STAGES * NODES): weights and the rows of
+#: Nodes X on -1..1 (PANEL_NODES,); by stage (STAGES, PANEL_NODES): weights and the rows of
 #: Legendre coefficients of the interpolant, the last two and two that come BEFORE these.
 WEIGHT, DEGREE_ROWS = _ROWS[0], _ROWS[1:]
 DEGREES = len(DEGREE_ROWS)

@@ -36,10 +36,8 @@ from optics.kernels.halfstack import abs2, reflection
 from optics.kernels.panel import Light
 from optics.kernels.planar import LANES, at
 from optics.kernels.problem import Half, Scratch, Sides, Source, Work
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import NODES, PANEL_NODES
 from optics.kernels.whole import solve_half, solve_stack, solve_waves
-
-_ALL = STAGES * NODES
 
 
 @borrowing
@@ -52,7 +50,6 @@ def dissipated(
     scratch: Scratch,
     u: Complexes,
     du: Complexes,
-    beyond_bulk: bool,
     first: int,
     values: Floats,
 ) -> None:
@@ -62,9 +59,6 @@ def dissipated(
     ----------
     u, du : complex (NODES,)
         Nodes and derivative of the path.
-    beyond_bulk : bool
-        Leave out the bulk term. Right on the real axis beyond the emitter's own light lines,
-        where it carries no power but would drown what does.
     first : int
         Place of the first of these nodes.
     values : float (3, positions, nodes), output
@@ -74,8 +68,7 @@ def dissipated(
     reflection(work_up.y, work_up.e, work_up.r)
     reflection(work_down.y, work_down.e, work_down.r)
     kz, through = work_up.kz[0], work_up.e[0]
-    own = 0.0 if beyond_bulk else 1.0
-    fill_dissipated(source, work_up.r, work_down.r, kz, through, u, du, own, scratch)
+    fill_dissipated(source, work_up.r, work_down.r, kz, through, u, du, scratch)
     fading = fades_out(source, kz)
     for q in range(source.kz_positions.size):
         fill_phases(q, source, kz, through, fading, scratch)
@@ -136,10 +129,10 @@ def radiated(
         )  # fmt: skip
         light.live[pol, TOTAL] = True
         for k in range(1, COLUMNS):
-            start = k * 2 * _ALL + first
-            live = plain_sum(shares[start:]) + plain_sum(shares[start + _ALL :])
+            start = k * 2 * PANEL_NODES + first
+            live = plain_sum(shares[start:]) + plain_sum(shares[start + PANEL_NODES :])
             light.live[pol, k] = live > 0.0
-    fill_dissipated(source, r_up, r_down, kz, through, u, du, 1.0, scratch)
+    fill_dissipated(source, r_up, r_down, kz, through, u, du, scratch)
     fill_carried(source, r_up, r_down, kz, u, du, scratch)
     fading = fades_out(source, kz)
     for q in range(source.kz_positions.size):
@@ -178,12 +171,12 @@ def _fill_shares(
         )  # fmt: skip
         down, up = fates(ways, (once_b[i], once_t[i]), (rho_b[i], rho_t[i]), powers, p_b, p_t)
         _put_fate(shares, i, down, absorbed_down[i])
-        _put_fate(shares, _ALL + i, up, absorbed_up[i])
+        _put_fate(shares, PANEL_NODES + i, up, absorbed_up[i])
 
 
 @scalar
 def _put_fate(shares: Floats, place: int, fate: Fate, absorbed: float) -> None:
-    row = 2 * _ALL
+    row = 2 * PANEL_NODES
     shares[AIR_BOTTOM * row + place] = fate[0]
     shares[AIR_TOP * row + place] = fate[1]
     shares[SUBSTRATE * row + place] = fate[2]

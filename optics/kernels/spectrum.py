@@ -62,7 +62,7 @@ def dissipated_spectrum(
             for i in range(NODES):
                 # The last batch is filled up with its last node.
                 nodes[i] = complex(u[min(start + i, n - 1)], -depth)
-            dissipated(source, up, down, work_up, work_down, scratch, nodes, du, False, 0, values)
+            dissipated(source, up, down, work_up, work_down, scratch, nodes, du, 0, values)
             for i in range(min(NODES, n - start)):
                 for c in range(3):
                     excess = feigned(c, source, u[start + i], depth)

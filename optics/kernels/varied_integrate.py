@@ -13,7 +13,7 @@ from optics.kernels.integrate import at_wavelength
 from optics.kernels.panel import panel_error, panel_sum, probed_columns
 from optics.kernels.paths import TAIL, first_split, place
 from optics.kernels.problem import Problem
-from optics.kernels.rules import NODES, STAGES
+from optics.kernels.rules import NODES, PANEL_NODES, STAGES
 from optics.kernels.variation import Rates, rates_at
 from optics.kernels.varied_radiated import varied_radiated
 from optics.kernels.varied_response import find_moves, moves_space, response_space
@@ -87,7 +87,7 @@ def integrate_rates(
     moves = moves_space(directions)
     u, du = np.zeros(NODES, dtype=np.complex128), np.zeros(NODES, dtype=np.complex128)
     u_rate, du_rate = np.zeros((directions, NODES)), np.zeros((directions, NODES))
-    values = np.zeros((columns, STAGES * NODES))
+    values = np.zeros((columns, PANEL_NODES))
     probed, misses = probed_columns(columns, 1), np.zeros(columns)
     open_ends = np.zeros((2, 2 * _DEEPEST))
     for task in range(rows.size):

@@ -12,7 +12,7 @@ import numpy as np
 from optics.kernels import halfstack, integrate, panel, paths, source, whole
 from optics.kernels.exits import COLUMNS
 from optics.kernels.problem import Problem, scratch_space, work_space
-from optics.kernels.rules import DEGREES, NODES, STAGES
+from optics.kernels.rules import DEGREES, NODES, PANEL_NODES
 
 _compiled: Any = numba.njit(error_model="numpy")
 # Changes a node by next to nothing, so that no compiler can do a part once for all rounds.
@@ -79,9 +79,7 @@ def _solve(n, halves, works, u):  # type: ignore[no-untyped-def]
 def _dissipated(n, own, halves, works, scratch, u, du, values):  # type: ignore[no-untyped-def]
     for _ in range(n):
         u[0] += _NUDGE
-        source.dissipated(
-            own, halves[0], halves[1], works[0], works[1], scratch, u, du, False, 0, values
-        )
+        source.dissipated(own, halves[0], halves[1], works[0], works[1], scratch, u, du, 0, values)
 
 
 @_compiled
@@ -171,8 +169,8 @@ def batch(problem: Problem, w: int, calls: int = 300, repeats: int = 25) -> Batc
     """Time every part at wavelength number w."""
     own, sides, halves, works, scratch, u, du, light = _setup(problem, w)
     z = own.kz_positions.size
-    power = np.zeros((3, z, STAGES * NODES))
-    by_column = power.reshape(3 * z, STAGES * NODES)
+    power = np.zeros((3, z, PANEL_NODES))
+    by_column = power.reshape(3 * z, PANEL_NODES)
     few, many = np.ones((4, 3 * z)), np.ones((4, 2 * COLUMNS * z))
     probed = _probed(1, z)
     waves = {"waves": (_waves, own, halves, works, u)}

@@ -18,7 +18,7 @@ from optics.device.case import Case, case_from_dict
 from optics.outcome.light import cores, problem_of, quadrature
 
 from . import rival, rival_plain
-from .measure import RIVAL_POINTS, fastest
+from .measure import RIVAL_POINTS, fastest, verdict
 from .rival import PlainStack
 
 ROOT = Path(__file__).resolve().parents[2]
@@ -66,23 +66,19 @@ def section(plan: MapPlan) -> list[str]:
         f"all destinations, {positions} dipole positions, on the {cores()} cores of this process.",
         "\n".join([
             f"- Within {AIM_S:.0f} s: {wall:.1f} s ({cpu:.1f} s of processor time), "
-            f"{_verdict(wall <= AIM_S)}.",
+            f"{verdict(wall <= AIM_S)}.",
             f"- At least {AIM_FASTER:.0f} times faster than the straight rival: "
-            f"{straight / wall:,.0f} times, {_verdict(straight >= AIM_FASTER * wall)}; core for "
+            f"{straight / wall:,.0f} times, {verdict(straight >= AIM_FASTER * wall)}; core for "
             f"core {straight / cpu:,.0f} times. Than the spared one: {spared / wall:,.0f} times, "
             f"core for core {spared / cpu:,.0f}. Both (one thread, a single dipole position) were "
             f"timed at {plan.sampled} points and as many wavelengths and scaled to "
             f"{straight:,.0f} s and {spared:,.0f} s for all.",
             f"- Memory below {AIM_GIB:.0f} GiB: a map of {plan.large} x {plan.large} points at one "
             f"wavelength peaks at {peak:.2f} GiB, everything loaded included, "
-            f"{_verdict(peak <= AIM_GIB)}.",
+            f"{verdict(peak <= AIM_GIB)}.",
             f"- Worst energy balance of the map: {found.attrs['energy_balance']:.1e}.",
         ]),
     ]  # fmt: skip
-
-
-def _verdict(reached: bool) -> str:
-    return "reached" if reached else "**not reached**"
 
 
 def _positions(case: Case) -> int:

@@ -132,3 +132,8 @@ def steps(device: Device, budget: Budget) -> int:
 
 def median(values: Sequence[float]) -> float:
     return float(statistics.median(values))
+
+
+def verdict(reached: bool) -> str:
+    """How the page says whether an aim is reached."""
+    return "reached" if reached else "**not reached**"

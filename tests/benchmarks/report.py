@@ -34,6 +34,7 @@ from .measure import (
     run_rival,
     steps,
     truth,
+    verdict,
 )
 from .tolerance import StudyPlan
 from .tolerance import section as study_section
@@ -60,10 +61,6 @@ class Plan:
 def markdown(header: list[str], rows: list[list[str]]) -> str:
     lines = [header, ["---"] * len(header), *rows]
     return "\n".join("| " + " | ".join(cells) + " |" for cells in lines)
-
-
-def verdict(reached: bool) -> str:
-    return "reached" if reached else "**not reached**"
 
 
 def machine() -> str:

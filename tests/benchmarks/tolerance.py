@@ -18,6 +18,8 @@ from optics.study.evaluate import answers
 from optics.study.tolerance import evaluated, points_of
 from optics.study.tolerance_plan import plan_tolerance
 
+from .measure import verdict
+
 ROOT = Path(__file__).resolve().parents[2]
 BASE = ROOT / "cases" / "tolerance-green-pixel.toml"
 INDEX_SD = {"lindenlicht-htl": 0.01, "lindenlicht-etl": 0.01}  # invented
@@ -102,16 +104,12 @@ def section(plan: StudyPlan) -> list[str]:
         "process.",
         "\n".join([
             f"- {plan.samples:,} samples within {AIM_S:.0f} s: {whole:.0f} s, "
-            f"{_verdict(whole <= AIM_S)}. With the cores for itself, from the processor time: "
-            f"{ideal:.0f} s, {_verdict(ideal <= AIM_S)}.",
+            f"{verdict(whole <= AIM_S)}. With the cores for itself, from the processor time: "
+            f"{ideal:.0f} s, {verdict(ideal <= AIM_S)}.",
             f"- {1.0 / found.wall_s:.0f} samples per second; {1e3 * found.cpu_s:.1f} ms of "
             "processor time for one, everything included.",
             f"- Drawing and statistics of all samples within {AIM_STATISTICS_S:.0f} s: "
-            f"{found.statistics_s:.1f} s, {_verdict(found.statistics_s <= AIM_STATISTICS_S)}.",
+            f"{found.statistics_s:.1f} s, {verdict(found.statistics_s <= AIM_STATISTICS_S)}.",
             f"- Worst energy balance of the measured samples: {found.energy_balance:.1e}.",
         ]),
     ]  # fmt: skip
-
-
-def _verdict(reached: bool) -> str:
-    return "reached" if reached else "**not reached**"
